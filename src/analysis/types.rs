@@ -1,0 +1,167 @@
+//! What analysis says of a record. It cannot fail: what is absent carries a reason.
+
+use serde::{Deserialize, Serialize};
+
+use crate::plan::Cell;
+
+/// A value, or why there is none.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[serde(rename_all = "snake_case")]
+pub enum Figure<T> {
+    /// It is known.
+    Known(T),
+    /// It is not, and this is why, in words.
+    Absent(String),
+}
+
+impl<T> Figure<T> {
+    /// The value, where it is known.
+    pub fn known(&self) -> Option<&T> {
+        match self {
+            Figure::Known(value) => Some(value),
+            Figure::Absent(_) => None,
+        }
+    }
+
+    /// The reason, where it is not.
+    pub fn reason(&self) -> Option<&str> {
+        match self {
+            Figure::Known(_) => None,
+            Figure::Absent(reason) => Some(reason),
+        }
+    }
+}
+
+/// A measurement with its uncertainty, in the base unit that its field's name ends with.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Estimate {
+    /// The value.
+    pub value: f64,
+    /// Expanded uncertainty U = k u_c.
+    pub expanded: f64,
+    /// Coverage factor k.
+    pub coverage: f64,
+    /// Standard uncertainty of each share, largest first.
+    pub budget: Vec<Share>,
+}
+
+/// One line of an uncertainty budget.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Share {
+    /// What it comes from.
+    pub from: String,
+    /// Its standard uncertainty in the estimate's unit.
+    pub standard: f64,
+}
+
+/// The results of one cell.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct CellResult {
+    /// The cell.
+    pub cell: Cell,
+    /// When the output went on, seconds since the record's start.
+    pub energised_s: Figure<f64>,
+    /// When it went off again.
+    pub off_s: Figure<f64>,
+    /// Whether the body was near ambient before it; the reason says why not.
+    pub cold_start: Figure<()>,
+    /// Switch-on.
+    pub inrush: Figure<Inrush>,
+    /// When the soak settled, seconds after energising.
+    pub settled_s: Figure<f64>,
+    /// Settled input.
+    pub steady: Figure<Steady>,
+    /// Highest temperature of the body, after-heat included, corrected for calibration.
+    pub body_peak: Figure<Peak>,
+    /// The same at the highest ambient, placement allowance included.
+    pub body_worst: Figure<Estimate>,
+    /// Highest rise over ambient of every other temperature role, by role's name.
+    pub rises: Vec<(String, Figure<Estimate>)>,
+    /// Why the temperatures of this cell are not to be believed; empty where they are.
+    pub disbelief: Vec<String>,
+}
+
+/// Switch-on, from samples: a lower bound of what really happened.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Inrush {
+    /// First current, seconds since the record's start.
+    pub t0_s: f64,
+    /// Highest current sampled.
+    pub peak_a: Estimate,
+    /// Highest power sampled.
+    pub peak_w: f64,
+    /// When, seconds after t0.
+    pub peak_after_s: f64,
+    /// Peak over settled power, where that is known.
+    pub ratio: Option<f64>,
+    /// Time to fall half-way to settled power, seconds after the peak.
+    pub half_way_s: Option<f64>,
+    /// Energy above settled power, Wh.
+    pub above_steady_wh: Option<f64>,
+    /// Why it is a lower bound only; empty where nothing says so.
+    pub lower_bound: Vec<String>,
+    /// Why the supply limited it; absent where it did not.
+    pub supply_limited: Option<String>,
+}
+
+/// Settled input.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Steady {
+    /// Power; of a cycling load, while it is on.
+    pub power_w: Estimate,
+    /// Mean power over the window, off times included.
+    pub mean_w: f64,
+    /// Share of the window in which it is on; 1 where it does not cycle.
+    pub duty: f64,
+    /// Mean voltage.
+    pub voltage_v: f64,
+    /// Mean current while on.
+    pub current_a: Option<f64>,
+    /// Window, seconds since the record's start.
+    pub from_s: f64,
+    /// See `from_s`.
+    pub to_s: f64,
+    /// Samples in it.
+    pub samples: usize,
+    /// Effective number of independent samples.
+    pub effective: f64,
+    /// How it was called settled, in words.
+    pub criterion: String,
+}
+
+/// A highest temperature.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Peak {
+    /// The temperature.
+    pub temperature_degc: Estimate,
+    /// When, seconds since the record's start.
+    pub at_s: f64,
+    /// Ambient then.
+    pub ambient_degc: f64,
+    /// Whether it came after the output went off.
+    pub after_heat: bool,
+}
+
+/// An operator's answer that is a finding, or not.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Looked {
+    /// The question.
+    pub question: String,
+    /// The answer.
+    pub answer: String,
+    /// The finding's class, where it is one.
+    pub class: Option<crate::spec::sequence::FindingClass>,
+}
+
+/// What analysis says of a whole record.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Analysis {
+    /// Results in the order of the plan's cells.
+    pub cells: Vec<CellResult>,
+    /// What the operator saw.
+    pub looked: Vec<Looked>,
+    /// The guard that tripped, where one did.
+    pub tripped: Option<String>,
+    /// Notes for the reader.
+    pub notes: Vec<String>,
+}

@@ -1,0 +1,2 @@
+//! The bench: SCPI codec, exchanges and poller without I/O; line threads and the
+//! simulated pump that drive them; the lease that keeps a unit energised.

@@ -1,0 +1,5 @@
+//! Rules, findings, verdict.
+
+mod types;
+
+pub use types::{Finding, Judgement, Outcome};

@@ -1,0 +1,77 @@
+//! Findings and the verdict.
+
+use serde::{Deserialize, Serialize};
+
+use crate::spec::sequence::RuleWeight;
+
+/// The outcomes of a guard-banded non-binary decision (terms of ILAC-G8:09/2019),
+/// and "the data cannot carry a decision".
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Hash, Serialize, Deserialize)]
+#[serde(rename_all = "kebab-case")]
+#[expect(missing_docs, reason = "the names say it")]
+pub enum Outcome {
+    Pass,
+    ConditionalPass,
+    ConditionalFail,
+    Fail,
+    NotJudged,
+}
+
+impl Outcome {
+    /// In words.
+    pub fn word(self) -> &'static str {
+        match self {
+            Outcome::Pass => "pass",
+            Outcome::ConditionalPass => "conditional pass",
+            Outcome::ConditionalFail => "conditional fail",
+            Outcome::Fail => "fail",
+            Outcome::NotJudged => "not judged",
+        }
+    }
+}
+
+/// One rule's outcome.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Finding {
+    /// The rule, in words: `power, position high`.
+    pub rule: String,
+    /// Condition that it was judged in, where there is one.
+    pub condition: Option<String>,
+    /// Position, where it is of one.
+    pub position: Option<String>,
+    /// Supply, in words, where it is of one.
+    pub supply: Option<String>,
+    /// Required or information.
+    pub weight: RuleWeight,
+    /// The outcome.
+    pub outcome: Outcome,
+    /// The value compared, base unit.
+    pub value: Option<f64>,
+    /// Its expanded uncertainty.
+    pub expanded: Option<f64>,
+    /// Unit of value, U, limits and margin, for people.
+    pub unit: String,
+    /// Lower limit.
+    pub at_least: Option<f64>,
+    /// Upper limit.
+    pub at_most: Option<f64>,
+    /// Distance to the nearer limit, positive is good.
+    pub margin: Option<f64>,
+    /// Probability that the true value conforms, where it can be said.
+    pub probability: Option<f64>,
+    /// Where the limits come from.
+    pub source: String,
+    /// Why, in one sentence: the reason for `not judged`, or what a fail means.
+    pub reason: String,
+}
+
+/// The whole unit's outcome.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Judgement {
+    /// The unit's verdict.
+    pub verdict: Outcome,
+    /// The one reason that decided it.
+    pub because: String,
+    /// Every finding.
+    pub findings: Vec<Finding>,
+}

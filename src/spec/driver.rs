@@ -1,0 +1,159 @@
+//! A driver: the dialect of one family of instruments, and how accurate it is.
+//!
+//! Plain values without places: a driver is checked within its own file, and the
+//! plan stores it whole, so that a record can be judged without today's files.
+
+use serde::{Deserialize, Serialize};
+
+use super::sequence::RoleKind;
+use crate::quantity::{Reading, Seconds, Volts};
+
+/// A whole driver file.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Driver {
+    /// `driver:` its name, as bench files call it.
+    pub name: String,
+    /// `fills:` kinds of role that it can fill.
+    pub fills: Vec<RoleKind>,
+    /// `framing:`
+    pub framing: Framing,
+    /// `identity:`
+    pub identity: IdentityQuery,
+    /// `on opening:` commands sent once after identification.
+    pub on_opening: Vec<String>,
+    /// `readings:`
+    pub readings: Vec<ReadingQuery>,
+    /// `settings:` commands with `{value}`.
+    pub settings: Settings,
+    /// `errors:` the error queue's query.
+    pub errors: Option<String>,
+    /// `accuracy:`
+    pub accuracy: Vec<Accuracy>,
+    /// `update interval:` how often a new value is there.
+    pub update_interval: Seconds,
+    /// `channels:` highest channel number; 0 where the instrument has none.
+    pub channels: u32,
+    /// `isolation:` of sensor inputs to earth and to each other; unknown counts as 0 V.
+    pub isolation: Option<Volts>,
+}
+
+/// How messages are set apart on the wire.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Framing {
+    /// `sends:` terminator of what is sent (`LF`, `CRLF`, `CR`).
+    pub sends: Terminator,
+    /// `replies end with:`; one trailing CR is stripped in any case.
+    pub replies: Terminator,
+    /// `reply within:`
+    pub reply_within: Seconds,
+    /// `gap:` least time between a reply and the next message.
+    pub gap: Seconds,
+    /// `tries:` how often an exchange is tried in all.
+    pub tries: u32,
+}
+
+/// Line ends.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize)]
+#[expect(missing_docs, reason = "the names are the characters")]
+pub enum Terminator {
+    Lf,
+    CrLf,
+    Cr,
+}
+
+impl Terminator {
+    /// The bytes.
+    pub fn bytes(self) -> &'static [u8] {
+        match self {
+            Terminator::Lf => b"\n",
+            Terminator::CrLf => b"\r\n",
+            Terminator::Cr => b"\r",
+        }
+    }
+}
+
+/// How an instrument says who it is.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct IdentityQuery {
+    /// `ask:`
+    pub ask: String,
+    /// `fields:` comma fields of the reply (IEEE 488.2: 4).
+    pub fields: usize,
+}
+
+/// One query and the readings in its reply.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct ReadingQuery {
+    /// `ask:` with `{channel}` where the instrument has channels.
+    pub ask: String,
+    /// `gives:` one reading per field of the reply; fields are split at `;` or `,`.
+    pub gives: Vec<Reading>,
+}
+
+/// Commands that change something; each absent where the instrument can't.
+#[derive(Debug, Clone, PartialEq, Default, Serialize, Deserialize)]
+pub struct Settings {
+    /// `voltage:` with `{value}` in V.
+    pub voltage: Option<Setting>,
+    /// `frequency:` with `{value}` in Hz.
+    pub frequency: Option<Setting>,
+    /// `position:` with `{value}`, the position's number from 1 in the sequence's order; 0 is off.
+    pub position: Option<Setting>,
+    /// `output on:`
+    pub output_on: Option<String>,
+    /// `output off:`
+    pub output_off: Option<String>,
+    /// `output state:` query answered 1 or 0 (also ON and OFF).
+    pub output_state: Option<String>,
+}
+
+/// A command and the query that reads it back.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Setting {
+    /// `set:` with `{value}`.
+    pub set: String,
+    /// `confirm:` query whose reply must agree.
+    pub confirm: Option<String>,
+}
+
+/// Accuracy of one reading: +-(share of reading + share of range + floor).
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Accuracy {
+    /// Of what.
+    pub reading: Reading,
+    /// `of reading:` as a fraction.
+    pub of_reading: f64,
+    /// `of range:` as a fraction of the range in force.
+    pub of_range: f64,
+    /// `floor:` in the reading's base unit.
+    pub floor: f64,
+    /// `resolution:` in the reading's base unit.
+    pub resolution: f64,
+    /// `ranges:` full-scale values, rising, in the reading's base unit; empty: no range term.
+    pub ranges: Vec<f64>,
+}
+
+impl Driver {
+    /// The accuracy of one reading, where the driver states one.
+    pub fn accuracy_of(&self, reading: Reading) -> Option<&Accuracy> {
+        self.accuracy.iter().find(|a| a.reading == reading)
+    }
+}
+
+impl Accuracy {
+    /// The smallest range that holds `value`, else the largest.
+    pub fn range_for(&self, value: f64) -> Option<f64> {
+        let holds = self
+            .ranges
+            .iter()
+            .copied()
+            .find(|full| value.abs() <= *full);
+        holds.or(self.ranges.last().copied())
+    }
+
+    /// Half-width of the accuracy interval at `value`, in the reading's base unit.
+    pub fn half_width(&self, value: f64) -> f64 {
+        let range = self.range_for(value).unwrap_or(0.0);
+        self.of_reading * value.abs() + self.of_range * range + self.floor
+    }
+}
