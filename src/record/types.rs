@@ -171,6 +171,8 @@ pub enum StepEnd {
     Settled,
     /// Its time limit came first.
     TimeLimit,
+    /// The current vanished while energised.
+    WentOpen,
     /// It was cut short.
     Cut,
 }
