@@ -1,0 +1,74 @@
+//! The virtual operator's hands: they turn the switch, bring conditions about and
+//! answer questions as for a good unit.
+
+use std::sync::{Arc, Mutex, PoisonError};
+
+use super::bay::Bay;
+use crate::quantity::{Moment, shortest};
+use crate::spec::sequence::{AnswerKind, Question};
+
+/// Someone at the bay.
+#[derive(Debug, Clone)]
+pub struct Hands {
+    bay: Arc<Mutex<Bay>>,
+}
+
+impl Hands {
+    pub(super) fn at(bay: Arc<Mutex<Bay>>) -> Self {
+        Self { bay }
+    }
+
+    /// Turns the unit's switch; `off` is off. Returns whether the switch has that
+    /// position; where it has not, it stays where it is.
+    pub fn turn(&self, position: &str, now: Moment) -> bool {
+        let mut bay = self.bay.lock().unwrap_or_else(PoisonError::into_inner);
+        bay.advance(now.as_micros());
+        let number = match bay.positions.iter().position(|p| p == position) {
+            Some(index) => index + 1,
+            None if position == "off" => 0,
+            None => return false,
+        };
+        bay.wiring.position = number;
+        bay.redrive();
+        true
+    }
+
+    /// Brings a condition about. Returns whether the unit knows it; one that it
+    /// does not know changes nothing of its cooling.
+    pub fn set_condition(&self, condition: &str, now: Moment) -> bool {
+        let mut bay = self.bay.lock().unwrap_or_else(PoisonError::into_inner);
+        bay.advance(now.as_micros());
+        let known = bay.conditions.iter().find(|(name, _)| name == condition);
+        let factor = known.map(|(_, factor)| *factor);
+        bay.loss_factor = factor.unwrap_or(1.0);
+        bay.redrive();
+        factor.is_some()
+    }
+
+    /// The answer for a good unit: not the one that is a finding; of a number the
+    /// middle of its limits.
+    pub fn answer(&self, question: &Question) -> String {
+        let finding = question.finding.as_ref().map(|f| f.when.as_str());
+        match &question.answer {
+            AnswerKind::YesNo => if finding == Some("yes") { "no" } else { "yes" }.to_owned(),
+            AnswerKind::Choice(choices) => choices
+                .iter()
+                .find(|choice| finding != Some(choice.as_str()))
+                .cloned()
+                .unwrap_or_default(),
+            AnswerKind::Number {
+                at_least, at_most, ..
+            } => shortest(middle(*at_least, *at_most)),
+        }
+    }
+}
+
+/// A value well within limits of which one or both may be missing.
+fn middle(at_least: Option<f64>, at_most: Option<f64>) -> f64 {
+    match (at_least, at_most) {
+        (Some(low), Some(high)) => f64::midpoint(low, high),
+        (Some(low), None) => low + low.abs().max(1.0),
+        (None, Some(high)) => high - 0.5 * high.abs().max(1.0),
+        (None, None) => 1.0,
+    }
+}
