@@ -2,9 +2,19 @@
 //! hint. No look-ups: what a name refers to is `plan`'s business.
 
 pub mod bench;
+mod decode;
 pub mod driver;
+mod fields;
+mod load;
+mod nearest;
+mod scalars;
 pub mod sequence;
+pub mod shipped;
 mod source;
+mod syntax;
 pub mod virtual_unit;
+mod yaml;
 
+pub use load::{Loaded, load_bench, load_driver, load_sequence, load_virtual_unit};
+pub use nearest::nearest;
 pub use source::{Located, Place, Problem, Source, Weight};
