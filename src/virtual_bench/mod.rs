@@ -19,6 +19,11 @@ pub mod ptc;
 pub mod terminals;
 mod unit;
 
+#[cfg(test)]
+mod demo_units;
+#[cfg(test)]
+mod tests;
+
 use std::sync::{Arc, Mutex, MutexGuard, PoisonError};
 
 use crate::bench::FarSide;
