@@ -176,3 +176,73 @@ impl Pump {
         Ok(())
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use std::io::{Read, Write};
+    use std::time::Instant;
+
+    use super::super::tests::dryer;
+    use super::*;
+
+    fn staged(speed: f64) -> Staged {
+        let mut staging = dryer(&[]);
+        staging.speed = speed;
+        let bench = VirtualBench::new(staging).unwrap();
+        let lines = ["supply line", "meter line"].map(str::to_owned);
+        stage(&bench, &lines, Clock::scaled(speed)).unwrap()
+    }
+
+    fn open(path: &str) -> Box<dyn serialport::SerialPort> {
+        let port = serialport::new(path, 115_200).timeout(Duration::from_secs(5));
+        port.open().unwrap()
+    }
+
+    fn ask(port: &mut dyn serialport::SerialPort, line: &str) -> String {
+        port.write_all(line.as_bytes()).unwrap();
+        let (mut reply, mut byte) = (String::new(), [0]);
+        loop {
+            port.read_exact(&mut byte).unwrap();
+            if byte[0] == b'\n' {
+                return reply;
+            }
+            reply.push(char::from(byte[0]));
+        }
+    }
+
+    #[test]
+    fn a_serial_program_can_talk_to_a_staged_line() {
+        let staged = staged(1.0);
+        assert_eq!(staged.ports[0].0, "supply line");
+        let mut supply = open(&staged.ports[0].1);
+        let mut meter = open(&staged.ports[1].1);
+        let identity = ask(&mut *meter, "*IDN?\n");
+        assert_eq!(identity, "RATEPLATE,VIRTUAL-METER,0001,0.1 x1");
+        assert_eq!(ask(&mut *supply, "OUTP ON\nOUTP?\n"), "1");
+        drop(meter);
+        // The next client finds the line as the last one left it.
+        let mut meter = open(&staged.ports[1].1);
+        assert_eq!(ask(&mut *meter, "SYST:ERR?\n"), "0,\"No error\"");
+        let before = Instant::now();
+        staged.stop();
+        assert!(before.elapsed() < Duration::from_secs(2));
+        assert!(meter.read(&mut [0]).is_err(), "a stopped line hangs up");
+    }
+
+    #[test]
+    fn bytes_that_arrive_with_a_hang_up_are_heard() {
+        let staged = staged(1.0);
+        let mut leaving = open(&staged.ports[0].1);
+        leaving.write_all(b"OUTP ON\n").unwrap();
+        drop(leaving);
+        let mut supply = open(&staged.ports[0].1);
+        assert_eq!(ask(&mut *supply, "OUTP?\n"), "1");
+    }
+
+    #[test]
+    fn scaled_time_shows_in_the_identity_and_on_the_clock() {
+        let staged = staged(50.0);
+        let mut supply = open(&staged.ports[0].1);
+        assert!(ask(&mut *supply, "*IDN?\n").ends_with(" x50"));
+    }
+}

@@ -326,3 +326,114 @@ fn a_position_that_the_unit_lacks_is_refused() {
         "{error}"
     );
 }
+
+/// Body and ambient as the scanner shows them, and the meter's power.
+fn shown(bench: &VirtualBench, now: f64) -> (f64, f64, f64) {
+    let mut scanner = bench.far_side("scanner line");
+    let body = fields(&reply(&mut *scanner, BODY, at(now)))[0];
+    let ambient = fields(&reply(&mut *scanner, AMBIENT, at(now)))[0];
+    let watts = fields(&reply(&mut *bench.far_side("meter line"), METER, at(now)))[2];
+    (body, ambient, watts)
+}
+
+/// The same at 20 minutes in the high position, for the good unit and for a fault.
+fn good_and(fault: &str) -> ((f64, f64, f64), (f64, f64, f64)) {
+    let good = shown(&energised(dryer(&[]), 2), 1200.0);
+    (good, shown(&energised(dryer(&[fault]), 2), 1200.0))
+}
+
+#[test]
+fn each_fault_of_the_unit_is_visible_in_what_the_instruments_show() {
+    let (good, dead) = good_and("dead-unit");
+    assert!(good.2 > 8.0 && dead.2.abs() < 0.05 && (dead.0 - dead.1).abs() < 2.1);
+    let (_, wrong) = good_and("wrong-element");
+    assert!(wrong.2 > 10.8 && wrong.0 > 95.0, "{wrong:?}");
+    let (_, loose) = good_and("loose-clamp");
+    assert!(
+        loose.2 < 0.7 * good.2 && loose.0 > good.0 + 3.0,
+        "{loose:?}"
+    );
+    let (_, stuck) = good_and("stuck-fan");
+    assert!(
+        stuck.2 < 0.8 * good.2 && stuck.0 > good.0 + 3.0,
+        "{stuck:?}"
+    );
+    let (_, link) = good_and("wrong-link");
+    assert!(link.2.abs() < 0.05 && link.0 < good.0 - 10.0, "{link:?}");
+    let (_, swapped) = good_and("swapped-positions");
+    assert!((4.0..5.0).contains(&swapped.2), "{swapped:?}");
+    let shorted = energised(dryer(&["shorted-element"]), 1);
+    assert!(shorted.truth(at(0.2)).current.get() > 10.0);
+}
+
+#[test]
+fn a_link_may_open_by_itself_in_the_soak() {
+    let bench = energised(dryer(&["link-opens-mid-soak"]), 2);
+    assert!(bench.truth(at(419.9)).power.get() > 7.0);
+    let after = bench.truth(at(420.1));
+    assert!(after.link_open && after.power.get() == 0.0 && after.current.get() == 0.0);
+}
+
+#[test]
+fn each_fault_of_a_sensor_is_visible_in_what_the_scanner_shows() {
+    let (good, fallen) = good_and("sensor-fallen-off");
+    assert!(fallen.0 < fallen.1 + 5.0, "{fallen:?}");
+    let (_, swapped) = good_and("swapped-channels");
+    assert!(swapped.1 > swapped.0 + 30.0, "{swapped:?}");
+    let (_, reversed) = good_and("sensor-reversed");
+    assert!(reversed.0 < 0.0, "{reversed:?}");
+    let (_, other) = good_and("sensor-wrong-type");
+    assert!((5.0..15.0).contains(&(good.0 - other.0)), "{other:?}");
+    let bench = energised(dryer(&["sensor-open@600s"]), 2);
+    let mut scanner = bench.far_side("scanner line");
+    assert_ne!(reply(&mut *scanner, BODY, at(599.0)), "9.91E37");
+    assert_eq!(reply(&mut *scanner, BODY, at(600.0)), "9.91E37");
+    assert_ne!(reply(&mut *scanner, AMBIENT, at(600.0)), "9.91E37");
+}
+
+#[test]
+fn each_fault_of_a_line_begins_when_it_is_told_to() {
+    let meter = |fault: &str| {
+        let bench = VirtualBench::new(dryer(&[fault])).unwrap();
+        let mut far = bench.far_side("meter line");
+        let before = ask(&mut *far, "*IDN?", at(299.0)).unwrap();
+        assert_eq!(before.0, "RATEPLATE,VIRTUAL-METER,0001,0.1 x1", "{fault}");
+        far
+    };
+    let now = at(300.0);
+    assert!(ask(&mut *meter("no-reply@300s"), METER, now).is_none());
+    assert!(ask(&mut *meter("disconnect@300s"), METER, now).is_none());
+    let (_, late) = ask(&mut *meter("late-reply@300s"), METER, now).unwrap();
+    assert!((0.75..0.8).contains(&late), "{late} s after 500 ms allowed");
+    let (echo, _) = ask(&mut *meter("echo@300s"), METER, now).unwrap();
+    assert!(echo.starts_with(&format!("{METER}\n")), "{echo}");
+    let (garbled, _) = ask(&mut *meter("garbled@300s"), METER, now).unwrap();
+    assert!(garbled.contains('\u{fffd}'), "{garbled}");
+    let (stranger, _) = ask(&mut *meter("wrong-identity@300s"), "*IDN?", now).unwrap();
+    assert_eq!(stranger, "RATEPLATE,VIRTUAL-STRANGER,0001,0.1 x1");
+    assert!(ask(&mut *meter("no-reply:body@300s"), METER, now).is_some());
+}
+
+#[test]
+fn a_supply_in_trouble_says_so_after_each_command() {
+    let bench = VirtualBench::new(dryer(&["error-queue@10s"])).unwrap();
+    let mut far = bench.far_side("supply line");
+    assert_eq!(reply(&mut *far, "SOUR:VOLT 230", at(9.0)), "(nothing)");
+    assert_eq!(reply(&mut *far, ERRORS, at(9.0)), "0,\"No error\"");
+    assert_eq!(reply(&mut *far, "OUTP OFF", at(10.0)), "(nothing)");
+    assert_eq!(
+        reply(&mut *far, ERRORS, at(10.0)),
+        "-300,\"Device-specific error\""
+    );
+    assert_eq!(reply(&mut *far, ERRORS, at(10.0)), "0,\"No error\"");
+}
+
+#[test]
+fn a_dead_line_forgets_what_was_on_its_way() {
+    let bench = VirtualBench::new(dryer(&["disconnect@1s"])).unwrap();
+    let mut far = bench.far_side("meter line");
+    far.receive(b"*IDN?\n", Moment::from_micros(999_999));
+    let mut out = Vec::new();
+    far.deliver(at(2.0), &mut out);
+    assert!(out.is_empty() && far.due().is_none());
+}

@@ -441,3 +441,164 @@ impl Room {
         self.mean + WANDER.0 * libm::sin(turn + self.phase)
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::spec::load_virtual_unit;
+
+    /// A model from its elements, its position and further lines.
+    fn model(element: &str, diode: &str, more: &str) -> VirtualUnit {
+        let text = format!(
+            "virtual unit: Test\nelements:\n  A: {element}\npositions:\n  on: {{elements: [A]{diode}}}\n\
+             {more}link opens at: 400 °C\nthermal:\n  block capacity: 50 J/K\n  block loss: 0.04 W/K\n  \
+             link follows: 20 s\n  link share: 90 %\n  enclosure capacity: 100 J/K\n  enclosure loss: 1 W/K\n  \
+             enclosure share: 0 %\nconditions:\n  bare: {{loss factor: 1}}\nspread: 0 %\n"
+        );
+        let loaded = load_virtual_unit("test", text.as_bytes());
+        loaded
+            .value
+            .unwrap_or_else(|| panic!("{:?}", loaded.problems))
+    }
+
+    fn on(model: &VirtualUnit, volts: f64, faults: &[Fault]) -> Specimen {
+        let mut specimen = Specimen::new(model, &[0], 1, faults, 25.0);
+        specimen.set_drive(
+            0.0,
+            Drive {
+                volts,
+                position: 1,
+                loss_factor: 1.0,
+            },
+        );
+        specimen
+    }
+
+    fn settled(mut specimen: Specimen) -> State {
+        let end = 20.0 * 7200.0;
+        specimen.advance(end);
+        specimen.state(end)
+    }
+
+    const PTC: &str =
+        "{ptc: {R at switch: 1500 ohm, switch temperature: 120 °C, steepness: 0.2 per K}}";
+
+    fn close(found: f64, wanted: f64, relative: f64) {
+        assert!(
+            (found / wanted - 1.0).abs() < relative,
+            "{found} instead of {wanted}"
+        );
+    }
+
+    #[test]
+    fn a_settled_ptc_meets_the_computed_check_values() {
+        // Source: the project's own computation, Rs 1500 ohm, Ts 120 degC, a 0.2/K,
+        // G 0.04 W/K, Ta 25 degC; per kelvin of ambient T moves 1/(1 + a dT) = 0.045 K.
+        let state = settled(on(&model(PTC, "", ""), 230.0, &[]));
+        let off = state.ambient - 25.0;
+        close(state.block, 130.61029 + 0.0452 * off, 1e-6);
+        close(state.watts, 4.2244116 - 0.0382 * off, 2e-5);
+        close(state.amps, state.watts / 230.0, 1e-12);
+        let lower = settled(on(&model(PTC, "", ""), 100.0, &[]));
+        close(lower.block, 122.67191 + 0.0487 * off, 1e-6);
+    }
+
+    #[test]
+    fn a_diode_halves_a_plain_resistor_and_hardly_changes_a_ptc() {
+        // Source: computed; half-wave resistive load: P/2, RMS current A/2 of the peak
+        // (A/sqrt2 full-wave), power factor 1/sqrt2.
+        let plain = "{plain: 529 ohm}";
+        let full = on(&model(plain, "", ""), 230.0, &[]).state(0.0);
+        let half = on(&model(plain, ", diode: yes", ""), 230.0, &[]).state(0.0);
+        close(full.watts, 100.0, 1e-12);
+        close(half.watts, 50.0, 1e-12);
+        close(
+            half.amps / full.amps,
+            std::f64::consts::FRAC_1_SQRT_2,
+            1e-12,
+        );
+        close(
+            half.watts / (230.0 * half.amps),
+            std::f64::consts::FRAC_1_SQRT_2,
+            1e-12,
+        );
+        let ptc = settled(on(&model(PTC, "", ""), 230.0, &[]));
+        let ptc_half = settled(on(&model(PTC, ", diode: yes", ""), 230.0, &[]));
+        assert!((0.95..0.99).contains(&(ptc_half.watts / ptc.watts)));
+    }
+
+    #[test]
+    fn a_fan_on_the_mains_raises_the_voltage_exponent_towards_the_computed_one() {
+        // Source: computed, "with a fan on the mains the voltage exponent rises towards 0.85".
+        let fan = "fan: {power: 0.1 W, cooling factor: 6}\n";
+        let power = |volts| settled(on(&model(PTC, "", fan), volts, &[])).watts;
+        let exponent = (power(232.0) / power(228.0)).ln() / (232.0_f64 / 228.0).ln();
+        assert!((0.8..0.95).contains(&exponent), "{exponent}");
+    }
+
+    #[test]
+    fn the_links_body_climbs_after_off_because_the_fan_stops() {
+        let fan = "fan: {power: 2 W, cooling factor: 8}\n";
+        let unit = model("{plain: 4 kohm}", "", fan);
+        let mut specimen = on(&unit, 230.0, &[]);
+        specimen.advance(3000.0);
+        let hot = specimen.state(3000.0);
+        specimen.set_drive(
+            3000.0,
+            Drive {
+                volts: 0.0,
+                position: 1,
+                loss_factor: 1.0,
+            },
+        );
+        specimen.advance(3060.0);
+        let after = specimen.state(3060.0);
+        assert!(after.link > hot.link + 3.0, "{hot:?} {after:?}");
+        assert!(after.block < hot.block && after.watts == 0.0);
+        // With a blocked fan there is no such climb.
+        let mut stuck = on(&unit, 230.0, &[Fault::StuckFan]);
+        stuck.advance(3000.0);
+        assert!(stuck.state(3000.0).block > hot.block + 100.0);
+    }
+
+    #[test]
+    fn a_thermostat_switches_exactly_at_its_temperatures() {
+        let thermostat = "thermostat: {opens at: 70 °C, closes at: 60 °C}\n";
+        let mut specimen = on(&model("{plain: 500 ohm}", "", thermostat), 230.0, &[]);
+        let (mut lowest, mut highest) = (f64::INFINITY, 0.0_f64);
+        for i in 0..40_000 {
+            let t = f64::from(i) * 0.1;
+            specimen.advance(t);
+            let state = specimen.state(t);
+            highest = highest.max(state.block);
+            if t > 1500.0 {
+                lowest = lowest.min(state.block);
+            }
+        }
+        close(highest, 70.0, 1e-3);
+        close(lowest, 60.0, 1e-3);
+    }
+
+    #[test]
+    fn an_opened_link_stays_open() {
+        let unit = model("{plain: 100 ohm}", "", "");
+        let mut specimen = on(&unit, 230.0, &[]);
+        specimen.advance(600.0);
+        assert!(specimen.link_open());
+        specimen.advance(40_000.0);
+        let state = specimen.state(40_000.0);
+        assert!(state.watts == 0.0 && state.amps == 0.0 && state.link < 30.0);
+    }
+
+    #[test]
+    fn the_course_does_not_depend_on_who_looks() {
+        let unit = model(PTC, "", "");
+        let mut seldom = on(&unit, 230.0, &[]);
+        let mut often = on(&unit, 230.0, &[]);
+        for i in 0..5000 {
+            often.advance(f64::from(i) * 0.1);
+        }
+        seldom.advance(499.9);
+        assert_eq!(often.state(499.9), seldom.state(499.9));
+    }
+}
