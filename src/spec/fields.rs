@@ -92,20 +92,28 @@ impl<'a> Field<'a> {
         }
     }
 
+    /// Its name for messages: a key stands in backticks, the file does not.
+    pub(super) fn called(self) -> String {
+        match self.name {
+            whole if whole.starts_with("the ") => whole.to_owned(),
+            key => format!("`{}`", shown(key)),
+        }
+    }
+
     /// The text of a scalar.
     pub(super) fn scalar(self, example: &str) -> Option<&'a str> {
         match &self.node.kind {
             NodeKind::Scalar(text) => Some(text),
             NodeKind::Nothing => self.wrong(
-                format!("`{}` has no value", shown(self.name)),
+                format!("{} has no value", self.called()),
                 format!("write for example `{example}`"),
             ),
             NodeKind::List(_) => self.wrong(
-                format!("`{}` is a single value, not a list", shown(self.name)),
+                format!("{} is a single value, not a list", self.called()),
                 format!("write for example `{example}`"),
             ),
             NodeKind::Map(_) => self.wrong(
-                format!("`{}` is a single value, not a mapping", shown(self.name)),
+                format!("{} is a single value, not a mapping", self.called()),
                 format!("write for example `{example}`"),
             ),
         }
@@ -116,7 +124,7 @@ impl<'a> Field<'a> {
         match &self.node.kind {
             NodeKind::Map(entries) => Some(entries),
             _ => self.wrong(
-                format!("`{}` must be a mapping", shown(self.name)),
+                format!("{} must be a mapping", self.called()),
                 "write `key: value` lines, indented below it",
             ),
         }
@@ -199,7 +207,7 @@ impl<'a> Fields<'a> {
         }
         self.whole.notes.error(
             self.whole.key,
-            format!("`{}` lacks `{key}`", shown(self.whole.name)),
+            format!("{} lacks `{key}`", self.whole.called()),
             format!("add `{key}: ...` to it"),
         )
     }
@@ -232,12 +240,12 @@ impl<'a> Fields<'a> {
     /// a decoder can end early; its problems are noted either way.
     pub(super) fn finish(self) -> Option<()> {
         let asked = self.asked.borrow();
+        let left: Vec<&str> = asked.iter().copied().filter(|k| !self.has(k)).collect();
         let mut all_known = Some(());
         for entry in self.entries {
             if asked.iter().any(|known| *known == entry.key.value) {
                 continue;
             }
-            let left: Vec<&str> = asked.iter().copied().filter(|k| !self.has(k)).collect();
             let hint = match nearest(&entry.key.value, left.iter().copied()) {
                 Some(meant) => format!("did you mean `{meant}`?"),
                 None => format!("known here: {}", asked.join(", ")),

@@ -7,6 +7,7 @@ pub mod driver;
 mod fields;
 mod load;
 mod nearest;
+mod render;
 mod scalars;
 pub mod sequence;
 pub mod shipped;
@@ -17,4 +18,6 @@ mod yaml;
 
 pub use load::{Loaded, load_bench, load_driver, load_sequence, load_virtual_unit};
 pub use nearest::nearest;
+pub use render::render;
 pub use source::{Located, Place, Problem, Source, Weight};
+#[cfg(test)]

@@ -19,7 +19,12 @@ macro_rules! shipped {
 }
 
 /// Sequences to run, rehearse, copy and change.
-pub const SEQUENCES: &[Shipped] = &[shipped!("sequences/cupboard-dryer.yaml")];
+pub const SEQUENCES: &[Shipped] = &[
+    shipped!("sequences/cupboard-dryer.yaml"),
+    shipped!("sequences/fan-heater.yaml"),
+    shipped!("sequences/towel-warmer.yaml"),
+    shipped!("sequences/boot-warmer.yaml"),
+];
 
 /// Generic drivers, which bench files call by name.
 pub const DRIVERS: &[Shipped] = &[
@@ -33,7 +38,12 @@ pub const DRIVERS: &[Shipped] = &[
 pub const VIRTUAL_BENCH: Shipped = shipped!("drivers/virtual/demo-bench.yaml");
 
 /// Virtual appliances, one for each shipped sequence.
-pub const VIRTUAL_UNITS: &[Shipped] = &[shipped!("drivers/virtual/cupboard-dryer.yaml")];
+pub const VIRTUAL_UNITS: &[Shipped] = &[
+    shipped!("drivers/virtual/cupboard-dryer.yaml"),
+    shipped!("drivers/virtual/fan-heater.yaml"),
+    shipped!("drivers/virtual/towel-warmer.yaml"),
+    shipped!("drivers/virtual/boot-warmer.yaml"),
+];
 
 #[cfg(test)]
 mod tests {

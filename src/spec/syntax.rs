@@ -16,9 +16,31 @@ pub(super) fn problem(source: &Arc<Source>, error: &Error) -> Problem {
     let at = error
         .location()
         .map_or(0, |at| byte_range(&source.text, at).start);
-    let place = place_at(source, at);
     let (message, hint) = words(error);
+    let at = if message == TAB.0 {
+        tab_from(&source.text, at)
+    } else {
+        at
+    };
+    let place = place_at(source, at);
     Problem::error(&place, message).hint(hint)
+}
+
+/// The first tab at or after byte `at`: the parser points at what stood before it.
+fn tab_from(text: &str, at: usize) -> usize {
+    let rest = text.get(at..).unwrap_or("");
+    let in_indentation = rest.split_inclusive('\n').scan(at, |start, line| {
+        let blank = line.len() - line.trim_start_matches([' ', '\t']).len();
+        let tab = line[..blank].find('\t').map(|tab| *start + tab);
+        *start += line.len();
+        Some(tab)
+    });
+    let anywhere = || rest.find('\t').map(|tab| at + tab);
+    in_indentation
+        .flatten()
+        .next()
+        .or_else(anywhere)
+        .unwrap_or(at)
 }
 
 /// A tag, wherever it stands.
@@ -73,7 +95,7 @@ const DOCUMENTS: (&str, &str) = (
 
 const QUOTES: (&str, &str) = (
     "a colon where none can stand",
-    "put text that holds `: ` into quotes, and check the indentation of this line",
+    "put text that holds `: ` into quotes; check the indentation here and the brackets above",
 );
 
 fn owned((message, hint): (&str, &str)) -> Words {

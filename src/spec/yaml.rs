@@ -163,14 +163,17 @@ fn start_of(source: &Arc<Source>) -> Place {
     }
 }
 
-/// The place of the word that begins at byte `at`, at least one character long
-/// where there is one.
+/// The place of the word that begins at byte `at`: at least one character long
+/// where there is one, and at most 20.
 pub(super) fn place_at(source: &Arc<Source>, at: usize) -> Place {
     let start = boundary_below(&source.text, at);
     let rest = &source.text[start..];
-    let word = rest
-        .find(|c: char| c.is_whitespace() || is_binary(c))
-        .unwrap_or(rest.len());
+    let word: usize = rest
+        .chars()
+        .take(20)
+        .take_while(|c| !c.is_whitespace() && !is_binary(*c))
+        .map(char::len_utf8)
+        .sum();
     let first = match rest.chars().next() {
         Some('\n') | None => 0,
         Some(c) => c.len_utf8(),
@@ -360,21 +363,32 @@ impl Planter<'_> {
         }
     }
 
-    /// Tags (`!!int "5"`) change what a value is: there are none here.
+    /// Tags (`!!int "5"`) change what a value is: there are none here. The parser
+    /// gives a tagged value's own range, so the word before it is looked at; a tag
+    /// longer than [`LONGEST_TAG`] is found by the parser itself.
     fn refuse_tag(&self, range: &Range<usize>) -> Result<(), Problem> {
         let text = &self.source.text;
-        let before = &text[..range.start];
-        let line = before.rsplit('\n').next().unwrap_or("");
-        let tag = line
-            .split_whitespace()
-            .next_back()
-            .filter(|word| word.starts_with('!'));
-        let own = text[range.start..].starts_with('!').then_some(range.start);
-        let at = match (own, tag) {
-            (Some(at), _) => at,
-            (None, Some(word)) => range.start - (line.len() - line.rfind(word).unwrap_or(0)),
-            (None, None) => return Ok(()),
-        };
-        Err(syntax::tag(&place_at(self.source, at)))
+        if text[range.start..].starts_with('!') {
+            return Err(syntax::tag(&place_at(self.source, range.start)));
+        }
+        let before = text[..range.start].trim_end_matches([' ', '\t']);
+        let near = &before[boundary_below(before, before.len().saturating_sub(LONGEST_TAG))..];
+        let word = near.rsplit(is_gap).next().unwrap_or("");
+        if word.starts_with('!') {
+            return Err(syntax::tag(&place_at(
+                self.source,
+                before.len() - word.len(),
+            )));
+        }
+        Ok(())
     }
+}
+
+/// How far back a tag is looked for; without a bound, one long line costs its
+/// length times its number of values.
+const LONGEST_TAG: usize = 60;
+
+/// What stands between a tag and what comes before it.
+fn is_gap(c: char) -> bool {
+    c.is_whitespace() || matches!(c, '[' | '{' | ',')
 }

@@ -46,6 +46,9 @@ pub(super) fn step<'a>(each: EachAllowed) -> impl Fn(Field<'a>) -> Option<Step> 
         if let NodeKind::Scalar(word) = &field.node.kind {
             return bare(field, word);
         }
+        if field.node.kind == NodeKind::Nothing {
+            return field.wrong("a step without a verb", "take its dash out");
+        }
         let NodeKind::Map(entries) = &field.node.kind else {
             return field.wrong(
                 "a step must be a verb, or `verb: ...`",
@@ -141,17 +144,20 @@ fn question(field: Field<'_>) -> Option<Question> {
     let answer = fields.required("answer", answer);
     let finding = fields.optional("finding", finding);
     fields.finish()?;
-    let (text, answer, finding) = (text?, answer?, finding?);
-    if let Some(finding) = &finding {
-        possible(field, &answer, &finding.when)?;
+    if let (Some(answer), Some(Some((Some(when), _)))) = (&answer, &finding) {
+        possible(field, answer, when)?;
     }
-    Some(Question {
-        text,
-        answer,
-        finding: finding.map(|finding| QuestionFinding {
-            when: finding.when.value,
-            class: finding.class,
+    let finding = match finding? {
+        Some((when, class)) => Some(QuestionFinding {
+            when: when?.value,
+            class: class?,
         }),
+        None => None,
+    };
+    Some(Question {
+        text: text?,
+        answer: answer?,
+        finding,
     })
 }
 
@@ -214,26 +220,22 @@ fn number_answer(
     })
 }
 
-struct FindingWritten {
-    when: Located<String>,
-    class: FindingClass,
-}
-
 const CLASSES: &[(&str, FindingClass)] = &[
     ("minor", FindingClass::Minor),
     ("major", FindingClass::Major),
     ("critical", FindingClass::Critical),
 ];
 
+/// The answer that is a finding, and its class; each for itself, so that the first
+/// can be looked at when the second is wrong.
+type FindingWritten = (Option<Located<String>>, Option<FindingClass>);
+
 fn finding(field: Field<'_>) -> Option<FindingWritten> {
     let fields = field.fields()?;
     let when = fields.required("if", located_name);
     let class = fields.required("class", choice(CLASSES));
     fields.finish()?;
-    Some(FindingWritten {
-        when: when?,
-        class: class?,
-    })
+    Some((when, class))
 }
 
 /// Whether the answer that is a finding can be given at all.
