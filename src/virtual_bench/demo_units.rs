@@ -1,0 +1,158 @@
+//! The shipped virtual units: a good specimen settles where its plate says.
+
+use std::fmt::Write;
+
+use super::tests::staging_of;
+use super::*;
+use crate::spec::shipped::VIRTUAL_UNITS;
+use crate::spec::virtual_unit::Resistance;
+use crate::spec::{load_virtual_unit, virtual_unit::VirtualUnit};
+
+/// One cell run from cold: energised for 40 minutes, then off for 90.
+#[derive(Debug, Clone, Copy)]
+struct Course {
+    peak: f64,
+    peak_at: f64,
+    power: f64,
+    current: f64,
+    /// Input and body at 30 minutes, against 40.
+    power_at_30: f64,
+    body_at_30: f64,
+    body: f64,
+    hottest: f64,
+    enclosure: f64,
+    /// Thermostat periods, s.
+    period: f64,
+    /// Seconds from OFF until the body is within 1 K of the room.
+    cooled: f64,
+    link_open: bool,
+}
+
+fn course(unit: &VirtualUnit, position: &str, condition: &str, seed: u64) -> Course {
+    let mut staging = staging_of(unit.clone());
+    staging.seed = seed;
+    let bench = VirtualBench::new(staging).unwrap();
+    let second = |s: f64| Moment::from_micros((s * 1e6) as u64);
+    let hands = bench.hands();
+    assert!(hands.turn(position, Moment::START));
+    assert!(hands.set_condition(condition, Moment::START));
+    energise(&bench, Moment::START, true);
+    let mut c = Course {
+        peak: 0.0,
+        peak_at: 0.0,
+        power: 0.0,
+        current: 0.0,
+        power_at_30: 0.0,
+        body_at_30: 0.0,
+        body: 0.0,
+        hottest: 0.0,
+        enclosure: 0.0,
+        period: 0.0,
+        cooled: f64::INFINITY,
+        link_open: false,
+    };
+    let mut switched_in = Vec::new();
+    let mut before = 0.0;
+    for tick in 1..=24_000 {
+        let t = f64::from(tick) * 0.1;
+        let truth = bench.truth(second(t));
+        let watts = truth.power.get();
+        if watts > c.peak {
+            (c.peak, c.peak_at) = (watts, t);
+        }
+        if before == 0.0 && watts > 0.0 {
+            switched_in.push(t);
+        }
+        before = watts;
+        c.hottest = c.hottest.max(truth.link.get());
+        if watts > 0.0 {
+            (c.power, c.current) = (watts, truth.current.get());
+        }
+        if tick == 18_000 {
+            (c.power_at_30, c.body_at_30) = (c.power, truth.link.get());
+        }
+        (c.body, c.enclosure) = (truth.link.get(), truth.enclosure.get());
+    }
+    if let [.., a, b] = switched_in[..] {
+        c.period = b - a;
+    }
+    energise(&bench, second(2400.0), false);
+    for s in 1..5400 {
+        let truth = bench.truth(second(2400.0 + f64::from(s)));
+        c.hottest = c.hottest.max(truth.link.get());
+        if (truth.link - truth.ambient).get() < 1.0 {
+            c.cooled = f64::from(s);
+            break;
+        }
+    }
+    c.link_open = bench.truth(Moment::START).link_open;
+    c
+}
+
+fn energise(bench: &VirtualBench, now: Moment, on: bool) {
+    let mut supply = bench.far_side("supply line");
+    let text: &[u8] = if on {
+        b"SOUR:VOLT 230\nOUTP ON\n"
+    } else {
+        b"OUTP OFF\n"
+    };
+    supply.receive(text, now);
+    assert_eq!(bench.output_is_on(), on);
+}
+
+fn units() -> Vec<VirtualUnit> {
+    VIRTUAL_UNITS
+        .iter()
+        .map(|s| load_virtual_unit(s.path, s.text.as_bytes()).value.unwrap())
+        .collect()
+}
+
+fn every_cell(unit: &VirtualUnit) -> Vec<(String, String)> {
+    let mut cells = Vec::new();
+    for condition in &unit.conditions {
+        for position in &unit.positions {
+            cells.push((condition.name.value.clone(), position.name.value.clone()));
+        }
+    }
+    cells
+}
+
+#[test]
+fn shipped_units_settle_and_cool_in_a_working_hour() {
+    let mut table = String::new();
+    for unit in units() {
+        for (condition, position) in every_cell(&unit) {
+            let c = course(&unit, &position, &condition, 1);
+            let name = format!("{} / {condition} / {position}", unit.model.value);
+            writeln!(
+                table,
+                "{name:45} {:8.2} W {:7.4} A peak x{:5.2} at {:5.1} s, body {:6.2} hottest {:6.2} enclosure {:5.2} degC, period {:4.0} s, cooled {:5.0} s",
+                c.power, c.current, c.peak / c.power, c.peak_at, c.body, c.hottest, c.enclosure, c.period, c.cooled
+            )
+            .unwrap();
+            assert!(!c.link_open, "{name}: the link opened");
+            assert!(c.cooled < 5400.0, "{name}: not cool after 90 min");
+            assert!(
+                (c.power_at_30 / c.power - 1.0).abs() < 0.005,
+                "{name}: {c:?}"
+            );
+            if unit.thermostat.is_none() {
+                assert!((c.body_at_30 - c.body).abs() < 0.25, "{name}: {c:?}");
+            } else {
+                assert!((180.0..480.0).contains(&c.period), "{name}: {c:?}");
+            }
+            let ptc = unit
+                .elements
+                .iter()
+                .any(|e| matches!(e.resistance, Resistance::Ptc { .. }));
+            let peak = match (ptc, unit.fan.is_some()) {
+                (false, _) => 0.99..1.01,
+                (true, true) => 1.5..3.0,
+                (true, false) => 2.0..10.0,
+            };
+            assert!(peak.contains(&(c.peak / c.power)), "{name}: {c:?}");
+            assert!(!ptc || c.peak_at > 1.0, "{name}: the peak comes at once");
+        }
+    }
+    crate::virtual_bench::tests::show(&table);
+}
