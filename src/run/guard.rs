@@ -38,14 +38,20 @@ struct On {
 impl Watchman {
     /// Guards of a plan, not energised.
     pub fn new(plan: &Plan) -> Self {
-        let roles = &plan.bay.roles;
+        let roles: Vec<(&str, RoleKind)> =
+            plan.bay.roles.iter().map(|role| (role.name.as_str(), role.kind)).collect();
+        Self::watching(plan.guards.clone(), &roles)
+    }
+
+    fn watching(guards: Guards, roles: &[(&str, RoleKind)]) -> Self {
+        let called = |wanted: &str| roles.iter().position(|(name, _)| *name == wanted);
         Self {
-            guards: plan.guards.clone(),
-            kinds: roles.iter().map(|role| role.kind).collect(),
-            names: roles.iter().map(|role| role.name.clone()).collect(),
-            body_role: plan.role("body").map(|(n, _)| n),
-            ambient_role: plan.role("ambient").map(|(n, _)| n),
-            body_limit: plan.guards.body,
+            body_limit: guards.body,
+            guards,
+            kinds: roles.iter().map(|(_, kind)| *kind).collect(),
+            names: roles.iter().map(|(name, _)| (*name).to_owned()).collect(),
+            body_role: called("body"),
+            ambient_role: called("ambient"),
             on: None,
             heard: vec![Moment::START; roles.len()],
             every: vec![None; roles.len()],
@@ -189,5 +195,137 @@ impl Watchman {
             "the body has not risen by {} within {} although power is drawn: the sensor can't be believed",
             self.guards.least_rise, self.guards.rise_within
         )))
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::quantity::{Amps, Kelvins, Watts};
+
+    const METER: usize = 0;
+    const BODY: usize = 1;
+    const AMBIENT: usize = 2;
+
+    fn at(s: f64) -> Moment {
+        Moment::START + Seconds::of(s)
+    }
+
+    /// Energised at 10 s, polled each second.
+    fn energised() -> Watchman {
+        let guards = Guards {
+            body: Some(Celsius::of(111.0)),
+            current: Amps::of(10.0),
+            input_after: Seconds::of(60.0),
+            input: vec![Watts::of(14.04)],
+            silence: vec![Seconds::of(2.0); 3],
+            least_rise: Kelvins::of(10.0),
+            rise_within: Seconds::of(300.0),
+        };
+        let roles = [
+            ("meter", RoleKind::PowerMeter),
+            ("body", RoleKind::Temperature),
+            ("ambient", RoleKind::Temperature),
+        ];
+        let mut watchman = Watchman::watching(guards, &roles);
+        watchman.polling(at(9.0), &[Some(Seconds::of(1.0)); 3]);
+        degrees(&mut watchman, 9.5, BODY, 23.0).unwrap();
+        degrees(&mut watchman, 9.5, AMBIENT, 23.0).unwrap();
+        watchman.energised(at(10.0), Some(0));
+        watchman
+    }
+
+    fn degrees(watchman: &mut Watchman, s: f64, role: usize, value: f64) -> Result<(), Trip> {
+        watchman.sample(at(s), role, Status::Ok, &Readings::one(Reading::Temperature, value))
+    }
+
+    fn drawn(watchman: &mut Watchman, s: f64, current: f64, power: f64) -> Result<(), Trip> {
+        let mut readings = Readings::one(Reading::Current, current);
+        readings.set(Reading::Power, power);
+        watchman.sample(at(s), METER, Status::Ok, &readings)
+    }
+
+    #[test]
+    fn a_body_at_its_limit_trips_and_just_below_does_not() {
+        assert!(degrees(&mut energised(), 20.0, BODY, 110.999).is_ok());
+        assert!(degrees(&mut energised(), 20.0, BODY, 111.0).is_err());
+        let trip = degrees(&mut energised(), 20.0, BODY, 120.0).unwrap_err();
+        assert!(trip.0.contains("120 °C") && trip.0.contains("111 °C"), "{trip:?}");
+    }
+
+    #[test]
+    fn a_hot_ambient_or_a_hot_body_while_off_is_no_trip() {
+        assert!(degrees(&mut energised(), 20.0, AMBIENT, 200.0).is_ok());
+        let mut resting = energised();
+        resting.off();
+        assert!(degrees(&mut resting, 20.0, BODY, 200.0).is_ok());
+    }
+
+    #[test]
+    fn current_above_the_bays_rating_trips_at_any_time() {
+        assert!(drawn(&mut energised(), 10.1, 10.0, 9.0).is_ok());
+        assert!(drawn(&mut energised(), 10.1, 10.001, 9.0).is_err());
+    }
+
+    #[test]
+    fn input_is_guarded_only_after_the_stated_inrush_time() {
+        assert!(drawn(&mut energised(), 69.9, 0.1, 25.0).is_ok());
+        assert!(drawn(&mut energised(), 70.0, 0.1, 14.04).is_ok());
+        assert!(drawn(&mut energised(), 70.0, 0.1, 14.05).is_err());
+    }
+
+    #[test]
+    fn silence_beyond_interval_and_limit_trips_and_names_the_role() {
+        let mut watchman = energised();
+        drawn(&mut watchman, 20.0, 0.1, 9.0).unwrap();
+        degrees(&mut watchman, 20.0, AMBIENT, 23.0).unwrap();
+        degrees(&mut watchman, 18.0, BODY, 40.0).unwrap();
+        assert!(watchman.tick(at(21.0)).is_ok());
+        let trip = watchman.tick(at(21.1)).unwrap_err();
+        assert!(trip.0.contains("`body`"), "{trip:?}");
+    }
+
+    #[test]
+    fn a_sentinel_keeps_a_meter_heard_but_not_a_temperature() {
+        let mut watchman = energised();
+        for (role, status) in [(METER, Status::Overload), (AMBIENT, Status::Ok), (BODY, Status::Overload)] {
+            watchman.sample(at(20.0), role, status, &Readings::NONE).unwrap();
+        }
+        let trip = watchman.tick(at(20.0)).unwrap_err();
+        assert!(trip.0.contains("`body`"), "{trip:?}");
+        assert!(watchman.heard[METER] == at(20.0));
+    }
+
+    fn keep_heard(watchman: &mut Watchman, s: f64, power: f64, body: f64) {
+        drawn(watchman, s, 0.1, power).unwrap();
+        degrees(watchman, s, BODY, body).unwrap();
+        degrees(watchman, s, AMBIENT, 23.0).unwrap();
+    }
+
+    #[test]
+    fn a_body_that_does_not_rise_is_not_believed_where_power_is_drawn() {
+        let mut fallen_off = energised();
+        keep_heard(&mut fallen_off, 310.0, 9.0, 25.0);
+        assert!(fallen_off.tick(at(310.0)).is_ok());
+        keep_heard(&mut fallen_off, 310.5, 9.0, 25.0);
+        assert!(fallen_off.tick(at(310.5)).is_err());
+        let mut dead = energised();
+        keep_heard(&mut dead, 311.0, 0.2, 23.0);
+        assert!(dead.tick(at(311.0)).is_ok(), "a dead unit is no sensor's fault");
+        let mut good = energised();
+        keep_heard(&mut good, 200.0, 9.0, 33.0);
+        keep_heard(&mut good, 311.0, 9.0, 30.0);
+        assert!(good.tick(at(311.0)).is_ok());
+    }
+
+    #[test]
+    fn an_abnormal_step_has_its_own_trip_until_the_unit_is_off() {
+        let mut watchman = energised();
+        watchman.body_limit(Celsius::of(140.0));
+        assert!(degrees(&mut watchman, 20.0, BODY, 130.0).is_ok());
+        assert!(degrees(&mut watchman, 20.0, BODY, 140.0).is_err());
+        watchman.off();
+        watchman.energised(at(30.0), Some(0));
+        assert!(degrees(&mut watchman, 31.0, BODY, 130.0).is_err());
     }
 }
