@@ -212,7 +212,8 @@ impl<'a> Fields<'a> {
         )
     }
 
-    fn misspelt(&self, key: &str) -> Option<&'a Entry> {
+    /// An unknown key that was probably meant to be this one.
+    pub(super) fn misspelt(&self, key: &str) -> Option<&'a Entry> {
         self.entries.iter().find(|entry| {
             entry.key.value != key && nearest(&entry.key.value, [key]).is_some() && {
                 let asked = self.asked.borrow();

@@ -64,3 +64,136 @@ fn load<T>(
         problems,
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use proptest::prelude::*;
+
+    use crate::spec::shipped::{DRIVERS, SEQUENCES, Shipped, VIRTUAL_BENCH, VIRTUAL_UNITS};
+    use crate::spec::wrong_files::Kind;
+    use crate::spec::{Problem, Weight, render};
+
+    /// What holds of every outcome, whatever the bytes.
+    fn sound(bytes: &[u8]) {
+        for kind in [
+            Kind::Sequence,
+            Kind::Bench,
+            Kind::Driver("power-meter"),
+            Kind::VirtualUnit,
+        ] {
+            let (value, problems) = kind.load(bytes);
+            let failed = problems.iter().any(|p| p.weight == Weight::Error);
+            assert_eq!(value, !failed, "{problems:?}");
+            problems.iter().for_each(in_place);
+            render(&problems);
+        }
+    }
+
+    fn in_place(problem: &Problem) {
+        let (text, bytes) = (&problem.place.source.text, &problem.place.bytes);
+        assert!(text.get(bytes.clone()).is_some(), "{problem:?}");
+        assert!(!problem.message.contains(char::is_control), "{problem:?}");
+        assert!(problem.hint.is_some(), "{problem:?}");
+    }
+
+    fn all_shipped() -> Vec<Shipped> {
+        let mut all = vec![VIRTUAL_BENCH];
+        for some in [SEQUENCES, DRIVERS, VIRTUAL_UNITS] {
+            all.extend_from_slice(some);
+        }
+        all
+    }
+
+    /// Pieces that mean something in YAML or to the decoders.
+    const PIECES: &[&str] = &[
+        "\t",
+        "\n",
+        "\n\n",
+        " ",
+        "  ",
+        ":",
+        ": ",
+        "- ",
+        "-",
+        "{",
+        "}",
+        "[",
+        "]",
+        ",",
+        "\"",
+        "'",
+        "#",
+        " #",
+        "&a ",
+        "*a",
+        "!",
+        "!!str ",
+        "|",
+        ">",
+        "---\n",
+        "...\n",
+        "%",
+        "@",
+        "~",
+        "null",
+        "?",
+        "? ",
+        "<<: ",
+        "0",
+        "-",
+        ".nan",
+        ".inf",
+        "1e999",
+        " to ",
+        " V",
+        " W",
+        " °C",
+        "%",
+        "ü",
+        "\u{FEFF}",
+        "\u{0}",
+        "\u{1b}",
+        "\r\n",
+        "{value}",
+        "{channel}",
+        "each: ",
+        "\u{2028}",
+    ];
+
+    proptest! {
+        #![proptest_config(ProptestConfig::with_cases(192))]
+
+        #[test]
+        fn random_bytes_never_panic(bytes in proptest::collection::vec(any::<u8>(), 0..400)) {
+            sound(&bytes);
+        }
+
+        #[test]
+        fn random_pieces_never_panic(picks in proptest::collection::vec(0..PIECES.len(), 0..60)) {
+            let text: String = picks.into_iter().map(|i| PIECES[i]).collect();
+            sound(text.as_bytes());
+        }
+
+        #[test]
+        fn random_changes_of_shipped_files_never_panic(
+            file in 0..13_usize,
+            changes in proptest::collection::vec((any::<u16>(), 0..12_usize, 0..PIECES.len()), 1..6),
+        ) {
+            let files = all_shipped();
+            let mut bytes = files[file % files.len()].text.as_bytes().to_vec();
+            for (at, removed, piece) in changes {
+                let start = usize::from(at) % (bytes.len() + 1);
+                let end = (start + removed).min(bytes.len());
+                bytes.splice(start..end, PIECES[piece].bytes());
+            }
+            sound(&bytes);
+        }
+
+        #[test]
+        fn a_shipped_file_cut_anywhere_never_panics(file in 0..13_usize, at in any::<u16>()) {
+            let files = all_shipped();
+            let bytes = files[file % files.len()].text.as_bytes();
+            sound(&bytes[..usize::from(at) % (bytes.len() + 1)]);
+        }
+    }
+}

@@ -14,10 +14,11 @@ pub mod shipped;
 mod source;
 mod syntax;
 pub mod virtual_unit;
+#[cfg(test)]
+mod wrong_files;
 mod yaml;
 
 pub use load::{Loaded, load_bench, load_driver, load_sequence, load_virtual_unit};
 pub use nearest::nearest;
 pub use render::render;
 pub use source::{Located, Place, Problem, Source, Weight};
-#[cfg(test)]

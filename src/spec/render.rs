@@ -145,3 +145,108 @@ impl Excerpt {
         text
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::spec::wrong_files::Kind;
+    use crate::spec::{load_driver, load_sequence};
+
+    #[test]
+    fn file_line_column_caret_and_hint_are_there() {
+        let text = Kind::Sequence.changed(&[("power: 9 W", "power: 9 V")]);
+        let problems = load_sequence("a/dryer.yaml", text.as_bytes()).problems;
+        // The left edge is cut, for the place stands far to the right.
+        let wanted = [
+            "error: `9 V` is a voltage, not a power",
+            "  --> a/dryer.yaml:13:74",
+            "   |",
+            "  ::: ",
+            "13 | ... on: high, voltage: 220 V to 240 V, frequency: 50 Hz, power: 9 V}",
+            "   |                                                                 ^^^",
+            "   |",
+            "   = help: write for example `9 W`",
+        ];
+        let shown = render(&problems);
+        let lines: Vec<&str> = shown.trim_end().lines().collect();
+        assert_eq!(lines, wanted);
+    }
+
+    /// The text above the carets.
+    fn caret_text(shown: &str) -> String {
+        let lines: Vec<&str> = shown.lines().collect();
+        let at = lines.iter().position(|l| l.contains('^')).expect("a caret");
+        let carets = lines[at];
+        let start = carets.chars().position(|c| c == '^').expect("a caret");
+        let count = carets.matches('^').count();
+        lines[at - 1].chars().skip(start).take(count).collect()
+    }
+
+    #[test]
+    fn errors_and_warnings_stand_one_below_the_other() {
+        let text = Kind::Driver("power-meter").changed(&[
+            ("gives: [voltage,", "gives: [voltage, frequency,"),
+            ("tries: 3", "tries: 99"),
+        ]);
+        let shown = render(&load_driver("meter.yaml", text.as_bytes()).problems);
+        assert!(
+            shown.contains("warning: the accuracy of `frequency`"),
+            "{shown}"
+        );
+        assert!(shown.contains("error: `tries` must be"), "{shown}");
+        assert!(shown.contains("meter.yaml:4:84"), "{shown}");
+    }
+
+    #[test]
+    fn wide_and_foreign_characters_keep_the_caret_in_place() {
+        let text =
+            Kind::Sequence.changed(&[("4.5 W}", "4.5 W, position: \"größe °C\", elemnt: x}")]);
+        let shown = render(&load_sequence("file", text.as_bytes()).problems);
+        assert!(shown.contains("stands twice"), "{shown}");
+        let text = Kind::Sequence.changed(&[("{position: low, ", "{position: größe, elemnt: x, ")]);
+        let shown = render(&load_sequence("file", text.as_bytes()).problems);
+        assert_eq!(caret_text(&shown), "elemnt", "{shown}");
+    }
+
+    #[test]
+    fn a_megabyte_on_one_line_is_cut_to_a_window() {
+        let text = format!("{{{}}}", "k: 1, ".repeat(170_000));
+        let shown = render(&load_sequence("file", text.as_bytes()).problems);
+        assert!(shown.len() < 2_000, "{}", shown.len());
+
+        let keys: String = (0..10_000).map(|i| format!("k{i}: 1, ")).collect();
+        let before = std::time::Instant::now();
+        let problems = load_sequence("file", format!("{{{keys}}}").as_bytes()).problems;
+        let shown = render(&problems);
+        assert!(problems.len() > 10_000);
+        assert!(
+            shown.contains("more problems"),
+            "{}",
+            &shown[shown.len() - 200..]
+        );
+        assert!(shown.lines().all(|line| line.chars().count() < 240));
+        assert!(before.elapsed().as_secs() < 5);
+    }
+
+    #[test]
+    fn nothing_in_a_file_steers_the_terminal() {
+        let name = "a\u{1b}[2Jb\n.yaml";
+        for text in [
+            "sequence: \"x\u{9b}31m\"\n\u{202E}edition: 1\n",
+            "a\u{1b}[31m: 1\n",
+            "se\u{200B}quence: \u{7}\n",
+            "sequence: [\"\\e[31m\"]\nkind: \"\\a\"\n",
+        ] {
+            let shown = render(&load_sequence(name, text.as_bytes()).problems);
+            let steers = |c: char| (c.is_control() && c != '\n') || c == '\u{202E}';
+            assert!(!shown.contains(steers), "{shown:?}");
+            assert!(shown.contains("a\\u{1b}[2Jb"), "{shown}");
+        }
+    }
+
+    #[test]
+    fn an_empty_file_has_no_line_to_show() {
+        let shown = render(&load_sequence("empty.yaml", b"").problems);
+        assert!(shown.contains("empty.yaml:1:1"), "{shown}");
+    }
+}

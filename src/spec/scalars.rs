@@ -111,7 +111,7 @@ pub(super) fn command<'a>(
             );
         }
         let found = placeholders_in(command);
-        for unknown in found.iter().filter(|p| !placeholders.contains(p)) {
+        if let Some(unknown) = found.iter().find(|p| !placeholders.contains(p)) {
             return field.wrong(
                 format!("`{{{}}}` has no meaning here", shown(unknown)),
                 match placeholders {
@@ -120,7 +120,7 @@ pub(super) fn command<'a>(
                 },
             );
         }
-        for wanted in placeholders.iter().filter(|p| !found.contains(p)) {
+        if let Some(wanted) = placeholders.iter().find(|p| !found.contains(p)) {
             return field.wrong(
                 format!("`{}` lacks `{{{wanted}}}`", shown(field.name)),
                 format!("put `{{{wanted}}}` where the {wanted} goes"),
@@ -275,13 +275,10 @@ pub(super) fn span<'a, Q: Quantity + Copy + PartialOrd>(
             }
             return Some(Span { low, high });
         }
-        if text.chars().skip(1).any(|c| matches!(c, '-' | '–' | '…'))
-            && parse_written(text).is_err()
-        {
-            let example = Q::DIMENSION.example();
+        if let Some(both_ends) = dashed(text) {
             return field.wrong(
                 format!("`{}` can't be read as a range", shown(text)),
-                format!("write both ends with their unit: `{example} to {example}`"),
+                format!("write `{}`", shown(&both_ends)),
             );
         }
         let value = of_text(field, text, allowed)?;
@@ -290,6 +287,16 @@ pub(super) fn span<'a, Q: Quantity + Copy + PartialOrd>(
             high: value,
         })
     }
+}
+
+/// `220-240 V` as it should be written.
+fn dashed(text: &str) -> Option<String> {
+    let (low, high) = text.split_once(['-', '–'])?;
+    let unit = high.trim_start_matches(|c: char| c.is_ascii_digit() || c == '.');
+    let low = low.trim().trim_end_matches(unit.trim()).trim();
+    let (low, high) = (format!("{low} {}", unit.trim()), high.trim());
+    let both = parse_written(&low).is_ok() && parse_written(high).is_ok();
+    both.then(|| format!("{low} to {high}"))
 }
 
 /// A duration: above zero and below a month.
@@ -403,6 +410,10 @@ fn hint_of(error: &ParseQuantityError, text: &str, dimension: Dimension) -> Stri
     let example = dimension.example();
     let unit = example.split_once(' ').map_or("", |(_, unit)| unit);
     match error {
+        ParseQuantityError::NoUnit { .. } if dimension == Dimension::Time => {
+            let text = shown(text);
+            format!("write `{text} ms`, `{text} s` or `{text} min`")
+        }
         ParseQuantityError::NoUnit { .. } => format!("write `{} {unit}`", shown(text)),
         _ => format!("write for example `{example}`"),
     }

@@ -26,8 +26,11 @@ pub(super) fn problem(source: &Arc<Source>, error: &Error) -> Problem {
     Problem::error(&place, message).hint(hint)
 }
 
-/// The first tab at or after byte `at`: the parser points at what stood before it.
+/// The first tab from the line of byte `at` on, one in an indentation before
+/// others: the parser points at what stands before the tab, or behind it.
 fn tab_from(text: &str, at: usize) -> usize {
+    let before = text.get(..at).unwrap_or("");
+    let at = before.rfind('\n').map_or(0, |end| end + 1);
     let rest = text.get(at..).unwrap_or("");
     let in_indentation = rest.split_inclusive('\n').scan(at, |start, line| {
         let blank = line.len() - line.trim_start_matches([' ', '\t']).len();

@@ -85,7 +85,7 @@ fn strictness() -> Options {
         budget: budget,
         duplicate_keys: DuplicateKeyPolicy::Error,
         merge_keys: MergeKeyPolicy::Error,
-        non_finite_float_policy: NonFiniteFloatPolicy::AsString,
+        non_finite_float_policy: NonFiniteFloatPolicy::PassThrough,
         strict_booleans: true,
         leading_zero_numbers_as_strings: true,
         underscored_numbers_as_strings: true,
@@ -391,4 +391,189 @@ const LONGEST_TAG: usize = 60;
 /// What stands between a tag and what comes before it.
 fn is_gap(c: char) -> bool {
     c.is_whitespace() || matches!(c, '[' | '{' | ',')
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn root(text: &str) -> Node {
+        read("file", text.as_bytes()).unwrap_or_else(|problem| panic!("{problem:?}"))
+    }
+
+    fn value(text: &str) -> String {
+        match &root(&format!("key: {text}\n")).kind {
+            NodeKind::Map(entries) => match &entries[0].value.kind {
+                NodeKind::Scalar(scalar) => scalar.clone(),
+                other => panic!("{other:?}"),
+            },
+            other => panic!("{other:?}"),
+        }
+    }
+
+    #[test]
+    fn scalars_stay_as_they_were_written() {
+        for text in [
+            "010",
+            "1_000",
+            "0x1F",
+            "0o17",
+            "1e3",
+            "1.10",
+            "no",
+            "yes",
+            "true",
+            "on",
+            "null x",
+            ".nan",
+            "-.inf",
+            "1e999",
+            "230 V",
+            "12:30:45",
+            "2030-12-31",
+            "+5",
+            "-0",
+        ] {
+            assert_eq!(value(text), text);
+        }
+        assert_eq!(value("\"1.10\""), "1.10");
+        assert_eq!(value("'it''s'"), "it's");
+        assert_eq!(value("\"a\\u00B0C\" # remark"), "a°C");
+        assert_eq!(value("5   # remark"), "5");
+        assert_eq!(value("|\n  one\n  two"), "one\ntwo\n");
+    }
+
+    #[test]
+    fn places_are_exact_after_other_alphabets_and_a_byte_order_mark() {
+        let text = "\u{FEFF}größe: {a: 5 °C, b: [x, ü]}\nnext:\n  - c: 1\n    d: 2\n";
+        let node = root(text);
+        let NodeKind::Map(entries) = &node.kind else {
+            panic!("{node:?}");
+        };
+        assert_eq!(entries[0].key.place.text(), "größe");
+        assert_eq!(entries[0].value.place.text(), "{a: 5 °C, b: [x, ü]}");
+        let NodeKind::Map(inner) = &entries[0].value.kind else {
+            panic!("{node:?}");
+        };
+        assert_eq!(inner[0].value.place.text(), "5 °C");
+        assert_eq!(inner[1].value.place.text(), "[x, ü]");
+        assert_eq!(inner[1].key.place.line_column(), (1, 18));
+        let NodeKind::List(items) = &entries[1].value.kind else {
+            panic!("{node:?}");
+        };
+        assert_eq!(items[0].place.text(), "c");
+        assert_eq!(items[0].place.line_column(), (3, 5));
+    }
+
+    /// Text, `line:column`, part of the message, part of the hint.
+    const BROKEN: &[(&str, &str, &str, &str)] = &[
+        ("", "1:1", "empty", "copy"),
+        (" \n\n", "1:1", "empty", "copy"),
+        ("# only a remark\n", "1:1", "empty", "copy"),
+        ("~\n", "1:1", "empty", "copy"),
+        ("a:\n\tb: 1\n", "2:1", "tab", "blanks"),
+        ("a:\n  b: 1\n \tc: 2\n", "3:2", "tab", "blanks"),
+        (
+            "a: 1\nb: 2\na: 3\n",
+            "3:1",
+            "`a` stands twice",
+            "one of the two",
+        ),
+        (
+            "x: {k: 1, k: 2}\n",
+            "1:11",
+            "`k` stands twice",
+            "one of the two",
+        ),
+        ("a: &x 1\n", "1:7", "anchors", "write the value out"),
+        ("a: *x\n", "1:4", "anchors", "write the value out"),
+        (
+            "a: {b: 1}\n<<: {c: 1}\n",
+            "2:1",
+            "merge key",
+            "write the keys out",
+        ),
+        ("a: !!int \"5\"\n", "1:4", "tag", "quotes"),
+        ("a: !!str 5\n", "1:4", "tag", "quotes"),
+        ("a: [!!str 5]\n", "1:5", "tag", "quotes"),
+        ("!!str a: 5\n", "1:1", "tag", "quotes"),
+        (
+            "a: 1\n---\nb: 2\n",
+            "2:1",
+            "second document",
+            "leave `---` out",
+        ),
+        ("a: \"open\nb: 1\n", "1:4", "never closed", "close it"),
+        ("a: [1, 2}\n", "1:4", "does not close", "`]`"),
+        ("a: {b: 1\n", "1:4", "never closed", "`}`"),
+        ("a: ]\n", "1:4", "closing bracket", "leave it out"),
+        ("a: b: c\n", "1:5", "colon", "quotes"),
+        ("a: @b\n", "1:4", "begin with `@`", "quotes"),
+        ("a: \"b\" c\n", "1:8", "follows a closing quote", "one pair"),
+        ("a: \"\\q\"\n", "1:4", "backslash", "single quotes"),
+        ("[a, b]: c\n", "1:1", "plain word", "key: value"),
+        ("a: b\nc\n", "2:1", "without its colon", "key: value"),
+    ];
+
+    #[test]
+    fn an_error_of_syntax_is_one_problem_with_place_and_hint() {
+        let mut missed = Vec::new();
+        for (text, at, says, hint) in BROKEN {
+            let problem = read("file", text.as_bytes()).expect_err(text);
+            let (line, column) = problem.place.line_column();
+            let good = format!("{line}:{column}") == *at
+                && problem.message.contains(says)
+                && problem.hint.as_deref().unwrap_or("").contains(hint);
+            if !good {
+                missed.push((text, problem));
+            }
+        }
+        assert!(missed.is_empty(), "{missed:#?}");
+    }
+
+    #[test]
+    fn bombs_are_refused_at_once() {
+        let aliases: String = (1..=9).fold("a0: &a0 [x, x]\n".to_owned(), |text, i| {
+            let before = i - 1;
+            text + &format!("a{i}: &a{i} [*a{before}, *a{before}]\n")
+        });
+        let blocks: String = (0..1_000).map(|i| " ".repeat(i) + "a:\n").collect();
+        for (text, says) in [
+            (aliases, "anchors"),
+            ("[".repeat(20_000), "nested more than 32 deep"),
+            ("{a: ".repeat(20_000), "nested more than 32 deep"),
+            ("- ".repeat(20_000) + "a", "nested more than 32 deep"),
+            (blocks, "nested more than 32 deep"),
+            (format!("[{}]", "a,".repeat(200_000)), "too many values"),
+        ] {
+            let before = std::time::Instant::now();
+            let problem = read("file", text.as_bytes()).expect_err("a bomb");
+            assert!(problem.message.contains(says), "{problem:?}");
+            assert!(problem.hint.is_some(), "{problem:?}");
+            assert!(before.elapsed().as_secs() < 5, "{says}");
+        }
+    }
+
+    #[test]
+    fn what_is_no_text_or_too_large_is_refused_before_it_is_parsed() {
+        let large = vec![b'a'; 50_000_000];
+        let problem = read("file", &large).expect_err("too large");
+        assert!(problem.message.contains("50000000 bytes"), "{problem:?}");
+        assert!(problem.place.source.text.len() <= 200);
+        let just_fits = format!("a: {}", "b".repeat(LARGEST_FILE - 3));
+        assert!(read("file", just_fits.as_bytes()).is_ok());
+        let one_more = just_fits + "b";
+        assert!(read("file", one_more.as_bytes()).is_err());
+
+        for (bytes, at) in [
+            (&b"a: \xFF\n"[..], (1, 4)),
+            (&b"a: 1\nb: \x00\n"[..], (2, 4)),
+            (&b"\xFF\xFEa\x00"[..], (1, 1)),
+            (&b"\x7FELF\x02\x01"[..], (1, 1)),
+        ] {
+            let problem = read("file", bytes).expect_err("binary");
+            assert!(problem.message.contains("not a text file"), "{problem:?}");
+            assert_eq!(problem.place.line_column(), at, "{bytes:?}");
+        }
+    }
 }

@@ -181,3 +181,129 @@ fn role(role: Located<String>, field: Field<'_>) -> Option<RoleFilled> {
         channel: channel?,
     })
 }
+
+#[cfg(test)]
+mod tests {
+    use crate::spec::bench::{Parity, Port};
+    use crate::spec::load_bench;
+    use crate::spec::wrong_files::{Kind, wrong};
+
+    #[test]
+    fn serial_settings_have_the_trade_s_defaults() {
+        let text = Kind::Bench.changed(&[
+            ("{port: virtual}", "{port: /dev/ttyUSB0}"),
+            (
+                "{port: virtual}",
+                "{port: COM7, baud: 115200, data bits: 7, parity: even, stop bits: 2}",
+            ),
+        ]);
+        let bench = load_bench("file", text.as_bytes()).value.expect("a bench");
+        let Port::Serial(plain) = &bench.lines[0].port else {
+            panic!("{:?}", bench.lines[0]);
+        };
+        assert_eq!(
+            (plain.path.as_str(), plain.baud, plain.data_bits),
+            ("/dev/ttyUSB0", 9600, 8)
+        );
+        assert_eq!((plain.parity, plain.stop_bits), (Parity::None, 1));
+        let Port::Serial(set) = &bench.lines[1].port else {
+            panic!("{:?}", bench.lines[1]);
+        };
+        assert_eq!((set.baud, set.data_bits, set.stop_bits), (115_200, 7, 2));
+        assert_eq!(set.parity, Parity::Even);
+    }
+
+    #[test]
+    fn each_wrong_value_of_the_bench_is_one_problem() {
+        Kind::Bench.check(&[
+            wrong(
+                "{port: virtual}",
+                "{prot: virtual}",
+                "4:17",
+                "unknown key `prot`",
+                "mean `port`",
+            ),
+            wrong(
+                "{port: virtual}",
+                "{port: virtual, baud: 9600}",
+                "4:32",
+                "unknown key `baud`",
+                "known",
+            ),
+            wrong(
+                "{port: virtual}",
+                "{port: COM1, baud: 9}",
+                "4:35",
+                "no port runs at 9",
+                "9600",
+            ),
+            wrong(
+                "{port: virtual}",
+                "{port: COM1, baud: 9600.0}",
+                "4:35",
+                "whole number",
+                "plain digits",
+            ),
+            wrong(
+                "{port: virtual}",
+                "{port: COM1, parity: evn}",
+                "4:37",
+                "can't be `evn`",
+                "mean `even`",
+            ),
+            wrong(
+                "driver: scpi-ac-supply, ",
+                "",
+                "9:3",
+                "lacks `driver`",
+                "add",
+            ),
+            wrong(
+                "2099-12-31",
+                "31.12.2099",
+                "15:10",
+                "not a date",
+                "2030-12-31",
+            ),
+            wrong(
+                "2099-12-31",
+                "2099-02-30",
+                "15:10",
+                "not a date",
+                "2030-12-31",
+            ),
+            wrong("at: 5 W", "at: 5 V", "17:30", "not a power", "9 W"),
+            wrong("U: 10 mW", "U: -10 mW", "17:55", "is negative", "check"),
+            wrong("k: 2", "k: 0", "17:65", "above zero", "check"),
+            wrong("k: 2", "k: 2 W", "17:65", "plain number", "without a unit"),
+            wrong(
+                "reading: power",
+                "reading: pwer",
+                "17:19",
+                "can't be `pwer`",
+                "mean `power`",
+            ),
+            wrong(
+                "rated current: 16 A",
+                "rated current: 16 W",
+                "29:20",
+                "not a current",
+                "A",
+            ),
+            wrong(
+                "channel: 1}",
+                "channel: 01}",
+                "33:44",
+                "whole number",
+                "plain digits",
+            ),
+            wrong(
+                "instrument: supply}",
+                "}",
+                "31:7",
+                "lacks `instrument`",
+                "add",
+            ),
+        ]);
+    }
+}

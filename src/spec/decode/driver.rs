@@ -274,3 +274,193 @@ fn accuracy(reading: Located<String>, field: Field<'_>) -> Option<Accuracy> {
 fn fraction(share: Option<Option<crate::quantity::Ratio>>) -> Option<f64> {
     share.map(|share| share.map_or(0.0, |share| share.get()))
 }
+
+#[cfg(test)]
+mod tests {
+    use crate::quantity::Reading;
+    use crate::spec::wrong_files::{Kind, wrong};
+    use crate::spec::{Weight, load_driver};
+
+    const METER: Kind = Kind::Driver("power-meter");
+
+    #[test]
+    fn an_accuracy_is_read_in_base_units() {
+        let text = METER.changed(&[]);
+        let driver = load_driver("file", text.as_bytes())
+            .value
+            .expect("a driver");
+        let current = driver.accuracy_of(Reading::Current).expect("an accuracy");
+        assert_eq!(current.floor, 5e-5);
+        assert_eq!(current.of_range, 0.001);
+        assert_eq!(current.ranges, [0.1, 0.5, 2.0, 8.0, 20.0]);
+        // 0.1 % of 0.3 A + 0.1 % of the 0.5 A range + 0.05 mA (computed by hand).
+        assert!((current.half_width(0.3) - 8.5e-4).abs() < 1e-15);
+    }
+
+    #[test]
+    fn a_reading_without_accuracy_is_a_warning() {
+        let text = METER.changed(&[("gives: [voltage,", "gives: [voltage, frequency,")]);
+        let loaded = load_driver("file", text.as_bytes());
+        assert!(loaded.value.is_some());
+        let [problem] = loaded.problems.as_slice() else {
+            panic!("{:#?}", loaded.problems);
+        };
+        assert_eq!(problem.weight, Weight::Warning);
+        assert_eq!(problem.place.text(), "readings");
+        assert!(problem.message.contains("frequency"), "{problem:?}");
+    }
+
+    #[test]
+    fn each_wrong_value_of_a_driver_is_one_problem() {
+        METER.check(&[
+            wrong(
+                "sends: LF",
+                "sends: NL",
+                "4:18",
+                "can't be `NL`",
+                "one of: LF, CRLF, CR",
+            ),
+            wrong(
+                "tries: 3",
+                "tries: 0",
+                "4:84",
+                "whole number from 1 to 10",
+                "digits",
+            ),
+            wrong(
+                "reply within: 500 ms",
+                "reply within: 500",
+                "4:58",
+                "has no unit",
+                "`500 ms`",
+            ),
+            wrong(
+                "\"*IDN?\"",
+                "\"*IDN?\\n\"",
+                "5:17",
+                "can't be sent",
+                "line end",
+            ),
+            wrong("\"*IDN?\"", "\"*IDÑ?\"", "5:17", "can't be sent", "ASCII"),
+            wrong("\"*IDN?\"", "\"\"", "5:17", "1 to 255", "one command"),
+            wrong(
+                "\"*CLS\"",
+                "\"*CLS {value}\"",
+                "6:14",
+                "no meaning here",
+                "write the command out",
+            ),
+            wrong(
+                "VOLT:AC?;",
+                "VOLT:AC? (@{channel});",
+                "8:10",
+                "no meaning here",
+                "write the command out",
+            ),
+            wrong(
+                "[voltage, current, power]",
+                "[voltage, power, power]",
+                "9:29",
+                "stands twice",
+                "one of",
+            ),
+            wrong(
+                "[voltage, current, power]",
+                "[voltage, current]",
+                "3:9",
+                "can't fill `power meter`",
+                "reading of power",
+            ),
+            wrong(
+                "update interval: 100 ms",
+                "update interval: 0 ms",
+                "11:18",
+                "longer than nothing",
+                "20 min",
+            ),
+            wrong(
+                "  power: {",
+                "  powr: {",
+                "15:3",
+                "not a reading",
+                "mean `power`",
+            ),
+            wrong(
+                "of reading: 0.1 %",
+                "of reading: 101 %",
+                "13:25",
+                "out of range",
+                "0 % to 100 %",
+            ),
+            wrong(
+                "ranges: [150 V, 300 V]",
+                "ranges: [300 V, 150 V]",
+                "13:91",
+                "don't rise",
+                "smallest",
+            ),
+            wrong(
+                ", ranges: [150 V, 300 V]",
+                "",
+                "13:42",
+                "without ranges",
+                "ranges",
+            ),
+            wrong(
+                "{of reading: 0.1 %, of range: 0.05 %, floor: 10 mV, ",
+                "{",
+                "13:3",
+                "nothing at all",
+                "manual",
+            ),
+        ]);
+        Kind::Driver("ac-supply").check(&[
+            wrong(
+                "VOLT {value}",
+                "VOLT 230",
+                "8:18",
+                "lacks `{value}`",
+                "put `{value}`",
+            ),
+            wrong(
+                "{value}",
+                "{volts}",
+                "8:18",
+                "no meaning here",
+                "`{value}` is put in",
+            ),
+            wrong(
+                ", state: \"OUTP?\"",
+                "",
+                "3:9",
+                "can't fill `supply`",
+                "state",
+            ),
+            wrong(", off: \"OUTP OFF\"", "", "10:3", "lacks `off`", "add"),
+        ]);
+        Kind::Driver("temperature-scanner").check(&[
+            wrong("(@{channel})", "(@1)", "8:10", "lacks `{channel}`", "put"),
+            wrong(
+                "floor: 1 K",
+                "floor: 1 °C",
+                "15:43",
+                "not a temperature difference",
+                "K",
+            ),
+            wrong(
+                "isolation: 300 V",
+                "isolation: 300",
+                "13:12",
+                "has no unit",
+                "`300 V`",
+            ),
+        ]);
+        Kind::Driver("position-switch").check(&[wrong(
+            "position:",
+            "voltage:",
+            "3:9",
+            "can't fill `position switch`",
+            "take `position switch` out",
+        )]);
+    }
+}

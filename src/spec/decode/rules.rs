@@ -60,6 +60,8 @@ fn kind(fields: &Fields<'_>, whole: Field<'_>) -> Option<Located<RuleKind>> {
             value,
             place: field.key.clone(),
         }),
+        // A misspelt key is reported once, as the unknown one that it is.
+        [] if KINDS.iter().any(|(key, _)| fields.misspelt(key).is_some()) => None,
         [] => whole
             .notes
             .error(whole.key, "a rule that compares nothing", known()),
@@ -128,4 +130,106 @@ fn decision(field: Field<'_>) -> Option<Decision> {
     let ratio = fields.required("guarded", number(Allowed::Within(0.0, 3.0)));
     fields.finish()?;
     Some(Decision::Guarded { ratio: ratio? })
+}
+
+#[cfg(test)]
+mod tests {
+    use crate::spec::wrong_files::{Kind, wrong};
+
+    #[test]
+    fn each_wrong_rule_is_one_problem() {
+        Kind::Sequence.check(&[
+            wrong(
+                "- power: plate",
+                "- power: label",
+                "67:12",
+                "can't be `label`",
+                "one of: plate",
+            ),
+            wrong(
+                "- power: plate",
+                "- power: {}",
+                "67:5",
+                "no limit is stated",
+                "at least",
+            ),
+            wrong(
+                "- power: plate",
+                "- power: {at least: 9 W, at most: 8 W}",
+                "67:37",
+                "below `at least`",
+                "larger",
+            ),
+            wrong(
+                "- power: plate",
+                "- powr: plate",
+                "67:5",
+                "unknown key `powr`",
+                "mean `power`",
+            ),
+            wrong(
+                "- thermal link: holding",
+                "- weight: information",
+                "70:5",
+                "compares nothing",
+                "one of",
+            ),
+            wrong(
+                "- thermal link: holding",
+                "- thermal link: holding\n    inrush: {at most: 1 A}",
+                "71:5",
+                "compares one thing",
+                "dash",
+            ),
+            wrong(
+                "link: holding",
+                "link: hold",
+                "70:19",
+                "can't be `hold`",
+                "one of",
+            ),
+            wrong(
+                "positions: rising",
+                "positions: falling",
+                "72:25",
+                "can't be `falling`",
+                "one of: rising",
+            ),
+            wrong(
+                "decision: four outcomes",
+                "decision: {guarded: -1}",
+                "68:25",
+                "out of range",
+                "unit",
+            ),
+            wrong(
+                "decision: four outcomes",
+                "decision: fair",
+                "68:15",
+                "can't be `fair`",
+                "simple",
+            ),
+            wrong(
+                "weight: required",
+                "weight: heavy",
+                "69:13",
+                "can't be `heavy`",
+                "required",
+            ),
+            wrong(
+                "at most: 0.5 A",
+                "at most: 0.5",
+                "73:23",
+                "has no unit",
+                "`0.5 A`",
+            ),
+            wrong(
+                "rise at most: 50 K",
+                "rise at most: 50 °C",
+                "76:50",
+                "not a temperature difference",
+                "K",
+            ),
+        ]);
+    }
 }

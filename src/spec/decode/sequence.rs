@@ -243,3 +243,315 @@ pub(super) fn axis(fields: &Fields<'_>, key: &'static str) -> Option<Vec<Located
     let names = fields.or(key, Vec::new(), list(located_name))?;
     Some(names)
 }
+
+#[cfg(test)]
+mod tests {
+    use crate::quantity::{Celsius, Kelvins, Seconds, Volts, Watts};
+    use crate::spec::load_sequence;
+    use crate::spec::sequence::{
+        AnswerKind, CriterionKind, Decision, MeasuredAt, RoleKind, RuleKind, StepAction,
+    };
+    use crate::spec::shipped::SEQUENCES;
+    use crate::spec::wrong_files::{Kind, wrong};
+
+    #[test]
+    fn the_dryer_is_read_as_it_is_written() {
+        let sequence = load_sequence("dryer", SEQUENCES[0].text.as_bytes());
+        let sequence = sequence.value.expect("a sequence");
+        assert_eq!(sequence.edition.value, "1");
+        let appliance = &sequence.appliance;
+        assert_eq!(appliance.highest_ambient, Celsius::of(35.0));
+        assert_eq!(appliance.positions[1].value, "high");
+        assert_eq!(appliance.plate[0].power.low, Watts::of(4.5));
+        assert_eq!(appliance.plate[0].voltage.high, Volts::of(240.0));
+        let link = appliance.link.as_ref().expect("a link");
+        assert_eq!(link.tf.value, Celsius::of(121.0));
+        assert_eq!(link.measured_at, MeasuredAt::LinkBody);
+        assert!(appliance.facts.fan && !appliance.facts.thermostat);
+        assert_eq!(sequence.roles[1].kind, RoleKind::PowerMeter);
+        assert_eq!(sequence.guards.input_after, Some(Seconds::of(60.0)));
+        let StepAction::Each(each) = &sequence.steps[3].action else {
+            panic!("{:?}", sequence.steps[3]);
+        };
+        assert_eq!(each.conditions.len() * each.positions.len(), 4);
+        let StepAction::Soak(soak) = &each.steps[2].action else {
+            panic!("{:?}", each.steps[2]);
+        };
+        assert_eq!(soak.until.temperature_change, Some(Kelvins::of(3.0)));
+        let window = Seconds::of(300.0);
+        assert_eq!(soak.until.kind, CriterionKind::Slope { window });
+        assert_eq!(sequence.rules[0].kind.value, RuleKind::PlatePower);
+        assert_eq!(sequence.rules[1].decision, Decision::FourOutcomes);
+        assert_eq!(sequence.rules[4].kind.place.text(), "inrush");
+    }
+
+    #[test]
+    fn house_defaults_fill_what_is_left_out() {
+        let text = Kind::Sequence.changed(&[("            at least: 10 min\n", "")]);
+        let sequence = load_sequence("dryer", text.as_bytes()).value.expect("one");
+        let StepAction::Acclimatise(waiting) = &sequence.steps[2].action else {
+            panic!("{:?}", sequence.steps[2]);
+        };
+        assert_eq!(waiting.within, Kelvins::of(3.0));
+        let StepAction::Each(each) = &sequence.steps[3].action else {
+            panic!("{:?}", sequence.steps[3]);
+        };
+        let StepAction::Soak(soak) = &each.steps[2].action else {
+            panic!("{:?}", each.steps[2]);
+        };
+        assert_eq!(soak.at_least, Seconds::of(600.0));
+    }
+
+    #[test]
+    fn the_other_forms_are_read() {
+        let text = Kind::Sequence.changed(&[
+            (
+                "measured at: link body",
+                "measured at: {place: outlet, allowance: 3 K, allowance source: trial of 4 units}",
+            ),
+            ("answer: yes or no", "answer: {choice: [no, perhaps]}"),
+            ("fan: yes", "fan: true\n    diode in position: low"),
+            (
+                "decision: four outcomes",
+                "decision: {guarded: 0.83}\n    position: low",
+            ),
+            ("- acclimatise:", "- instruct: Wait.\n  - run in: {for: 5 min, every: 1 s}\n  - de-energise\n  - acclimatise:"),
+        ]);
+        let loaded = load_sequence("file", text.as_bytes());
+        let sequence = loaded
+            .value
+            .unwrap_or_else(|| panic!("{:#?}", loaded.problems));
+        let link = sequence.appliance.link.expect("a link");
+        assert!(matches!(
+            link.measured_at,
+            MeasuredAt::Elsewhere {
+                allowance: Some(_),
+                ..
+            }
+        ));
+        let StepAction::Ask(question) = &sequence.steps[0].action else {
+            panic!("{:?}", sequence.steps[0]);
+        };
+        assert!(matches!(&question.answer, AnswerKind::Choice(c) if c.len() == 2));
+        assert_eq!(sequence.appliance.facts.diode_in[0].value, "low");
+        assert_eq!(
+            sequence.rules[0].decision,
+            Decision::Guarded { ratio: 0.83 }
+        );
+        assert!(matches!(sequence.steps[4].action, StepAction::Deenergise));
+    }
+
+    #[test]
+    fn each_wrong_value_of_the_appliance_is_one_problem() {
+        Kind::Sequence.check(&[
+            wrong(
+                "edition: \"1\"\n",
+                "",
+                "2:1",
+                "the sequence lacks `edition`",
+                "add `edition",
+            ),
+            wrong(
+                "edition: \"1\"",
+                "editoin: \"1\"",
+                "3:1",
+                "unknown key `editoin`",
+                "mean `edition`",
+            ),
+            wrong(
+                "edition: \"1\"",
+                "edition: \"1\"\ncolour: red",
+                "4:1",
+                "unknown key",
+                "known here: sequence",
+            ),
+            wrong(
+                "kind: combined",
+                "kind: combnied",
+                "7:9",
+                "can't be `combnied`",
+                "mean `combined`",
+            ),
+            wrong(
+                "class: II",
+                "class: 2",
+                "8:21",
+                "can't be `2`",
+                "one of: I, II, III",
+            ),
+            wrong(
+                "power: 9 W",
+                "power: 9",
+                "13:74",
+                "`9` has no unit",
+                "write `9 W`",
+            ),
+            wrong(
+                "power: 9 W",
+                "power: 9 V",
+                "13:74",
+                "is a voltage, not a power",
+                "`9 W`",
+            ),
+            wrong(
+                "power: 9 W",
+                "power: .nan",
+                "13:74",
+                "not a finite number",
+                "`9 W`",
+            ),
+            wrong(
+                "power: 9 W",
+                "power: .inf W",
+                "13:74",
+                "not a finite number",
+                "`9 W`",
+            ),
+            wrong(
+                "power: 9 W",
+                "power: 1e999 W",
+                "13:74",
+                "not a finite number",
+                "`9 W`",
+            ),
+            wrong(
+                "power: 9 W",
+                "power: 1e12 W",
+                "13:74",
+                "beyond anything",
+                "unit",
+            ),
+            wrong("power: 9 W", "power: -9 W", "13:74", "is negative", "check"),
+            wrong("power: 9 W", "power: 0 W", "13:74", "above zero", "check"),
+            wrong(
+                "power: 9 W",
+                "power: 09 W",
+                "13:74",
+                "zero too many",
+                "`9 W`",
+            ),
+            wrong("power: 9 W", "power: 0x9 W", "13:74", "not a unit", "`9 W`"),
+            wrong(
+                "power: 9 W",
+                "power: nine",
+                "13:74",
+                "does not start with a number",
+                "`9 W`",
+            ),
+            wrong(
+                "power: 9 W",
+                "power: 9 W to 8 W",
+                "13:74",
+                "begins above its end",
+                "`8 W to 9 W`",
+            ),
+            wrong("power: 9 W", "power: 8-9 W", "13:74", "as a range", "to"),
+            wrong("power: 9 W", "power: [9 W]", "13:74", "not a list", "`9 W`"),
+            wrong("power: 9 W", "power: ", "13:67", "has no value", "`9 W`"),
+            wrong(
+                "Th: 100 °C",
+                "Th: 121 °C",
+                "16:9",
+                "not below Tf",
+                "data sheet",
+            ),
+            wrong(
+                "Tm: 175 °C",
+                "Tm: 121 °C",
+                "17:9",
+                "not above Tf",
+                "data sheet",
+            ),
+            wrong(
+                "Tf: 121 °C",
+                "Tf: 121 K",
+                "15:9",
+                "difference, not a temperature",
+                "°C",
+            ),
+            wrong("35 °C", "35000 °C", "9:20", "out of range", "right unit"),
+            wrong(
+                "[low, high]  ",
+                "[low, low]  ",
+                "10:20",
+                "`low` stands twice",
+                "one of the two",
+            ),
+            wrong(
+                "[low, high]  ",
+                "low  ",
+                "10:14",
+                "must be a list",
+                "`[low]`",
+            ),
+            wrong("[low, high]  ", "[]  ", "10:14", "is empty", "at least one"),
+            wrong(
+                "fan: yes",
+                "fan: perhaps",
+                "22:10",
+                "neither yes nor no",
+                "`yes` or `no`",
+            ),
+            wrong(
+                "at: link body",
+                "at: outlet",
+                "19:18",
+                "neither `link body`",
+                "place",
+            ),
+            wrong(
+                "at: link body",
+                "at: {place: outlet, allowance: 3 K}",
+                "19:45",
+                "without its source",
+                "source",
+            ),
+            wrong(
+                "meter: power meter",
+                "meter: power",
+                "26:10",
+                "can't be `power`",
+                "one of",
+            ),
+            wrong(
+                "dry: Take",
+                "\" dry\": Take",
+                "34:3",
+                "begins or ends with a blank",
+                "printable",
+            ),
+            wrong(
+                "Nordlicht CD-9",
+                "\"CD\\e[31m9\"",
+                "6:10",
+                "unprintable",
+                "printable",
+            ),
+            wrong(
+                "body: 115 °C",
+                "bdy: 115 °C",
+                "37:3",
+                "unknown key `bdy`",
+                "mean `body`",
+            ),
+        ]);
+    }
+
+    #[test]
+    fn every_problem_of_meaning_is_reported_at_once() {
+        let text = Kind::Sequence.changed(&[
+            ("edition: \"1\"\n", ""),
+            ("kind: combined", "kind: kettle"),
+            ("4.5 W", "4.5"),
+            ("Th: 100 °C", "Th: .nan"),
+            ("at least: 10 min", "at least: -10 min"),
+            ("weight: required", "wieght: required"),
+            ("at most: 0.5 A", "at most: 0.5 V"),
+        ]);
+        let (value, problems) = Kind::Sequence.load(text.as_bytes());
+        assert!(!value);
+        assert_eq!(problems.len(), 7, "{problems:#?}");
+        let lines: Vec<usize> = problems.iter().map(|p| p.place.line_column().0).collect();
+        assert!(lines.is_sorted(), "{lines:?}");
+    }
+}

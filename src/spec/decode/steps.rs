@@ -443,3 +443,199 @@ fn each_block(field: Field<'_>, allowed: EachAllowed) -> Option<Each> {
         steps: steps?,
     })
 }
+
+#[cfg(test)]
+mod tests {
+    use crate::spec::wrong_files::{Kind, wrong};
+
+    #[test]
+    fn each_wrong_step_is_one_problem() {
+        Kind::Sequence.check(&[
+            wrong(
+                "- energise",
+                "- energize",
+                "56:11",
+                "unknown step `energize`",
+                "mean `energise`",
+            ),
+            wrong(
+                "- energise",
+                "- energise: now",
+                "56:11",
+                "takes no value",
+                "without the colon",
+            ),
+            wrong(
+                "- energise",
+                "- soak",
+                "56:11",
+                "needs a value",
+                "`soak: ...`",
+            ),
+            wrong(
+                "- energise",
+                "- wait",
+                "56:11",
+                "unknown step `wait`",
+                "known here",
+            ),
+            wrong("- energise", "- [energise]", "56:11", "a verb, or", "verbs"),
+            wrong(
+                "- energise",
+                "- sok: {at most: 5 min}",
+                "56:11",
+                "unknown step `sok`",
+                "mean `soak`",
+            ),
+            wrong(
+                "- energise",
+                "- {supply: 1, position: low}",
+                "56:23",
+                "one verb",
+                "own dash",
+            ),
+            wrong(
+                "- energise",
+                "- each: {}",
+                "56:11",
+                "within an `each`",
+                "one block",
+            ),
+            wrong(
+                "- energise",
+                "- supply: {voltage: 230 V}",
+                "56:11",
+                "lacks `frequency`",
+                "add",
+            ),
+            wrong(
+                "every: 2 s",
+                "every: 0 s",
+                "61:20",
+                "at least 1 ms",
+                "`2 s`",
+            ),
+            wrong("every: 2 s", "every: 2", "61:20", "has no unit", "`2 min`"),
+            wrong(
+                "every: 2 s",
+                "every: 2 h",
+                "61:20",
+                "longer than `at most`",
+                "several times",
+            ),
+            wrong(
+                "least: 10 min",
+                "least: -10 min",
+                "59:23",
+                "is negative",
+                "check",
+            ),
+            wrong(
+                "least: 10 min",
+                "least: 0 min",
+                "59:23",
+                "longer than nothing",
+                "20 min",
+            ),
+            wrong(
+                "most: 45 min",
+                "most: 5 min",
+                "60:22",
+                "less than `at least`",
+                "10 min",
+            ),
+            wrong(
+                "most: 45 min",
+                "most: 45000 h",
+                "60:22",
+                "31 days",
+                "20 min",
+            ),
+            wrong(
+                "criterion: slope",
+                "criterion: slop",
+                "62:32",
+                "can't be `slop`",
+                "mean `slope`",
+            ),
+            wrong("window: 5 min, ", "", "62:13", "lacks `window`", "add"),
+            wrong(
+                "criterion: slope",
+                "criterion: three readings",
+                "62:48",
+                "unknown key `window`",
+                "known",
+            ),
+            wrong(
+                "power change: 2 %, temperature change: 3 K",
+                "",
+                "62:13",
+                "watches nothing",
+                "add",
+            ),
+            wrong(
+                "power change: 2 %",
+                "power change: 2 K",
+                "62:68",
+                "not a ratio",
+                "10 %",
+            ),
+            wrong(
+                "{if: no, class: major}",
+                "{if: maybe, class: major}",
+                "44:21",
+                "not one of the answers",
+                "yes, no",
+            ),
+            wrong(
+                "{if: no, class: major}",
+                "{if: no, class: mayor}",
+                "44:32",
+                "can't be `mayor`",
+                "mean `major`",
+            ),
+            wrong(
+                "answer: yes or no",
+                "answer: yes",
+                "43:15",
+                "no kind of answer",
+                "yes or no",
+            ),
+            wrong(
+                "answer: yes or no",
+                "answer: {choice: [no]}",
+                "43:15",
+                "choice of one",
+                "two",
+            ),
+            wrong(
+                "answer: yes or no",
+                "answer: {number in: mm}",
+                "44:21",
+                "without limits",
+                "add",
+            ),
+            wrong(
+                "within: 3 K",
+                "within: 3 °C",
+                "64:26",
+                "not a temperature difference",
+                "10 K",
+            ),
+            wrong(
+                "conditions: [refill full, dry]",
+                "conditions: [dry, dry]",
+                "51:25",
+                "stands twice",
+                "one of",
+            ),
+            wrong(
+                "positions: [low, high]\n      s",
+                "positions: []\n      s",
+                "52:18",
+                "is empty",
+                "at least one",
+            ),
+        ]);
+    }
+}

@@ -171,3 +171,60 @@ fn condition(name: Located<String>, field: Field<'_>) -> Option<ConditionEffect>
         loss_factor: loss_factor?,
     })
 }
+
+#[cfg(test)]
+mod tests {
+    use crate::spec::wrong_files::Kind;
+
+    #[test]
+    fn each_wrong_value_of_a_virtual_unit_is_one_problem() {
+        let (old, new) = (
+            "fan: {",
+            "thermostat: {opens at: 60 °C, closes at: 60 °C}\nfan: {",
+        );
+        let (value, problems) =
+            Kind::VirtualUnit.load(Kind::VirtualUnit.changed(&[(old, new)]).as_bytes());
+        assert!(!value && problems.len() == 1, "{problems:#?}");
+        assert!(problems[0].message.contains("not below"), "{problems:#?}");
+        assert_eq!(problems[0].place.text(), "60 °C");
+
+        let spread = [("spread: 2 %", "spread: 2")];
+        let (_, problems) = Kind::VirtualUnit.load(Kind::VirtualUnit.changed(&spread).as_bytes());
+        assert!(
+            problems[0].hint.as_deref() == Some("write `2 %`"),
+            "{problems:#?}"
+        );
+
+        let unwired = [("{elements: [A]}", "{elements: [Z]}")];
+        let (_, problems) = Kind::VirtualUnit.load(Kind::VirtualUnit.changed(&unwired).as_bytes());
+        assert!(
+            problems[0].message.contains("no element `Z`"),
+            "{problems:#?}"
+        );
+    }
+
+    #[test]
+    fn heat_has_its_own_units() {
+        const UNIT: &str = "virtual unit: X\nelements:\n  a: {plain: 500 ohm}\npositions:\n  on: {elements: [a]}\nlink opens at: 90 °C\nthermal:\n";
+        let thermal = |capacity: &str| {
+            format!(
+                "{UNIT}  block capacity: {capacity}\n  block loss: 1 W/K\n  link follows: 5 s\n  link share: 90 %\n  \
+                 enclosure capacity: 9 J/K\n  enclosure loss: 1 W/K\n  enclosure share: 5 %\nspread: 1 %\n"
+            )
+        };
+        let said = |capacity: &str| {
+            let (value, problems) = Kind::VirtualUnit.load(thermal(capacity).as_bytes());
+            assert_eq!(value, problems.is_empty());
+            problems
+                .first()
+                .map(|p| p.message.clone())
+                .unwrap_or_default()
+        };
+        assert_eq!(said("30 J/K"), "");
+        assert_eq!(said("3e1J/K"), "");
+        assert!(said("30 W/K").contains("number in J/K"));
+        assert!(said("30").contains("number in J/K"));
+        assert!(said("inf J/K").contains("number in J/K"));
+        assert!(said("-30 J/K").contains("out of range"));
+    }
+}
