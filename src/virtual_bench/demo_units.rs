@@ -148,6 +148,31 @@ fn shipped_units_settle_and_cool_in_a_working_hour() {
     assert!(faulty.is_empty(), "{faulty}");
 }
 
+#[test]
+fn no_fault_takes_a_unit_out_of_the_model() {
+    for unit in units() {
+        for fault in Fault::ALL {
+            let mut staging = staging_of(unit.clone());
+            staging.faults.push(fault.parse().unwrap());
+            let bench = VirtualBench::new(staging).unwrap();
+            assert!(bench.hands().turn(&unit.positions[0].name, Moment::START));
+            energise(&bench, Moment::START, true);
+            for minute in 1..=60 {
+                let truth = bench.truth(Moment::from_micros(minute * 60_000_000));
+                // A short lasts until the link's body has followed the block.
+                let hottest = if fault == "shorted-element" {
+                    2000.0
+                } else {
+                    260.0
+                };
+                let range = 20.0..hottest;
+                assert!(range.contains(&truth.block.get()), "{fault}: {truth:?}");
+                assert!(range.contains(&truth.link.get()), "{fault}: {truth:?}");
+            }
+        }
+    }
+}
+
 /// What a good unit may show at 230 V and 23 degC, highest loss: position, input in
 /// W with what instruments and spread leave of the plate's band (IEC 60335-1 clause
 /// 10.1, read; the boot warmer's low position by its house limit), hottest link
