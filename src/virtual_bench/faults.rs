@@ -26,7 +26,7 @@ pub enum Fault {
     WrongLink,
     /// The switch is wired the other way round.
     SwappedPositions,
-    /// The first element is bridged to 15 ohm.
+    /// The first element is bridged to 12.5 ohm.
     ShortedElement,
     /// The sensor has come off and hangs in the air; hits `body`.
     SensorFallenOff(Onset),

@@ -88,7 +88,8 @@ fn ln_ratio(above: f64, steepness: f64) -> f64 {
     // The floor meets the switching branch only below T_s: the blend is ln 2 wide
     // and ends where the branches are ln 2 apart, which is at T_s.
     let cold = -LN_2 - COLD_RISE * above.min(0.0);
-    let falling = LN_MAXIMUM - HOT_FALL * (above - LN_MAXIMUM / steepness);
+    // Far above its maximum an element is destroyed; it does not become a short here.
+    let falling = (LN_MAXIMUM - HOT_FALL * (above - LN_MAXIMUM / steepness)).max(-LN_2);
     let rising = smooth_larger(switching, cold, LN_2);
     -smooth_larger(-rising, -falling, MAXIMUM_BLEND)
 }
