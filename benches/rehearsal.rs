@@ -40,20 +40,33 @@ impl Observer for Silent {
 }
 
 fn plan() -> Plan {
-    let sequence = spec::load_sequence("ten-hertz.yaml", SEQUENCE.as_bytes()).value.expect("a sequence");
-    let bench = spec::load_bench("bench.yaml", shipped::VIRTUAL_BENCH.text.as_bytes()).value.expect("a bench");
+    let sequence = spec::load_sequence("ten-hertz.yaml", SEQUENCE.as_bytes())
+        .value
+        .expect("a sequence");
+    let bench = spec::load_bench("bench.yaml", shipped::VIRTUAL_BENCH.text.as_bytes())
+        .value
+        .expect("a bench");
     let drivers = shipped::DRIVERS.iter().map(|file| {
-        let mut driver = spec::load_driver(file.path, file.text.as_bytes()).value.expect("a driver");
+        let mut driver = spec::load_driver(file.path, file.text.as_bytes())
+            .value
+            .expect("a driver");
         driver.update_interval = Seconds::of(0.1);
         driver
     });
     let drivers: Vec<_> = drivers.collect();
-    resolve(&sequence, &bench, &drivers, None, None).plan.expect("a plan")
+    resolve(&sequence, &bench, &drivers, None, None)
+        .plan
+        .expect("a plan")
 }
 
 fn virtual_bench(plan: &Plan) -> VirtualBench {
-    let units = shipped::VIRTUAL_UNITS.iter().filter_map(|f| spec::load_virtual_unit(f.path, f.text.as_bytes()).value);
-    let unit = units.into_iter().find(|unit| unit.model.value == plan.appliance.model).expect("a unit");
+    let units = shipped::VIRTUAL_UNITS
+        .iter()
+        .filter_map(|f| spec::load_virtual_unit(f.path, f.text.as_bytes()).value);
+    let unit = units
+        .into_iter()
+        .find(|unit| unit.model.value == plan.appliance.model)
+        .expect("a unit");
     let connect = |role: &PlannedRole| {
         let instrument = plan.instrument_of(role);
         Connection {
@@ -82,7 +95,10 @@ fn virtual_bench(plan: &Plan) -> VirtualBench {
 fn whole(plan: &Plan) -> (f64, f64) {
     let folder = tempfile::tempdir().expect("a folder");
     let bench = virtual_bench(plan);
-    let runtime = tokio::runtime::Builder::new_current_thread().enable_time().start_paused(true).build();
+    let runtime = tokio::runtime::Builder::new_current_thread()
+        .enable_time()
+        .start_paused(true)
+        .build();
     let before = Instant::now();
     let simulated = runtime.expect("a runtime").block_on(async {
         let clock = Clock::simulated();
@@ -94,7 +110,8 @@ fn whole(plan: &Plan) -> (f64, f64) {
             seed: Some(1),
             started: clock.started().to_rfc3339(),
         };
-        let journal = Journal::open(store, heading, plan, &[], Flushing::EachSecond).expect("a journal");
+        let journal =
+            Journal::open(store, heading, plan, &[], Flushing::EachSecond).expect("a journal");
         let (mouth, heard) = hearing();
         let open = |setup: rateplate::bench::LineSetup| {
             let far = bench.far_side(&setup.name);
@@ -113,7 +130,10 @@ fn whole(plan: &Plan) -> (f64, f64) {
             stop,
             observer: Box::new(Silent),
         };
-        let permissions = Permissions { unattended: true, speed: 1.0 };
+        let permissions = Permissions {
+            unattended: true,
+            speed: 1.0,
+        };
         let ended = run::run(bay, permissions, "cautions").await;
         assert_eq!(ended.outcome, rateplate::record::RunOutcome::Complete);
         clock.now().as_secs_f64()
@@ -151,16 +171,29 @@ fn far_side_alone(plan: &Plan, seconds: u64) -> (f64, f64) {
 fn main() -> io::Result<()> {
     let plan = plan();
     let mut out = io::stdout().lock();
-    writeln!(out, "simulated seconds per wall second, three readings at 10 Hz (median of 3 runs)")?;
+    writeln!(
+        out,
+        "simulated seconds per wall second, three readings at 10 Hz (median of 3 runs)"
+    )?;
     let mut rates = [Vec::new(), Vec::new()];
     for _ in 0..3 {
-        for (n, (simulated, wall)) in [far_side_alone(&plan, 20_000), whole(&plan)].into_iter().enumerate() {
+        for (n, (simulated, wall)) in [far_side_alone(&plan, 20_000), whole(&plan)]
+            .into_iter()
+            .enumerate()
+        {
             rates[n].push(simulated / wall);
         }
     }
-    for (name, rates) in ["far side alone (baseline)", "whole run with record"].iter().zip(&mut rates) {
+    for (name, rates) in ["far side alone (baseline)", "whole run with record"]
+        .iter()
+        .zip(&mut rates)
+    {
         rates.sort_by(f64::total_cmp);
-        writeln!(out, "{name:28} {:>10.0}   {:.0} to {:.0}", rates[1], rates[0], rates[2])?;
+        writeln!(
+            out,
+            "{name:28} {:>10.0}   {:.0} to {:.0}",
+            rates[1], rates[0], rates[2]
+        )?;
     }
     writeln!(out, "whole / baseline {:.3}", rates[1][1] / rates[0][1])
 }

@@ -14,7 +14,12 @@ const SHORT_ENDS: &str = "<!-- end of the short form -->";
 /// The short form, which is shown and acknowledged before a run.
 pub fn short() -> &'static str {
     static SHORT: LazyLock<String> = LazyLock::new(|| {
-        SAFETY.split(SHORT_ENDS).next().unwrap_or(SAFETY).trim().to_owned()
+        SAFETY
+            .split(SHORT_ENDS)
+            .next()
+            .unwrap_or(SAFETY)
+            .trim()
+            .to_owned()
     });
     &SHORT
 }

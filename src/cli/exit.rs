@@ -39,7 +39,10 @@ impl Exit {
         (Exit::Fail, "fail"),
         (Exit::NotJudged, "not judged"),
         (Exit::BadInput, "a file can't be used"),
-        (Exit::CutShort, "the run was cut short: trip, stop, or a lost instrument"),
+        (
+            Exit::CutShort,
+            "the run was cut short: trip, stop, or a lost instrument",
+        ),
         (Exit::OffUnconfirmed, "OFF was not confirmed: pull the plug"),
         (Exit::Record, "the record can't be written or read"),
     ];

@@ -49,7 +49,10 @@ pub fn read(path: &Path, shipped: &[shipped::Shipped]) -> Result<Document, Exit>
     match read_limited(path) {
         Ok(bytes) => Ok(Document { name, bytes }),
         Err(e) if e.kind() == io::ErrorKind::NotFound => match shipped_as(path, shipped) {
-            Some(found) => Ok(Document { name, bytes: found.text.as_bytes().to_vec() }),
+            Some(found) => Ok(Document {
+                name,
+                bytes: found.text.as_bytes().to_vec(),
+            }),
             None => {
                 complain(&not_found(&name, shipped));
                 Err(Exit::BadInput)
@@ -66,18 +69,26 @@ pub fn read(path: &Path, shipped: &[shipped::Shipped]) -> Result<Document, Exit>
 fn read_limited(path: &Path) -> io::Result<Vec<u8>> {
     use io::Read;
     let mut bytes = Vec::new();
-    fs::File::open(path)?.take(LARGEST + 1).read_to_end(&mut bytes)?;
+    fs::File::open(path)?
+        .take(LARGEST + 1)
+        .read_to_end(&mut bytes)?;
     Ok(bytes)
 }
 
 fn shipped_as<'a>(path: &Path, shipped: &'a [shipped::Shipped]) -> Option<&'a shipped::Shipped> {
     let name = path.file_name()?;
-    shipped.iter().find(|known| Path::new(known.path).file_name() == Some(name))
+    shipped
+        .iter()
+        .find(|known| Path::new(known.path).file_name() == Some(name))
 }
 
 fn not_found(name: &str, shipped: &[shipped::Shipped]) -> String {
     let known: Vec<&str> = shipped.iter().map(|s| s.path).collect();
-    let hint = if known.is_empty() { String::new() } else { format!("\n  shipped with the program: {}", known.join(", ")) };
+    let hint = if known.is_empty() {
+        String::new()
+    } else {
+        format!("\n  shipped with the program: {}", known.join(", "))
+    };
     format!("error: {name}: there is no such file{hint}")
 }
 
@@ -95,8 +106,14 @@ pub fn prepare(files: &Files, bench: Option<&Path>) -> Result<Prepared, Exit> {
         },
     };
     let mut problems = Vec::new();
-    let sequence = keep(spec::load_sequence(&sequence_file.name, &sequence_file.bytes), &mut problems);
-    let bench = keep(spec::load_bench(&bench_file.name, &bench_file.bytes), &mut problems);
+    let sequence = keep(
+        spec::load_sequence(&sequence_file.name, &sequence_file.bytes),
+        &mut problems,
+    );
+    let bench = keep(
+        spec::load_bench(&bench_file.name, &bench_file.bytes),
+        &mut problems,
+    );
     let drivers = load_drivers(&files.drivers, bench.as_ref(), &mut problems)?;
     let (Some(sequence), Some(bench)) = (sequence, bench) else {
         return Err(refuse(&problems));
@@ -109,7 +126,12 @@ pub fn prepare(files: &Files, bench: Option<&Path>) -> Result<Prepared, Exit> {
         return Err(refuse(&problems));
     };
     let copies = copies_of(&plan, sequence_file, bench_file, &drivers);
-    Ok(Prepared { sequence, plan, copies, warnings: problems })
+    Ok(Prepared {
+        sequence,
+        plan,
+        copies,
+        warnings: problems,
+    })
 }
 
 fn copies_of(
@@ -132,11 +154,23 @@ fn copies_of(
 
 /// A name as part of a file's name: letters and digits stay, the rest becomes `-`.
 pub fn file_name_of(name: &str) -> String {
-    let dashed: String =
-        name.chars().map(|c| if c.is_ascii_alphanumeric() { c.to_ascii_lowercase() } else { '-' }).collect();
+    let dashed: String = name
+        .chars()
+        .map(|c| {
+            if c.is_ascii_alphanumeric() {
+                c.to_ascii_lowercase()
+            } else {
+                '-'
+            }
+        })
+        .collect();
     let parts: Vec<&str> = dashed.split('-').filter(|part| !part.is_empty()).collect();
     let joined: String = parts.join("-").chars().take(60).collect();
-    if joined.is_empty() { "unnamed".to_owned() } else { joined }
+    if joined.is_empty() {
+        "unnamed".to_owned()
+    } else {
+        joined
+    }
 }
 
 /// The shipped drivers, then the folder's, which come first where names agree. A
@@ -149,8 +183,14 @@ fn load_drivers(
 ) -> Result<BTreeMap<String, (Driver, Vec<u8>)>, Exit> {
     let mut drivers = BTreeMap::new();
     for known in shipped::DRIVERS {
-        if let Some(driver) = keep(spec::load_driver(known.path, known.text.as_bytes()), problems) {
-            drivers.insert(driver.name.clone(), (driver, known.text.as_bytes().to_vec()));
+        if let Some(driver) = keep(
+            spec::load_driver(known.path, known.text.as_bytes()),
+            problems,
+        ) {
+            drivers.insert(
+                driver.name.clone(),
+                (driver, known.text.as_bytes().to_vec()),
+            );
         }
     }
     let mut broken = Vec::new();
@@ -165,7 +205,10 @@ fn load_drivers(
         }
     }
     let missing = |bench: &Bench| {
-        bench.instruments.iter().any(|i| !drivers.contains_key(&i.driver.value))
+        bench
+            .instruments
+            .iter()
+            .any(|i| !drivers.contains_key(&i.driver.value))
     };
     if bench.is_none_or(missing) {
         problems.extend(broken);
@@ -196,13 +239,18 @@ fn keep<T>(loaded: Loaded<T>, problems: &mut Vec<Problem>) -> Option<T> {
 }
 
 fn has_errors(problems: &[Problem]) -> bool {
-    problems.iter().any(|problem| problem.weight == Weight::Error)
+    problems
+        .iter()
+        .any(|problem| problem.weight == Weight::Error)
 }
 
 /// Prints problems, and says that nothing was started.
 pub fn refuse(problems: &[Problem]) -> Exit {
     complain(spec::render(problems).trim_end());
-    let errors = problems.iter().filter(|p| p.weight == Weight::Error).count();
+    let errors = problems
+        .iter()
+        .filter(|p| p.weight == Weight::Error)
+        .count();
     let word = if errors == 1 { "error" } else { "errors" };
     complain(&format!("\n{errors} {word}; nothing was energised"));
     Exit::BadInput

@@ -24,7 +24,11 @@ pub fn finish(record: &Path, ended: &Ended) -> Exit {
             Exit::Record
         }
     };
-    if ended.off_unconfirmed.is_some() { Exit::OffUnconfirmed } else { exit }
+    if ended.off_unconfirmed.is_some() {
+        Exit::OffUnconfirmed
+    } else {
+        exit
+    }
 }
 
 fn judge(record: &Path) -> Exit {
@@ -34,7 +38,10 @@ fn judge(record: &Path) -> Exit {
             exit_of(&judged)
         }
         Err(error) => {
-            complain(&format!("error: {error}\n  the run itself is closed; try `rateplate judge {}`", record.display()));
+            complain(&format!(
+                "error: {error}\n  the run itself is closed; try `rateplate judge {}`",
+                record.display()
+            ));
             Exit::Record
         }
     }

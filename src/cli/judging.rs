@@ -63,10 +63,20 @@ pub fn judge_record(path: &Path) -> Result<Judged, JudgingError> {
         .flatten()
         .and_then(|(_, bytes)| serde_json::from_slice(&bytes).ok());
     let annex = write_annex(&folder, &analysis, &judgement)?;
-    Ok(Judged { folder, analysis, judgement, annex, before })
+    Ok(Judged {
+        folder,
+        analysis,
+        judgement,
+        annex,
+        before,
+    })
 }
 
-fn write_annex(folder: &Folder, analysis: &Analysis, judgement: &Judgement) -> Result<PathBuf, JudgingError> {
+fn write_annex(
+    folder: &Folder,
+    analysis: &Analysis,
+    judgement: &Judgement,
+) -> Result<PathBuf, JudgingError> {
     let virtual_bench = folder.manifest.virtual_bench.clone();
     let scene = Scene {
         plan: &folder.plan,
@@ -76,14 +86,34 @@ fn write_annex(folder: &Folder, analysis: &Analysis, judgement: &Judgement) -> R
         unit: &folder.manifest.unit,
         virtual_bench: virtual_bench.is_some(),
     };
-    let mut files: Vec<(String, Vec<u8>)> = chart::draw(&scene)?.into_iter().map(|p| (p.name, p.png)).collect();
-    let failed = |source| JudgingError::Write { record: folder.path().to_owned(), source };
-    let json = |bytes: serde_json::Result<Vec<u8>>| bytes.map_err(|e| failed(std::io::Error::other(e)));
-    files.push(("analysis.json".to_owned(), json(serde_json::to_vec_pretty(analysis))?));
-    files.push(("judgement.json".to_owned(), json(serde_json::to_vec_pretty(judgement))?));
-    let csv = |bytes: Result<Vec<u8>, csv::Error>| bytes.map_err(|e| failed(std::io::Error::other(e)));
-    files.push(("results.csv".to_owned(), csv(analysis::results_csv(analysis))?));
-    files.push(("findings.csv".to_owned(), csv(judge::findings_csv(judgement))?));
+    let mut files: Vec<(String, Vec<u8>)> = chart::draw(&scene)?
+        .into_iter()
+        .map(|p| (p.name, p.png))
+        .collect();
+    let failed = |source| JudgingError::Write {
+        record: folder.path().to_owned(),
+        source,
+    };
+    let json =
+        |bytes: serde_json::Result<Vec<u8>>| bytes.map_err(|e| failed(std::io::Error::other(e)));
+    files.push((
+        "analysis.json".to_owned(),
+        json(serde_json::to_vec_pretty(analysis))?,
+    ));
+    files.push((
+        "judgement.json".to_owned(),
+        json(serde_json::to_vec_pretty(judgement))?,
+    ));
+    let csv =
+        |bytes: Result<Vec<u8>, csv::Error>| bytes.map_err(|e| failed(std::io::Error::other(e)));
+    files.push((
+        "results.csv".to_owned(),
+        csv(analysis::results_csv(analysis))?,
+    ));
+    files.push((
+        "findings.csv".to_owned(),
+        csv(judge::findings_csv(judgement))?,
+    ));
     write_judgement(folder.path(), virtual_bench, folder.seal()?, &files).map_err(failed)
 }
 
@@ -103,7 +133,11 @@ pub fn judge_again(path: &Path) -> Exit {
 
 /// Prints the verdict table and where everything is.
 pub fn print_judged(judged: &Judged) {
-    say(&verdict_table(&judged.folder, &judged.analysis, &judged.judgement));
+    say(&verdict_table(
+        &judged.folder,
+        &judged.analysis,
+        &judged.judgement,
+    ));
     if let Some(before) = &judged.before {
         say(&compared(before, &judged.judgement));
     }
@@ -115,7 +149,11 @@ fn compared(before: &Judgement, now: &Judgement) -> String {
     if before == now {
         return "the same as the judgement before, finding by finding".to_owned();
     }
-    let changed = now.findings.iter().filter(|finding| !before.findings.contains(finding)).count();
+    let changed = now
+        .findings
+        .iter()
+        .filter(|finding| !before.findings.contains(finding))
+        .count();
     format!(
         "the judgement before said {}, this one says {}; {changed} of {} findings differ",
         before.verdict.word(),
@@ -126,7 +164,10 @@ fn compared(before: &Judgement, now: &Judgement) -> String {
 
 /// The verdict's code; a run that was cut short without a fail says so.
 pub fn exit_of(judged: &Judged) -> Exit {
-    match (Exit::of(judged.judgement.verdict), &judged.folder.manifest.outcome) {
+    match (
+        Exit::of(judged.judgement.verdict),
+        &judged.folder.manifest.outcome,
+    ) {
         (Exit::NotJudged, outcome) if *outcome != RunOutcome::Complete => Exit::CutShort,
         (exit, _) => exit,
     }

@@ -44,7 +44,10 @@ fn running(args: &Run) -> Result<(PathBuf, Ended), Exit> {
     }
     no_line_virtual(&prepared.plan)?;
     speed_allowed(args.speed, &prepared.plan)?;
-    let runtime = tokio::runtime::Builder::new_multi_thread().worker_threads(2).enable_all().build();
+    let runtime = tokio::runtime::Builder::new_multi_thread()
+        .worker_threads(2)
+        .enable_all()
+        .build();
     let runtime = runtime.map_err(|e| {
         complain(&format!("error: the program can't be started: {e}"));
         Exit::CutShort
@@ -69,7 +72,12 @@ fn no_line_virtual(plan: &Plan) -> Result<(), Exit> {
 }
 
 fn speed_allowed(speed: f64, plan: &Plan) -> Result<(), Exit> {
-    let shortest = plan.guards.silence.iter().map(|s| s.get()).fold(f64::INFINITY, f64::min);
+    let shortest = plan
+        .guards
+        .silence
+        .iter()
+        .map(|s| s.get())
+        .fold(f64::INFINITY, f64::min);
     if !(speed.is_finite() && speed > 0.0) {
         complain("error: --speed: give a positive number; 1 is real time");
         return Err(Exit::Usage);
@@ -86,12 +94,20 @@ fn speed_allowed(speed: f64, plan: &Plan) -> Result<(), Exit> {
     Ok(())
 }
 
-async fn on_bench(args: &Run, prepared: Prepared, unit: UnitNumber) -> Result<(PathBuf, Ended), Exit> {
+async fn on_bench(
+    args: &Run,
+    prepared: Prepared,
+    unit: UnitNumber,
+) -> Result<(PathBuf, Ended), Exit> {
     let clock = Clock::scaled(args.speed);
     let (mouth, heard) = hearing();
     let lines = open_lines(&prepared.plan, &clock, &mouth)?;
     drop(mouth);
-    let identity = Identity { unit: &unit, operator: &args.operator, seed: None };
+    let identity = Identity {
+        unit: &unit,
+        operator: &args.operator,
+        seed: None,
+    };
     let (path, journal) = record_new::open(&args.reports, &prepared, &identity, &clock)?;
     let (stop, stopped) = watch::channel(false);
     tokio::spawn(watch_signals(stop));
@@ -106,7 +122,10 @@ async fn on_bench(args: &Run, prepared: Prepared, unit: UnitNumber) -> Result<(P
         stop: stopped,
         observer: Box::new(Lines::new(args.quiet)),
     };
-    let permissions = Permissions { unattended: args.yes, speed: args.speed };
+    let permissions = Permissions {
+        unattended: args.yes,
+        speed: args.speed,
+    };
     // A task of its own: should it ever die, its lease dies with it.
     let task = tokio::spawn(run::run(bay, permissions, super::cautions::short()));
     match task.await {
@@ -155,8 +174,10 @@ async fn watch_signals(stop: watch::Sender<bool>) {
 #[cfg(unix)]
 async fn asked_to_stop() {
     use tokio::signal::unix::{SignalKind, signal};
-    let (Ok(mut terminate), Ok(mut hang_up)) = (signal(SignalKind::terminate()), signal(SignalKind::hangup()))
-    else {
+    let (Ok(mut terminate), Ok(mut hang_up)) = (
+        signal(SignalKind::terminate()),
+        signal(SignalKind::hangup()),
+    ) else {
         let _ = tokio::signal::ctrl_c().await;
         return;
     };

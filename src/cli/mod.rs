@@ -69,15 +69,24 @@ fn stage(_: &args::Stage) -> Exit {
 fn log_where_asked() {
     use tracing_subscriber::filter::LevelFilter;
     use tracing_subscriber::prelude::*;
-    let wanted = std::env::var("RATEPLATE_LOG").ok().and_then(|level| level.parse::<LevelFilter>().ok());
+    let wanted = std::env::var("RATEPLATE_LOG")
+        .ok()
+        .and_then(|level| level.parse::<LevelFilter>().ok());
     if let Some(level) = wanted {
-        let layer = tracing_subscriber::fmt::layer().with_writer(std::io::stderr).with_ansi(false);
-        tracing_subscriber::registry().with(level).with(layer).init();
+        let layer = tracing_subscriber::fmt::layer()
+            .with_writer(std::io::stderr)
+            .with_ansi(false);
+        tracing_subscriber::registry()
+            .with(level)
+            .with(layer)
+            .init();
     }
 }
 
 /// The end of `--help`: exit codes.
 fn after_help() -> String {
-    let rows = Exit::TABLE.iter().map(|(exit, meaning)| format!("  {:>2}  {meaning}", exit.code()));
+    let rows = Exit::TABLE
+        .iter()
+        .map(|(exit, meaning)| format!("  {:>2}  {meaning}", exit.code()));
     format!("Exit codes:\n{}", rows.collect::<Vec<_>>().join("\n"))
 }

@@ -41,11 +41,21 @@ fn told(plan: &Plan, event: &Event) -> Option<Told> {
         Event::Identified { instrument, reply } => course(format!("{instrument} is {reply}")),
         Event::StepEnded { step, end } => step_ended(plan, *step, end).map(Told::Course),
         Event::Energised => course("ENERGISED".to_owned()),
-        Event::Off { cause, confirmed: true } => course(format!("OFF confirmed ({cause})")),
-        Event::Off { cause, confirmed: false } => trouble(format!(
+        Event::Off {
+            cause,
+            confirmed: true,
+        } => course(format!("OFF confirmed ({cause})")),
+        Event::Off {
+            cause,
+            confirmed: false,
+        } => trouble(format!(
             "OFF NOT CONFIRMED ({cause}): press the emergency stop or pull the plug before you touch the unit"
         )),
-        Event::Answered { text, answer, finding } => course(match finding {
+        Event::Answered {
+            text,
+            answer,
+            finding,
+        } => course(match finding {
             None => format!("{text} {answer}"),
             Some(class) => format!("{text} {answer} ({class:?} finding)").to_lowercase(),
         }),
@@ -68,10 +78,15 @@ fn told(plan: &Plan, event: &Event) -> Option<Told> {
 fn step_ended(plan: &Plan, number: u32, end: &StepEnd) -> Option<String> {
     let step = plan.steps.iter().find(|step| step.number == number)?;
     let verb = step.action.verb();
-    if !matches!(verb, "acclimatise" | "inrush" | "soak" | "measure" | "rest" | "run in" | "abnormal") {
+    if !matches!(
+        verb,
+        "acclimatise" | "inrush" | "soak" | "measure" | "rest" | "run in" | "abnormal"
+    ) {
         return None;
     }
-    let place = step.cell.map_or(String::new(), |cell| format!(", {}", cell_words(&plan.cells[cell])));
+    let place = step.cell.map_or(String::new(), |cell| {
+        format!(", {}", cell_words(&plan.cells[cell]))
+    });
     let how = match end {
         StepEnd::Done => "done",
         StepEnd::Settled => "settled",

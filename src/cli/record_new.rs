@@ -7,7 +7,7 @@ use super::exit::Exit;
 use super::files::{Prepared, file_name_of};
 use super::say::complain;
 use crate::clock::Clock;
-use crate::record::{FolderStore, Heading, Journal, Flushing, UnitNumber, sha256_of};
+use crate::record::{Flushing, FolderStore, Heading, Journal, UnitNumber, sha256_of};
 
 /// What tells one record from another.
 pub struct Identity<'a> {
@@ -47,16 +47,28 @@ pub fn open(
         seed: identity.seed,
         started,
     };
-    let flushing = if clock.is_simulated() { Flushing::EachSecond } else { Flushing::EachRow };
-    let journal = Journal::open(Box::new(store), heading, &prepared.plan, &prepared.copies, flushing)
-        .map_err(|e| unwritable(&path, e))?;
+    let flushing = if clock.is_simulated() {
+        Flushing::EachSecond
+    } else {
+        Flushing::EachRow
+    };
+    let journal = Journal::open(
+        Box::new(store),
+        heading,
+        &prepared.plan,
+        &prepared.copies,
+        flushing,
+    )
+    .map_err(|e| unwritable(&path, e))?;
     Ok((path, journal))
 }
 
 /// From plan, unit, seed and start: the same for the same rehearsal, on every machine.
 fn record_id(prepared: &Prepared, identity: &Identity, started: &str) -> String {
     let plan = serde_json::to_string(&prepared.plan).unwrap_or_default();
-    let seed = identity.seed.map_or_else(String::new, |seed| seed.to_string());
+    let seed = identity
+        .seed
+        .map_or_else(String::new, |seed| seed.to_string());
     let all = [plan.as_str(), identity.unit.as_str(), &seed, started].join("\u{0}");
     sha256_of(all.as_bytes())[..12].to_owned()
 }
@@ -85,5 +97,7 @@ fn free_folder(reports: &Path, name: &str) -> io::Result<(PathBuf, FolderStore)>
             Err(e) => return Err(e),
         }
     }
-    Err(io::Error::other("9999 records of this name are there already"))
+    Err(io::Error::other(
+        "9999 records of this name are there already",
+    ))
 }

@@ -38,7 +38,10 @@ fn rehearsal(args: &Rehearse) -> Result<(PathBuf, Ended), Exit> {
     }
     let bench = virtual_bench(&prepared, &args.virtually, 1.0)?;
     say("VIRTUAL BENCH: a rehearsal in simulated time; nothing is energised");
-    let runtime = tokio::runtime::Builder::new_current_thread().enable_time().start_paused(true).build();
+    let runtime = tokio::runtime::Builder::new_current_thread()
+        .enable_time()
+        .start_paused(true)
+        .build();
     let runtime = runtime.map_err(|e| {
         complain(&format!("error: simulated time can't be started: {e}"));
         Exit::CutShort
@@ -53,7 +56,11 @@ async fn play(
     unit: &UnitNumber,
 ) -> Result<(PathBuf, Ended), Exit> {
     let clock = Clock::simulated();
-    let identity = Identity { unit, operator: "virtual operator", seed: Some(args.virtually.seed) };
+    let identity = Identity {
+        unit,
+        operator: "virtual operator",
+        seed: Some(args.virtually.seed),
+    };
     let (path, journal) = record_new::open(&args.recorded.reports, prepared, &identity, &clock)?;
     let (mouth, heard) = hearing();
     let lines = line_setups(&prepared.plan)
@@ -77,7 +84,10 @@ async fn play(
         stop: stopped,
         observer: Box::new(Lines::new(args.recorded.quiet)),
     };
-    let permissions = Permissions { unattended: true, speed: 1.0 };
+    let permissions = Permissions {
+        unattended: true,
+        speed: 1.0,
+    };
     let ended = run::run(bay, permissions, super::cautions::short()).await;
     Ok((path, ended))
 }

@@ -30,17 +30,27 @@ pub fn stage(args: &Stage) -> Exit {
         Err(exit) => return exit,
     };
     let clock = Clock::scaled(args.speed);
-    let names: Vec<String> = prepared.plan.lines.iter().map(|line| line.name.clone()).collect();
+    let names: Vec<String> = prepared
+        .plan
+        .lines
+        .iter()
+        .map(|line| line.name.clone())
+        .collect();
     let staged = match terminals::stage(&bench, &names, clock.clone()) {
         Ok(staged) => staged,
         Err(error) => {
-            complain(&format!("error: the pseudo-terminals can't be opened: {error}"));
+            complain(&format!(
+                "error: the pseudo-terminals can't be opened: {error}"
+            ));
             return Exit::CutShort;
         }
     };
     let file = bench_file(&prepared.plan, &staged.ports);
     if let Err(error) = put_whole(&args.write, file.as_bytes()) {
-        complain(&format!("error: {}: can't be written: {error}", args.write.display()));
+        complain(&format!(
+            "error: {}: can't be written: {error}",
+            args.write.display()
+        ));
         return Exit::Record;
     }
     for (line, port) in &staged.ports {
@@ -63,7 +73,9 @@ fn serve_hands(hands: &Hands, plan: &Plan, clock: &Clock) {
     for line in std::io::stdin().lock().lines() {
         let Ok(line) = line else { return };
         match line.trim().split_once(' ') {
-            Some(("position", name)) if plan.appliance.positions.iter().any(|p| p == name.trim()) => {
+            Some(("position", name))
+                if plan.appliance.positions.iter().any(|p| p == name.trim()) =>
+            {
                 hands.turn(name.trim(), clock.now());
             }
             Some(("condition", name)) => hands.set_condition(name.trim(), clock.now()),
@@ -84,7 +96,10 @@ fn serve_hands(hands: &Hands, plan: &Plan, clock: &Clock) {
 /// strings, which YAML reads alike.
 fn bench_file(plan: &Plan, ports: &[(String, String)]) -> String {
     let q = |text: &str| serde_json::Value::from(text).to_string();
-    let mut out = format!("# written by `rateplate stage`\nbench: {}\nlines:\n", q(&format!("{} (staged)", plan.bench)));
+    let mut out = format!(
+        "# written by `rateplate stage`\nbench: {}\nlines:\n",
+        q(&format!("{} (staged)", plan.bench))
+    );
     for (line, port) in ports {
         let _ = writeln!(out, "  {}: {{port: {}, baud: 0}}", q(line), q(port));
     }
@@ -94,14 +109,28 @@ fn bench_file(plan: &Plan, ports: &[(String, String)]) -> String {
         let _ = writeln!(
             out,
             "  {}: {{line: {}, driver: {}, identity: {}}}",
-            q(&i.name), q(line), q(&i.driver.name), q(&i.identity)
+            q(&i.name),
+            q(line),
+            q(&i.driver.name),
+            q(&i.identity)
         );
     }
-    let _ = writeln!(out, "bays:\n  {}:\n    rated current: {}\n    roles:", q(&plan.bay.name), plan.bay.rated_current);
+    let _ = writeln!(
+        out,
+        "bays:\n  {}:\n    rated current: {}\n    roles:",
+        q(&plan.bay.name),
+        plan.bay.rated_current
+    );
     for role in &plan.bay.roles {
         let instrument = q(&plan.instrument_of(role).name);
-        let channel = role.channel.map_or_else(String::new, |c| format!(", channel: {c}"));
-        let _ = writeln!(out, "      {}: {{instrument: {instrument}{channel}}}", q(&role.name));
+        let channel = role
+            .channel
+            .map_or_else(String::new, |c| format!(", channel: {c}"));
+        let _ = writeln!(
+            out,
+            "      {}: {{instrument: {instrument}{channel}}}",
+            q(&role.name)
+        );
     }
     out
 }

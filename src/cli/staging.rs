@@ -15,10 +15,18 @@ use crate::virtual_bench::{Connection, Fault, Staging, VirtualBench};
 ///
 /// # Errors
 /// [`Exit::BadInput`] after the reason was printed.
-pub fn virtual_bench(prepared: &Prepared, args: &Virtually, speed: f64) -> Result<VirtualBench, Exit> {
+pub fn virtual_bench(
+    prepared: &Prepared,
+    args: &Virtually,
+    speed: f64,
+) -> Result<VirtualBench, Exit> {
     all_lines_virtual(&prepared.plan)?;
     let unit = virtual_unit(&prepared.plan, args)?;
-    let faults = args.faults.iter().map(|name| fault(name)).collect::<Result<_, _>>()?;
+    let faults = args
+        .faults
+        .iter()
+        .map(|name| fault(name))
+        .collect::<Result<_, _>>()?;
     let ambient = args.ambient.parse::<Celsius>().map_err(|e| {
         complain(&format!("error: --ambient: {e}; write it as `23 °C`"));
         Exit::Usage
@@ -68,9 +76,9 @@ fn virtual_unit(plan: &Plan, args: &Virtually) -> Result<VirtualUnit, Exit> {
         return loaded.value.ok_or_else(|| refuse(&loaded.problems));
     }
     let model = &plan.appliance.model;
-    let known = shipped::VIRTUAL_UNITS.iter().filter_map(|file| {
-        spec::load_virtual_unit(file.path, file.text.as_bytes()).value
-    });
+    let known = shipped::VIRTUAL_UNITS
+        .iter()
+        .filter_map(|file| spec::load_virtual_unit(file.path, file.text.as_bytes()).value);
     let mut known = known.collect::<Vec<_>>();
     match known.iter().position(|unit| unit.model.value == *model) {
         Some(found) => Ok(known.swap_remove(found)),

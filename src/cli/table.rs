@@ -27,7 +27,10 @@ pub fn verdict_table(folder: &Folder, analysis: &Analysis, judgement: &Judgement
     if let Some(ended) = ended(&folder.manifest.outcome) {
         lines.push(ended);
     }
-    lines.push(format!("VERDICT    {}", judgement.verdict.word().to_uppercase()));
+    lines.push(format!(
+        "VERDICT    {}",
+        judgement.verdict.word().to_uppercase()
+    ));
     lines.extend(wrapped("because    ", &judgement.because));
     lines.join("\n")
 }
@@ -66,14 +69,24 @@ fn plate_line(plan: &Plan) -> Option<String> {
 fn result_row(cell: &CellResult) -> Vec<String> {
     vec![
         cell_words(&cell.cell),
-        shown(&cell.inrush, |inrush| format!("{} A", digits(inrush.peak_a.value, 3))),
+        shown(&cell.inrush, |inrush| {
+            format!("{} A", digits(inrush.peak_a.value, 3))
+        }),
         shown(&cell.settled_s, |s| format!("{} min", digits(s / 60.0, 3))),
         shown(&cell.steady, |steady| {
-            format!("{} +-{} W", digits(steady.power_w.value, 4), digits(steady.power_w.expanded, 2))
+            format!(
+                "{} +-{} W",
+                digits(steady.power_w.value, 4),
+                digits(steady.power_w.expanded, 2)
+            )
         }),
         shown(&cell.body_peak, |peak| {
             let value = &peak.temperature_degc;
-            format!("{} +-{} °C", decimals(value.value, 1), decimals(value.expanded, 1))
+            format!(
+                "{} +-{} °C",
+                decimals(value.value, 1),
+                decimals(value.expanded, 1)
+            )
         }),
     ]
 }
@@ -88,7 +101,10 @@ fn findings(findings: &[Finding]) -> Vec<String> {
     let mut lines = aligned(&head, &rows);
     for finding in findings {
         if finding.value.is_none() && !finding.reason.is_empty() {
-            lines.extend(wrapped("  ", &format!("{}: {}", finding.rule, finding.reason)));
+            lines.extend(wrapped(
+                "  ",
+                &format!("{}: {}", finding.rule, finding.reason),
+            ));
         }
     }
     lines
@@ -115,26 +131,44 @@ fn finding_row(finding: &Finding) -> Vec<String> {
         (None, Some(high)) => format!("to {}", with_unit(high)),
         (None, None) => "-".to_owned(),
     };
-    let margin = finding.margin.map_or_else(|| "-".to_owned(), |m| format!("{m:+.2} {unit}"));
-    vec![rule, value, limits, margin, finding.outcome.word().to_owned()]
+    let margin = finding
+        .margin
+        .map_or_else(|| "-".to_owned(), |m| format!("{m:+.2} {unit}"));
+    vec![
+        rule,
+        value,
+        limits,
+        margin,
+        finding.outcome.word().to_owned(),
+    ]
 }
 
 /// Columns as wide as their widest cell, two blanks between.
 fn aligned(head: &[&str], rows: &[Vec<String>]) -> Vec<String> {
     let width = |column: usize| {
         let cells = rows.iter().map(|row| row[column].chars().count());
-        cells.chain([head[column].chars().count()]).max().unwrap_or(0)
+        cells
+            .chain([head[column].chars().count()])
+            .max()
+            .unwrap_or(0)
     };
     let widths: Vec<usize> = (0..head.len()).map(width).collect();
     let line = |cells: Vec<&str>| {
-        let padded = cells.iter().zip(&widths).map(|(cell, width)| {
-            format!("{cell}{}", " ".repeat(width - cell.chars().count()))
-        });
+        let padded = cells
+            .iter()
+            .zip(&widths)
+            .map(|(cell, width)| format!("{cell}{}", " ".repeat(width - cell.chars().count())));
         padded.collect::<Vec<_>>().join("  ").trim_end().to_owned()
     };
     let rule: Vec<String> = widths.iter().map(|width| "-".repeat(*width)).collect();
-    let mut lines = vec![line(head.to_vec()), line(rule.iter().map(String::as_str).collect())];
-    lines.extend(rows.iter().map(|row| line(row.iter().map(String::as_str).collect())));
+    let mut lines = vec![
+        line(head.to_vec()),
+        line(rule.iter().map(String::as_str).collect()),
+    ];
+    lines.extend(
+        rows.iter()
+            .map(|row| line(row.iter().map(String::as_str).collect())),
+    );
     lines
 }
 

@@ -26,7 +26,10 @@ impl Terminal {
                 }
             }
         });
-        Self { name: name.to_owned(), lines }
+        Self {
+            name: name.to_owned(),
+            lines,
+        }
     }
 }
 
@@ -39,7 +42,9 @@ impl Operator for Terminal {
         Box::pin(async move {
             say(&shown(prompt));
             loop {
-                let Some(line) = self.lines.recv().await else { return Reply::Stop };
+                let Some(line) = self.lines.recv().await else {
+                    return Reply::Stop;
+                };
                 let line = line.trim();
                 if line.eq_ignore_ascii_case("stop") {
                     return Reply::Stop;
@@ -47,7 +52,11 @@ impl Operator for Terminal {
                 if is_answer(&prompt.want, line) {
                     return Reply::Given(line.to_owned());
                 }
-                say(&format!("  {:?} is no answer here: {}", line, wanted(&prompt.want)));
+                say(&format!(
+                    "  {:?} is no answer here: {}",
+                    line,
+                    wanted(&prompt.want)
+                ));
             }
         })
     }
@@ -55,18 +64,27 @@ impl Operator for Terminal {
 
 fn shown(prompt: &Prompt) -> String {
     let head = format!("=== {} / unit {} ===", prompt.bay, prompt.unit);
-    format!("\n{head}\n{}\n  {}, or `stop`", prompt.text, wanted(&prompt.want))
+    format!(
+        "\n{head}\n{}\n  {}, or `stop`",
+        prompt.text,
+        wanted(&prompt.want)
+    )
 }
 
 fn wanted(want: &Want) -> String {
     match want {
         Want::Acknowledge => "type `yes` when you have read this and act on it".to_owned(),
-        Want::Done | Want::Condition { .. } | Want::Position { .. } => "type `done` when it is done".to_owned(),
+        Want::Done | Want::Condition { .. } | Want::Position { .. } => {
+            "type `done` when it is done".to_owned()
+        }
         Want::Answer(question) => match &question.answer {
             AnswerKind::YesNo => "type `yes` or `no`".to_owned(),
             AnswerKind::Number { unit, .. } => format!("type a number in {unit}"),
             AnswerKind::Choice(choices) => {
-                let numbered = choices.iter().enumerate().map(|(n, c)| format!("{} {c}", n + 1));
+                let numbered = choices
+                    .iter()
+                    .enumerate()
+                    .map(|(n, c)| format!("{} {c}", n + 1));
                 format!("type one of: {}", numbered.collect::<Vec<_>>().join(", "))
             }
         },
@@ -77,7 +95,9 @@ fn wanted(want: &Want) -> String {
 fn is_answer(want: &Want, line: &str) -> bool {
     match want {
         Want::Acknowledge => line.eq_ignore_ascii_case("yes"),
-        Want::Done | Want::Condition { .. } | Want::Position { .. } => line.eq_ignore_ascii_case("done"),
+        Want::Done | Want::Condition { .. } | Want::Position { .. } => {
+            line.eq_ignore_ascii_case("done")
+        }
         Want::Answer(question) => understand(question, line).is_some(),
     }
 }

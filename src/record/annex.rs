@@ -8,7 +8,7 @@ use std::path::{Path, PathBuf};
 use serde::{Deserialize, Serialize};
 
 use super::hash::sha256_of;
-use super::store::{Store, FolderStore};
+use super::store::{FolderStore, Store};
 use super::types::FileHash;
 
 /// What an annex's manifest says, written last.
@@ -40,7 +40,10 @@ pub fn write_judgement(
     let mut hashes = Vec::new();
     for (name, bytes) in files {
         store.put_whole(name, bytes)?;
-        hashes.push(FileHash { name: name.clone(), sha256: sha256_of(bytes) });
+        hashes.push(FileHash {
+            name: name.clone(),
+            sha256: sha256_of(bytes),
+        });
     }
     hashes.sort_by(|a, b| a.name.cmp(&b.name));
     let manifest = AnnexManifest {

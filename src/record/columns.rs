@@ -8,8 +8,17 @@ use crate::quantity::{Moment, Reading, Readings, shortest};
 
 /// Columns of `samples.csv` before the quantities.
 pub const SAMPLE_HEAD: [&str; 11] = [
-    "seq", "request_us", "reply_us", "bay", "step", "position", "condition", "supply", "role",
-    "energised", "status",
+    "seq",
+    "request_us",
+    "reply_us",
+    "bay",
+    "step",
+    "position",
+    "condition",
+    "supply",
+    "role",
+    "energised",
+    "status",
 ];
 
 /// Columns of `events.csv`.
@@ -40,7 +49,12 @@ impl Names {
     pub fn of(plan: &Plan) -> Self {
         Self {
             bay: defused(&plan.bay.name),
-            roles: plan.bay.roles.iter().map(|role| defused(&role.name)).collect(),
+            roles: plan
+                .bay
+                .roles
+                .iter()
+                .map(|role| defused(&role.name))
+                .collect(),
             cells: plan.cells.iter().map(cell_names).collect(),
         }
     }
@@ -55,14 +69,21 @@ impl Names {
         row.push_field(self.bay.as_bytes());
         row.push_field(number.integer(u64::from(sample.step)));
         for column in 0..3 {
-            let text = sample.cell.map_or("", |cell| self.cells[cell][column].as_str());
+            let text = sample
+                .cell
+                .map_or("", |cell| self.cells[cell][column].as_str());
             row.push_field(text.as_bytes());
         }
         row.push_field(self.roles[sample.role].as_bytes());
         row.push_field(if sample.energised { b"1" } else { b"0" });
         row.push_field(sample.status.word().as_bytes());
         for kind in Reading::ALL {
-            row.push_field(sample.readings.get(kind).map_or(&[][..], |value| number.decimal(value)));
+            row.push_field(
+                sample
+                    .readings
+                    .get(kind)
+                    .map_or(&[][..], |value| number.decimal(value)),
+            );
         }
     }
 
@@ -78,7 +99,9 @@ impl Names {
             let column = SAMPLE_HEAD.len() + n;
             let text = text_at(row, column);
             if !text.is_empty() {
-                let value: f64 = text.parse().map_err(|_| wrong(kind.column(), &text, "a number"))?;
+                let value: f64 = text
+                    .parse()
+                    .map_err(|_| wrong(kind.column(), &text, "a number"))?;
                 if !value.is_finite() {
                     return Err(wrong(kind.column(), &text, "a finite number"));
                 }
@@ -114,7 +137,9 @@ impl Names {
             return Ok(None);
         }
         let found = self.cells.iter().position(|cell| *cell == names);
-        found.map(Some).ok_or_else(|| wrong("position", &names.join(" / "), "a cell of the plan"))
+        found
+            .map(Some)
+            .ok_or_else(|| wrong("position", &names.join(" / "), "a cell of the plan"))
     }
 }
 
@@ -133,15 +158,26 @@ fn cell_names(cell: &Cell) -> [String; 3] {
 
 /// A text from outside that no spreadsheet takes for a formula.
 pub fn defused(text: &str) -> String {
-    let clean: String = text.chars().map(|c| if c.is_control() { ' ' } else { c }).collect();
-    if clean.starts_with(['=', '+', '-', '@']) { format!("'{clean}") } else { clean }
+    let clean: String = text
+        .chars()
+        .map(|c| if c.is_control() { ' ' } else { c })
+        .collect();
+    if clean.starts_with(['=', '+', '-', '@']) {
+        format!("'{clean}")
+    } else {
+        clean
+    }
 }
 
 /// One row of `events.csv`: the event's name, and the rest of it as JSON.
 pub fn write_happening(happening: &Happening) -> Result<[String; 4], serde_json::Error> {
     let mut detail = serde_json::to_value(&happening.event)?;
     let name = detail.as_object_mut().and_then(|map| map.remove("event"));
-    let name = name.as_ref().and_then(|n| n.as_str()).unwrap_or_default().to_owned();
+    let name = name
+        .as_ref()
+        .and_then(|n| n.as_str())
+        .unwrap_or_default()
+        .to_owned();
     let seq = happening.seq.to_string();
     let at = happening.at.as_micros().to_string();
     Ok([seq, at, name, serde_json::to_string(&detail)?])
@@ -155,7 +191,9 @@ pub fn read_happening(row: &ByteRecord) -> Result<Happening, RowError> {
     let detail = text_at(row, 3);
     let mut value: serde_json::Value =
         serde_json::from_str(&detail).map_err(|_| wrong("detail", &detail, "JSON"))?;
-    let map = value.as_object_mut().ok_or_else(|| wrong("detail", &detail, "a JSON object"))?;
+    let map = value
+        .as_object_mut()
+        .ok_or_else(|| wrong("detail", &detail, "a JSON object"))?;
     map.insert("event".to_owned(), text_at(row, 2).into());
     let event: Event = serde_json::from_value(value)
         .map_err(|_| wrong("event", &text_at(row, 2), "an event with its detail"))?;
@@ -168,12 +206,14 @@ pub fn read_happening(row: &ByteRecord) -> Result<Happening, RowError> {
 
 fn integer_event(row: &ByteRecord, column: usize, name: &'static str) -> Result<u64, RowError> {
     let text = text_at(row, column);
-    text.parse().map_err(|_| wrong(name, &text, "a whole number"))
+    text.parse()
+        .map_err(|_| wrong(name, &text, "a whole number"))
 }
 
 fn integer_at(row: &ByteRecord, column: usize) -> Result<u64, RowError> {
     let text = text_at(row, column);
-    text.parse().map_err(|_| wrong(SAMPLE_HEAD[column], &text, "a whole number"))
+    text.parse()
+        .map_err(|_| wrong(SAMPLE_HEAD[column], &text, "a whole number"))
 }
 
 fn text_at(row: &ByteRecord, column: usize) -> String {
@@ -182,7 +222,11 @@ fn text_at(row: &ByteRecord, column: usize) -> String {
 
 fn wrong(column: &str, found: &str, wanted: &'static str) -> RowError {
     let found = found.chars().take(40).collect();
-    RowError { column: column.to_owned(), found, wanted }
+    RowError {
+        column: column.to_owned(),
+        found,
+        wanted,
+    }
 }
 
 /// Text of one number at a time, without an allocation per cell.
@@ -215,11 +259,17 @@ mod tests {
         let happening = Happening {
             seq: 7,
             at: Moment::from_micros(12),
-            event: Event::Off { cause: "end, \"normal\"".to_owned(), confirmed: true },
+            event: Event::Off {
+                cause: "end, \"normal\"".to_owned(),
+                confirmed: true,
+            },
         };
         let row = write_happening(&happening).unwrap();
         assert_eq!(row[2], "off");
-        assert_eq!(read_happening(&ByteRecord::from(row.to_vec())).unwrap(), happening);
+        assert_eq!(
+            read_happening(&ByteRecord::from(row.to_vec())).unwrap(),
+            happening
+        );
     }
 
     #[test]

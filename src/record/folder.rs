@@ -121,7 +121,13 @@ impl Folder {
             happenings.push(happening);
             Ok(())
         })?;
-        Ok(Self { path: path.to_owned(), manifest, plan, samples, happenings })
+        Ok(Self {
+            path: path.to_owned(),
+            manifest,
+            plan,
+            samples,
+            happenings,
+        })
     }
 
     /// The record's folder.
@@ -145,7 +151,9 @@ fn read_manifest(path: &Path, run: &Path) -> Result<Manifest, RecordError> {
     let bytes = match fs::read(&file) {
         Ok(bytes) => bytes,
         Err(e) if e.kind() == io::ErrorKind::NotFound && run.is_dir() => {
-            return Err(RecordError::NotClosed { folder: path.to_owned() });
+            return Err(RecordError::NotClosed {
+                folder: path.to_owned(),
+            });
         }
         Err(e) => return Err(unreadable(&file, e)),
     };
@@ -155,7 +163,11 @@ fn read_manifest(path: &Path, run: &Path) -> Result<Manifest, RecordError> {
     })?;
     match manifest.format {
         RECORD_FORMAT => Ok(manifest),
-        found => Err(RecordError::Newer { file, found, known: RECORD_FORMAT }),
+        found => Err(RecordError::Newer {
+            file,
+            found,
+            known: RECORD_FORMAT,
+        }),
     }
 }
 
@@ -167,7 +179,11 @@ fn read_plan(file: &Path) -> Result<Plan, RecordError> {
     })?;
     match plan.format {
         PLAN_FORMAT => Ok(plan),
-        found => Err(RecordError::Newer { file: file.to_owned(), found, known: PLAN_FORMAT }),
+        found => Err(RecordError::Newer {
+            file: file.to_owned(),
+            found,
+            known: PLAN_FORMAT,
+        }),
     }
 }
 
@@ -175,7 +191,9 @@ fn read_plan(file: &Path) -> Result<Plan, RecordError> {
 fn safe_name<'a>(run: &Path, name: &'a str) -> Result<&'a str, RecordError> {
     let plain = !name.is_empty()
         && !name.starts_with('.')
-        && name.chars().all(|c| c.is_alphanumeric() || matches!(c, '-' | '_' | '.'));
+        && name
+            .chars()
+            .all(|c| c.is_alphanumeric() || matches!(c, '-' | '_' | '.'));
     if plain {
         return Ok(name);
     }
@@ -193,10 +211,17 @@ fn read_rows(
     let bytes = fs::read(file).map_err(|e| unreadable(file, e))?;
     let lines = bytes.iter().filter(|b| **b == b'\n').count() as u64;
     if bytes.last().is_some_and(|b| *b != b'\n') {
-        return Err(RecordError::Torn { file: file.to_owned(), line: lines + 1 });
+        return Err(RecordError::Torn {
+            file: file.to_owned(),
+            line: lines + 1,
+        });
     }
     let mut reader = csv::Reader::from_reader(bytes.as_slice());
-    let bad = |line, what: String| RecordError::Row { file: file.to_owned(), line, what };
+    let bad = |line, what: String| RecordError::Row {
+        file: file.to_owned(),
+        line,
+        what,
+    };
     let found = reader.headers().map_err(|e| bad(1, e.to_string()))?;
     if !found.iter().eq(head.iter().copied()) {
         return Err(bad(1, format!("the columns should be {}", head.join(","))));
@@ -225,5 +250,8 @@ fn in_order(column: &str, found: u64, expected: u64) -> Result<(), RowError> {
 }
 
 fn unreadable(file: &Path, source: io::Error) -> RecordError {
-    RecordError::Read { file: file.to_owned(), source }
+    RecordError::Read {
+        file: file.to_owned(),
+        source,
+    }
 }

@@ -7,9 +7,7 @@ use csv::ByteRecord;
 use super::columns::{EVENT_HEAD, Names, SAMPLE_HEAD, write_happening};
 use super::hash::sha256_of;
 use super::store::{Store, StoreFile};
-use super::types::{
-    Event, FileHash, Happening, Manifest, RECORD_FORMAT, RunOutcome, Sample,
-};
+use super::types::{Event, FileHash, Happening, Manifest, RECORD_FORMAT, RunOutcome, Sample};
 use crate::plan::Plan;
 use crate::quantity::{Moment, Reading};
 
@@ -86,7 +84,9 @@ impl Journal {
         written.push(copy_whole(store.as_mut(), "plan.json", &plan_json)?);
         let mut samples = csv::Writer::from_writer(Hashing::new(store.create("samples.csv")?));
         let quantities = Reading::ALL.map(Reading::column);
-        samples.write_record(SAMPLE_HEAD.iter().chain(&quantities)).map_err(io::Error::other)?;
+        samples
+            .write_record(SAMPLE_HEAD.iter().chain(&quantities))
+            .map_err(io::Error::other)?;
         let mut events = csv::Writer::from_writer(Hashing::new(store.create("events.csv")?));
         events.write_record(EVENT_HEAD).map_err(io::Error::other)?;
         let wire = Hashing::new(store.create("wire.txt")?);
@@ -135,7 +135,9 @@ impl Journal {
         sample.seq = self.sample_count;
         self.last = self.last.max(sample.reply);
         self.names.write_sample(sample, &mut self.row);
-        self.samples.write_byte_record(&self.row).map_err(io::Error::other)?;
+        self.samples
+            .write_byte_record(&self.row)
+            .map_err(io::Error::other)?;
         self.flush_when_due(sample.reply)
     }
 
@@ -146,7 +148,11 @@ impl Journal {
     pub fn event(&mut self, at: Moment, event: Event) -> io::Result<Happening> {
         self.event_count += 1;
         self.last = self.last.max(at);
-        let happening = Happening { seq: self.event_count, at, event };
+        let happening = Happening {
+            seq: self.event_count,
+            at,
+            event,
+        };
         let row = write_happening(&happening).map_err(io::Error::other)?;
         self.events.write_record(&row).map_err(io::Error::other)?;
         self.events.flush()?;
@@ -185,7 +191,12 @@ impl Journal {
     /// # Errors
     /// Where something can't be written; the record then stays open and says so.
     pub fn close(&mut self, at: Moment, outcome: RunOutcome) -> io::Result<Manifest> {
-        self.event(at, Event::Ended { outcome: outcome.clone() })?;
+        self.event(
+            at,
+            Event::Ended {
+                outcome: outcome.clone(),
+            },
+        )?;
         self.flush()?;
         let mut files = self.copies.clone();
         for (name, file) in [
@@ -194,7 +205,10 @@ impl Journal {
             ("wire.txt", &self.wire),
         ] {
             file.file.sync()?;
-            files.push(FileHash { name: name.to_owned(), sha256: file.digest() });
+            files.push(FileHash {
+                name: name.to_owned(),
+                sha256: file.digest(),
+            });
         }
         files.sort_by(|a, b| a.name.cmp(&b.name));
         let manifest = self.manifest(outcome, files);
@@ -242,7 +256,10 @@ impl Journal {
 
 fn copy_whole(store: &mut dyn Store, name: &str, bytes: &[u8]) -> io::Result<FileHash> {
     store.put_whole(name, bytes)?;
-    Ok(FileHash { name: name.to_owned(), sha256: sha256_of(bytes) })
+    Ok(FileHash {
+        name: name.to_owned(),
+        sha256: sha256_of(bytes),
+    })
 }
 
 /// Printable ASCII as it is, the rest as `\n`, `\r`, `\t`, `\\` or `\xNN`.
@@ -273,12 +290,21 @@ impl Hashing {
     const ENOUGH: usize = 32 * 1024;
 
     fn new(file: Box<dyn StoreFile>) -> Self {
-        Self { file, buffer: Vec::with_capacity(Self::ENOUGH), state: sha2::Digest::new() }
+        Self {
+            file,
+            buffer: Vec::with_capacity(Self::ENOUGH),
+            state: sha2::Digest::new(),
+        }
     }
 
     fn digest(&self) -> String {
         use sha2::Digest;
-        self.state.clone().finalize().iter().map(|b| format!("{b:02x}")).collect()
+        self.state
+            .clone()
+            .finalize()
+            .iter()
+            .map(|b| format!("{b:02x}"))
+            .collect()
     }
 }
 

@@ -32,7 +32,12 @@ impl StoreFile for File {
     fn sync(&self) -> io::Result<()> {
         match self.sync_data() {
             // Some file systems and devices have nothing to sync; their writes still count.
-            Err(e) if matches!(e.kind(), io::ErrorKind::InvalidInput | io::ErrorKind::Unsupported) => {
+            Err(e)
+                if matches!(
+                    e.kind(),
+                    io::ErrorKind::InvalidInput | io::ErrorKind::Unsupported
+                ) =>
+            {
                 Ok(())
             }
             other => other,
@@ -56,14 +61,21 @@ impl FolderStore {
             fs::create_dir_all(parent)?;
         }
         fs::create_dir(path)?;
-        Ok(Self { path: path.to_owned() })
+        Ok(Self {
+            path: path.to_owned(),
+        })
     }
 }
 
 impl Store for FolderStore {
     fn create(&mut self, name: &str) -> io::Result<Box<dyn StoreFile>> {
         let path = self.path.join(name);
-        Ok(Box::new(OpenOptions::new().create_new(true).append(true).open(path)?))
+        Ok(Box::new(
+            OpenOptions::new()
+                .create_new(true)
+                .append(true)
+                .open(path)?,
+        ))
     }
 
     fn put_whole(&mut self, name: &str, bytes: &[u8]) -> io::Result<()> {

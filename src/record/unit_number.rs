@@ -27,7 +27,9 @@ pub enum UnitNumberError {
     )]
     Character(char),
     /// A leading dot, or a name that one system keeps for devices.
-    #[error("the unit number `{0}` can't be a folder's name on every system; put a letter in front")]
+    #[error(
+        "the unit number `{0}` can't be a folder's name on every system; put a letter in front"
+    )]
     Reserved(String),
 }
 
@@ -82,7 +84,9 @@ mod tests {
 
     #[test]
     fn whatever_could_leave_the_folder_is_refused() {
-        for text in ["../../x", "a/b", "a\\b", "..", ".hidden", "x.", "nul", "COM1", "lpt2.txt", "", "  "] {
+        for text in [
+            "../../x", "a/b", "a\\b", "..", ".hidden", "x.", "nul", "COM1", "lpt2.txt", "", "  ",
+        ] {
             assert!(UnitNumber::new(text).is_err(), "{text}");
         }
         assert!(UnitNumber::new("a\u{0}").is_err());

@@ -59,7 +59,10 @@ impl From<io::Error> for Cut {
 
 impl From<ExchangeError> for Cut {
     fn from(error: ExchangeError) -> Self {
-        Cut::Lost { instrument: error.instrument.clone(), detail: error.to_string() }
+        Cut::Lost {
+            instrument: error.instrument.clone(),
+            detail: error.to_string(),
+        }
     }
 }
 
@@ -185,12 +188,18 @@ impl Working {
 
     /// Polls every role that can be read, each no faster than its instrument updates.
     pub(super) fn poll_every(&mut self, every: Seconds) {
-        let wanted: Vec<Option<Seconds>> = self.plan.bay.roles.iter().map(|role| {
-            let driver = &self.plan.instrument_of(role).driver;
-            let polled = matches!(role.kind, RoleKind::PowerMeter | RoleKind::Temperature);
-            let slowest = every.get().max(driver.update_interval.get());
-            (polled && !driver.readings.is_empty()).then(|| Seconds::of(slowest))
-        }).collect();
+        let wanted: Vec<Option<Seconds>> = self
+            .plan
+            .bay
+            .roles
+            .iter()
+            .map(|role| {
+                let driver = &self.plan.instrument_of(role).driver;
+                let polled = matches!(role.kind, RoleKind::PowerMeter | RoleKind::Temperature);
+                let slowest = every.get().max(driver.update_interval.get());
+                (polled && !driver.readings.is_empty()).then(|| Seconds::of(slowest))
+            })
+            .collect();
         if wanted != self.every {
             self.every = wanted;
             self.send_polls();
@@ -216,10 +225,18 @@ impl Working {
         let mut polls = Vec::new();
         for (role_number, role) in self.plan.bay.roles.iter().enumerate() {
             let (on_line, instrument) = self.wiring[role.instrument];
-            let Some(every) = self.every[role_number].filter(|_| on_line == line) else { continue };
+            let Some(every) = self.every[role_number].filter(|_| on_line == line) else {
+                continue;
+            };
             for query in 0..self.plan.instrument_of(role).driver.readings.len() {
                 let tag = role_number as u32 * QUERIES + query as u32;
-                polls.push(Poll { tag, instrument, query, channel: role.channel, every });
+                polls.push(Poll {
+                    tag,
+                    instrument,
+                    query,
+                    channel: role.channel,
+                    every,
+                });
             }
         }
         polls
@@ -227,7 +244,9 @@ impl Working {
 
     /// Roles that are polled now.
     pub(super) fn polled_roles(&self) -> Vec<usize> {
-        (0..self.every.len()).filter(|role| self.every[*role].is_some()).collect()
+        (0..self.every.len())
+            .filter(|role| self.every[*role].is_some())
+            .collect()
     }
 
     /// Attends to samples, guards, lease and stop until the goal is reached.
@@ -253,7 +272,9 @@ impl Working {
         self.write_told()?;
         if let Some(lease) = &self.lease {
             if !lease.is_alive() {
-                return Err(Cut::Failed("the lease ended: the line switched the output off by itself".to_owned()));
+                return Err(Cut::Failed(
+                    "the lease ended: the line switched the output off by itself".to_owned(),
+                ));
             }
             lease.renew();
         }
@@ -290,7 +311,8 @@ impl Working {
             readings,
         };
         lock(&self.journal).sample(&mut sample)?;
-        self.watchman.sample(sample.reply, role, status, &readings)?;
+        self.watchman
+            .sample(sample.reply, role, status, &readings)?;
         if let Some(goal) = goal {
             let watched = self.watched[role];
             let value = watched.and_then(|(_, reading)| readings.get(reading));
@@ -306,10 +328,21 @@ impl Working {
     pub(super) fn write_told(&mut self) -> Result<(), Cut> {
         while let Ok(told) = self.heard.told.try_recv() {
             match told {
-                Told::Wire { line, at, way, bytes } => lock(&self.journal).wire(&line, at, way, &bytes)?,
-                Told::Off { at, instrument, cause, confirmed } => {
+                Told::Wire {
+                    line,
+                    at,
+                    way,
+                    bytes,
+                } => lock(&self.journal).wire(&line, at, way, &bytes)?,
+                Told::Off {
+                    at,
+                    instrument,
+                    cause,
+                    confirmed,
+                } => {
                     let cause = format!("{instrument}: {cause}");
-                    let happening = lock(&self.journal).event(at, Event::Off { cause, confirmed })?;
+                    let happening =
+                        lock(&self.journal).event(at, Event::Off { cause, confirmed })?;
                     self.observer.happened(&self.plan, &happening);
                 }
             }
@@ -331,7 +364,9 @@ impl Working {
 
     /// Asks the operator while attending to everything else.
     pub(super) async fn ask(&mut self, prompt: &Prompt) -> Result<String, Cut> {
-        self.note(Event::Prompted { text: prompt.text.clone() })?;
+        self.note(Event::Prompted {
+            text: prompt.text.clone(),
+        })?;
         let mut operator = std::mem::replace(&mut self.operator, Box::new(Nobody));
         let reply = self.attend_to(operator.ask(prompt)).await;
         self.operator = operator;

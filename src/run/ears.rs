@@ -54,7 +54,13 @@ pub struct Mouth {
 pub fn hearing() -> (Mouth, Heard) {
     let (samples_in, samples) = unbounded_channel();
     let (told_in, told) = unbounded_channel();
-    (Mouth { samples: samples_in, told: told_in }, Heard { samples, told })
+    (
+        Mouth {
+            samples: samples_in,
+            told: told_in,
+        },
+        Heard { samples, told },
+    )
 }
 
 impl Mouth {
@@ -83,7 +89,12 @@ impl Tap for Teller {
 
 impl Teller {
     fn wire(&self, line: &str, at: Moment, way: Way, bytes: &[u8]) {
-        let told = Told::Wire { line: line.to_owned(), at, way, bytes: bytes.to_vec() };
+        let told = Told::Wire {
+            line: line.to_owned(),
+            at,
+            way,
+            bytes: bytes.to_vec(),
+        };
         let _ = self.0.send(told);
     }
 }
@@ -91,6 +102,11 @@ impl Teller {
 impl Witness for Teller {
     fn off(&mut self, at: Moment, instrument: &str, cause: &str, confirmed: bool) {
         let (instrument, cause) = (instrument.to_owned(), cause.to_owned());
-        let _ = self.0.send(Told::Off { at, instrument, cause, confirmed });
+        let _ = self.0.send(Told::Off {
+            at,
+            instrument,
+            cause,
+            confirmed,
+        });
     }
 }

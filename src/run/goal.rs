@@ -54,7 +54,13 @@ impl Cooling {
     /// Waits from `now` on; after an energised stretch the after-heat is watched too.
     pub fn new(within: Kelvins, at_most: Seconds, now: Moment, after_heat: bool) -> Self {
         let earliest = if after_heat { now + AFTER_HEAT } else { now };
-        Self { within, earliest, limit: now + at_most, body: VecDeque::new(), ambient: None }
+        Self {
+            within,
+            earliest,
+            limit: now + at_most,
+            body: VecDeque::new(),
+            ambient: None,
+        }
     }
 
     fn take(&mut self, at: Moment, watched: Watched, value: f64) {
@@ -88,7 +94,9 @@ impl Goal {
         if let Goal::Heard { missing, .. } = self {
             missing.retain(|other| *other != role || value.is_none());
         }
-        let (Some(watched), Some(value)) = (watched, value) else { return };
+        let (Some(watched), Some(value)) = (watched, value) else {
+            return;
+        };
         match self {
             Goal::Settled { settle, .. } => settle.take(at, watched, value),
             Goal::Cool(cooling) => cooling.take(at, watched, value),
@@ -130,7 +138,12 @@ mod tests {
     }
 
     fn cooling() -> Goal {
-        Goal::Cool(Cooling::new(Kelvins::of(3.0), Seconds::of(3600.0), at(0.0), true))
+        Goal::Cool(Cooling::new(
+            Kelvins::of(3.0),
+            Seconds::of(3600.0),
+            at(0.0),
+            true,
+        ))
     }
 
     fn feed(goal: &mut Goal, s: f64, body: f64) -> Option<StepEnd> {

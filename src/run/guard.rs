@@ -38,8 +38,12 @@ struct On {
 impl Watchman {
     /// Guards of a plan, not energised.
     pub fn new(plan: &Plan) -> Self {
-        let roles: Vec<(&str, RoleKind)> =
-            plan.bay.roles.iter().map(|role| (role.name.as_str(), role.kind)).collect();
+        let roles: Vec<(&str, RoleKind)> = plan
+            .bay
+            .roles
+            .iter()
+            .map(|role| (role.name.as_str(), role.kind))
+            .collect();
         Self::watching(plan.guards.clone(), &roles)
     }
 
@@ -62,7 +66,13 @@ impl Watchman {
 
     /// The unit is about to be energised in a cell.
     pub fn energised(&mut self, at: Moment, cell: Option<usize>) {
-        let on = On { since: at, cell, body_then: self.body, drew_power: false, rise_seen: false };
+        let on = On {
+            since: at,
+            cell,
+            body_then: self.body,
+            drew_power: false,
+            rise_seen: false,
+        };
         self.on = Some(on);
     }
 
@@ -92,7 +102,13 @@ impl Watchman {
     ///
     /// # Errors
     /// The trip that it is.
-    pub fn sample(&mut self, at: Moment, role: usize, status: Status, readings: &Readings) -> Result<(), Trip> {
+    pub fn sample(
+        &mut self,
+        at: Moment,
+        role: usize,
+        status: Status,
+        readings: &Readings,
+    ) -> Result<(), Trip> {
         if self.counts_as_heard(role, status) {
             self.heard[role] = at;
         }
@@ -138,7 +154,9 @@ impl Watchman {
     }
 
     fn temperature(&mut self, at: Moment, role: usize, readings: &Readings) -> Result<(), Trip> {
-        let Some(value) = readings.get(Reading::Temperature) else { return Ok(()) };
+        let Some(value) = readings.get(Reading::Temperature) else {
+            return Ok(());
+        };
         if Some(role) == self.ambient_role {
             self.ambient = Some(value);
         }
@@ -148,31 +166,47 @@ impl Watchman {
         self.body = Some(value);
         let ambient = self.ambient;
         let least = self.guards.least_rise.get();
-        let Some(on) = &mut self.on else { return Ok(()) };
+        let Some(on) = &mut self.on else {
+            return Ok(());
+        };
         let from_start = on.body_then.map(|then| value - then);
         let from_ambient = ambient.map(|ambient| value - ambient);
-        if from_start.max(from_ambient).is_some_and(|rise| rise >= least) {
+        if from_start
+            .max(from_ambient)
+            .is_some_and(|rise| rise >= least)
+        {
             on.rise_seen = true;
         }
         match self.body_limit {
             Some(limit) if at_least(value, limit.get()) => {
                 let after = at.since(on.since);
-                Err(Trip(format!("body at {value} °C, limit {limit}, {} s after energising", after.get().round())))
+                Err(Trip(format!(
+                    "body at {value} °C, limit {limit}, {} s after energising",
+                    after.get().round()
+                )))
             }
             _ => Ok(()),
         }
     }
 
     fn input(&mut self, at: Moment, readings: &Readings) -> Result<(), Trip> {
-        let Some(on) = &mut self.on else { return Ok(()) };
+        let Some(on) = &mut self.on else {
+            return Ok(());
+        };
         if let Some(current) = readings.get(Reading::Current)
             && current > self.guards.current.get()
         {
             let limit = self.guards.current;
-            return Err(Trip(format!("current {current} A, limit {limit} (the bay's rating)")));
+            return Err(Trip(format!(
+                "current {current} A, limit {limit} (the bay's rating)"
+            )));
         }
-        let Some(power) = readings.get(Reading::Power) else { return Ok(()) };
-        let Some(limit) = on.cell.and_then(|cell| self.guards.input.get(cell)) else { return Ok(()) };
+        let Some(power) = readings.get(Reading::Power) else {
+            return Ok(());
+        };
+        let Some(limit) = on.cell.and_then(|cell| self.guards.input.get(cell)) else {
+            return Ok(());
+        };
         // A tenth of what the plate could draw is heating that must show in the body.
         on.drew_power |= power > 0.1 * limit.get();
         let after = at.since(on.since);
@@ -236,7 +270,12 @@ mod tests {
     }
 
     fn degrees(watchman: &mut Watchman, s: f64, role: usize, value: f64) -> Result<(), Trip> {
-        watchman.sample(at(s), role, Status::Ok, &Readings::one(Reading::Temperature, value))
+        watchman.sample(
+            at(s),
+            role,
+            Status::Ok,
+            &Readings::one(Reading::Temperature, value),
+        )
     }
 
     fn drawn(watchman: &mut Watchman, s: f64, current: f64, power: f64) -> Result<(), Trip> {
@@ -250,7 +289,10 @@ mod tests {
         assert!(degrees(&mut energised(), 20.0, BODY, 110.999).is_ok());
         assert!(degrees(&mut energised(), 20.0, BODY, 111.0).is_err());
         let trip = degrees(&mut energised(), 20.0, BODY, 120.0).unwrap_err();
-        assert!(trip.0.contains("120 °C") && trip.0.contains("111 °C"), "{trip:?}");
+        assert!(
+            trip.0.contains("120 °C") && trip.0.contains("111 °C"),
+            "{trip:?}"
+        );
     }
 
     #[test]
@@ -288,8 +330,14 @@ mod tests {
     #[test]
     fn a_sentinel_keeps_a_meter_heard_but_not_a_temperature() {
         let mut watchman = energised();
-        for (role, status) in [(METER, Status::Overload), (AMBIENT, Status::Ok), (BODY, Status::Overload)] {
-            watchman.sample(at(20.0), role, status, &Readings::NONE).unwrap();
+        for (role, status) in [
+            (METER, Status::Overload),
+            (AMBIENT, Status::Ok),
+            (BODY, Status::Overload),
+        ] {
+            watchman
+                .sample(at(20.0), role, status, &Readings::NONE)
+                .unwrap();
         }
         let trip = watchman.tick(at(20.0)).unwrap_err();
         assert!(trip.0.contains("`body`"), "{trip:?}");
@@ -311,7 +359,10 @@ mod tests {
         assert!(fallen_off.tick(at(310.5)).is_err());
         let mut dead = energised();
         keep_heard(&mut dead, 311.0, 0.2, 23.0);
-        assert!(dead.tick(at(311.0)).is_ok(), "a dead unit is no sensor's fault");
+        assert!(
+            dead.tick(at(311.0)).is_ok(),
+            "a dead unit is no sensor's fault"
+        );
         let mut good = energised();
         keep_heard(&mut good, 200.0, 9.0, 33.0);
         keep_heard(&mut good, 311.0, 9.0, 30.0);

@@ -42,13 +42,29 @@ pub enum Want {
 
 impl Prompt {
     /// A prompt to touch the unit: only with proof that the output is off.
-    pub(super) fn touching(_off: &OffConfirmed, bay: &str, unit: &str, text: String, want: Want) -> Self {
-        Self { bay: bay.to_owned(), unit: unit.to_owned(), text, want }
+    pub(super) fn touching(
+        _off: &OffConfirmed,
+        bay: &str,
+        unit: &str,
+        text: String,
+        want: Want,
+    ) -> Self {
+        Self {
+            bay: bay.to_owned(),
+            unit: unit.to_owned(),
+            text,
+            want,
+        }
     }
 
     /// A prompt that asks for reading, looking or answering only.
     pub(super) fn looking(bay: &str, unit: &str, text: String, want: Want) -> Self {
-        Self { bay: bay.to_owned(), unit: unit.to_owned(), text, want }
+        Self {
+            bay: bay.to_owned(),
+            unit: unit.to_owned(),
+            text,
+            want,
+        }
     }
 }
 
@@ -80,19 +96,26 @@ pub fn understand(question: &Question, answer: &str) -> Option<(String, Option<F
     let said = match &question.answer {
         AnswerKind::YesNo => yes_or_no(answer)?.to_owned(),
         AnswerKind::Choice(choices) => choice_of(choices, answer)?.to_owned(),
-        AnswerKind::Number { unit, .. } => {
-            format!("{} {unit}", number_in(answer, unit)?).trim_end().to_owned()
-        }
+        AnswerKind::Number { unit, .. } => format!("{} {unit}", number_in(answer, unit)?)
+            .trim_end()
+            .to_owned(),
     };
-    let found = question.finding.as_ref().filter(|finding| match &question.answer {
-        AnswerKind::Number { unit, at_least, at_most } => {
-            let value = number_in(answer, unit).unwrap_or(f64::NAN);
-            let above = at_least.is_none_or(|limit| value >= limit);
-            let below = at_most.is_none_or(|limit| value <= limit);
-            !(above && below)
-        }
-        _ => said.eq_ignore_ascii_case(&finding.when),
-    });
+    let found = question
+        .finding
+        .as_ref()
+        .filter(|finding| match &question.answer {
+            AnswerKind::Number {
+                unit,
+                at_least,
+                at_most,
+            } => {
+                let value = number_in(answer, unit).unwrap_or(f64::NAN);
+                let above = at_least.is_none_or(|limit| value >= limit);
+                let below = at_most.is_none_or(|limit| value <= limit);
+                !(above && below)
+            }
+            _ => said.eq_ignore_ascii_case(&finding.when),
+        });
     Some((said, found.map(|finding| finding.class)))
 }
 
@@ -106,7 +129,9 @@ fn yes_or_no(answer: &str) -> Option<&'static str> {
 
 /// By its text, or by its number from 1.
 fn choice_of<'a>(choices: &'a [String], answer: &str) -> Option<&'a str> {
-    let by_text = choices.iter().find(|choice| choice.eq_ignore_ascii_case(answer));
+    let by_text = choices
+        .iter()
+        .find(|choice| choice.eq_ignore_ascii_case(answer));
     let by_number = || choices.get(answer.parse::<usize>().ok()?.checked_sub(1)?);
     by_text.or_else(by_number).map(String::as_str)
 }
@@ -122,14 +147,24 @@ mod tests {
     use crate::spec::sequence::QuestionFinding;
 
     fn question(answer: AnswerKind, when: &str) -> Question {
-        let finding = Some(QuestionFinding { when: when.to_owned(), class: FindingClass::Major });
-        Question { text: "?".to_owned(), answer, finding }
+        let finding = Some(QuestionFinding {
+            when: when.to_owned(),
+            class: FindingClass::Major,
+        });
+        Question {
+            text: "?".to_owned(),
+            answer,
+            finding,
+        }
     }
 
     #[test]
     fn a_no_that_is_a_finding_is_found() {
         let q = question(AnswerKind::YesNo, "no");
-        assert_eq!(understand(&q, "N"), Some(("no".to_owned(), Some(FindingClass::Major))));
+        assert_eq!(
+            understand(&q, "N"),
+            Some(("no".to_owned(), Some(FindingClass::Major)))
+        );
         assert_eq!(understand(&q, "yes"), Some(("yes".to_owned(), None)));
         assert_eq!(understand(&q, "maybe"), None);
         assert_eq!(understand(&q, ""), None);
@@ -137,10 +172,17 @@ mod tests {
 
     #[test]
     fn a_number_outside_its_limits_is_a_finding() {
-        let kind = AnswerKind::Number { unit: "mm".to_owned(), at_least: Some(1.0), at_most: Some(2.0) };
+        let kind = AnswerKind::Number {
+            unit: "mm".to_owned(),
+            at_least: Some(1.0),
+            at_most: Some(2.0),
+        };
         let q = question(kind, "outside");
         assert_eq!(understand(&q, "1.0 mm"), Some(("1 mm".to_owned(), None)));
-        assert_eq!(understand(&q, "2.1"), Some(("2.1 mm".to_owned(), Some(FindingClass::Major))));
+        assert_eq!(
+            understand(&q, "2.1"),
+            Some(("2.1 mm".to_owned(), Some(FindingClass::Major)))
+        );
         assert_eq!(understand(&q, "NaN"), None);
     }
 

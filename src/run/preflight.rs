@@ -46,7 +46,10 @@ async fn identify_all(bay: &mut Working) -> Result<Vec<Option<f64>>, Cut> {
         let (line, index) = bay.instrument(number);
         let identity = line.identify(index).await?;
         let instrument = bay.plan.instruments[number].name.clone();
-        bay.note(Event::Identified { instrument, reply: identity.reply.clone() })?;
+        bay.note(Event::Identified {
+            instrument,
+            reply: identity.reply.clone(),
+        })?;
         speeds.push(identity.virtual_speed);
     }
     Ok(speeds)
@@ -61,10 +64,15 @@ fn hold_to(permissions: Permissions, all_virtual: bool, speeds: &[Option<f64>]) 
     }
     if permissions.speed != 1.0 && !all_virtual {
         return Err(Cut::Failed(
-            "a speed other than 1 is refused: not every instrument says that it is VIRTUAL".to_owned(),
+            "a speed other than 1 is refused: not every instrument says that it is VIRTUAL"
+                .to_owned(),
         ));
     }
-    match speeds.iter().flatten().find(|speed| **speed != permissions.speed) {
+    match speeds
+        .iter()
+        .flatten()
+        .find(|speed| **speed != permissions.speed)
+    {
         Some(speed) => Err(Cut::Failed(format!(
             "the virtual bench runs at speed {speed}, this run at {}; give --speed {speed}",
             permissions.speed
@@ -84,7 +92,9 @@ async fn prepare_all(bay: &mut Working) -> Result<(), Cut> {
 async fn confirm_off(bay: &mut Working) -> Result<(), Cut> {
     let plan = bay.plan.clone();
     let Some((_, role)) = plan.role_of_kind(RoleKind::Supply) else {
-        return Err(Cut::Failed("the plan has no supply: nothing could de-energise the unit".to_owned()));
+        return Err(Cut::Failed(
+            "the plan has no supply: nothing could de-energise the unit".to_owned(),
+        ));
     };
     let (line, index) = bay.instrument_of(role);
     bay.off = Some(line.ensure_off(index, "before the run").await?);

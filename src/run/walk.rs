@@ -47,7 +47,11 @@ pub async fn run(bay: Bay, permissions: Permissions, cautions: &str) -> Ended {
     let outcome = outcome_of(walked, [recorded, rest]);
     let manifest = lock(&journal).close(working.clock.now(), outcome.clone());
     let off_unconfirmed = working.off_trouble.take().or(closing);
-    Ended { outcome, manifest, off_unconfirmed }
+    Ended {
+        outcome,
+        manifest,
+        off_unconfirmed,
+    }
 }
 
 /// Turns a panic into a cut, so that the way out is the same as for every other end.
@@ -63,7 +67,10 @@ async fn unpanicked(walking: impl Future<Output = Result<(), Cut>>) -> Result<()
 fn words_of(panic: &(dyn Any + Send)) -> String {
     let text = panic.downcast_ref::<String>().map(String::as_str);
     let text = text.or_else(|| panic.downcast_ref::<&str>().copied());
-    format!("the program itself failed: {}", text.unwrap_or("no reason given"))
+    format!(
+        "the program itself failed: {}",
+        text.unwrap_or("no reason given")
+    )
 }
 
 async fn walk(bay: &mut Working, permissions: Permissions, cautions: &str) -> Result<(), Cut> {
@@ -80,10 +87,16 @@ async fn walk(bay: &mut Working, permissions: Permissions, cautions: &str) -> Re
         if let Err(cut) = end {
             // OFF is sent before the step's end is recorded.
             switch_off(bay, Some(&cut)).await;
-            bay.note(Event::StepEnded { step: step.number, end: shown })?;
+            bay.note(Event::StepEnded {
+                step: step.number,
+                end: shown,
+            })?;
             return Err(cut);
         }
-        bay.note(Event::StepEnded { step: step.number, end: shown })?;
+        bay.note(Event::StepEnded {
+            step: step.number,
+            end: shown,
+        })?;
     }
     Ok(())
 }
@@ -96,30 +109,45 @@ async fn take_step(
 ) -> Result<StepEnd, Cut> {
     match &step.action {
         Action::Instruct(text) => touch(bay, text.clone(), Want::Done).await,
-        Action::SetCondition { condition, instruction } => {
-            let want = Want::Condition { name: condition.clone() };
+        Action::SetCondition {
+            condition,
+            instruction,
+        } => {
+            let want = Want::Condition {
+                name: condition.clone(),
+            };
             touch(bay, instruction.clone(), want).await
         }
         Action::Ask(question) => ask(bay, question).await,
         Action::SetSupply(point) => set_supply(bay, *point).await,
-        Action::SetPosition { position, number, by_switch } => {
-            set_position(bay, position, *number, *by_switch).await
-        }
+        Action::SetPosition {
+            position,
+            number,
+            by_switch,
+        } => set_position(bay, position, *number, *by_switch).await,
         Action::Energise => energise(bay, cleared, later).await,
         Action::Deenergise => deenergise(bay).await,
         Action::Inrush(timed) | Action::Measure(timed) | Action::RunIn(timed) => {
             stay(bay, &step.action, timed.length, timed.every).await
         }
-        Action::Soak { at_least, at_most, every, until } => {
-            soak(bay, until, *at_least, *at_most, *every).await
-        }
+        Action::Soak {
+            at_least,
+            at_most,
+            every,
+            until,
+        } => soak(bay, until, *at_least, *at_most, *every).await,
         Action::Acclimatise(waiting) | Action::Rest(waiting) => {
             bay.poll_every(waiting.every);
             let rest = matches!(step.action, Action::Rest(_));
             let cooling = Cooling::new(waiting.within, waiting.at_most, bay.clock.now(), rest);
             bay.attend(&mut Goal::Cool(cooling)).await
         }
-        Action::Abnormal { length, every, body, .. } => {
+        Action::Abnormal {
+            length,
+            every,
+            body,
+            ..
+        } => {
             bay.watchman.body_limit(*body);
             stay(bay, &step.action, *length, *every).await
         }
@@ -130,7 +158,9 @@ async fn take_step(
 async fn touch(bay: &mut Working, text: String, want: Want) -> Result<StepEnd, Cut> {
     bay.poll_nothing();
     let Some(off) = bay.off.take() else {
-        return Err(Cut::Failed("a unit may be touched only after OFF was confirmed".to_owned()));
+        return Err(Cut::Failed(
+            "a unit may be touched only after OFF was confirmed".to_owned(),
+        ));
     };
     let prompt = Prompt::touching(&off, &bay.plan.bay.name, &bay.unit, text, want);
     bay.off = Some(off);
@@ -147,10 +177,16 @@ async fn ask(bay: &mut Working, question: &Question) -> Result<StepEnd, Cut> {
     loop {
         let said = bay.ask(&prompt).await?;
         if let Some((answer, finding)) = understand(question, &said) {
-            bay.note(Event::Answered { text: question.text.clone(), answer, finding })?;
+            bay.note(Event::Answered {
+                text: question.text.clone(),
+                answer,
+                finding,
+            })?;
             return Ok(StepEnd::Done);
         }
-        bay.note(Event::Noted { text: format!("not an answer to this question: {said:?}") })?;
+        bay.note(Event::Noted {
+            text: format!("not an answer to this question: {said:?}"),
+        })?;
     }
 }
 
@@ -165,15 +201,24 @@ async fn set_supply(bay: &mut Working, point: SupplyPoint) -> Result<StepEnd, Cu
     bay.note(Event::SupplySet { what })?;
     line.change(index, Change::Voltage(point.voltage)).await?;
     if driver.settings.frequency.is_some() {
-        line.change(index, Change::Frequency(point.frequency)).await?;
+        line.change(index, Change::Frequency(point.frequency))
+            .await?;
     }
     Ok(StepEnd::Done)
 }
 
-async fn set_position(bay: &mut Working, position: &str, number: u32, by_switch: bool) -> Result<StepEnd, Cut> {
+async fn set_position(
+    bay: &mut Working,
+    position: &str,
+    number: u32,
+    by_switch: bool,
+) -> Result<StepEnd, Cut> {
     let by = if by_switch { "switch" } else { "operator" };
     if by_switch {
-        bay.note(Event::PositionSet { position: position.to_owned(), by: by.to_owned() })?;
+        bay.note(Event::PositionSet {
+            position: position.to_owned(),
+            by: by.to_owned(),
+        })?;
         let plan = bay.plan.clone();
         let Some((_, role)) = plan.role_of_kind(RoleKind::PositionSwitch) else {
             return Err(Cut::Failed("the plan has no position switch".to_owned()));
@@ -182,14 +227,28 @@ async fn set_position(bay: &mut Working, position: &str, number: u32, by_switch:
         line.change(index, Change::Position(number)).await?;
     } else {
         let text = format!("Set the unit's switch to `{position}`.");
-        touch(bay, text, Want::Position { name: position.to_owned() }).await?;
-        bay.note(Event::PositionSet { position: position.to_owned(), by: by.to_owned() })?;
+        touch(
+            bay,
+            text,
+            Want::Position {
+                name: position.to_owned(),
+            },
+        )
+        .await?;
+        bay.note(Event::PositionSet {
+            position: position.to_owned(),
+            by: by.to_owned(),
+        })?;
     }
     Ok(StepEnd::Done)
 }
 
 /// Takes the proof of the pre-flight check; every sensor has answered before.
-async fn energise(bay: &mut Working, _cleared: &Cleared, later: &[PlannedStep]) -> Result<StepEnd, Cut> {
+async fn energise(
+    bay: &mut Working,
+    _cleared: &Cleared,
+    later: &[PlannedStep],
+) -> Result<StepEnd, Cut> {
     bay.poll_every(next_interval(later));
     let missing = bay.polled_roles();
     let limit = bay.clock.now() + FIRST_READINGS;
@@ -234,7 +293,12 @@ async fn deenergise(bay: &mut Working) -> Result<StepEnd, Cut> {
 }
 
 /// Energised for a time; the inrush counts from the moment of energising.
-async fn stay(bay: &mut Working, action: &Action, length: Seconds, every: Seconds) -> Result<StepEnd, Cut> {
+async fn stay(
+    bay: &mut Working,
+    action: &Action,
+    length: Seconds,
+    every: Seconds,
+) -> Result<StepEnd, Cut> {
     bay.poll_every(every);
     let from = match (action, bay.energised_at) {
         (Action::Inrush(_), Some(on)) => on,
@@ -254,12 +318,18 @@ async fn soak(
     let on = bay.energised_at.unwrap_or(Moment::START);
     let cycling = bay.plan.appliance.thermostat;
     let settle = Box::new(Settle::new(until, at_least, every, cycling, on));
-    bay.attend(&mut Goal::Settled { settle, limit: on + at_most }).await
+    bay.attend(&mut Goal::Settled {
+        settle,
+        limit: on + at_most,
+    })
+    .await
 }
 
 /// Sends OFF and waits for its confirmation, whatever ended the walk.
 async fn switch_off(bay: &mut Working, cut: Option<&Cut>) {
-    let Some(lease) = bay.lease.take() else { return };
+    let Some(lease) = bay.lease.take() else {
+        return;
+    };
     let closed = lease.close(&cause_of(cut)).await;
     bay.watchman.off();
     bay.energised_at = None;
@@ -284,12 +354,17 @@ fn record_cut(bay: &mut Working, walked: &Result<(), Cut>) -> Result<(), Cut> {
     bay.poll_nothing();
     let event = match walked {
         Ok(()) | Err(Cut::Record(_)) => return Ok(()),
-        Err(Cut::Tripped(reason)) => Event::Tripped { reason: reason.clone() },
+        Err(Cut::Tripped(reason)) => Event::Tripped {
+            reason: reason.clone(),
+        },
         Err(Cut::Stopped) => Event::Stopped,
-        Err(Cut::Lost { instrument, detail }) => {
-            Event::Lost { instrument: instrument.clone(), detail: detail.clone() }
-        }
-        Err(Cut::Failed(reason)) => Event::Noted { text: reason.clone() },
+        Err(Cut::Lost { instrument, detail }) => Event::Lost {
+            instrument: instrument.clone(),
+            detail: detail.clone(),
+        },
+        Err(Cut::Failed(reason)) => Event::Noted {
+            text: reason.clone(),
+        },
     };
     bay.write_told().and(bay.note(event))
 }
@@ -306,15 +381,18 @@ async fn end_lines(bay: &mut Working) -> Option<String> {
 
 /// A failure to write the record outweighs what ended the walk: the record is not whole.
 fn outcome_of(walked: Result<(), Cut>, written: [Result<(), Cut>; 2]) -> RunOutcome {
-    let unwritten = written.into_iter().filter_map(Result::err).find(|cut| matches!(cut, Cut::Record(_)));
+    let unwritten = written
+        .into_iter()
+        .filter_map(Result::err)
+        .find(|cut| matches!(cut, Cut::Record(_)));
     match unwritten.map_or(walked, Err) {
         Ok(()) => RunOutcome::Complete,
         Err(Cut::Tripped(reason)) => RunOutcome::Tripped { reason },
         Err(Cut::Stopped) => RunOutcome::Stopped,
         Err(Cut::Lost { detail, .. }) => RunOutcome::Failed { reason: detail },
         Err(Cut::Failed(reason)) => RunOutcome::Failed { reason },
-        Err(Cut::Record(error)) => {
-            RunOutcome::Failed { reason: format!("the record can't be written: {error}") }
-        }
+        Err(Cut::Record(error)) => RunOutcome::Failed {
+            reason: format!("the record can't be written: {error}"),
+        },
     }
 }

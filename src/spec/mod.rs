@@ -7,6 +7,7 @@ pub mod driver;
 mod fields;
 mod load;
 mod nearest;
+pub mod plate;
 mod render;
 mod scalars;
 pub mod sequence;

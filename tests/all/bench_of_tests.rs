@@ -10,7 +10,8 @@ use rateplate::plan::{Plan, PlannedRole, resolve};
 use rateplate::quantity::{Celsius, Moment};
 use rateplate::record::{Flushing, Heading, Journal, Store};
 use rateplate::run::{
-    self, Answering, Bay, Ended, Observer, Operator, Permissions, Prompt, Reply, Want, hearing, line_setups,
+    self, Answering, Bay, Ended, Observer, Operator, Permissions, Prompt, Reply, Want, hearing,
+    line_setups,
 };
 use rateplate::spec::{self, shipped};
 use rateplate::virtual_bench::{Connection, Fault, Hands, Staging, VirtualBench};
@@ -21,7 +22,10 @@ pub const SHORT: &str = include_str!("../data/short.yaml");
 /// The program, in a folder.
 pub fn program(folder: &Path, arguments: &[&str]) -> Output {
     let mut command = Command::new(env!("CARGO_BIN_EXE_rateplate"));
-    command.current_dir(folder).args(arguments).stdin(std::process::Stdio::null());
+    command
+        .current_dir(folder)
+        .args(arguments)
+        .stdin(std::process::Stdio::null());
     command.output().expect("the program starts")
 }
 
@@ -33,8 +37,10 @@ pub fn printed(output: &Output) -> String {
 
 /// The only record below `reports` in a folder.
 pub fn only_record(folder: &Path) -> PathBuf {
-    let entries: Vec<PathBuf> =
-        std::fs::read_dir(folder.join("reports")).unwrap().map(|e| e.unwrap().path()).collect();
+    let entries: Vec<PathBuf> = std::fs::read_dir(folder.join("reports"))
+        .unwrap()
+        .map(|e| e.unwrap().path())
+        .collect();
     assert_eq!(entries.len(), 1, "{entries:?}");
     entries.into_iter().next().unwrap()
 }
@@ -45,8 +51,10 @@ pub fn plan_of(sequence: &str) -> Plan {
     let bench = spec::load_bench("bench.yaml", shipped::VIRTUAL_BENCH.text.as_bytes());
     let problems = spec::render(&sequence.problems);
     let (sequence, bench) = (sequence.value.expect(&problems), bench.value.unwrap());
-    let drivers: Vec<_> =
-        shipped::DRIVERS.iter().map(|d| spec::load_driver(d.path, d.text.as_bytes()).value.unwrap()).collect();
+    let drivers: Vec<_> = shipped::DRIVERS
+        .iter()
+        .map(|d| spec::load_driver(d.path, d.text.as_bytes()).value.unwrap())
+        .collect();
     let resolved = resolve(&sequence, &bench, &drivers, None, None);
     let problems = spec::render(&resolved.problems);
     resolved.plan.expect(&problems)
@@ -57,7 +65,9 @@ pub fn virtual_bench(plan: &Plan, seed: u64, faults: &[&str]) -> VirtualBench {
     let mut units = shipped::VIRTUAL_UNITS
         .iter()
         .filter_map(|f| spec::load_virtual_unit(f.path, f.text.as_bytes()).value);
-    let unit = units.find(|unit| unit.model.value == plan.appliance.model).unwrap();
+    let unit = units
+        .find(|unit| unit.model.value == plan.appliance.model)
+        .unwrap();
     let connect = |role: &PlannedRole| {
         let instrument = plan.instrument_of(role);
         Connection {
@@ -75,7 +85,10 @@ pub fn virtual_bench(plan: &Plan, seed: u64, faults: &[&str]) -> VirtualBench {
         positions: plan.appliance.positions.clone(),
         connections: plan.bay.roles.iter().map(connect).collect(),
         seed,
-        faults: faults.iter().map(|name| name.parse::<Fault>().unwrap()).collect(),
+        faults: faults
+            .iter()
+            .map(|name| name.parse::<Fault>().unwrap())
+            .collect(),
         ambient: Celsius::of(23.0),
         speed: 1.0,
     })
@@ -124,11 +137,21 @@ impl Observer for Silent {
 
 /// A paused runtime, as rehearsals use it.
 pub fn paused() -> tokio::runtime::Runtime {
-    tokio::runtime::Builder::new_current_thread().enable_time().start_paused(true).build().unwrap()
+    tokio::runtime::Builder::new_current_thread()
+        .enable_time()
+        .start_paused(true)
+        .build()
+        .unwrap()
 }
 
 /// A bay on a virtual bench, ready to run, inside a paused runtime.
-pub fn bay(plan: &Plan, bench: &VirtualBench, store: Box<dyn Store>, clock: &Clock, setup: Setup) -> std::io::Result<Bay> {
+pub fn bay(
+    plan: &Plan,
+    bench: &VirtualBench,
+    store: Box<dyn Store>,
+    clock: &Clock,
+    setup: Setup,
+) -> std::io::Result<Bay> {
     let heading = Heading {
         record: "test".to_owned(),
         unit: "T-1".to_owned(),
@@ -159,7 +182,10 @@ pub fn bay(plan: &Plan, bench: &VirtualBench, store: Box<dyn Store>, clock: &Clo
 }
 
 /// The run's permissions in simulated time.
-pub const SIMULATED: Permissions = Permissions { unattended: true, speed: 1.0 };
+pub const SIMULATED: Permissions = Permissions {
+    unattended: true,
+    speed: 1.0,
+};
 
 /// Runs a bay to its end.
 pub async fn run_bay(bay: Bay) -> Ended {

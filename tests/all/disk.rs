@@ -24,8 +24,12 @@ struct FillingFile {
 }
 
 fn take(room: &AtomicUsize, wanted: usize) -> io::Result<()> {
-    let taken = room.fetch_update(Ordering::Relaxed, Ordering::Relaxed, |left| left.checked_sub(wanted));
-    taken.map(|_| ()).map_err(|_| io::Error::new(io::ErrorKind::StorageFull, "no space left"))
+    let taken = room.fetch_update(Ordering::Relaxed, Ordering::Relaxed, |left| {
+        left.checked_sub(wanted)
+    });
+    taken
+        .map(|_| ())
+        .map_err(|_| io::Error::new(io::ErrorKind::StorageFull, "no space left"))
 }
 
 impl Write for FillingFile {
@@ -47,7 +51,10 @@ impl StoreFile for FillingFile {
 
 impl Store for Filling {
     fn create(&mut self, name: &str) -> io::Result<Box<dyn StoreFile>> {
-        Ok(Box::new(FillingFile { inner: self.inner.create(name)?, room: self.room.clone() }))
+        Ok(Box::new(FillingFile {
+            inner: self.inner.create(name)?,
+            room: self.room.clone(),
+        }))
     }
 
     fn put_whole(&mut self, name: &str, bytes: &[u8]) -> io::Result<()> {
@@ -63,7 +70,10 @@ fn run_with_room(folder: &Path, room: usize) -> Option<(RunOutcome, bool, bool)>
     let ended = paused().block_on(async {
         let clock = Clock::simulated();
         let inner = FolderStore::create(&folder.join("run")).unwrap();
-        let store = Filling { inner, room: Arc::new(AtomicUsize::new(room)) };
+        let store = Filling {
+            inner,
+            room: Arc::new(AtomicUsize::new(room)),
+        };
         let (_stop, stopped) = tokio::sync::watch::channel(false);
         let setup = Setup {
             operator: Box::new(Willing(bench.hands(), clock.clone())),
@@ -82,15 +92,31 @@ fn a_disk_that_fills_up_at_any_time_leaves_the_unit_off_and_the_record_open() {
     let mut energised_once = 0;
     for room in [0, 5_000, 40_000, 60_000, 90_000, 120_000] {
         let folder = tempfile::tempdir().unwrap();
-        let Some((outcome, on, closed)) = run_with_room(folder.path(), room) else { continue };
+        let Some((outcome, on, closed)) = run_with_room(folder.path(), room) else {
+            continue;
+        };
         energised_once += 1;
-        let RunOutcome::Failed { reason } = &outcome else { panic!("{room}: {outcome:?}") };
-        assert!(reason.contains("record can't be written"), "{room}: {reason}");
+        let RunOutcome::Failed { reason } = &outcome else {
+            panic!("{room}: {outcome:?}")
+        };
+        assert!(
+            reason.contains("record can't be written"),
+            "{room}: {reason}"
+        );
         assert!(!on, "{room}");
-        assert!(!closed, "{room}: a record that is not whole has no manifest");
-        assert!(Folder::open(folder.path()).is_err(), "{room}: it is never judged");
+        assert!(
+            !closed,
+            "{room}: a record that is not whole has no manifest"
+        );
+        assert!(
+            Folder::open(folder.path()).is_err(),
+            "{room}: it is never judged"
+        );
     }
-    assert!(energised_once >= 2, "some of the disks are large enough to start on");
+    assert!(
+        energised_once >= 2,
+        "some of the disks are large enough to start on"
+    );
 }
 
 /// Rows of samples go to a device that is always full; everything else to a folder.
@@ -101,7 +127,9 @@ struct DevFull(FolderStore);
 impl Store for DevFull {
     fn create(&mut self, name: &str) -> io::Result<Box<dyn StoreFile>> {
         if name == "samples.csv" {
-            return Ok(Box::new(std::fs::OpenOptions::new().write(true).open("/dev/full")?));
+            return Ok(Box::new(
+                std::fs::OpenOptions::new().write(true).open("/dev/full")?,
+            ));
         }
         self.0.create(name)
     }
@@ -127,7 +155,9 @@ fn the_systems_own_full_device_stops_a_run_before_it_starts() {
             stop: stopped,
             wrap: as_it_is,
         };
-        let error = bay(&plan, &bench, Box::new(store), &clock, setup).err().expect("it can't be opened");
+        let error = bay(&plan, &bench, Box::new(store), &clock, setup)
+            .err()
+            .expect("it can't be opened");
         assert_eq!(error.kind(), io::ErrorKind::StorageFull);
     });
     assert!(!bench.output_is_on());

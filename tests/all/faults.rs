@@ -16,8 +16,17 @@ use crate::bench_of_tests::{
 
 /// Faults of the unit and of its sensors.
 const FAULTS: [&str; 11] = [
-    "none", "dead-unit", "link-opens-mid-soak", "wrong-element", "loose-clamp", "stuck-fan", "wrong-link",
-    "swapped-positions", "sensor-fallen-off", "swapped-channels", "sensor-open",
+    "none",
+    "dead-unit",
+    "link-opens-mid-soak",
+    "wrong-element",
+    "loose-clamp",
+    "stuck-fan",
+    "wrong-link",
+    "swapped-positions",
+    "sensor-fallen-off",
+    "swapped-channels",
+    "sensor-open",
 ];
 
 /// Seeds of the table.
@@ -70,10 +79,19 @@ fn table() -> (String, BTreeMap<(String, u64), Outcome>) {
         for seed in SEEDS {
             let (run, judgement) = outcome_of(fault, seed);
             verdicts.insert((fault.to_owned(), seed), judgement.verdict);
-            let findings: Vec<String> =
-                judgement.findings.iter().map(|f| format!("{}: {}", f.rule, f.outcome.word())).collect();
+            let findings: Vec<String> = judgement
+                .findings
+                .iter()
+                .map(|f| format!("{}: {}", f.rule, f.outcome.word()))
+                .collect();
             let verdict = judgement.verdict.word();
-            writeln!(text, "{fault}, {seed}: {}, {verdict} | {}", short_of(&run), findings.join("; ")).unwrap();
+            writeln!(
+                text,
+                "{fault}, {seed}: {}, {verdict} | {}",
+                short_of(&run),
+                findings.join("; ")
+            )
+            .unwrap();
         }
     }
     (text, verdicts)
@@ -86,7 +104,10 @@ fn every_fault_is_found_or_not_judged_and_good_units_pass() {
         if fault == "none" {
             assert_eq!(*verdict, Outcome::Pass, "a good unit, seed {seed}:\n{text}");
         } else {
-            let found = matches!(verdict, Outcome::Fail | Outcome::NotJudged | Outcome::ConditionalFail);
+            let found = matches!(
+                verdict,
+                Outcome::Fail | Outcome::NotJudged | Outcome::ConditionalFail
+            );
             assert!(found, "{fault}, seed {seed}: {}\n{text}", verdict.word());
         }
     }
@@ -95,5 +116,8 @@ fn every_fault_is_found_or_not_judged_and_good_units_pass() {
         std::fs::write(&file, &text).unwrap();
     }
     let golden = std::fs::read_to_string(&file).unwrap_or_default();
-    assert_eq!(text, golden, "the table changed; look at each line, then write it with RATEPLATE_BLESS=1");
+    assert_eq!(
+        text, golden,
+        "the table changed; look at each line, then write it with RATEPLATE_BLESS=1"
+    );
 }

@@ -31,7 +31,13 @@ fn a_record_is_judged_again_alike_without_any_other_file() {
     let (code, text) = judge(elsewhere.path(), &moved);
     assert_eq!(code, 0, "{text}");
     assert!(text.contains("the same as the judgement before"), "{text}");
-    for name in ["judgement.json", "analysis.json", "results.csv", "findings.csv", "summary.png"] {
+    for name in [
+        "judgement.json",
+        "analysis.json",
+        "results.csv",
+        "findings.csv",
+        "summary.png",
+    ] {
         let read = |n: &str| fs::read(moved.join("judgements").join(n).join(name)).unwrap();
         assert_eq!(read("0001"), read("0002"), "{name}");
     }
@@ -43,11 +49,18 @@ fn a_changed_number_is_found_and_not_judged() {
     let file = record.join("run/samples.csv");
     let mut bytes = fs::read(&file).unwrap();
     let last_digit = bytes.iter().rposition(u8::is_ascii_digit).unwrap();
-    bytes[last_digit] = if bytes[last_digit] == b'9' { b'8' } else { b'9' };
+    bytes[last_digit] = if bytes[last_digit] == b'9' {
+        b'8'
+    } else {
+        b'9'
+    };
     fs::write(&file, bytes).unwrap();
     let (code, text) = judge(folder.path(), &record);
     assert_eq!(code, 13, "{text}");
-    assert!(text.contains("samples.csv") && text.contains("changed"), "{text}");
+    assert!(
+        text.contains("samples.csv") && text.contains("changed"),
+        "{text}"
+    );
 }
 
 /// Rewrites a file of the run and the manifest's hash of it, as a forger would.
@@ -55,14 +68,19 @@ fn rewrite(record: &Path, name: &str, change: impl Fn(String) -> String) {
     let file = record.join("run").join(name);
     let text = change(fs::read_to_string(&file).unwrap());
     let manifest_file = record.join("run/manifest.json");
-    let mut manifest: serde_json::Value = serde_json::from_slice(&fs::read(&manifest_file).unwrap()).unwrap();
+    let mut manifest: serde_json::Value =
+        serde_json::from_slice(&fs::read(&manifest_file).unwrap()).unwrap();
     for entry in manifest["files"].as_array_mut().unwrap() {
         if entry["name"] == name {
             entry["sha256"] = rateplate::record::sha256_of(text.as_bytes()).into();
         }
     }
     fs::write(&file, text).unwrap();
-    fs::write(&manifest_file, serde_json::to_vec_pretty(&manifest).unwrap()).unwrap();
+    fs::write(
+        &manifest_file,
+        serde_json::to_vec_pretty(&manifest).unwrap(),
+    )
+    .unwrap();
 }
 
 #[test]
@@ -71,7 +89,10 @@ fn a_torn_last_row_is_not_taken_for_a_row() {
     rewrite(&record, "samples.csv", |text| text.trim_end().to_owned());
     let (code, text) = judge(folder.path(), &record);
     assert_eq!(code, 13, "{text}");
-    assert!(text.contains("torn") && text.contains("samples.csv:"), "{text}");
+    assert!(
+        text.contains("torn") && text.contains("samples.csv:"),
+        "{text}"
+    );
 }
 
 #[test]
@@ -84,7 +105,10 @@ fn rows_out_of_order_are_refused_with_their_line() {
     });
     let (code, text) = judge(folder.path(), &record);
     assert_eq!(code, 13, "{text}");
-    assert!(text.contains("samples.csv:11") && text.contains("seq"), "{text}");
+    assert!(
+        text.contains("samples.csv:11") && text.contains("seq"),
+        "{text}"
+    );
 }
 
 #[test]
@@ -121,7 +145,11 @@ fn a_newer_layout_and_a_hostile_manifest_are_refused() {
     fs::write(&file, good.replacen("\"format\": 1", "\"format\": 99", 1)).unwrap();
     let (code, text) = judge(folder.path(), &record);
     assert!(code == 13 && text.contains("newer"), "{text}");
-    fs::write(&file, good.replacen("\"name\": \"", "\"name\": \"../../", 1)).unwrap();
+    fs::write(
+        &file,
+        good.replacen("\"name\": \"", "\"name\": \"../../", 1),
+    )
+    .unwrap();
     let (code, text) = judge(folder.path(), &record);
     assert!(code == 13 && text.contains("plain name"), "{text}");
     fs::write(&file, "{").unwrap();

@@ -25,7 +25,9 @@ fn shell_lines() -> Vec<String> {
 
 /// Arguments of a program line; the release build and the tests' build do the same.
 fn arguments_of(line: &str) -> Option<Vec<String>> {
-    let rest = line.strip_prefix("cargo run --release -- ").or_else(|| line.strip_prefix("rateplate "))?;
+    let rest = line
+        .strip_prefix("cargo run --release -- ")
+        .or_else(|| line.strip_prefix("rateplate "))?;
     Some(rest.split_whitespace().map(str::to_owned).collect())
 }
 
@@ -43,7 +45,10 @@ fn the_program_lines_do_what_the_readme_says() {
         let code = output.status.code().unwrap();
         assert_eq!(code == 0, !faulty, "{words:?} ended with {code}:\n{text}");
         if words[0] == "rehearse" {
-            assert!(text.contains("VERDICT") && text.contains("record     reports"), "{text}");
+            assert!(
+                text.contains("VERDICT") && text.contains("record     reports"),
+                "{text}"
+            );
         }
     }
 }
@@ -52,12 +57,21 @@ fn the_program_lines_do_what_the_readme_says() {
 fn the_first_paragraph_states_the_job_and_two_commands_do_everything() {
     let text = readme();
     let first = text.split("\n\n").nth(1).unwrap().replace('\n', " ");
-    for word in ["rating plate", "serial lines", "thermal-link", "uncertainty", "record"] {
+    for word in [
+        "rating plate",
+        "serial lines",
+        "thermal-link",
+        "uncertainty",
+        "record",
+    ] {
         assert!(first.contains(word), "{word}");
     }
     let from = text.find("<!-- the two commands -->").unwrap();
     let to = text[from..].find("<!-- end -->").unwrap() + from;
-    let commands = text[from..to].lines().filter(|line| line.starts_with("cargo ")).count();
+    let commands = text[from..to]
+        .lines()
+        .filter(|line| line.starts_with("cargo "))
+        .count();
     assert_eq!(commands, 2);
 }
 
@@ -76,13 +90,21 @@ fn every_file_that_the_readme_links_is_there() {
 fn the_exit_codes_of_readme_and_help_agree() {
     let text = readme().replace('\n', " ");
     for (exit, _) in rateplate::cli::Exit::TABLE {
-        assert!(text.contains(&format!("{} ", exit.code())), "{exit:?} is not in the README");
+        assert!(
+            text.contains(&format!("{} ", exit.code())),
+            "{exit:?} is not in the README"
+        );
     }
     let folder = tempfile::tempdir().unwrap();
     let help = printed(&program(folder.path(), &["--help"]));
     for (exit, meaning) in rateplate::cli::Exit::TABLE {
-        let line = help.lines().find(|l| l.trim_start().starts_with(&format!("{} ", exit.code())));
+        let line = help
+            .lines()
+            .find(|l| l.trim_start().starts_with(&format!("{} ", exit.code())));
         let words: Vec<&str> = meaning.split_whitespace().take(3).collect();
-        assert!(line.is_some_and(|l| l.contains(&words.join(" "))), "{exit:?} is not in --help");
+        assert!(
+            line.is_some_and(|l| l.contains(&words.join(" "))),
+            "{exit:?} is not in --help"
+        );
     }
 }

@@ -38,22 +38,44 @@ fn a_good_unit_passes_and_leaves_a_whole_record() {
     let folder = tempfile::tempdir().unwrap();
     let (code, printed) = rehearse(folder.path(), &[]);
     assert_eq!(code, 0, "{printed}");
-    assert!(printed.contains("VERDICT    PASS") && printed.contains("VIRTUAL BENCH"), "{printed}");
+    assert!(
+        printed.contains("VERDICT    PASS") && printed.contains("VIRTUAL BENCH"),
+        "{printed}"
+    );
     let record = only_record(folder.path());
     let files: Vec<String> = files_below(&record).into_keys().collect();
     for name in [
-        "run/sequence.yaml", "run/bench.yaml", "run/driver-scpi-power-meter.yaml", "run/plan.json",
-        "run/samples.csv", "run/events.csv", "run/wire.txt", "run/manifest.json",
-        "judgements/0001/results.csv", "judgements/0001/findings.csv",
-        "judgements/0001/judgement.json", "judgements/0001/summary.png", "judgements/0001/manifest.json",
+        "run/sequence.yaml",
+        "run/bench.yaml",
+        "run/driver-scpi-power-meter.yaml",
+        "run/plan.json",
+        "run/samples.csv",
+        "run/events.csv",
+        "run/wire.txt",
+        "run/manifest.json",
+        "judgements/0001/results.csv",
+        "judgements/0001/findings.csv",
+        "judgements/0001/judgement.json",
+        "judgements/0001/summary.png",
+        "judgements/0001/manifest.json",
     ] {
-        assert!(files.iter().any(|f| f == name), "{name} is not among {files:?}");
+        assert!(
+            files.iter().any(|f| f == name),
+            "{name} is not among {files:?}"
+        );
     }
     let read = Folder::open(&record).unwrap();
     assert_eq!(read.manifest.outcome, RunOutcome::Complete);
-    assert_eq!(read.manifest.virtual_bench.as_deref(), Some("VIRTUAL BENCH"));
+    assert_eq!(
+        read.manifest.virtual_bench.as_deref(),
+        Some("VIRTUAL BENCH")
+    );
     assert_eq!(read.manifest.samples, read.samples.len() as u64);
-    assert!(read.samples.windows(2).all(|pair| pair[0].seq + 1 == pair[1].seq));
+    assert!(
+        read.samples
+            .windows(2)
+            .all(|pair| pair[0].seq + 1 == pair[1].seq)
+    );
 }
 
 #[test]
@@ -63,7 +85,10 @@ fn the_same_plan_and_seed_leave_the_same_record_byte_for_byte() {
         rehearse(folder.path(), &["--seed", "7"]);
         files_below(&folder.path().join("reports"))
     });
-    assert_eq!(first.keys().collect::<Vec<_>>(), second.keys().collect::<Vec<_>>());
+    assert_eq!(
+        first.keys().collect::<Vec<_>>(),
+        second.keys().collect::<Vec<_>>()
+    );
     for (name, bytes) in &first {
         assert_eq!(bytes, &second[name], "{name} differs");
     }
@@ -74,7 +99,10 @@ fn another_seed_leaves_another_record() {
     let folder = tempfile::tempdir().unwrap();
     rehearse(folder.path(), &["--seed", "1"]);
     rehearse(folder.path(), &["--seed", "2"]);
-    let records: Vec<_> = fs::read_dir(folder.path().join("reports")).unwrap().map(|e| e.unwrap().path()).collect();
+    let records: Vec<_> = fs::read_dir(folder.path().join("reports"))
+        .unwrap()
+        .map(|e| e.unwrap().path())
+        .collect();
     assert_eq!(records.len(), 2);
     let samples = |n: usize| fs::read(records[n].join("run/samples.csv")).unwrap();
     assert_ne!(samples(0), samples(1));
@@ -88,12 +116,19 @@ fn a_second_rehearsal_overwrites_nothing() {
     let before = files_below(&first);
     rehearse(folder.path(), &[]);
     assert_eq!(files_below(&first), before);
-    assert_eq!(fs::read_dir(folder.path().join("reports")).unwrap().count(), 2);
+    assert_eq!(
+        fs::read_dir(folder.path().join("reports")).unwrap().count(),
+        2
+    );
 }
 
 #[test]
 fn the_exit_code_says_the_outcome() {
-    for (fault, expected) in [("dead-unit", 4), ("swapped-positions", 4), ("no-reply@400s", 11)] {
+    for (fault, expected) in [
+        ("dead-unit", 4),
+        ("swapped-positions", 4),
+        ("no-reply@400s", 11),
+    ] {
         let folder = tempfile::tempdir().unwrap();
         let (code, printed) = rehearse(folder.path(), &["--fault", fault]);
         assert_eq!(code, expected, "{fault}: {printed}");

@@ -35,7 +35,14 @@ fn staged(folder: &Path, speed: &str, more: &[&str]) -> Staging {
     fs::write(folder.join("unit.yaml"), BRIEF_UNIT).unwrap();
     let mut child = Command::new(env!("CARGO_BIN_EXE_rateplate"))
         .current_dir(folder)
-        .args(["stage", "brief.yaml", "--virtual-unit", "unit.yaml", "--speed", speed])
+        .args([
+            "stage",
+            "brief.yaml",
+            "--virtual-unit",
+            "unit.yaml",
+            "--speed",
+            speed,
+        ])
         .args(more)
         .stdin(Stdio::piped())
         .stdout(Stdio::piped())
@@ -51,19 +58,37 @@ fn staged(folder: &Path, speed: &str, more: &[&str]) -> Staging {
     Staging { child, stdin }
 }
 
-const RUN: [&str; 8] =
-    ["run", "brief.yaml", "--bench", "staged-bench.yaml", "--unit", "PTY-1", "--operator", "test"];
+const RUN: [&str; 8] = [
+    "run",
+    "brief.yaml",
+    "--bench",
+    "staged-bench.yaml",
+    "--unit",
+    "PTY-1",
+    "--operator",
+    "test",
+];
 
 #[test]
 fn from_start_to_verdict_over_pseudo_terminals() {
     let folder = tempfile::tempdir().unwrap();
     let mut staging = staged(folder.path(), "8", &[]);
     let started = Instant::now();
-    let output = program(folder.path(), &[&RUN[..], &["--yes", "--speed", "8"]].concat());
+    let output = program(
+        folder.path(),
+        &[&RUN[..], &["--yes", "--speed", "8"]].concat(),
+    );
     let text = printed(&output);
     assert_eq!(output.status.code(), Some(0), "{text}");
-    assert!(text.contains("VERDICT    PASS") && text.contains("VIRTUAL BENCH"), "{text}");
-    assert!(started.elapsed() < Duration::from_secs(60), "{:?}", started.elapsed());
+    assert!(
+        text.contains("VERDICT    PASS") && text.contains("VIRTUAL BENCH"),
+        "{text}"
+    );
+    assert!(
+        started.elapsed() < Duration::from_secs(60),
+        "{:?}",
+        started.elapsed()
+    );
     let record = Folder::open(&only_record(folder.path())).unwrap();
     assert_eq!(record.manifest.outcome, RunOutcome::Complete);
     assert!(record.manifest.virtual_bench.is_some());
@@ -79,12 +104,18 @@ fn a_wrong_speed_is_refused_before_anything_is_energised() {
     assert_eq!(output.status.code(), Some(11), "{text}");
     assert!(text.contains("--speed 4"), "{text}");
     assert!(!text.contains("ENERGISED"), "{text}");
-    let output = program(folder.path(), &[&RUN[..], &["--yes", "--speed", "1000"]].concat());
+    let output = program(
+        folder.path(),
+        &[&RUN[..], &["--yes", "--speed", "1000"]].concat(),
+    );
     assert_eq!(output.status.code(), Some(2), "{}", printed(&output));
 }
 
 /// Starts a run with a person's end of a pipe and waits until it is energised.
-fn energised_run(folder: &Path, speed: &str) -> (Child, ChildStdin, BufReader<std::process::ChildStdout>) {
+fn energised_run(
+    folder: &Path,
+    speed: &str,
+) -> (Child, ChildStdin, BufReader<std::process::ChildStdout>) {
     let mut child = Command::new(env!("CARGO_BIN_EXE_rateplate"))
         .current_dir(folder)
         .args(RUN)
@@ -100,7 +131,10 @@ fn energised_run(folder: &Path, speed: &str) -> (Child, ChildStdin, BufReader<st
     let mut line = String::new();
     while !line.contains("ENERGISED") {
         line.clear();
-        assert!(stdout.read_line(&mut line).unwrap() > 0, "the run ended before it was energised");
+        assert!(
+            stdout.read_line(&mut line).unwrap() > 0,
+            "the run ended before it was energised"
+        );
     }
     (child, stdin, stdout)
 }
@@ -123,7 +157,13 @@ fn ctrl_c_once_de_energises_and_closes_the_record() {
     assert!(rest.contains("OFF confirmed"), "{rest}");
     let record = Folder::open(&only_record(folder.path())).unwrap();
     assert_eq!(record.manifest.outcome, RunOutcome::Stopped);
-    assert!(record.happenings.iter().any(|h| matches!(&h.event, Event::Off { confirmed: true, .. })));
+    assert!(record.happenings.iter().any(|h| matches!(
+        &h.event,
+        Event::Off {
+            confirmed: true,
+            ..
+        }
+    )));
 }
 
 #[test]
@@ -172,12 +212,31 @@ fn any_serial_program_can_talk_to_a_staged_instrument() {
     let folder = tempfile::tempdir().unwrap();
     let _staging = staged(folder.path(), "1", &[]);
     let bench = fs::read_to_string(folder.path().join("staged-bench.yaml")).unwrap();
-    let port = bench.lines().find(|l| l.contains("meter line") && l.contains("port")).unwrap();
-    let path = port.split("port: \"").nth(1).unwrap().split('"').next().unwrap();
-    let mut port = serialport::new(path, 0).timeout(Duration::from_secs(2)).open().unwrap();
+    let port = bench
+        .lines()
+        .find(|l| l.contains("meter line") && l.contains("port"))
+        .unwrap();
+    let path = port
+        .split("port: \"")
+        .nth(1)
+        .unwrap()
+        .split('"')
+        .next()
+        .unwrap();
+    let mut port = serialport::new(path, 0)
+        .timeout(Duration::from_secs(2))
+        .open()
+        .unwrap();
     port.write_all(b"*IDN?\n").unwrap();
     let mut reply = String::new();
     BufReader::new(port).read_line(&mut reply).unwrap();
-    assert!(reply.starts_with("RATEPLATE,VIRTUAL-METER") && reply.contains("x1"), "{reply}");
-    assert_eq!(reply.trim_end().split(',').count(), 4, "IEEE 488.2: four fields");
+    assert!(
+        reply.starts_with("RATEPLATE,VIRTUAL-METER") && reply.contains("x1"),
+        "{reply}"
+    );
+    assert_eq!(
+        reply.trim_end().split(',').count(),
+        4,
+        "IEEE 488.2: four fields"
+    );
 }

@@ -20,11 +20,19 @@ fn every_shipped_sequence_passes_check_without_a_word_of_complaint() {
 fn every_shipped_driver_and_virtual_unit_is_read_without_problems() {
     for file in shipped::DRIVERS {
         let loaded = spec::load_driver(file.path, file.text.as_bytes());
-        assert!(loaded.problems.is_empty(), "{}", spec::render(&loaded.problems));
+        assert!(
+            loaded.problems.is_empty(),
+            "{}",
+            spec::render(&loaded.problems)
+        );
     }
     for file in shipped::VIRTUAL_UNITS {
         let loaded = spec::load_virtual_unit(file.path, file.text.as_bytes());
-        assert!(loaded.problems.is_empty(), "{}", spec::render(&loaded.problems));
+        assert!(
+            loaded.problems.is_empty(),
+            "{}",
+            spec::render(&loaded.problems)
+        );
     }
     assert!(shipped::DRIVERS.len() >= 4);
 }
@@ -32,7 +40,12 @@ fn every_shipped_driver_and_virtual_unit_is_read_without_problems() {
 #[test]
 fn every_shipped_file_is_the_one_on_disk_and_none_is_forgotten() {
     let root = std::path::PathBuf::from(env!("CARGO_MANIFEST_DIR"));
-    let mut known: Vec<&str> = shipped::SEQUENCES.iter().chain(shipped::DRIVERS).chain(shipped::VIRTUAL_UNITS).map(|f| f.path).collect();
+    let mut known: Vec<&str> = shipped::SEQUENCES
+        .iter()
+        .chain(shipped::DRIVERS)
+        .chain(shipped::VIRTUAL_UNITS)
+        .map(|f| f.path)
+        .collect();
     known.push(shipped::VIRTUAL_BENCH.path);
     for folder in ["sequences", "drivers", "drivers/virtual"] {
         for entry in std::fs::read_dir(root.join(folder)).unwrap() {
@@ -59,6 +72,10 @@ fn every_shipped_sequence_has_its_virtual_unit() {
 fn no_shipped_file_warns() {
     for file in shipped::SEQUENCES {
         let loaded = spec::load_sequence(file.path, file.text.as_bytes());
-        assert!(!loaded.problems.iter().any(|p| p.weight == Weight::Warning), "{}", file.path);
+        assert!(
+            !loaded.problems.iter().any(|p| p.weight == Weight::Warning),
+            "{}",
+            file.path
+        );
     }
 }

@@ -32,14 +32,27 @@ fn room_of(path: &Path) -> Option<String> {
 /// The import table of DEVELOPERS.md: room -> rooms that it may import.
 fn table() -> BTreeMap<String, BTreeSet<String>> {
     let text = fs::read_to_string(root().join("DEVELOPERS.md")).unwrap();
-    let from = text.find("<!-- import table -->").expect("DEVELOPERS.md marks its import table");
-    let to = text[from..].find("<!-- end -->").expect("the table's end is marked") + from;
+    let from = text
+        .find("<!-- import table -->")
+        .expect("DEVELOPERS.md marks its import table");
+    let to = text[from..]
+        .find("<!-- end -->")
+        .expect("the table's end is marked")
+        + from;
     let mut rooms = BTreeMap::new();
-    for line in text[from..to].lines().filter(|line| line.starts_with("| `")) {
+    for line in text[from..to]
+        .lines()
+        .filter(|line| line.starts_with("| `"))
+    {
         let cells: Vec<&str> = line.trim_matches('|').split('|').map(str::trim).collect();
         let room = cells[0].trim_matches('`').to_owned();
-        let imports = cells[2].split(',').map(|i| i.trim().trim_matches('`').to_owned());
-        rooms.insert(room, imports.filter(|i| !i.is_empty() && i != "-").collect());
+        let imports = cells[2]
+            .split(',')
+            .map(|i| i.trim().trim_matches('`').to_owned());
+        rooms.insert(
+            room,
+            imports.filter(|i| !i.is_empty() && i != "-").collect(),
+        );
     }
     rooms
 }
@@ -48,7 +61,9 @@ fn table() -> BTreeMap<String, BTreeSet<String>> {
 fn code_of(path: &Path) -> String {
     let text = fs::read_to_string(path).unwrap();
     let text = text.split("#[cfg(test)]\nmod tests").next().unwrap();
-    let kept = text.lines().filter(|line| !line.trim_start().starts_with("//"));
+    let kept = text
+        .lines()
+        .filter(|line| !line.trim_start().starts_with("//"));
     kept.collect::<Vec<_>>().join("\n")
 }
 
@@ -59,10 +74,15 @@ fn imports_of(code: &str) -> BTreeSet<String> {
         let rest = &code[at + "crate::".len()..];
         if let Some(group) = rest.strip_prefix('{') {
             let group = group.split('}').next().unwrap();
-            let firsts = group.split(',').filter_map(|part| part.trim().split("::").next());
+            let firsts = group
+                .split(',')
+                .filter_map(|part| part.trim().split("::").next());
             found.extend(firsts.map(str::to_owned).filter(|f| !f.is_empty()));
         } else {
-            let name: String = rest.chars().take_while(|c| c.is_alphanumeric() || *c == '_').collect();
+            let name: String = rest
+                .chars()
+                .take_while(|c| c.is_alphanumeric() || *c == '_')
+                .collect();
             found.insert(name);
         }
     }
@@ -75,10 +95,15 @@ fn arrows_between_rooms_run_only_as_the_table_says() {
     let mut wrong = Vec::new();
     for path in rust_files(&root().join("src")) {
         let Some(room) = room_of(&path) else { continue };
-        let allowed = table.get(&room).unwrap_or_else(|| panic!("room `{room}` is not in the table"));
+        let allowed = table
+            .get(&room)
+            .unwrap_or_else(|| panic!("room `{room}` is not in the table"));
         for import in imports_of(&code_of(&path)) {
             let every = allowed.contains("every room");
-            if import != room && !allowed.contains(&import) && !(every && table.contains_key(&import)) {
+            if import != room
+                && !allowed.contains(&import)
+                && !(every && table.contains_key(&import))
+            {
                 wrong.push(format!("{}: `{room}` imports `{import}`", path.display()));
             }
         }
@@ -89,15 +114,21 @@ fn arrows_between_rooms_run_only_as_the_table_says() {
 #[test]
 fn the_table_names_every_room_and_has_no_circle() {
     let table = table();
-    let rooms: BTreeSet<String> =
-        rust_files(&root().join("src")).iter().filter_map(|path| room_of(path)).collect();
+    let rooms: BTreeSet<String> = rust_files(&root().join("src"))
+        .iter()
+        .filter_map(|path| room_of(path))
+        .collect();
     assert_eq!(rooms, table.keys().cloned().collect());
     // Rooms can be taken away one by one, each when nothing that is left is imported by it.
     let mut left = table.clone();
     left.remove("cli");
     while !left.is_empty() {
-        let free = left.iter().find(|(_, imports)| imports.iter().all(|i| !left.contains_key(i)));
-        let free = free.map(|(room, _)| room.clone()).expect("a circle among the rooms");
+        let free = left
+            .iter()
+            .find(|(_, imports)| imports.iter().all(|i| !left.contains_key(i)));
+        let free = free
+            .map(|(room, _)| room.clone())
+            .expect("a circle among the rooms");
         left.remove(&free);
     }
 }
@@ -112,9 +143,25 @@ fn the_import_reader_sees_every_way_to_name_a_room() {
 #[test]
 fn only_cli_prints_only_clock_knows_the_time_only_bench_opens_ports() {
     let rules: [(&[&str], &[&str]); 5] = [
-        (&["println!", "eprintln!", "print!(", "eprint!(", "io::stdout", "io::stderr"], &["cli"]),
-        (&["Instant::now", "Utc::now", "SystemTime"], &["clock", "cli"]),
-        (&["serialport::new", "serialport::available_ports"], &["bench"]),
+        (
+            &[
+                "println!",
+                "eprintln!",
+                "print!(",
+                "eprint!(",
+                "io::stdout",
+                "io::stderr",
+            ],
+            &["cli"],
+        ),
+        (
+            &["Instant::now", "Utc::now", "SystemTime"],
+            &["clock", "cli"],
+        ),
+        (
+            &["serialport::new", "serialport::available_ports"],
+            &["bench"],
+        ),
         (&["rustix::pty"], &["virtual_bench"]),
         (&["std::process::exit", "process::abort"], &[]),
     ];
@@ -123,7 +170,10 @@ fn only_cli_prints_only_clock_knows_the_time_only_bench_opens_ports() {
         let room = room_of(&path).unwrap_or_default();
         let code = code_of(&path);
         for (words, rooms) in rules {
-            for word in words.iter().filter(|word| code.contains(**word) && !rooms.contains(&room.as_str())) {
+            for word in words
+                .iter()
+                .filter(|word| code.contains(**word) && !rooms.contains(&room.as_str()))
+            {
                 wrong.push(format!("{}: {word}", path.display()));
             }
         }
@@ -136,9 +186,16 @@ fn every_file_opens_with_what_it_is_and_none_is_a_drawer() {
     for folder in ["src", "tests", "benches"] {
         for path in rust_files(&root().join(folder)) {
             let text = fs::read_to_string(&path).unwrap();
-            assert!(text.starts_with("//!"), "{} does not open with //!", path.display());
+            assert!(
+                text.starts_with("//!"),
+                "{} does not open with //!",
+                path.display()
+            );
             let name = path.file_stem().unwrap().to_str().unwrap();
-            assert!(!["util", "utils", "helpers", "common", "misc"].contains(&name), "{name}");
+            assert!(
+                !["util", "utils", "helpers", "common", "misc"].contains(&name),
+                "{name}"
+            );
         }
     }
 }
@@ -152,7 +209,11 @@ fn no_simulated_code_draws_lots_in_a_select() {
         let code = code_of(&path);
         for (at, _) in code.match_indices("select! {") {
             let first = code[at + "select! {".len()..].trim_start();
-            assert!(first.starts_with("biased;"), "{}: a select without `biased;`", path.display());
+            assert!(
+                first.starts_with("biased;"),
+                "{}: a select without `biased;`",
+                path.display()
+            );
         }
     }
 }

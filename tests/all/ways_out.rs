@@ -35,11 +35,27 @@ fn play(folder: &Path, faults: &[&str]) -> (Ended, VirtualBench, Folder) {
 }
 
 fn offs(record: &Folder) -> usize {
-    record.happenings.iter().filter(|h| matches!(h.event, Event::Off { confirmed: true, .. })).count()
+    record
+        .happenings
+        .iter()
+        .filter(|h| {
+            matches!(
+                h.event,
+                Event::Off {
+                    confirmed: true,
+                    ..
+                }
+            )
+        })
+        .count()
 }
 
 fn energised(record: &Folder) -> usize {
-    record.happenings.iter().filter(|h| h.event == Event::Energised).count()
+    record
+        .happenings
+        .iter()
+        .filter(|h| h.event == Event::Energised)
+        .count()
 }
 
 #[test]
@@ -58,7 +74,9 @@ fn an_instrument_that_falls_silent_or_garbles_or_hangs_up_ends_the_run_with_off(
     for fault in ["no-reply@400s", "garbled@400s", "disconnect@400s"] {
         let folder = tempfile::tempdir().unwrap();
         let (ended, bench, record) = play(folder.path(), &[fault]);
-        let RunOutcome::Failed { reason } = &ended.outcome else { panic!("{fault}: {:?}", ended.outcome) };
+        let RunOutcome::Failed { reason } = &ended.outcome else {
+            panic!("{fault}: {:?}", ended.outcome)
+        };
         assert!(!bench.output_is_on(), "{fault}");
         assert_eq!(energised(&record), 1, "{fault}: {reason}");
         assert!(offs(&record) >= 1, "{fault}");
@@ -76,7 +94,11 @@ fn an_instrument_that_falls_silent_or_garbles_or_hangs_up_ends_the_run_with_off(
 fn a_wrong_identity_is_found_before_anything_is_energised() {
     let folder = tempfile::tempdir().unwrap();
     let (ended, _, record) = play(folder.path(), &["wrong-identity"]);
-    assert!(matches!(&ended.outcome, RunOutcome::Failed { reason } if reason.contains("identity")), "{:?}", ended.outcome);
+    assert!(
+        matches!(&ended.outcome, RunOutcome::Failed { reason } if reason.contains("identity")),
+        "{:?}",
+        ended.outcome
+    );
     assert_eq!(energised(&record), 0);
 }
 
@@ -84,7 +106,9 @@ fn a_wrong_identity_is_found_before_anything_is_energised() {
 fn a_sensor_that_fell_off_trips_a_unit_that_draws_power() {
     let folder = tempfile::tempdir().unwrap();
     let (ended, bench, record) = play(folder.path(), &["sensor-fallen-off"]);
-    let RunOutcome::Tripped { reason } = &ended.outcome else { panic!("{:?}", ended.outcome) };
+    let RunOutcome::Tripped { reason } = &ended.outcome else {
+        panic!("{:?}", ended.outcome)
+    };
     assert!(reason.contains("has not risen"), "{reason}");
     assert!(!bench.output_is_on());
     assert!(offs(&record) >= 1);
@@ -112,7 +136,11 @@ impl Observer for Panicking {
 
 /// The number of the first step of a kind.
 fn step_of(plan: &Plan, verb: &str) -> u32 {
-    plan.steps.iter().find(|step| step.action.verb() == verb).unwrap().number
+    plan.steps
+        .iter()
+        .find(|step| step.action.verb() == verb)
+        .unwrap()
+        .number
 }
 
 #[test]
@@ -126,13 +154,17 @@ fn a_panic_in_the_bays_task_de_energises_and_the_record_is_closed() {
         let (_stop, stopped) = tokio::sync::watch::channel(false);
         let setup = Setup {
             operator: Box::new(Willing(bench.hands(), clock.clone())),
-            observer: Box::new(Panicking { at_step: step_of(&plan, "soak") }),
+            observer: Box::new(Panicking {
+                at_step: step_of(&plan, "soak"),
+            }),
             stop: stopped,
             wrap: as_it_is,
         };
         run_bay(bay(&plan, &bench, Box::new(store), &clock, setup).unwrap()).await
     });
-    assert!(matches!(&ended.outcome, RunOutcome::Failed { reason } if reason.contains("a test's own panic")));
+    assert!(
+        matches!(&ended.outcome, RunOutcome::Failed { reason } if reason.contains("a test's own panic"))
+    );
     assert!(!bench.output_is_on());
     let record = Folder::open(folder.path()).unwrap();
     assert_eq!((energised(&record), offs(&record) >= 1), (1, true));
@@ -161,7 +193,10 @@ fn a_task_that_is_dropped_while_energised_leaves_the_unit_off() {
         task.abort();
         assert!(task.await.is_err());
         clock.sleep_until(clock.now() + Seconds::of(2.0)).await;
-        assert!(!bench.output_is_on(), "the lease of a task that is gone has ended");
+        assert!(
+            !bench.output_is_on(),
+            "the lease of a task that is gone has ended"
+        );
     });
     // The record was never closed and so is never judged.
     let error = Folder::open(folder.path()).unwrap_err().to_string();
@@ -196,9 +231,15 @@ fn one_stop_while_energised_is_enough() {
     assert!(!bench.output_is_on());
     let record = Folder::open(folder.path()).unwrap();
     let events: Vec<&Event> = record.happenings.iter().map(|h| &h.event).collect();
-    let off = events.iter().rposition(|e| matches!(e, Event::Off { .. })).unwrap();
+    let off = events
+        .iter()
+        .rposition(|e| matches!(e, Event::Off { .. }))
+        .unwrap();
     let stopped = events.iter().position(|e| **e == Event::Stopped).unwrap();
-    assert!(off < stopped, "OFF is sent first and recorded after, then why");
+    assert!(
+        off < stopped,
+        "OFF is sent first and recorded after, then why"
+    );
 }
 
 /// Keeps every prompt and answers until its patience ends.
@@ -215,7 +256,10 @@ impl Operator for Impatient {
     }
 
     fn ask<'a>(&'a mut self, prompt: &'a Prompt) -> Answering<'a> {
-        self.prompts.lock().unwrap().push((prompt.clone(), self.bench.output_is_on()));
+        self.prompts
+            .lock()
+            .unwrap()
+            .push((prompt.clone(), self.bench.output_is_on()));
         match self.answers.checked_sub(1) {
             Some(left) => {
                 self.answers = left;
@@ -231,8 +275,14 @@ impl Operator for Impatient {
 fn by_hand() -> String {
     SHORT
         .replace("  switch: position switch\n", "")
-        .replace("guards:", "conditions:\n  dry: Take the refill out.\nguards:")
-        .replace("      positions: [low, high]\n      supplies", "      conditions: [dry]\n      positions: [low, high]\n      supplies")
+        .replace(
+            "guards:",
+            "conditions:\n  dry: Take the refill out.\nguards:",
+        )
+        .replace(
+            "      positions: [low, high]\n      supplies",
+            "      conditions: [dry]\n      positions: [low, high]\n      supplies",
+        )
 }
 
 fn prompts_with(answers: usize) -> (Ended, Vec<(Prompt, bool)>) {
@@ -266,10 +316,27 @@ fn prompts_with(answers: usize) -> (Ended, Vec<(Prompt, bool)>) {
 fn prompts_name_bay_and_unit_and_touching_ones_come_only_with_the_output_off() {
     let (ended, prompts) = prompts_with(usize::MAX);
     assert_eq!(ended.outcome, RunOutcome::Complete);
-    assert!(prompts.iter().all(|(p, _)| p.bay == "bay 1" && p.unit == "T-1"));
-    let touching = |p: &Prompt| matches!(p.want, Want::Done | Want::Condition { .. } | Want::Position { .. });
-    assert!(prompts.iter().filter(|(p, _)| touching(p)).count() >= 3, "{prompts:?}");
-    assert!(prompts.iter().filter(|(p, _)| touching(p)).all(|(_, on)| !on));
+    assert!(
+        prompts
+            .iter()
+            .all(|(p, _)| p.bay == "bay 1" && p.unit == "T-1")
+    );
+    let touching = |p: &Prompt| {
+        matches!(
+            p.want,
+            Want::Done | Want::Condition { .. } | Want::Position { .. }
+        )
+    };
+    assert!(
+        prompts.iter().filter(|(p, _)| touching(p)).count() >= 3,
+        "{prompts:?}"
+    );
+    assert!(
+        prompts
+            .iter()
+            .filter(|(p, _)| touching(p))
+            .all(|(_, on)| !on)
+    );
 }
 
 #[test]
@@ -277,7 +344,11 @@ fn the_end_of_input_is_a_stop_at_every_prompt_and_never_a_yes() {
     let (_, all) = prompts_with(usize::MAX);
     for answers in 0..all.len() {
         let (ended, prompts) = prompts_with(answers);
-        assert_eq!(ended.outcome, RunOutcome::Stopped, "after {answers} answers");
+        assert_eq!(
+            ended.outcome,
+            RunOutcome::Stopped,
+            "after {answers} answers"
+        );
         assert_eq!(prompts.len(), answers + 1);
     }
 }
