@@ -1,0 +1,7 @@
+//! Tests of whole lines against a scripted far side.
+
+mod exchanges;
+mod leases;
+mod orders;
+mod polls;
+mod scripted;
