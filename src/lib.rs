@@ -38,4 +38,3 @@ pub mod judge;
 
 pub mod chart;
 
-pub mod cli;

@@ -69,6 +69,10 @@ pub struct CellResult {
     pub inrush: Figure<Inrush>,
     /// When the soak settled, seconds after energising.
     pub settled_s: Figure<f64>,
+    /// Highest power in the last half of the energised time, W: whether it works at all.
+    pub drawn_w: Figure<f64>,
+    /// Whether the current vanished while energised.
+    pub went_open: bool,
     /// Settled input.
     pub steady: Figure<Steady>,
     /// Highest temperature of the body, after-heat included, corrected for calibration.

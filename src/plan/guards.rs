@@ -1,7 +1,7 @@
 //! Guards: limits that trip. None may be absent.
 
 use super::types::{
-    Cell, Guards, Plan, PlannedAppliance, PlannedBay, PlannedInstrument, PlannedRule,
+    Cell, Guards, PlannedAppliance, PlannedBay, PlannedInstrument, PlannedRule,
 };
 use crate::quantity::{Celsius, Kelvins, Seconds, Watts};
 use crate::spec::plate;
@@ -105,14 +105,4 @@ fn upper_of(appliance: &PlannedAppliance, entry: &super::types::PlannedPlate) ->
 
 fn highest(values: impl Iterator<Item = f64>) -> Option<f64> {
     values.reduce(f64::max)
-}
-
-impl Plan {
-    /// The plate entry that rates the whole appliance in a position.
-    pub fn plate_of(&self, position: &str) -> Option<&super::types::PlannedPlate> {
-        self.appliance
-            .plate
-            .iter()
-            .find(|entry| entry.position == position && entry.element.is_none())
-    }
 }

@@ -4,6 +4,7 @@
 mod expand;
 mod guards;
 mod notes;
+mod reference;
 mod resolve;
 mod rules;
 #[cfg(test)]
@@ -12,6 +13,7 @@ mod text;
 mod types;
 mod wiring;
 
+pub use reference::Rated;
 pub use resolve::{Resolved, resolve};
 pub use types::{
     Action, Cell, Guards, PLAN_FORMAT, Plan, PlannedAppliance, PlannedBay, PlannedInstrument,

@@ -29,7 +29,7 @@ const QUERIES: u32 = 64;
 #[derive(Debug)]
 pub enum Cut {
     /// A guard.
-    Tripped(String),
+    Tripped(Trip),
     /// The operator.
     Stopped,
     /// An exchange that was given up.
@@ -47,7 +47,7 @@ pub enum Cut {
 
 impl From<Trip> for Cut {
     fn from(trip: Trip) -> Self {
-        Cut::Tripped(trip.0)
+        Cut::Tripped(trip)
     }
 }
 
@@ -161,10 +161,11 @@ impl Working {
     }
 
     /// Records an event whose effect must wait until it is on the disk.
-    pub(super) fn announce(&mut self, event: Event) -> Result<(), Cut> {
+    /// The moment is the one in the record.
+    pub(super) fn announce(&mut self, event: Event) -> Result<Moment, Cut> {
         let happening = lock(&self.journal).announce(self.clock.now(), event)?;
         self.observer.happened(&self.plan, &happening);
-        Ok(())
+        Ok(happening.at)
     }
 
     pub(super) fn mark_virtual(&self) {

@@ -2,12 +2,27 @@
 
 use crate::plan::{Guards, Plan};
 use crate::quantity::{Celsius, Moment, Reading, Readings, Seconds, at_least};
-use crate::record::Status;
+use crate::record::{Status, TripOf};
 use crate::spec::sequence::RoleKind;
 
 /// Why the unit must be de-energised now, in words with value and limit.
 #[derive(Debug, Clone, PartialEq, Eq)]
-pub struct Trip(pub String);
+pub struct Trip {
+    /// The words.
+    pub reason: String,
+    /// What it is evidence of.
+    pub speaks_of: TripOf,
+}
+
+impl Trip {
+    fn of_unit(reason: String) -> Self {
+        Self { reason, speaks_of: TripOf::Unit }
+    }
+
+    fn of_bench(reason: String) -> Self {
+        Self { reason, speaks_of: TripOf::Bench }
+    }
+}
 
 /// What the guards know of a run.
 #[derive(Debug, Clone)]
@@ -135,7 +150,7 @@ impl Watchman {
             if silent > limit {
                 let name = &self.names[role];
                 let silent = Seconds::of((silent.get() * 10.0).round() / 10.0);
-                return Err(Trip(format!(
+                return Err(Trip::of_bench(format!(
                     "no reading from `{name}` for {silent}, limit {limit} (polling interval and silence limit)"
                 )));
             }
@@ -171,16 +186,13 @@ impl Watchman {
         };
         let from_start = on.body_then.map(|then| value - then);
         let from_ambient = ambient.map(|ambient| value - ambient);
-        if from_start
-            .max(from_ambient)
-            .is_some_and(|rise| rise >= least)
-        {
+        if [from_start, from_ambient].into_iter().flatten().any(|rise| rise >= least) {
             on.rise_seen = true;
         }
         match self.body_limit {
             Some(limit) if at_least(value, limit.get()) => {
                 let after = at.since(on.since);
-                Err(Trip(format!(
+                Err(Trip::of_unit(format!(
                     "body at {value} °C, limit {limit}, {} s after energising",
                     after.get().round()
                 )))
@@ -197,7 +209,7 @@ impl Watchman {
             && current > self.guards.current.get()
         {
             let limit = self.guards.current;
-            return Err(Trip(format!(
+            return Err(Trip::of_unit(format!(
                 "current {current} A, limit {limit} (the bay's rating)"
             )));
         }
@@ -211,7 +223,7 @@ impl Watchman {
         on.drew_power |= power > 0.1 * limit.get();
         let after = at.since(on.since);
         if after >= self.guards.input_after && power > limit.get() {
-            return Err(Trip(format!(
+            return Err(Trip::of_unit(format!(
                 "input {power} W, limit {limit} from {} after energising on (1.3 times the upper limit)",
                 self.guards.input_after
             )));
@@ -225,7 +237,7 @@ impl Watchman {
         if self.body_role.is_none() || !due || !on.drew_power || on.rise_seen {
             return Ok(());
         }
-        Err(Trip(format!(
+        Err(Trip::of_bench(format!(
             "the body has not risen by {} within {} although power is drawn: the sensor can't be believed",
             self.guards.least_rise, self.guards.rise_within
         )))
@@ -290,7 +302,7 @@ mod tests {
         assert!(degrees(&mut energised(), 20.0, BODY, 111.0).is_err());
         let trip = degrees(&mut energised(), 20.0, BODY, 120.0).unwrap_err();
         assert!(
-            trip.0.contains("120 °C") && trip.0.contains("111 °C"),
+            trip.reason.contains("120 °C") && trip.reason.contains("111 °C"),
             "{trip:?}"
         );
     }
@@ -324,7 +336,7 @@ mod tests {
         degrees(&mut watchman, 18.0, BODY, 40.0).unwrap();
         assert!(watchman.tick(at(21.0)).is_ok());
         let trip = watchman.tick(at(21.1)).unwrap_err();
-        assert!(trip.0.contains("`body`"), "{trip:?}");
+        assert!(trip.reason.contains("`body`"), "{trip:?}");
     }
 
     #[test]
@@ -340,7 +352,7 @@ mod tests {
                 .unwrap();
         }
         let trip = watchman.tick(at(20.0)).unwrap_err();
-        assert!(trip.0.contains("`body`"), "{trip:?}");
+        assert!(trip.reason.contains("`body`"), "{trip:?}");
         assert!(watchman.heard[METER] == at(20.0));
     }
 

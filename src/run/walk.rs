@@ -262,11 +262,10 @@ async fn energise(
         return Err(Cut::Failed("the plan has no supply".to_owned()));
     };
     let (line, index) = bay.instrument_of(role);
-    bay.announce(Event::Energising)?;
+    let announced = bay.announce(Event::Energising)?;
     bay.off = None;
-    let now = bay.clock.now();
-    bay.energised_at = Some(now);
-    bay.watchman.energised(now, bay.cell);
+    bay.energised_at = Some(announced);
+    bay.watchman.energised(announced, bay.cell);
     bay.lease = Some(line.energise(index).await?);
     bay.note(Event::Energised)?;
     Ok(StepEnd::Done)
@@ -342,7 +341,7 @@ async fn switch_off(bay: &mut Working, cut: Option<&Cut>) {
 fn cause_of(cut: Option<&Cut>) -> String {
     match cut {
         None => "the end of the run".to_owned(),
-        Some(Cut::Tripped(reason)) => format!("trip: {reason}"),
+        Some(Cut::Tripped(trip)) => format!("trip: {}", trip.reason),
         Some(Cut::Stopped) => "stopped by the operator".to_owned(),
         Some(Cut::Lost { instrument, .. }) => format!("lost `{instrument}`"),
         Some(Cut::Failed(reason)) => reason.clone(),
@@ -354,9 +353,7 @@ fn record_cut(bay: &mut Working, walked: &Result<(), Cut>) -> Result<(), Cut> {
     bay.poll_nothing();
     let event = match walked {
         Ok(()) | Err(Cut::Record(_)) => return Ok(()),
-        Err(Cut::Tripped(reason)) => Event::Tripped {
-            reason: reason.clone(),
-        },
+        Err(Cut::Tripped(trip)) => Event::Tripped { reason: trip.reason.clone() },
         Err(Cut::Stopped) => Event::Stopped,
         Err(Cut::Lost { instrument, detail }) => Event::Lost {
             instrument: instrument.clone(),
@@ -387,7 +384,7 @@ fn outcome_of(walked: Result<(), Cut>, written: [Result<(), Cut>; 2]) -> RunOutc
         .find(|cut| matches!(cut, Cut::Record(_)));
     match unwritten.map_or(walked, Err) {
         Ok(()) => RunOutcome::Complete,
-        Err(Cut::Tripped(reason)) => RunOutcome::Tripped { reason },
+        Err(Cut::Tripped(trip)) => RunOutcome::Tripped { reason: trip.reason, speaks_of: trip.speaks_of },
         Err(Cut::Stopped) => RunOutcome::Stopped,
         Err(Cut::Lost { detail, .. }) => RunOutcome::Failed { reason: detail },
         Err(Cut::Failed(reason)) => RunOutcome::Failed { reason },

@@ -124,6 +124,6 @@ fn noise_delays_and_never_hastens() {
     let new = || Settle::new(&wanted, Seconds::of(600.0), Seconds::of(1.0), false, at(0.0));
     let falling = |t: f64| 9.0 + 9.0 * (-t / 300.0).exp();
     let quiet = settled_at(&mut new(), 1.0, 20_000.0, |_| 50.0, falling).unwrap();
-    let noisy = settled_at(&mut new(), 1.0, 20_000.0, |_| 50.0, |t| falling(t) + 0.05 * noise(t)).unwrap();
+    let noisy = settled_at(&mut new(), 1.0, 20_000.0, |_| 50.0, |t| falling(t) + 0.01 * noise(t)).unwrap();
     assert!(noisy >= quiet, "{noisy} {quiet}");
 }

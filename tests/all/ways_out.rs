@@ -106,7 +106,7 @@ fn a_wrong_identity_is_found_before_anything_is_energised() {
 fn a_sensor_that_fell_off_trips_a_unit_that_draws_power() {
     let folder = tempfile::tempdir().unwrap();
     let (ended, bench, record) = play(folder.path(), &["sensor-fallen-off"]);
-    let RunOutcome::Tripped { reason } = &ended.outcome else {
+    let RunOutcome::Tripped { reason, .. } = &ended.outcome else {
         panic!("{:?}", ended.outcome)
     };
     assert!(reason.contains("has not risen"), "{reason}");
