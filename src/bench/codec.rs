@@ -94,7 +94,9 @@ pub fn split_line(bytes: &[u8], end: Terminator, from: usize) -> Option<(&[u8], 
 
 /// Whether bytes say nothing: spaces, line ends, NUL.
 pub fn is_blank(bytes: &[u8]) -> bool {
-    bytes.iter().all(|b| matches!(b, b' ' | b'\t' | b'\r' | b'\n' | 0))
+    bytes
+        .iter()
+        .all(|b| matches!(b, b' ' | b'\t' | b'\r' | b'\n' | 0))
 }
 
 /// Reads one number: NR1, NR2 or NR3, a leading `+` allowed.
@@ -265,5 +267,7 @@ fn string(quoted: &[u8]) -> Result<(Vec<u8>, &[u8]), Fault> {
             return Ok((text, &quoted[at..]));
         }
     }
-    Err(Fault::Garbled("a string without its closing quote".to_owned()))
+    Err(Fault::Garbled(
+        "a string without its closing quote".to_owned(),
+    ))
 }

@@ -118,7 +118,6 @@ impl Request {
 
 /// What came back.
 #[derive(Debug, Clone, PartialEq)]
-#[expect(missing_docs, reason = "the names are those of `Expect`")]
 pub enum Reply {
     Done,
     Identity(String),
@@ -158,7 +157,6 @@ pub struct Failure {
 
 /// What the pump does next.
 #[derive(Debug)]
-#[expect(clippy::large_enum_variant, reason = "moved once per exchange, boxed it would allocate")]
 pub enum Next {
     /// Write [`Exchange::outbox`], then call [`Exchange::written`].
     Write,
@@ -183,13 +181,22 @@ enum State {
     /// The gap before the next message.
     Holding,
     /// Waiting until another instrument's late bytes are through.
-    Quiet { until: Moment, at_most: Moment },
+    Quiet {
+        until: Moment,
+        at_most: Moment,
+    },
     /// The outbox waits for being written.
-    Writing { identity: bool },
+    Writing {
+        identity: bool,
+    },
     /// Waiting for the identity reply behind the stale ones.
-    Syncing { deadline: Moment },
+    Syncing {
+        deadline: Moment,
+    },
     /// Waiting for the reply.
-    Asking { deadline: Moment },
+    Asking {
+        deadline: Moment,
+    },
 }
 
 /// The exchanges of one line, one after the other.
@@ -341,7 +348,10 @@ impl Exchange {
                 Next::Wait
             }
             State::Quiet { at_most, .. } => {
-                let within = self.request.as_ref().map_or(0, |r| r.manner.reply_within_us);
+                let within = self
+                    .request
+                    .as_ref()
+                    .map_or(0, |r| r.manner.reply_within_us);
                 let until = now.plus_micros(within);
                 self.state = State::Quiet { until, at_most };
                 Next::Wait
@@ -571,7 +581,11 @@ impl Exchange {
     /// From now on the last instrument may still owe a reply.
     fn owe(&mut self) {
         let instrument = self.last_instrument;
-        if self.owed.as_ref().is_none_or(|o| o.instrument != instrument) {
+        if self
+            .owed
+            .as_ref()
+            .is_none_or(|o| o.instrument != instrument)
+        {
             self.owed = Some(Owed {
                 instrument,
                 identities: 0,
@@ -582,7 +596,8 @@ impl Exchange {
 
     fn hear(&mut self, bytes: &[u8]) {
         let room = HEARD_LIMIT - self.heard.len().min(HEARD_LIMIT);
-        self.heard.extend_from_slice(&bytes[..bytes.len().min(room)]);
+        self.heard
+            .extend_from_slice(&bytes[..bytes.len().min(room)]);
         self.heard_total += bytes.len();
     }
 

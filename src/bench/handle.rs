@@ -125,7 +125,9 @@ impl Door {
         let (asker, answer) = oneshot::channel();
         let act = Act::Off(cause.to_owned(), asker);
         self.send(Message::Order { instrument, act });
-        answer.await.unwrap_or_else(|_| Err(facts.ended(instrument)))
+        answer
+            .await
+            .unwrap_or_else(|_| Err(facts.ended(instrument)))
     }
 }
 
@@ -189,7 +191,8 @@ impl LineHandle {
     /// [`Fault::Refused`] where the driver has no such setting; [`Fault::Reported`];
     /// [`Fault::NotConfirmed`]; else what the exchanges met.
     pub async fn change(&self, instrument: usize, change: Change) -> Result<(), ExchangeError> {
-        self.ask(instrument, |asker| Act::Change(change, asker)).await
+        self.ask(instrument, |asker| Act::Change(change, asker))
+            .await
     }
 
     /// Replaces the line's polling set; each poll runs on its own absolute schedule

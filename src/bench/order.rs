@@ -122,7 +122,11 @@ mod tests {
             ("EXAMPLE,BENCH1,7,VIRTUAL x0", Some(1.0)),
             ("EXAMPLE,BENCH1,7,VIRTUAL xx", Some(1.0)),
         ] {
-            assert_eq!(Identity::of(reply.to_owned()).virtual_speed, speed, "{reply}");
+            assert_eq!(
+                Identity::of(reply.to_owned()).virtual_speed,
+                speed,
+                "{reply}"
+            );
         }
     }
 }

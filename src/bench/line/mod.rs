@@ -183,7 +183,8 @@ impl Line {
         self.fail_orders(why, now);
         for instrument in self.energised() {
             if !self.offs.iter().any(|off| off.instrument == instrument) {
-                self.offs.push_back(Off::new(instrument, "the line was lost"));
+                self.offs
+                    .push_back(Off::new(instrument, "the line was lost"));
             }
         }
         for off in std::mem::take(&mut self.offs) {
@@ -314,7 +315,9 @@ impl Line {
 
     fn fail_orders(&mut self, why: &str, now: Moment) {
         for order in std::mem::take(&mut self.orders) {
-            let error = self.facts.fault(order.instrument, Fault::Lost(why.to_owned()));
+            let error = self
+                .facts
+                .fault(order.instrument, Fault::Lost(why.to_owned()));
             self.answer_failed(order.asker, error, now);
         }
     }

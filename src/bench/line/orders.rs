@@ -132,7 +132,11 @@ impl Line {
         Next::Wait
     }
 
-    pub(super) fn recognise(&self, instrument: usize, text: String) -> Result<Identity, ExchangeError> {
+    pub(super) fn recognise(
+        &self,
+        instrument: usize,
+        text: String,
+    ) -> Result<Identity, ExchangeError> {
         let expected = self.members[instrument].identity();
         if text.starts_with(expected) {
             return Ok(Identity::of(text));
@@ -157,7 +161,9 @@ impl Line {
     /// The output is read back as on: hand the lease out.
     pub(super) fn grant(&mut self, instrument: usize, asker: Asker<Lease>, now: Moment) {
         let member = &mut self.members[instrument];
-        let state = member.lease.get_or_insert_with(|| Arc::new(LeaseState::new(now)));
+        let state = member
+            .lease
+            .get_or_insert_with(|| Arc::new(LeaseState::new(now)));
         state.renew(now);
         member.granted = true;
         let lease = Lease::new(

@@ -5,3 +5,5 @@ mod leases;
 mod orders;
 mod polls;
 mod scripted;
+#[cfg(unix)]
+mod terminals;

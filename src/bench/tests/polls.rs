@@ -15,7 +15,10 @@ fn poll(tag: u32, every: f64) -> Poll {
 }
 
 fn requests(samples: &[Polled]) -> Vec<u64> {
-    samples.iter().map(|s| s.request.as_micros() / 1000).collect()
+    samples
+        .iter()
+        .map(|s| s.request.as_micros() / 1000)
+        .collect()
 }
 
 #[test]
@@ -61,7 +64,10 @@ fn orders_go_in_front_and_polls_are_replaced() {
         bench.line.poll(vec![poll(3, 1.0)]);
         for k in 0..3 {
             let sample = bench.samples.recv().await.unwrap();
-            assert_eq!((sample.tag, sample.request.as_micros()), (3, 60_000 + k * 1_000_000));
+            assert_eq!(
+                (sample.tag, sample.request.as_micros()),
+                (3, 60_000 + k * 1_000_000)
+            );
         }
         bench.line.poll(Vec::new());
         let none = tokio::time::timeout(Seconds::of(60.0).to_std(), bench.samples.recv());
@@ -101,7 +107,10 @@ fn polls_that_cannot_be_are_refused_once() {
         };
         bench.line.poll(vec![wrong]);
         let sample = bench.samples.recv().await.unwrap();
-        assert!(matches!(sample.result.unwrap_err().fault, Fault::Refused(_)));
+        assert!(matches!(
+            sample.result.unwrap_err().fault,
+            Fault::Refused(_)
+        ));
         let none = tokio::time::timeout(Seconds::of(60.0).to_std(), bench.samples.recv());
         assert!(none.await.is_err());
     });

@@ -244,7 +244,10 @@ impl Tap for Listening {
 
 impl Witness for Listening {
     fn off(&mut self, at: Moment, _: &str, cause: &str, confirmed: bool) {
-        self.offs.lock().unwrap().push((at, cause.into(), confirmed));
+        self.offs
+            .lock()
+            .unwrap()
+            .push((at, cause.into(), confirmed));
     }
 }
 
