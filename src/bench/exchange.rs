@@ -342,10 +342,15 @@ impl Exchange {
         self.hear(bytes);
         match self.state {
             State::Idle | State::Holding | State::Writing { .. } => {
-                if !codec::is_blank(bytes) {
-                    self.owe();
+                if codec::is_blank(bytes) {
+                    return Next::Wait;
                 }
-                Next::Wait
+                self.owe();
+                match self.state {
+                    // The request must not go out in front of the synchronising one.
+                    State::Writing { .. } => self.advance(now),
+                    _ => Next::Wait,
+                }
             }
             State::Quiet { at_most, .. } => {
                 let within = self

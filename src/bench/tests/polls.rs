@@ -1,7 +1,8 @@
 //! Polls keep their schedule.
 
-use super::scripted::{Manners, Scripted, on_a_line};
-use crate::bench::{Fault, Poll, Polled};
+use super::scripted::{Listening, Manners, Scripted, on_a_line, paused, setup};
+use crate::bench::{Ears, FarSide, Fault, Poll, Polled, Tap, simulated_line};
+use crate::clock::Clock;
 use crate::quantity::{Moment, Reading, Seconds};
 
 fn poll(tag: u32, every: f64) -> Poll {
@@ -114,4 +115,65 @@ fn polls_that_cannot_be_are_refused_once() {
         let none = tokio::time::timeout(Seconds::of(60.0).to_std(), bench.samples.recv());
         assert!(none.await.is_err());
     });
+}
+
+/// Answers at once or after a while, without thinking.
+struct Quick {
+    due: Option<Moment>,
+    latency_us: u64,
+}
+
+impl FarSide for Quick {
+    fn receive(&mut self, _: &[u8], now: Moment) {
+        self.due = Some(now.plus_micros(self.latency_us));
+    }
+    fn deliver(&mut self, now: Moment, out: &mut Vec<u8>) {
+        if self.due.take_if(|due| *due <= now).is_some() {
+            out.extend_from_slice(b"230.125;9.5625;2200.5\n");
+        }
+    }
+    fn due(&self) -> Option<Moment> {
+        self.due
+    }
+}
+
+struct Deaf;
+
+impl Tap for Deaf {
+    fn sent(&mut self, _: &str, _: Moment, _: &[u8]) {}
+    fn received(&mut self, _: &str, _: Moment, _: &[u8]) {}
+}
+
+/// Three lines at 10 Hz, with and without latency: tens of thousands of simulated
+/// seconds to a wall second on an idle machine, here far below what that gives.
+#[test]
+fn three_lines_at_ten_hertz_run_a_thousand_times_faster_than_the_wall() {
+    for latency_us in [0, 5_000] {
+        paused().block_on(async {
+            let began = std::time::Instant::now();
+            let clock = Clock::simulated();
+            let (ears, mut samples) = Listening::default().ears();
+            let mut lines = Vec::new();
+            for _ in 0..3 {
+                let far = Quick {
+                    due: None,
+                    latency_us,
+                };
+                let ears = Ears {
+                    tap: Box::new(Deaf),
+                    witness: Box::new(Listening::default()),
+                    samples: ears.samples.clone(),
+                };
+                let line = simulated_line(setup(), Box::new(far), clock.clone(), ears);
+                line.poll(vec![poll(1, 0.1)]);
+                lines.push(line);
+            }
+            for _ in 0..90_000 {
+                assert!(samples.recv().await.unwrap().result.is_ok());
+            }
+            let rate = clock.now().as_secs_f64() / began.elapsed().as_secs_f64();
+            println!("{rate:.0} simulated seconds to a wall second, latency {latency_us} us");
+            assert!(rate > 1000.0, "{rate}");
+        });
+    }
 }
