@@ -18,6 +18,7 @@ mod handle;
 mod lease;
 mod line;
 mod order;
+mod request;
 mod serial;
 mod setup;
 mod simulated;

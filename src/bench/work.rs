@@ -8,9 +8,9 @@ use tokio::sync::oneshot;
 
 use super::codec::frame;
 use super::error::{ExchangeError, Fault};
-use super::exchange::{Expect, Manner, Reply, Request};
 use super::lease::{Lease, LeaseState, OffConfirmed};
 use super::order::{Asker, Change, Identity, Poll, Polled};
+use super::request::{Expect, Manner, Reply, Request};
 use super::setup::InstrumentSetup;
 use crate::quantity::{Moment, near, shortest};
 use crate::spec::driver::{ReadingQuery, Setting};

@@ -2,8 +2,9 @@
 
 use super::{Line, Work};
 use crate::bench::error::{ExchangeError, Fault};
-use crate::bench::exchange::{Next, Outcome, Reply};
+use crate::bench::exchange::Next;
 use crate::bench::lease::OffConfirmed;
+use crate::bench::request::{Outcome, Reply};
 use crate::bench::work::{Member, Off, Order, OrderAsker, on_or_off};
 use crate::quantity::Moment;
 

@@ -11,9 +11,10 @@ use std::sync::{Arc, Weak};
 use tokio::sync::mpsc::UnboundedSender;
 
 use super::error::{ExchangeDetail, ExchangeError, Fault, escaped};
-use super::exchange::{Exchange, Failure, Next, Outcome, Reply};
+use super::exchange::{Exchange, Next};
 use super::handle::{Door, Facts};
 use super::order::{Act, Asker, Message, Poll, Polled};
+use super::request::{Failure, Outcome, Reply};
 use super::setup::{LineSetup, Witness};
 use super::work::{Member, Off, Order, OrderAsker, Schedule, Step};
 use crate::clock::Clock;

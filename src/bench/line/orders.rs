@@ -4,9 +4,10 @@ use std::sync::Arc;
 
 use super::{ALREADY_ON, Line, Work};
 use crate::bench::error::{ExchangeError, Fault, escaped};
-use crate::bench::exchange::{Next, Outcome, Reply};
+use crate::bench::exchange::Next;
 use crate::bench::lease::{Lease, LeaseState};
 use crate::bench::order::{Asker, Identity, Polled};
+use crate::bench::request::{Outcome, Reply};
 use crate::bench::work::{Off, Order, OrderAsker, Step};
 use crate::quantity::{Moment, Readings};
 

@@ -175,6 +175,11 @@ impl Script {
         self.out.push_back((at, format!("{line}\n").into_bytes()));
     }
 
+    /// Speaks without being asked.
+    pub fn say_now(&mut self, line: &str) {
+        self.say(Moment::START, line);
+    }
+
     pub fn receive(&mut self, bytes: &[u8], now: Moment) {
         self.partial.extend_from_slice(bytes);
         while let Some(end) = self.partial.iter().position(|b| *b == b'\n') {
