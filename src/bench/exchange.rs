@@ -9,10 +9,10 @@
 
 use std::sync::Arc;
 
-use super::codec::{self, ErrorEntry, Number};
+use super::codec;
 use super::error::Fault;
-use crate::quantity::{Moment, Reading, Readings, Seconds};
-use crate::spec::driver::{Driver, Terminator};
+use super::request::{Expect, Failure, Manner, Outcome, Reply, Request, read};
+use crate::quantity::Moment;
 
 /// A reply of more bytes than this is garbled.
 pub const REPLY_LIMIT: usize = 64 * 1024;
@@ -22,143 +22,8 @@ const HEARD_LIMIT: usize = 256;
 /// request is sent all the same.
 const NOISE_LIMIT: u64 = 4;
 
-/// How one instrument is talked to.
-#[derive(Debug)]
-pub struct Manner {
-    /// Which of the line's instruments.
-    pub instrument: usize,
-    sends: Terminator,
-    replies: Terminator,
-    reply_within_us: u64,
-    gap_us: u64,
-    tries: u32,
-    /// The identity query, framed.
-    identity_query: Vec<u8>,
-    /// The start of its reply.
-    identity: String,
-    identity_fields: usize,
-}
-
-impl Manner {
-    /// The manner of an instrument whose identity reply starts with `identity`;
-    /// reply times are wall time, `factor` run seconds to a wall second.
-    pub fn new(instrument: usize, driver: &Driver, identity: &str, factor: f64) -> Self {
-        let framing = &driver.framing;
-        let scaled = |span: Seconds| (span.as_micros() as f64 * factor) as u64;
-        let mut identity_query = driver.identity.ask.clone().into_bytes();
-        identity_query.extend_from_slice(framing.sends.bytes());
-        Self {
-            instrument,
-            sends: framing.sends,
-            replies: framing.replies,
-            reply_within_us: scaled(framing.reply_within).max(1000),
-            gap_us: scaled(framing.gap),
-            tries: framing.tries.max(1),
-            identity_query,
-            identity: identity.to_owned(),
-            identity_fields: driver.identity.fields,
-        }
-    }
-
-    fn is_identity(&self, line: &[u8]) -> bool {
-        codec::identity(line, self.identity_fields)
-            .is_ok_and(|reply| reply.starts_with(&self.identity))
-    }
-}
-
-/// What a reply must be.
-#[derive(Debug, Clone)]
-pub enum Expect {
-    /// A command: no reply comes.
-    Nothing,
-    /// An identity.
-    Identity,
-    /// One number per reading.
-    Readings(Arc<[Reading]>),
-    /// One number.
-    Number,
-    /// A boolean.
-    Switch,
-    /// An error queue's entry.
-    ErrorEntry,
-}
-
-/// What is sent and what must come back; cheap to clone.
-#[derive(Debug, Clone)]
-pub struct Request {
-    manner: Arc<Manner>,
-    bytes: Arc<[u8]>,
-    expect: Expect,
-    tries: u32,
-}
-
-impl Request {
-    /// The bytes to be sent, framed, and what must come back.
-    pub fn new(manner: &Arc<Manner>, bytes: Vec<u8>, expect: Expect) -> Self {
-        Self {
-            manner: manner.clone(),
-            bytes: bytes.into(),
-            expect,
-            tries: manner.tries,
-        }
-    }
-
-    /// The same, tried once only.
-    #[must_use]
-    pub fn once(mut self) -> Self {
-        self.tries = 1;
-        self
-    }
-
-    /// The framed bytes.
-    pub fn bytes(&self) -> &[u8] {
-        &self.bytes
-    }
-}
-
-/// What came back.
-#[derive(Debug, Clone, PartialEq)]
-#[expect(missing_docs, reason = "the names are those of `Expect`")]
-pub enum Reply {
-    Done,
-    Identity(String),
-    Readings(Readings),
-    Number(f64),
-    Switch(bool),
-    ErrorEntry(ErrorEntry),
-}
-
-/// An exchange that is over.
-#[derive(Debug)]
-pub struct Outcome {
-    /// When the answered request was written; the first one, where none was answered.
-    pub requested: Moment,
-    /// When the reply was complete, or was given up.
-    pub replied: Moment,
-    /// What came back.
-    pub result: Result<Reply, Box<Failure>>,
-}
-
-/// Why nothing useful came back.
-#[derive(Debug)]
-pub struct Failure {
-    /// Why.
-    pub fault: Fault,
-    /// What was sent.
-    pub sent: Arc<[u8]>,
-    /// The first bytes received since the last request.
-    pub heard: Vec<u8>,
-    /// How many came.
-    pub heard_total: usize,
-    /// From the first request to giving up.
-    pub waited: Seconds,
-    /// How often it was tried.
-    pub tries: u32,
-}
-
 /// What the pump does next.
 #[derive(Debug)]
-#[expect(clippy::large_enum_variant, reason = "moved once per exchange, boxed it would allocate")]
 pub enum Next {
     /// Write [`Exchange::outbox`], then call [`Exchange::written`].
     Write,
@@ -183,13 +48,22 @@ enum State {
     /// The gap before the next message.
     Holding,
     /// Waiting until another instrument's late bytes are through.
-    Quiet { until: Moment, at_most: Moment },
+    Quiet {
+        until: Moment,
+        at_most: Moment,
+    },
     /// The outbox waits for being written.
-    Writing { identity: bool },
+    Writing {
+        identity: bool,
+    },
     /// Waiting for the identity reply behind the stale ones.
-    Syncing { deadline: Moment },
+    Syncing {
+        deadline: Moment,
+    },
     /// Waiting for the reply.
-    Asking { deadline: Moment },
+    Asking {
+        deadline: Moment,
+    },
 }
 
 /// The exchanges of one line, one after the other.
@@ -335,13 +209,21 @@ impl Exchange {
         self.hear(bytes);
         match self.state {
             State::Idle | State::Holding | State::Writing { .. } => {
-                if !codec::is_blank(bytes) {
-                    self.owe();
+                if codec::is_blank(bytes) {
+                    return Next::Wait;
                 }
-                Next::Wait
+                self.owe();
+                match self.state {
+                    // The request must not go out in front of the synchronising one.
+                    State::Writing { .. } => self.advance(now),
+                    _ => Next::Wait,
+                }
             }
             State::Quiet { at_most, .. } => {
-                let within = self.request.as_ref().map_or(0, |r| r.manner.reply_within_us);
+                let within = self
+                    .request
+                    .as_ref()
+                    .map_or(0, |r| r.manner.reply_within_us);
                 let until = now.plus_micros(within);
                 self.state = State::Quiet { until, at_most };
                 Next::Wait
@@ -571,7 +453,11 @@ impl Exchange {
     /// From now on the last instrument may still owe a reply.
     fn owe(&mut self) {
         let instrument = self.last_instrument;
-        if self.owed.as_ref().is_none_or(|o| o.instrument != instrument) {
+        if self
+            .owed
+            .as_ref()
+            .is_none_or(|o| o.instrument != instrument)
+        {
             self.owed = Some(Owed {
                 instrument,
                 identities: 0,
@@ -582,7 +468,8 @@ impl Exchange {
 
     fn hear(&mut self, bytes: &[u8]) {
         let room = HEARD_LIMIT - self.heard.len().min(HEARD_LIMIT);
-        self.heard.extend_from_slice(&bytes[..bytes.len().min(room)]);
+        self.heard
+            .extend_from_slice(&bytes[..bytes.len().min(room)]);
         self.heard_total += bytes.len();
     }
 
@@ -595,16 +482,4 @@ impl Exchange {
         self.inbox.clear();
         self.scanned = 0;
     }
-}
-
-/// What a line means.
-fn read(line: &[u8], expect: &Expect, manner: &Manner) -> Result<Reply, Fault> {
-    Ok(match expect {
-        Expect::Nothing => Reply::Done,
-        Expect::Identity => Reply::Identity(codec::identity(line, manner.identity_fields)?),
-        Expect::Readings(gives) => Reply::Readings(codec::readings(line, gives)?),
-        Expect::Number => Reply::Number(codec::number(line).and_then(Number::value)?),
-        Expect::Switch => Reply::Switch(codec::switch(line)?),
-        Expect::ErrorEntry => Reply::ErrorEntry(codec::error_entry(line)?),
-    })
 }

@@ -125,7 +125,9 @@ impl Door {
         let (asker, answer) = oneshot::channel();
         let act = Act::Off(cause.to_owned(), asker);
         self.send(Message::Order { instrument, act });
-        answer.await.unwrap_or_else(|_| Err(facts.ended(instrument)))
+        answer
+            .await
+            .unwrap_or_else(|_| Err(facts.ended(instrument)))
     }
 }
 
@@ -189,7 +191,8 @@ impl LineHandle {
     /// [`Fault::Refused`] where the driver has no such setting; [`Fault::Reported`];
     /// [`Fault::NotConfirmed`]; else what the exchanges met.
     pub async fn change(&self, instrument: usize, change: Change) -> Result<(), ExchangeError> {
-        self.ask(instrument, |asker| Act::Change(change, asker)).await
+        self.ask(instrument, |asker| Act::Change(change, asker))
+            .await
     }
 
     /// Replaces the line's polling set; each poll runs on its own absolute schedule
@@ -232,19 +235,17 @@ impl LineHandle {
         let Door::Thread { thread, .. } = &*self.door else {
             return ended.await;
         };
-        match tokio::time::timeout(JOIN_WITHIN, ended).await {
-            Ok(answer) => {
-                let thread = thread.lock().ok().and_then(|mut thread| thread.take());
-                // The answer is the thread's last act, so this does not wait.
-                if let Some(thread) = thread {
-                    let _ = thread.join();
-                }
-                answer
-            }
-            Err(_) => Err(self
-                .facts
-                .not_confirmed("no answer from the line's thread within 2 s")),
+        let thread = thread.lock().ok().and_then(|mut thread| thread.take());
+        let deadline = tokio::time::Instant::now() + JOIN_WITHIN;
+        let answer = tokio::time::timeout_at(deadline, ended).await;
+        // The port may take its time to close; whether OFF was confirmed is known by now.
+        if let (Ok(_), Some(thread)) = (&answer, thread) {
+            let _ = tokio::time::timeout_at(deadline, finished(thread)).await;
         }
+        answer.unwrap_or_else(|_| {
+            let found = "no answer from the line's thread within 2 s";
+            Err(self.facts.not_confirmed(found))
+        })
     }
 
     async fn ask<T>(
@@ -259,4 +260,12 @@ impl LineHandle {
             .await
             .unwrap_or_else(|_| Err(self.facts.ended(instrument)))
     }
+}
+
+/// Waits until a thread has ended, without blocking.
+async fn finished(thread: JoinHandle<()>) {
+    while !thread.is_finished() {
+        tokio::time::sleep(Duration::from_millis(1)).await;
+    }
+    let _ = thread.join();
 }

@@ -18,10 +18,11 @@ mod handle;
 mod lease;
 mod line;
 mod order;
-
+mod request;
+mod serial;
 mod setup;
 mod simulated;
-
+mod thread;
 mod work;
 
 pub use error::{ExchangeDetail, ExchangeError, Fault, OpenError};
@@ -30,7 +31,7 @@ pub use lease::{Lease, OffConfirmed};
 pub use order::{Change, Identity, Poll, Polled};
 pub use setup::{Ears, InstrumentSetup, LineSetup, Tap, Witness};
 pub use simulated::{FarSide, simulated_line};
-
+pub use thread::serial_line;
 
 #[cfg(test)]
 mod tests;

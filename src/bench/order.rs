@@ -58,25 +58,26 @@ pub struct Identity {
 const VIRTUAL: &str = "VIRTUAL";
 
 impl Identity {
-    /// Reads an identity reply: `...VIRTUAL x20...` is a virtual instrument at 20
-    /// run seconds to a wall second, `VIRTUAL` alone one at 1.
+    /// Reads an identity reply: one that holds `VIRTUAL` comes from a virtual instrument,
+    /// and ` x20` behind it says 20 run seconds to a wall second; without that it is 1.
     pub(super) fn of(reply: String) -> Self {
-        let virtual_speed = reply.find(VIRTUAL).map(|at| {
-            let rest = &reply[at + VIRTUAL.len()..];
-            let number = rest.strip_prefix(" x").unwrap_or("");
-            let end = number
-                .find(|c: char| !c.is_ascii_digit() && c != '.')
-                .unwrap_or(number.len());
-            match number[..end].parse::<f64>() {
-                Ok(speed) if speed > 0.0 => speed,
-                _ => 1.0,
-            }
-        });
+        let virtual_speed = reply.find(VIRTUAL).map(|at| speed_in(&reply[at..]));
         Self {
             reply,
             virtual_speed,
         }
     }
+}
+
+fn speed_in(text: &str) -> f64 {
+    let stated = text.split(" x").skip(1).find_map(|number| {
+        let is_part = |c: char| c.is_ascii_digit() || c == '.';
+        let end = number.find(|c| !is_part(c)).unwrap_or(number.len());
+        number[..end].parse::<f64>().ok()
+    });
+    stated
+        .filter(|speed| *speed > 0.0 && speed.is_finite())
+        .unwrap_or(1.0)
 }
 
 /// Who waits for an answer.
@@ -119,10 +120,17 @@ mod tests {
             ("EXAMPLE,BENCH1,VIRTUAL,1.0", Some(1.0)),
             ("EXAMPLE,BENCH1,VIRTUAL x20,1.0", Some(20.0)),
             ("EXAMPLE,BENCH1,7,VIRTUAL x2.5", Some(2.5)),
+            ("EXAMPLE,VIRTUAL-METER,0001,0.1 x20", Some(20.0)),
+            ("EXAMPLE,VIRTUAL-METER,0 xy,0.1 x2", Some(2.0)),
+            ("EXAMPLE x3,VIRTUAL,7,0.1", Some(1.0)),
             ("EXAMPLE,BENCH1,7,VIRTUAL x0", Some(1.0)),
             ("EXAMPLE,BENCH1,7,VIRTUAL xx", Some(1.0)),
         ] {
-            assert_eq!(Identity::of(reply.to_owned()).virtual_speed, speed, "{reply}");
+            assert_eq!(
+                Identity::of(reply.to_owned()).virtual_speed,
+                speed,
+                "{reply}"
+            );
         }
     }
 }

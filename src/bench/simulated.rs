@@ -139,7 +139,10 @@ impl Pump {
             self.line.written(true, self.now);
         }
         let soon = self.now.plus_micros(NOTHING_YET_US);
-        let far = self.far.due().map(|due| if due <= self.now { soon } else { due });
+        let far = self
+            .far
+            .due()
+            .map(|due| if due <= self.now { soon } else { due });
         let wake = far.into_iter().chain(self.line.wake_at()).min();
         wake.unwrap_or(self.now.plus_micros(IDLE_US))
     }

@@ -8,9 +8,9 @@ use tokio::sync::oneshot;
 
 use super::codec::frame;
 use super::error::{ExchangeError, Fault};
-use super::exchange::{Expect, Manner, Reply, Request};
 use super::lease::{Lease, LeaseState, OffConfirmed};
 use super::order::{Asker, Change, Identity, Poll, Polled};
+use super::request::{Expect, Manner, Reply, Request};
 use super::setup::InstrumentSetup;
 use crate::quantity::{Moment, near, shortest};
 use crate::spec::driver::{ReadingQuery, Setting};
@@ -160,7 +160,9 @@ impl Member {
         let output = self.output()?;
         let Some(on) = output.on.clone() else {
             let driver = &self.setup.driver.name;
-            return Err(Fault::Refused(format!("driver {driver} switches nothing on")));
+            return Err(Fault::Refused(format!(
+                "driver {driver} switches nothing on"
+            )));
         };
         let confirm = Step::Confirm {
             ask: output.state.clone(),
@@ -220,9 +222,7 @@ impl Wanted {
                 let agrees = (found - value).abs() <= within || near(*found, value);
                 (agrees, shortest(value), shortest(*found))
             }
-            (Wanted::On, Reply::Switch(on)) => {
-                (*on, "on".to_owned(), on_or_off(*on).to_owned())
-            }
+            (Wanted::On, Reply::Switch(on)) => (*on, "on".to_owned(), on_or_off(*on).to_owned()),
             (_, other) => (false, format!("{self:?}"), format!("{other:?}")),
         };
         if agrees {

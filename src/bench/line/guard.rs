@@ -2,8 +2,9 @@
 
 use super::{Line, Work};
 use crate::bench::error::{ExchangeError, Fault};
-use crate::bench::exchange::{Next, Outcome, Reply};
+use crate::bench::exchange::Next;
 use crate::bench::lease::OffConfirmed;
+use crate::bench::request::{Outcome, Reply};
 use crate::bench::work::{Member, Off, Order, OrderAsker, on_or_off};
 use crate::quantity::Moment;
 
@@ -38,7 +39,11 @@ impl Line {
             running.askers.append(&mut off.askers);
             return;
         }
-        if let Some(waiting) = self.offs.iter_mut().find(|o| o.instrument == off.instrument) {
+        if let Some(waiting) = self
+            .offs
+            .iter_mut()
+            .find(|o| o.instrument == off.instrument)
+        {
             waiting.askers.append(&mut off.askers);
             return;
         }
@@ -125,7 +130,8 @@ impl Line {
         }
         if matches!(error.fault, Fault::NotConfirmed { .. }) {
             // A contactor takes its time.
-            self.exchange.pause_until(now.plus_micros(member.update_us()));
+            self.exchange
+                .pause_until(now.plus_micros(member.update_us()));
         }
         off.reading_back = false;
         self.begin_off(off, now)
@@ -138,7 +144,8 @@ impl Line {
         }
         member.granted = false;
         let at = off.first_sent.unwrap_or(now);
-        self.witness.off(at, member.name(), &off.cause, result.is_ok());
+        self.witness
+            .off(at, member.name(), &off.cause, result.is_ok());
         self.members[off.instrument].not_off = result.clone().err();
         let open = |m: &Member| m.lease.is_some() || m.not_off.is_some();
         self.facts.set_unconfirmed(self.members.iter().any(open));

@@ -11,9 +11,10 @@ use std::sync::{Arc, Weak};
 use tokio::sync::mpsc::UnboundedSender;
 
 use super::error::{ExchangeDetail, ExchangeError, Fault, escaped};
-use super::exchange::{Exchange, Failure, Next, Outcome, Reply};
+use super::exchange::{Exchange, Next};
 use super::handle::{Door, Facts};
 use super::order::{Act, Asker, Message, Poll, Polled};
+use super::request::{Failure, Outcome, Reply};
 use super::setup::{LineSetup, Witness};
 use super::work::{Member, Off, Order, OrderAsker, Schedule, Step};
 use crate::clock::Clock;
@@ -183,7 +184,8 @@ impl Line {
         self.fail_orders(why, now);
         for instrument in self.energised() {
             if !self.offs.iter().any(|off| off.instrument == instrument) {
-                self.offs.push_back(Off::new(instrument, "the line was lost"));
+                self.offs
+                    .push_back(Off::new(instrument, "the line was lost"));
             }
         }
         for off in std::mem::take(&mut self.offs) {
@@ -314,7 +316,9 @@ impl Line {
 
     fn fail_orders(&mut self, why: &str, now: Moment) {
         for order in std::mem::take(&mut self.orders) {
-            let error = self.facts.fault(order.instrument, Fault::Lost(why.to_owned()));
+            let error = self
+                .facts
+                .fault(order.instrument, Fault::Lost(why.to_owned()));
             self.answer_failed(order.asker, error, now);
         }
     }

@@ -4,9 +4,10 @@ use std::sync::Arc;
 
 use super::{ALREADY_ON, Line, Work};
 use crate::bench::error::{ExchangeError, Fault, escaped};
-use crate::bench::exchange::{Next, Outcome, Reply};
+use crate::bench::exchange::Next;
 use crate::bench::lease::{Lease, LeaseState};
 use crate::bench::order::{Asker, Identity, Polled};
+use crate::bench::request::{Outcome, Reply};
 use crate::bench::work::{Off, Order, OrderAsker, Step};
 use crate::quantity::{Moment, Readings};
 
@@ -132,7 +133,11 @@ impl Line {
         Next::Wait
     }
 
-    pub(super) fn recognise(&self, instrument: usize, text: String) -> Result<Identity, ExchangeError> {
+    pub(super) fn recognise(
+        &self,
+        instrument: usize,
+        text: String,
+    ) -> Result<Identity, ExchangeError> {
         let expected = self.members[instrument].identity();
         if text.starts_with(expected) {
             return Ok(Identity::of(text));
@@ -157,7 +162,9 @@ impl Line {
     /// The output is read back as on: hand the lease out.
     pub(super) fn grant(&mut self, instrument: usize, asker: Asker<Lease>, now: Moment) {
         let member = &mut self.members[instrument];
-        let state = member.lease.get_or_insert_with(|| Arc::new(LeaseState::new(now)));
+        let state = member
+            .lease
+            .get_or_insert_with(|| Arc::new(LeaseState::new(now)));
         state.renew(now);
         member.granted = true;
         let lease = Lease::new(

@@ -25,7 +25,10 @@ fn on_and_off(bench: &Bench) -> (f64, f64) {
     let far = bench.far.lock();
     let at = |line: &str| {
         let heard = far.heard.iter().find(|(_, l)| l == line);
-        heard.unwrap_or_else(|| panic!("{line} was not heard")).0.as_secs_f64()
+        heard
+            .unwrap_or_else(|| panic!("{line} was not heard"))
+            .0
+            .as_secs_f64()
     };
     (at("OUTP ON"), at("OUTP OFF"))
 }

@@ -5,3 +5,6 @@ mod leases;
 mod orders;
 mod polls;
 mod scripted;
+mod shared;
+#[cfg(unix)]
+mod terminals;

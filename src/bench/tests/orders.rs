@@ -5,7 +5,11 @@ use crate::bench::{Change, Fault};
 use crate::quantity::{Hertz, Reading, Volts};
 
 fn heard(far: &Scripted) -> Vec<String> {
-    far.lock().heard.iter().map(|(_, line)| line.clone()).collect()
+    far.lock()
+        .heard
+        .iter()
+        .map(|(_, line)| line.clone())
+        .collect()
 }
 
 #[test]
@@ -35,7 +39,10 @@ fn a_change_is_sent_checked_and_read_back() {
         let change = Change::Voltage(Volts::of(230.04));
         bench.far.lock().step = 0.1;
         bench.line.change(0, change).await.unwrap();
-        assert_eq!(heard(&bench.far), ["SOUR:VOLT 230.04", "SYST:ERR?", "SOUR:VOLT?"]);
+        assert_eq!(
+            heard(&bench.far),
+            ["SOUR:VOLT 230.04", "SYST:ERR?", "SOUR:VOLT?"]
+        );
         bench.line.change(0, Change::Position(2)).await.unwrap();
         assert_eq!(bench.far.lock().times("ROUT:POS 2"), 1);
     });
@@ -65,11 +72,20 @@ fn a_channel_is_filled_in() {
         assert_eq!(polled.result.unwrap().get(Reading::Temperature), Some(23.5));
         assert_eq!(heard(&bench.far), ["MEAS:TEMP? (@3)"]);
         let polled = bench.line.read(0, 1, None).await;
-        assert!(matches!(polled.result.unwrap_err().fault, Fault::Refused(_)));
+        assert!(matches!(
+            polled.result.unwrap_err().fault,
+            Fault::Refused(_)
+        ));
         let polled = bench.line.read(0, 9, None).await;
-        assert!(matches!(polled.result.unwrap_err().fault, Fault::Refused(_)));
+        assert!(matches!(
+            polled.result.unwrap_err().fault,
+            Fault::Refused(_)
+        ));
         let polled = bench.line.read(7, 0, None).await;
-        assert!(matches!(polled.result.unwrap_err().fault, Fault::Refused(_)));
+        assert!(matches!(
+            polled.result.unwrap_err().fault,
+            Fault::Refused(_)
+        ));
     });
 }
 

@@ -1,7 +1,8 @@
 //! Polls keep their schedule.
 
-use super::scripted::{Manners, Scripted, on_a_line};
-use crate::bench::{Fault, Poll, Polled};
+use super::scripted::{Listening, Manners, Scripted, on_a_line, paused, setup};
+use crate::bench::{Ears, FarSide, Fault, Poll, Polled, Tap, simulated_line};
+use crate::clock::Clock;
 use crate::quantity::{Moment, Reading, Seconds};
 
 fn poll(tag: u32, every: f64) -> Poll {
@@ -15,7 +16,10 @@ fn poll(tag: u32, every: f64) -> Poll {
 }
 
 fn requests(samples: &[Polled]) -> Vec<u64> {
-    samples.iter().map(|s| s.request.as_micros() / 1000).collect()
+    samples
+        .iter()
+        .map(|s| s.request.as_micros() / 1000)
+        .collect()
 }
 
 #[test]
@@ -61,7 +65,10 @@ fn orders_go_in_front_and_polls_are_replaced() {
         bench.line.poll(vec![poll(3, 1.0)]);
         for k in 0..3 {
             let sample = bench.samples.recv().await.unwrap();
-            assert_eq!((sample.tag, sample.request.as_micros()), (3, 60_000 + k * 1_000_000));
+            assert_eq!(
+                (sample.tag, sample.request.as_micros()),
+                (3, 60_000 + k * 1_000_000)
+            );
         }
         bench.line.poll(Vec::new());
         let none = tokio::time::timeout(Seconds::of(60.0).to_std(), bench.samples.recv());
@@ -101,8 +108,72 @@ fn polls_that_cannot_be_are_refused_once() {
         };
         bench.line.poll(vec![wrong]);
         let sample = bench.samples.recv().await.unwrap();
-        assert!(matches!(sample.result.unwrap_err().fault, Fault::Refused(_)));
+        assert!(matches!(
+            sample.result.unwrap_err().fault,
+            Fault::Refused(_)
+        ));
         let none = tokio::time::timeout(Seconds::of(60.0).to_std(), bench.samples.recv());
         assert!(none.await.is_err());
     });
+}
+
+/// Answers at once or after a while, without thinking.
+struct Quick {
+    due: Option<Moment>,
+    latency_us: u64,
+}
+
+impl FarSide for Quick {
+    fn receive(&mut self, _: &[u8], now: Moment) {
+        self.due = Some(now.plus_micros(self.latency_us));
+    }
+    fn deliver(&mut self, now: Moment, out: &mut Vec<u8>) {
+        if self.due.take_if(|due| *due <= now).is_some() {
+            out.extend_from_slice(b"230.125;9.5625;2200.5\n");
+        }
+    }
+    fn due(&self) -> Option<Moment> {
+        self.due
+    }
+}
+
+struct Deaf;
+
+impl Tap for Deaf {
+    fn sent(&mut self, _: &str, _: Moment, _: &[u8]) {}
+    fn received(&mut self, _: &str, _: Moment, _: &[u8]) {}
+}
+
+/// Three lines at 10 Hz, with and without latency: tens of thousands of simulated
+/// seconds to a wall second on an idle machine, here far below what that gives.
+#[test]
+fn three_lines_at_ten_hertz_run_a_thousand_times_faster_than_the_wall() {
+    for latency_us in [0, 5_000] {
+        paused().block_on(async {
+            let began = std::time::Instant::now();
+            let clock = Clock::simulated();
+            let (ears, mut samples) = Listening::default().ears();
+            let mut lines = Vec::new();
+            for _ in 0..3 {
+                let far = Quick {
+                    due: None,
+                    latency_us,
+                };
+                let ears = Ears {
+                    tap: Box::new(Deaf),
+                    witness: Box::new(Listening::default()),
+                    samples: ears.samples.clone(),
+                };
+                let line = simulated_line(setup(), Box::new(far), clock.clone(), ears);
+                line.poll(vec![poll(1, 0.1)]);
+                lines.push(line);
+            }
+            for _ in 0..90_000 {
+                assert!(samples.recv().await.unwrap().result.is_ok());
+            }
+            let rate = clock.now().as_secs_f64() / began.elapsed().as_secs_f64();
+            println!("{rate:.0} simulated seconds to a wall second, latency {latency_us} us");
+            assert!(rate > 1000.0, "{rate}");
+        });
+    }
 }

@@ -175,6 +175,11 @@ impl Script {
         self.out.push_back((at, format!("{line}\n").into_bytes()));
     }
 
+    /// Speaks without being asked.
+    pub fn say_now(&mut self, line: &str) {
+        self.say(Moment::START, line);
+    }
+
     pub fn receive(&mut self, bytes: &[u8], now: Moment) {
         self.partial.extend_from_slice(bytes);
         while let Some(end) = self.partial.iter().position(|b| *b == b'\n') {
@@ -244,7 +249,10 @@ impl Tap for Listening {
 
 impl Witness for Listening {
     fn off(&mut self, at: Moment, _: &str, cause: &str, confirmed: bool) {
-        self.offs.lock().unwrap().push((at, cause.into(), confirmed));
+        self.offs
+            .lock()
+            .unwrap()
+            .push((at, cause.into(), confirmed));
     }
 }
 
