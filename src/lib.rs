@@ -38,3 +38,4 @@ pub mod judge;
 
 pub mod chart;
 
+pub mod cli;
