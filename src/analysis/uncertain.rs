@@ -103,7 +103,7 @@ fn calibration(points: &[CalibrationPoint], reading: Reading, channel: Option<u3
         (Some(low), Some(high)) => {
             let share = (indicated - low.at) / (high.at - low.at);
             let correction = low.correction + share * (high.correction - low.correction);
-            Some((correction, standard(low).max(standard(high))))
+            Some((correction, standard(low) + share * (standard(high) - standard(low))))
         }
         (Some(only), None) => Some((only.correction, standard(only))),
         (None, Some(only)) => Some((only.correction, standard(only))),
@@ -123,7 +123,7 @@ mod tests {
     fn calibration_is_interpolated_and_held_beyond_its_ends() {
         let points = [point(50.0, 0.2, 0.04), point(10.0, 0.1, 0.02)];
         let at = |value| calibration(&points, Reading::Power, None, value).unwrap();
-        assert!((at(30.0).0 - 0.15).abs() < 1e-12 && (at(30.0).1 - 0.02).abs() < 1e-12);
+        assert!((at(30.0).0 - 0.15).abs() < 1e-12 && (at(30.0).1 - 0.015).abs() < 1e-12);
         assert_eq!(at(5.0), (0.1, 0.01));
         assert_eq!(at(500.0), (0.2, 0.02));
         assert_eq!(at(50.0).0, 0.2);

@@ -3,12 +3,16 @@
 use super::types::{Figure, Peak};
 use super::uncertain::Budget;
 use super::view::{Timed, View, value_at};
-use crate::quantity::{Moment, Reading};
+use crate::quantity::{Moment, Reading, Seconds};
 use crate::record::{Sample, Status};
 use crate::spec::sequence::MeasuredAt;
+use crate::stats::mean_and_deviation;
 
 /// Body and ambient this near are a cold start (house default).
 pub(super) const COLD_K: f64 = 3.0;
+
+/// Readings before energising that tell a cold start.
+const BEFORE: Seconds = Seconds::whole(60);
 
 /// The highest temperature is known only when it fell for this long.
 const FELL_FOR_S: f64 = 120.0;
@@ -35,11 +39,14 @@ const STEADY_POWER: f64 = 0.1;
 /// Whether the body was near ambient before energising.
 pub(super) fn cold_start(view: &View, samples: &[Sample]) -> Figure<()> {
     let Some(on) = view.on else { return Figure::Absent("not energised".to_owned()) };
+    // The mean of the last minute before energising: a rest ends by the same mean.
     let before = |role: Option<usize>| {
         let role = role?;
         let until = samples.partition_point(|s| s.reply < on);
         let of_role = samples[..until].iter().rev().filter(|s| s.role == role && s.status == Status::Ok);
-        of_role.filter_map(|s| s.readings.get(Reading::Temperature)).next()
+        let readings = of_role.filter_map(|s| Some((s.reply, s.readings.get(Reading::Temperature)?)));
+        let last: Vec<f64> = readings.take_while(|(at, _)| on.since(*at) <= BEFORE).map(|(_, t)| t).collect();
+        mean_and_deviation(&last).map(|(mean, _)| mean)
     };
     match (before(view.body()), before(view.ambient())) {
         (Some(body), Some(ambient)) if (body - ambient).abs() <= COLD_K => Figure::Known(()),

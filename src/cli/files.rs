@@ -11,7 +11,6 @@ use super::say::complain;
 use crate::plan::{Plan, resolve};
 use crate::spec::bench::Bench;
 use crate::spec::driver::Driver;
-use crate::spec::sequence::Sequence;
 use crate::spec::{self, Loaded, Problem, Weight, shipped};
 
 /// Larger than this, a file is refused before it is read whole; `spec` says the same.
@@ -29,8 +28,6 @@ pub struct Document {
 /// Everything that a plan is made from, with the plan.
 #[derive(Debug)]
 pub struct Prepared {
-    /// The sequence.
-    pub sequence: Sequence,
     /// The plan.
     pub plan: Plan,
     /// Copies for the record: name in the record, content.
@@ -127,7 +124,6 @@ pub fn prepare(files: &Files, bench: Option<&Path>) -> Result<Prepared, Exit> {
     };
     let copies = copies_of(&plan, sequence_file, bench_file, &drivers);
     Ok(Prepared {
-        sequence,
         plan,
         copies,
         warnings: problems,

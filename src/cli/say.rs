@@ -13,13 +13,6 @@ pub fn complain(text: &str) {
     write_to(&mut io::stderr().lock(), text);
 }
 
-/// Prints a text without a line end, at once.
-pub fn say_open(text: &str) {
-    let mut out = io::stdout().lock();
-    let _ = out.write_all(tame(text).as_bytes());
-    let _ = out.flush();
-}
-
 fn write_to(out: &mut impl Write, text: &str) {
     let _ = writeln!(out, "{}", tame(text));
     let _ = out.flush();

@@ -1,7 +1,7 @@
 //! The verdict as a table for a terminal of 80 columns or more.
 
 use crate::analysis::{Analysis, CellResult, Figure};
-use crate::judge::{Finding, Judgement};
+use crate::judge::{Finding, Judgement, Outcome};
 use crate::plan::Plan;
 use crate::record::{Folder, RunOutcome};
 use crate::spec::sequence::RuleWeight;
@@ -100,7 +100,7 @@ fn findings(findings: &[Finding]) -> Vec<String> {
     let rows: Vec<Vec<String>> = findings.iter().map(finding_row).collect();
     let mut lines = aligned(&head, &rows);
     for finding in findings {
-        if finding.value.is_none() && !finding.reason.is_empty() {
+        if finding.outcome != Outcome::Pass && !finding.reason.is_empty() {
             lines.extend(wrapped(
                 "  ",
                 &format!("{}: {}", finding.rule, finding.reason),
@@ -133,7 +133,7 @@ fn finding_row(finding: &Finding) -> Vec<String> {
     };
     let margin = finding
         .margin
-        .map_or_else(|| "-".to_owned(), |m| format!("{m:+.2} {unit}"));
+        .map_or_else(|| "-".to_owned(), |m| format!("{m:+.2} {}", finding.margin_unit()));
     vec![
         rule,
         value,

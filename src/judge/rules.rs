@@ -154,11 +154,11 @@ fn fill(finding: &mut Finding, estimate: &Estimate, limits: Limits, decision: De
 
 /// The comparison as a sentence.
 fn in_words(finding: &Finding, estimate: &Estimate) -> String {
-    let unit = &finding.unit;
+    let (unit, difference) = (&finding.unit, finding.margin_unit());
     let Some(margin) = finding.margin else { return String::new() };
     let side = if margin < 0.0 { "beyond" } else { "within" };
     format!(
-        "{:.3} {unit} with U {:.3} {unit} lies {side} its limit by {:.3} {unit}, {:.1} times U",
+        "{:.3} {unit} with U {:.3} {difference} lies {side} its limit by {:.3} {difference}, {:.1} times U",
         estimate.value,
         estimate.expanded,
         margin.abs(),

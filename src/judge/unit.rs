@@ -3,7 +3,7 @@
 use super::decide::severity;
 use super::rules::plain;
 use super::types::{Finding, Judgement, Outcome};
-use crate::analysis::{Analysis, Looked};
+use crate::analysis::Looked;
 use crate::plan::Plan;
 use crate::record::{RunOutcome, TripOf};
 use crate::spec::sequence::{FindingClass, RuleWeight};
@@ -100,7 +100,7 @@ fn because(finding: &Finding) -> String {
     match (finding.outcome, finding.margin, finding.expanded) {
         (Outcome::Pass, Some(margin), Some(u)) if u > 0.0 => format!(
             "every required rule passes; the smallest margin is {margin:.2} {}, {:.1} times U: {rule}",
-            finding.unit,
+            finding.margin_unit(),
             margin / u
         ),
         (Outcome::Pass, _, _) => "every required rule passes".to_owned(),

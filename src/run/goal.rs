@@ -76,13 +76,16 @@ impl Cooling {
         }
     }
 
+    /// Near is meant of the last minute's mean: a single reading's noise must not end a
+    /// rest that the next reading would find too short.
     fn is_cool(&self, now: Moment) -> bool {
         let (Some(ambient), Some((_, body)), Some((from, first))) =
             (self.ambient, self.body.back(), self.body.front())
         else {
             return false;
         };
-        let near = (body - ambient).abs() < self.within.get();
+        let mean = self.body.iter().map(|(_, body)| body).sum::<f64>() / self.body.len() as f64;
+        let near = (mean - ambient).abs() < self.within.get();
         let steady = now.since(*from) < FALLING_WINDOW || first - body <= FALLING_FAST;
         now >= self.earliest && near && steady
     }
