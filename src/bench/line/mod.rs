@@ -172,16 +172,12 @@ impl Line {
         self.exchange.abort();
         self.lost = Some(why.to_owned());
         let lost = Fault::Lost(why.to_owned());
-        for poll in std::mem::take(&mut self.polls) {
-            let error = self.facts.fault(poll.poll.instrument, lost.clone());
-            self.send_sample(poll.poll.tag, now, error);
-        }
         match self.work.take() {
             Some(Work::Off(off)) => self.offs.push_front(off),
             Some(Work::Order(order)) => self.orders.push_front(order),
             Some(Work::Poll { .. }) | None => {}
         }
-        self.fail_orders(why, now);
+        // Leases first: whoever hears of the loss finds them dead.
         for instrument in self.energised() {
             if !self.offs.iter().any(|off| off.instrument == instrument) {
                 self.offs
@@ -191,6 +187,11 @@ impl Line {
         for off in std::mem::take(&mut self.offs) {
             let error = self.facts.fault(off.instrument, lost.clone());
             self.finish_off(off, Err(error), now);
+        }
+        self.fail_orders(why, now);
+        for poll in std::mem::take(&mut self.polls) {
+            let error = self.facts.fault(poll.poll.instrument, lost.clone());
+            self.send_sample(poll.poll.tag, now, error);
         }
     }
 

@@ -71,6 +71,17 @@ impl Drop for Terminal {
     }
 }
 
+impl Listening {
+    /// Waits until the witness was told of an OFF.
+    fn until_off(&self) {
+        let before = Instant::now();
+        while self.offs.lock().unwrap().is_empty() {
+            assert!(before.elapsed() < Duration::from_secs(3));
+            std::thread::sleep(Duration::from_millis(1));
+        }
+    }
+}
+
 fn answer(mut master: TTYPort, far: &Scripted, stop: &AtomicBool) {
     let began = Instant::now();
     let mut buffer = [0; 1024];
@@ -155,17 +166,21 @@ fn a_round_trip_over_a_terminal() {
 #[test]
 fn a_schedule_on_the_wall_clock_does_not_drift() {
     let terminal = Terminal::open();
-    let (line, _ears, mut samples) = open(&terminal);
+    let (ears, mut samples) = Listening::default().ears();
+    let clock = Clock::real();
+    let line = terminal.line(clock.clone(), ears);
     real().block_on(async {
+        let origin = clock.now();
         line.poll(poll(0.02));
-        let first = samples.recv().await.unwrap().request;
-        let mut last = first;
-        for _ in 0..50 {
-            last = samples.recv().await.unwrap().request;
+        let mut late = Vec::new();
+        for _ in 0..60 {
+            let request = samples.recv().await.unwrap().request;
+            late.push(request.micros_since(origin) % 20_000);
         }
-        // Ticks may be missed on a busy machine, but the grid stands.
-        let off_grid = last.micros_since(first) % 20_000;
-        assert!(!(15_000..=19_000).contains(&off_grid), "{off_grid}");
+        // Some ticks come late on a busy machine, but the grid stands to the end.
+        let mut last = late.split_off(30);
+        last.sort_unstable();
+        assert!(last[10] < 8_000, "{last:?}");
         line.close().await.unwrap();
     });
 }
@@ -222,7 +237,7 @@ fn a_dropped_lease_is_off_within_a_moment_though_the_meter_hangs() {
     let before = Instant::now();
     drop(lease);
     terminal.until("off", |far| !far.on);
-    assert!(before.elapsed() < Duration::from_millis(200));
+    assert!(before.elapsed() < Duration::from_millis(400));
     real().block_on(line.close()).unwrap();
     assert!(ears.offs.lock().unwrap()[0].2);
 }
@@ -234,19 +249,21 @@ fn a_lease_that_is_not_renewed_ends_on_the_wall_clock_too() {
     let lease = real().block_on(line.energise(0)).unwrap();
     let before = Instant::now();
     terminal.until("off", |far| !far.on);
-    assert!((0.9..1.5).contains(&before.elapsed().as_secs_f64()));
+    assert!((0.9..2.0).contains(&before.elapsed().as_secs_f64()));
     assert!(!lease.is_alive());
 }
 
 #[test]
 fn on_a_fast_clock_a_lease_lasts_a_quarter_of_a_second_of_wall_time() {
     let terminal = Terminal::open();
-    let (ears, _samples) = Listening::default().ears();
+    let listening = Listening::default();
+    let (ears, _samples) = listening.ears();
     let line = terminal.line(Clock::scaled(100.0), ears);
     let lease = real().block_on(line.energise(0)).unwrap();
     let before = Instant::now();
     terminal.until("off", |far| !far.on);
-    assert!((0.2..0.8).contains(&before.elapsed().as_secs_f64()));
+    assert!((0.2..0.9).contains(&before.elapsed().as_secs_f64()));
+    listening.until_off();
     drop(lease);
     // Replies are waited for in wall time.
     terminal.far.lock().deaf = true;
@@ -254,7 +271,7 @@ fn on_a_fast_clock_a_lease_lasts_a_quarter_of_a_second_of_wall_time() {
     let polled = real().block_on(line.read(0, 0, None));
     let took = before.elapsed().as_secs_f64();
     assert_eq!(polled.result.unwrap_err().fault, Fault::NoReply);
-    assert!((1.4..2.5).contains(&took), "{took}");
+    assert!((1.4..4.0).contains(&took), "{took}");
 }
 
 #[test]
@@ -264,11 +281,8 @@ fn the_last_handles_drop_is_off() {
     let lease = real().block_on(line.energise(0)).unwrap();
     drop(line);
     terminal.until("off", |far| !far.on);
-    let before = Instant::now();
-    while lease.is_alive() {
-        assert!(before.elapsed() < Duration::from_secs(1));
-        std::thread::sleep(Duration::from_millis(1));
-    }
+    ears.until_off();
+    assert!(!lease.is_alive());
     let offs = ears.offs.lock().unwrap().clone();
     assert_eq!(offs[0].1, "the line's handle was dropped");
 }
@@ -305,11 +319,11 @@ fn a_panic_in_the_thread_is_off_and_a_lost_line() {
         }
         assert!(matches!(lost.unwrap().fault, Fault::Lost(_)));
         terminal.until("off", |far| !far.on);
+        line.close().await.unwrap();
         assert!(!lease.is_alive());
         let offs = listening.offs.lock().unwrap().clone();
         assert_eq!(offs[0].1, "the line's thread panicked");
         assert!(offs[0].2);
-        line.close().await.unwrap();
     });
 }
 
