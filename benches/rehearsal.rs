@@ -152,7 +152,7 @@ fn far_side_alone(plan: &Plan, seconds: u64) -> (f64, f64) {
     for tick in 0..seconds * 10 {
         let start = tick * 100_000;
         let asked: [(bool, &[u8]); 3] = [
-            (true, b"MEAS:VOLT:AC?;CURR:AC?;POW:ACT?\n"),
+            (true, b":MEAS:VOLT:AC?;:MEAS:CURR:AC?;:MEAS:POW:ACT?\n"),
             (false, b"MEAS:TEMP? (@1)\n"),
             (false, b"MEAS:TEMP? (@2)\n"),
         ];

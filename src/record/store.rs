@@ -102,10 +102,8 @@ pub fn put_whole(path: &Path, bytes: &[u8]) -> io::Result<()> {
 
 #[cfg(unix)]
 fn sync_folder_of(path: &Path) -> io::Result<()> {
-    match path.parent() {
-        Some(folder) => StoreFile::sync(&File::open(folder)?),
-        None => Ok(()),
-    }
+    let folder = path.parent().filter(|folder| !folder.as_os_str().is_empty());
+    StoreFile::sync(&File::open(folder.unwrap_or(Path::new(".")))?)
 }
 
 /// A folder can't be synced on this system; the rename alone must do.

@@ -90,7 +90,7 @@ fn fields(text: &str) -> Vec<f64> {
     text.split([';', ',']).map(|f| f.parse().unwrap()).collect()
 }
 
-const METER: &str = "MEAS:VOLT:AC?;CURR:AC?;POW:ACT?";
+const METER: &str = ":MEAS:VOLT:AC?;:MEAS:CURR:AC?;:MEAS:POW:ACT?";
 const BODY: &str = "MEAS:TEMP? (@1)";
 const AMBIENT: &str = "MEAS:TEMP? (@2)";
 const ERRORS: &str = "SYST:ERR?";
