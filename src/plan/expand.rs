@@ -1,20 +1,36 @@
 //! Steps: `each` blocks become cells, and every step is held to whether the unit is
 //! energised when it comes.
 
+use std::collections::BTreeSet;
+
 use super::notes::Notes;
 use super::types::{Action, Cell, PlannedStep};
-use crate::quantity::Seconds;
 use crate::spec::sequence::{Each, RoleKind, Sequence, Step, StepAction, SupplyPoint};
 use crate::spec::{Located, Place};
 
-/// Longest polling interval while energised: a slower one would trip too late (house default).
-const SLOWEST_ENERGISED: Seconds = Seconds::whole(10);
+/// More steps than this are a mistake: three axes multiply quickly.
+const MOST_STEPS: usize = 20_000;
 
 /// Cells and steps of a sequence.
 #[derive(Debug, Default)]
 pub(super) struct Expanded {
     pub(super) cells: Vec<Cell>,
     pub(super) steps: Vec<PlannedStep>,
+}
+
+impl Expanded {
+    /// By cell, whether one of its steps is wanted.
+    pub(super) fn cells_with(&self, wanted: impl Fn(&Action) -> bool) -> Vec<bool> {
+        let mut with = vec![false; self.cells.len()];
+        for step in &self.steps {
+            if let Some(cell) = step.cell
+                && wanted(&step.action)
+            {
+                with[cell] = true;
+            }
+        }
+        with
+    }
 }
 
 /// Expands every step.
@@ -32,13 +48,22 @@ pub(super) fn expand(sequence: &Sequence, notes: &mut Notes) -> Expanded {
         position: None,
         supply: None,
         cell: None,
+        in_each: false,
         energised: false,
     };
     for step in &sequence.steps {
         walk.step(step);
     }
     walk.end_energised();
-    walk.out
+    let Walk { notes, out, .. } = walk;
+    if !out.steps.iter().any(|s| s.action == Action::Energise) && !notes.has_errors() {
+        notes.error(
+            &sequence.title.place,
+            "no step energises the unit: nothing would be measured",
+            "write `energise` where the unit is to be switched on",
+        );
+    }
+    out
 }
 
 /// What is set while the steps are walked.
@@ -51,6 +76,7 @@ struct Walk<'a> {
     position: Option<String>,
     supply: Option<SupplyPoint>,
     cell: Option<usize>,
+    in_each: bool,
     energised: bool,
 }
 
@@ -67,29 +93,26 @@ impl Walk<'_> {
     fn step(&mut self, step: &Step) {
         let place = &step.verb.place;
         match &step.action {
-            StepAction::Instruct(text) => self.untouched(place, |_| Action::Instruct(text.clone())),
+            StepAction::Instruct(text) => self.while_off(place, Action::Instruct(text.clone())),
             StepAction::Ask(question) => self.add(Action::Ask(question.clone())),
             StepAction::Acclimatise(waiting) => {
-                self.untouched(place, |_| Action::Acclimatise(waiting.clone()))
+                self.while_off(place, Action::Acclimatise(waiting.clone()));
             }
             StepAction::Rest(waiting) => {
                 self.end_energised();
                 self.add(Action::Rest(waiting.clone()));
             }
-            StepAction::Supply(point) => self.set_supply(point.value, &point.place),
-            StepAction::Position(position) => self.set_position(position),
-            StepAction::Condition(condition) => self.set_condition(condition),
+            StepAction::Supply(_) | StepAction::Position(_) | StepAction::Condition(_) => {
+                self.set(step);
+            }
             StepAction::Energise => self.energise(place),
             StepAction::Deenergise => self.deenergise(place),
             StepAction::Inrush(timed) => {
-                self.polled(place, timed.every, Action::Inrush(timed.clone()))
+                self.inrush_is_first(place);
+                self.while_on(place, Action::Inrush(timed.clone()));
             }
-            StepAction::Measure(timed) => {
-                self.polled(place, timed.every, Action::Measure(timed.clone()))
-            }
-            StepAction::RunIn(timed) => {
-                self.polled(place, timed.every, Action::RunIn(timed.clone()))
-            }
+            StepAction::Measure(timed) => self.while_on(place, Action::Measure(timed.clone())),
+            StepAction::RunIn(timed) => self.while_on(place, Action::RunIn(timed.clone())),
             StepAction::Soak(soak) => {
                 let action = Action::Soak {
                     at_least: soak.at_least,
@@ -97,7 +120,7 @@ impl Walk<'_> {
                     every: soak.every,
                     until: soak.until.clone(),
                 };
-                self.polled(place, soak.every, action);
+                self.while_on(place, action);
             }
             StepAction::Abnormal(abnormal) => {
                 let action = Action::Abnormal {
@@ -106,9 +129,33 @@ impl Walk<'_> {
                     every: abnormal.every,
                     body: abnormal.body,
                 };
-                self.polled(place, abnormal.every, action);
+                self.while_on(place, action);
             }
             StepAction::Each(each) => self.each(each, place),
+        }
+    }
+
+    /// A step that sets one axis of the cells to come.
+    fn set(&mut self, step: &Step) {
+        if self.in_each {
+            return self.notes.error(
+                &step.verb.place,
+                format!(
+                    "`{}` stands in an `each` block, which sets it for every cell",
+                    step.verb.value
+                ),
+                "name it in the block's `conditions:`, `positions:` or `supplies:`, or put the step before the block",
+            );
+        }
+        // What is set from here on belongs to the next cell.
+        if !self.energised {
+            self.cell = None;
+        }
+        match &step.action {
+            StepAction::Supply(point) => self.set_supply(point),
+            StepAction::Position(position) => self.set_position(position),
+            StepAction::Condition(condition) => self.set_condition(condition),
+            _ => {}
         }
     }
 
@@ -121,6 +168,10 @@ impl Walk<'_> {
             );
         }
         self.end_energised();
+        self.cell = None;
+        if !self.each_is_sound(each, place) {
+            return;
+        }
         let unnamed = [None];
         let named: Vec<Option<&Located<String>>> = each.conditions.iter().map(Some).collect();
         let conditions = if named.is_empty() {
@@ -128,6 +179,7 @@ impl Walk<'_> {
         } else {
             &named[..]
         };
+        self.in_each = true;
         for condition in conditions {
             for position in &each.positions {
                 for supply in &each.supplies {
@@ -135,7 +187,41 @@ impl Walk<'_> {
                 }
             }
         }
+        self.in_each = false;
         self.cell = None;
+    }
+
+    /// Nothing named twice, and no more cells than anybody can mean.
+    fn each_is_sound(&mut self, each: &Each, place: &Place) -> bool {
+        for (names, what) in [
+            (&each.conditions, "condition"),
+            (&each.positions, "position"),
+        ] {
+            let mut seen = BTreeSet::new();
+            for name in names.iter().filter(|name| !seen.insert(&name.value)) {
+                self.notes.error(
+                    &name.place,
+                    format!("the {what} `{}` is listed twice", name.value),
+                    "take one out",
+                );
+            }
+        }
+        let cells = each
+            .conditions
+            .len()
+            .max(1)
+            .saturating_mul(each.positions.len())
+            .saturating_mul(each.supplies.len());
+        let steps = cells.saturating_mul(each.steps.len() + 4);
+        let fits = self.out.steps.len().saturating_add(steps) <= MOST_STEPS;
+        if !fits {
+            self.notes.error(
+                place,
+                format!("`each` makes {cells} cells: a plan has at most {MOST_STEPS} steps"),
+                "name fewer conditions, positions or supplies",
+            );
+        }
+        fits
     }
 
     fn cell_of(
@@ -159,7 +245,7 @@ impl Walk<'_> {
         {
             self.set_condition(condition);
         }
-        self.set_supply(supply.value, &supply.place);
+        self.set_supply(supply);
         self.set_position(position);
         for step in &each.steps {
             self.step(step);
@@ -175,13 +261,12 @@ impl Walk<'_> {
                 .notes
                 .unknown(&condition.place, "condition", &condition.value, &names);
         };
-        let instruction = found.instruction.clone();
+        let action = Action::SetCondition {
+            condition: condition.value.clone(),
+            instruction: found.instruction.clone(),
+        };
         self.condition = Some(condition.value.clone());
-        let condition_name = condition.value.clone();
-        self.untouched(&condition.place, |_| Action::SetCondition {
-            condition: condition_name,
-            instruction,
-        });
+        self.while_off(&condition.place, action);
     }
 
     fn set_position(&mut self, position: &Located<String>) {
@@ -198,23 +283,22 @@ impl Walk<'_> {
                 .unknown(&position.place, "position", &position.value, &known);
         };
         self.position = Some(position.value.clone());
-        let by_switch = self.by_switch;
-        let name = position.value.clone();
-        self.untouched(&position.place, |_| Action::SetPosition {
-            position: name,
+        let action = Action::SetPosition {
+            position: position.value.clone(),
             number: index as u32 + 1,
-            by_switch,
-        });
+            by_switch: self.by_switch,
+        };
+        // By the switch too: a cell's results are of one position.
+        self.while_off(&position.place, action);
     }
 
-    fn set_supply(&mut self, point: SupplyPoint, place: &Place) {
-        self.supply = Some(point);
-        self.untouched(place, |_| Action::SetSupply(point));
+    fn set_supply(&mut self, supply: &Located<SupplyPoint>) {
+        self.supply = Some(supply.value);
+        self.while_off(&supply.place, Action::SetSupply(supply.value));
     }
 
     /// Steps that come only while the unit is off.
-    fn untouched(&mut self, place: &Place, action: impl FnOnce(()) -> Action) {
-        let action = action(());
+    fn while_off(&mut self, place: &Place, action: Action) {
         if self.energised {
             self.notes.error(
                 place,
@@ -223,6 +307,30 @@ impl Walk<'_> {
             );
         }
         self.add(action);
+    }
+
+    /// Steps that come only while the unit is energised.
+    fn while_on(&mut self, place: &Place, action: Action) {
+        if !self.energised {
+            self.notes.error(
+                place,
+                format!("`{}` comes while the unit is not energised", action.verb()),
+                "put `energise` before it",
+            );
+        }
+        self.add(action);
+    }
+
+    /// The peak lies in the first moments after energising.
+    fn inrush_is_first(&mut self, place: &Place) {
+        let before = self.out.steps.last().map(|step| &step.action);
+        if self.energised && before != Some(&Action::Energise) {
+            self.notes.warning(
+                place,
+                "the inrush has passed when this step comes",
+                "put `inrush` right after `energise`",
+            );
+        }
     }
 
     fn energise(&mut self, place: &Place) {
@@ -273,23 +381,5 @@ impl Walk<'_> {
             self.add(Action::Deenergise);
             self.energised = false;
         }
-    }
-
-    fn polled(&mut self, place: &Place, every: Seconds, action: Action) {
-        if !self.energised {
-            self.notes.error(
-                place,
-                format!("`{}` comes while the unit is not energised", action.verb()),
-                "put `energise` before it",
-            );
-        }
-        if every > SLOWEST_ENERGISED {
-            self.notes.error(
-                place,
-                format!("polled every {every} while energised: a guard would trip too late"),
-                format!("poll at least every {SLOWEST_ENERGISED} (house default)"),
-            );
-        }
-        self.add(action);
     }
 }

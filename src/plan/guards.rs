@@ -1,11 +1,10 @@
 //! Guards: limits that trip. None may be absent.
 
-use super::types::{
-    Cell, Guards, PlannedAppliance, PlannedBay, PlannedInstrument, PlannedRule,
-};
+use super::reference::rated_in;
+use super::types::{Cell, Guards, PlannedAppliance, PlannedBay, PlannedInstrument, PlannedRule};
 use crate::quantity::{Celsius, Kelvins, Seconds, Watts};
 use crate::spec::plate;
-use crate::spec::sequence::{GuardLimits, RuleKind};
+use crate::spec::sequence::{GuardLimits, RuleKind, RuleWeight, Span};
 
 /// House default: trip at this multiple of the upper limit of the input.
 const INPUT_FACTOR: f64 = 1.3;
@@ -38,14 +37,17 @@ pub(super) fn guards(
         let update = instruments[role.instrument].driver.update_interval.get();
         Seconds::of((MISSED_UPDATES * update).max(SHORTEST_SILENCE))
     });
+    let input = cells.iter().map(|cell| {
+        // Without plate and rule the bay's wiring is all that is known.
+        let wiring = bay.rated_current.get() * cell.supply.voltage.get();
+        let upper = upper_limit(appliance, cell, rules);
+        Watts::of(upper.map_or(wiring, |upper| INPUT_FACTOR * upper))
+    });
     Guards {
         body: body_limit(stated, appliance),
         current: bay.rated_current,
         input_after: stated.input_after.unwrap_or(INPUT_AFTER),
-        input: cells
-            .iter()
-            .map(|cell| input_limit(appliance, cell, rules))
-            .collect(),
+        input: input.collect(),
         silence: silence.collect(),
         least_rise: Kelvins::of(LEAST_RISE),
         rise_within: RISE_WITHIN,
@@ -60,47 +62,43 @@ fn body_limit(stated: &GuardLimits, appliance: &PlannedAppliance) -> Option<Cels
     lowest.map(Celsius::of)
 }
 
-fn input_limit(appliance: &PlannedAppliance, cell: &Cell, rules: &[PlannedRule]) -> Watts {
-    let upper = upper_limit_of(appliance, &cell.position, rules)
-        .or_else(|| {
-            highest(
-                appliance
-                    .plate
-                    .iter()
-                    .map(|entry| upper_of(appliance, entry)),
-            )
-        })
-        .unwrap_or(0.0);
-    Watts::of(INPUT_FACTOR * upper)
+/// The upper limit of a cell's input: an explicit limit that decides, else the band of
+/// its plate entry, else an explicit limit that only informs (it must not cut short
+/// what the plate allows), else the band of the highest entry.
+fn upper_limit(appliance: &PlannedAppliance, cell: &Cell, rules: &[PlannedRule]) -> Option<f64> {
+    explicit(cell, rules, RuleWeight::Required)
+        .or_else(|| of_plate(appliance, cell))
+        .or_else(|| explicit(cell, rules, RuleWeight::Information))
+        .or_else(|| highest(appliance.plate.iter().map(|e| upper(appliance, e.power))))
 }
 
-/// The explicit limit of a rule for the position, else its plate's band.
-fn upper_limit_of(
-    appliance: &PlannedAppliance,
-    position: &str,
-    rules: &[PlannedRule],
-) -> Option<f64> {
-    let explicit = rules
+fn explicit(cell: &Cell, rules: &[PlannedRule], weight: RuleWeight) -> Option<f64> {
+    let limits = rules
         .iter()
-        .filter_map(|rule| match (&rule.kind, &rule.position) {
-            (
-                RuleKind::PowerLimits {
-                    at_most: Some(at_most),
-                    ..
-                },
-                Some(p),
-            ) if p == position => Some(at_most.get()),
+        .filter(|rule| rule.weight == weight && rule.is_for(cell))
+        .filter_map(|rule| match rule.kind {
+            RuleKind::PowerLimits { at_most, .. } => at_most,
             _ => None,
         });
-    let plate = appliance
-        .plate
-        .iter()
-        .filter(|entry| entry.position == position && entry.element.is_none());
-    highest(explicit).or_else(|| highest(plate.map(|entry| upper_of(appliance, entry))))
+    highest(limits.map(Watts::get))
 }
 
-fn upper_of(appliance: &PlannedAppliance, entry: &super::types::PlannedPlate) -> f64 {
-    plate::limits(appliance.kind, entry.power).at_most.get()
+fn of_plate(appliance: &PlannedAppliance, cell: &Cell) -> Option<f64> {
+    if let Some(rated) = rated_in(&appliance.plate, cell) {
+        return Some(upper(appliance, rated.power));
+    }
+    // Rated element by element: together they are the whole.
+    let elements: Vec<f64> = appliance
+        .plate
+        .iter()
+        .filter(|entry| entry.position == cell.position)
+        .map(|entry| upper(appliance, entry.power))
+        .collect();
+    (!elements.is_empty()).then(|| elements.iter().sum())
+}
+
+fn upper(appliance: &PlannedAppliance, power: Span<Watts>) -> f64 {
+    plate::limits(appliance.kind, power).at_most.get()
 }
 
 fn highest(values: impl Iterator<Item = f64>) -> Option<f64> {

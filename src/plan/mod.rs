@@ -1,17 +1,24 @@
 //! Pure: crosses sequence, bench and drivers into a [`Plan`], or says everything
 //! that is wrong with them at once.
 
+mod calibration;
+mod duration;
 mod expand;
 mod guards;
+mod intervals;
+mod meter;
 mod notes;
+mod ratings;
 mod reference;
 mod resolve;
+mod roles;
 mod rules;
 #[cfg(test)]
 mod tests;
 mod text;
 mod types;
 mod wiring;
+mod words;
 
 pub use reference::Rated;
 pub use resolve::{Resolved, resolve};

@@ -1,10 +1,21 @@
 //! Collecting problems, and names that are nearly right.
 
+use std::collections::BTreeSet;
+
 use crate::spec::{Place, Problem, Weight, nearest};
 
-/// Every problem found so far.
+/// A hint lists at most so many names; a file may hold thousands.
+const MOST_LISTED: usize = 12;
+
+/// Only so many names are compared with a wrong one.
+const MOST_COMPARED: usize = 200;
+
+/// Every problem found so far. What a block says again for its next cell is told once.
 #[derive(Debug, Default)]
-pub(super) struct Notes(pub(super) Vec<Problem>);
+pub(super) struct Notes {
+    problems: Vec<Problem>,
+    told: BTreeSet<(String, usize, String)>,
+}
 
 impl Notes {
     /// An error with a hint.
@@ -14,7 +25,7 @@ impl Notes {
         message: impl Into<String>,
         hint: impl Into<String>,
     ) {
-        self.0.push(Problem::error(place, message).hint(hint));
+        self.add(Problem::error(place, message).hint(hint));
     }
 
     /// A warning with a hint.
@@ -24,12 +35,13 @@ impl Notes {
         message: impl Into<String>,
         hint: impl Into<String>,
     ) {
-        self.0.push(Problem::warning(place, message).hint(hint));
+        self.add(Problem::warning(place, message).hint(hint));
     }
 
     /// A name that is not among those that are known.
     pub(super) fn unknown(&mut self, place: &Place, what: &str, name: &str, known: &[&str]) {
-        let hint = match nearest(name, known.iter().copied()) {
+        let compared = known.iter().copied().take(MOST_COMPARED);
+        let hint = match nearest(name, compared) {
             Some(near) => format!("did you mean `{near}`? known: {}", listed(known)),
             None => format!("known: {}", listed(known)),
         };
@@ -38,14 +50,43 @@ impl Notes {
 
     /// Whether nothing can be run.
     pub(super) fn has_errors(&self) -> bool {
-        self.0.iter().any(|problem| problem.weight == Weight::Error)
+        self.problems
+            .iter()
+            .any(|problem| problem.weight == Weight::Error)
+    }
+
+    /// The problems in the order of their places, those of the file of `first` first.
+    pub(super) fn into_problems(self, first: &Place) -> Vec<Problem> {
+        let mut problems = self.problems;
+        let file = &first.source.name;
+        problems.sort_by_key(|p| (p.place.source.name != *file, p.place.bytes.start));
+        problems
+    }
+
+    fn add(&mut self, problem: Problem) {
+        let place = &problem.place;
+        let key = (
+            place.source.name.clone(),
+            place.bytes.start,
+            problem.message.clone(),
+        );
+        if self.told.insert(key) {
+            self.problems.push(problem);
+        }
     }
 }
 
-fn listed(names: &[&str]) -> String {
-    if names.is_empty() {
-        "none".to_owned()
-    } else {
-        names.join(", ")
+/// Names for a hint.
+pub(super) fn listed(names: &[&str]) -> String {
+    let shown = names
+        .iter()
+        .take(MOST_LISTED)
+        .copied()
+        .collect::<Vec<_>>()
+        .join(", ");
+    match names.len() {
+        0 => "none".to_owned(),
+        n if n > MOST_LISTED => format!("{shown} and {} more", n - MOST_LISTED),
+        _ => shown,
     }
 }

@@ -20,58 +20,142 @@ pub struct Rated {
 impl Plan {
     /// The plate entry that rates the whole appliance in a position.
     pub fn plate_of(&self, position: &str) -> Option<&PlannedPlate> {
-        self.appliance.plate.iter().find(|entry| entry.position == position && entry.element.is_none())
+        self.appliance
+            .plate
+            .iter()
+            .find(|entry| rates_whole(entry, position))
     }
 
-    /// What the plate promises for a cell: a narrow range at its mean, a wide one at
-    /// the end that the supply is nearer to, each end with its own power.
+    /// What the plate promises for a cell: a narrow range at its mean, a wide one (or
+    /// one with an input marked for both ends) at the end that the supply is nearer to,
+    /// each end with its own power; of several entries the nearest.
     pub fn rated_in(&self, cell: &Cell) -> Option<Rated> {
-        let nearest = |entry: &&PlannedPlate| {
-            let rated = rated_at(entry, cell.supply.voltage);
-            (rated.voltage.get() - cell.supply.voltage.get()).abs()
-        };
-        let entries = self.appliance.plate.iter().filter(|e| e.position == cell.position && e.element.is_none());
-        let entry = entries.min_by(|a, b| nearest(a).total_cmp(&nearest(b)))?;
-        Some(rated_at(entry, cell.supply.voltage))
+        rated_in(&self.appliance.plate, cell)
     }
 }
 
-fn rated_at(entry: &PlannedPlate, supply: Volts) -> Rated {
-    let (low, high) = (entry.voltage.low.get(), entry.voltage.high.get());
-    let mean = (low + high) / 2.0;
-    if at_most((high - low) / mean, NARROW) {
-        return Rated { voltage: Volts::of(mean), power: entry.power };
+/// See [`Plan::rated_in`].
+pub(super) fn rated_in(plate: &[PlannedPlate], cell: &Cell) -> Option<Rated> {
+    let supply = cell.supply.voltage.get();
+    let distance = |rated: &Rated| (rated.voltage.get() - supply).abs();
+    plate
+        .iter()
+        .filter(|entry| rates_whole(entry, &cell.position))
+        .flat_map(rated_points)
+        .min_by(|a, b| distance(a).total_cmp(&distance(b)))
+}
+
+fn rates_whole(entry: &PlannedPlate, position: &str) -> bool {
+    entry.position == position && entry.element.is_none()
+}
+
+/// The voltages at which an entry is judged, each with its power.
+pub(super) fn rated_points(entry: &PlannedPlate) -> Vec<Rated> {
+    let (low, high) = (entry.voltage.low, entry.voltage.high);
+    let mean = (low.get() + high.get()) / 2.0;
+    let narrow = at_most(high.get() - low.get(), NARROW * mean);
+    let marked_for_both_ends = low < high && entry.power.low < entry.power.high;
+    if narrow && !marked_for_both_ends {
+        return vec![Rated {
+            voltage: Volts::of(mean),
+            power: entry.power,
+        }];
     }
-    if supply.get() < mean {
-        Rated { voltage: entry.voltage.low, power: Span { low: entry.power.low, high: entry.power.low } }
-    } else {
-        Rated { voltage: entry.voltage.high, power: Span { low: entry.power.high, high: entry.power.high } }
-    }
+    let end = |voltage, power| Rated {
+        voltage,
+        power: Span {
+            low: power,
+            high: power,
+        },
+    };
+    vec![end(low, entry.power.low), end(high, entry.power.high)]
 }
 
 #[cfg(test)]
 mod tests {
     use super::*;
     use crate::quantity::Hertz;
+    use crate::spec::sequence::SupplyPoint;
 
     fn entry(low: f64, high: f64, powers: (f64, f64)) -> PlannedPlate {
         PlannedPlate {
             position: "on".to_owned(),
             element: None,
-            voltage: Span { low: Volts::of(low), high: Volts::of(high) },
-            frequency: Span { low: Hertz::of(50.0), high: Hertz::of(50.0) },
-            power: Span { low: Watts::of(powers.0), high: Watts::of(powers.1) },
+            voltage: Span {
+                low: Volts::of(low),
+                high: Volts::of(high),
+            },
+            frequency: Span {
+                low: Hertz::of(50.0),
+                high: Hertz::of(50.0),
+            },
+            power: Span {
+                low: Watts::of(powers.0),
+                high: Watts::of(powers.1),
+            },
         }
     }
 
+    fn at(plate: &[PlannedPlate], volts: f64) -> (f64, f64, f64) {
+        let cell = Cell {
+            condition: None,
+            position: "on".to_owned(),
+            supply: SupplyPoint {
+                voltage: Volts::of(volts),
+                frequency: Hertz::of(50.0),
+            },
+        };
+        let rated = rated_in(plate, &cell).unwrap();
+        let Span { low, high } = rated.power;
+        (rated.voltage.get(), low.get(), high.get())
+    }
+
+    // IEC 60335-1 clause 10.1, from memory.
     #[test]
     fn a_narrow_range_is_judged_at_its_mean_and_a_wide_one_at_its_ends() {
-        // IEC 60335-1 clause 10.1, from memory: 220 V to 240 V is narrower than 10 % of its mean.
-        assert_eq!(rated_at(&entry(220.0, 240.0, (60.0, 60.0)), Volts::of(235.0)).voltage, Volts::of(230.0));
-        let wide = entry(100.0, 240.0, (40.0, 60.0));
-        let at_low = rated_at(&wide, Volts::of(110.0));
-        assert_eq!((at_low.voltage, at_low.power.high), (Volts::of(100.0), Watts::of(40.0)));
-        let at_high = rated_at(&wide, Volts::of(230.0));
-        assert_eq!((at_high.voltage, at_high.power.low), (Volts::of(240.0), Watts::of(60.0)));
+        assert_eq!(
+            at(&[entry(220.0, 240.0, (60.0, 60.0))], 235.0),
+            (230.0, 60.0, 60.0)
+        );
+        let wide = [entry(100.0, 240.0, (40.0, 60.0))];
+        assert_eq!(at(&wide, 110.0), (100.0, 40.0, 40.0));
+        assert_eq!(at(&wide, 230.0), (240.0, 60.0, 60.0));
+    }
+
+    #[test]
+    fn a_range_of_just_ten_per_cent_is_narrow() {
+        assert_eq!(
+            at(&[entry(209.0, 231.0, (9.0, 9.0))], 209.0),
+            (220.0, 9.0, 9.0)
+        );
+        assert_eq!(
+            at(&[entry(208.9, 231.0, (9.0, 9.0))], 209.0),
+            (208.9, 9.0, 9.0)
+        );
+    }
+
+    #[test]
+    fn an_input_marked_for_both_ends_is_judged_at_both_even_of_a_narrow_range() {
+        let marked = [entry(220.0, 240.0, (920.0, 1100.0))];
+        assert_eq!(at(&marked, 220.0), (220.0, 920.0, 920.0));
+        assert_eq!(at(&marked, 240.0), (240.0, 1100.0, 1100.0));
+    }
+
+    #[test]
+    fn a_span_of_power_at_one_voltage_is_kept_whole() {
+        assert_eq!(
+            at(&[entry(230.0, 230.0, (45.0, 60.0))], 230.0),
+            (230.0, 45.0, 60.0)
+        );
+    }
+
+    #[test]
+    fn of_two_entries_for_one_position_the_nearer_counts() {
+        let two = [
+            entry(120.0, 120.0, (9.0, 9.0)),
+            entry(230.0, 230.0, (10.0, 10.0)),
+        ];
+        assert_eq!(at(&two, 127.0), (120.0, 9.0, 9.0));
+        assert_eq!(at(&two, 220.0), (230.0, 10.0, 10.0));
     }
 }

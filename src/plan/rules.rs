@@ -2,21 +2,25 @@
 
 use super::expand::Expanded;
 use super::notes::Notes;
-use super::types::{Action, PlannedAppliance, PlannedRule};
-use crate::quantity::Seconds;
+use super::reference::{rated_in, rated_points};
+use super::types::{Action, Cell, PlannedAppliance, PlannedRule};
+use crate::quantity::at_most;
 use crate::spec::Place;
-use crate::spec::plate;
-use crate::spec::sequence::{CriterionKind, RoleKind, Rule, RuleKind, Sequence, Span};
+use crate::spec::sequence::{MeasuredAt, RoleKind, Rule, RuleKind, Sequence};
+
+/// An input is corrected to a plate's voltage up to this distance (house default);
+/// beyond, it is not judged.
+const CORRECTABLE: f64 = 0.06;
 
 /// Where the limits of a rule come from, where the sequence does not say.
 fn usual_source(kind: &RuleKind) -> &'static str {
     match kind {
         RuleKind::PlatePower => {
-            "IEC 60335-1 clause 10.1, later editions from memory: check against your copy"
+            "IEC 60335-1 clause 10.1 (from memory of later editions, check against your copy)"
         }
-        RuleKind::LinkHolding => "IEC 60691: holding temperature Th, from the part's data sheet",
-        RuleKind::LinkOpening => "IEC 60691: earliest opening, Tf - 10 K",
-        RuleKind::PositionOrder => "the plate's order of positions",
+        RuleKind::LinkHolding => "IEC 60691: holding temperature Th of the part's data sheet",
+        RuleKind::LinkOpening => "IEC 60691: Tf - 10 K, earliest opening",
+        RuleKind::PositionOrder => "the declared order of positions",
         RuleKind::PowerLimits { .. }
         | RuleKind::Inrush { .. }
         | RuleKind::TemperatureRise { .. } => "house limit",
@@ -26,14 +30,23 @@ fn usual_source(kind: &RuleKind) -> &'static str {
 /// Resolves every rule.
 pub(super) fn rules(
     sequence: &Sequence,
+    appliance: &PlannedAppliance,
     expanded: &Expanded,
     notes: &mut Notes,
 ) -> Vec<PlannedRule> {
-    for rule in &sequence.rules {
-        names_known(sequence, rule, notes);
-        can_be_fed(sequence, expanded, rule, notes);
+    let cells = Fed {
+        cells: &expanded.cells,
+        soaked: expanded.cells_with(|action| matches!(action, Action::Soak { .. })),
+        inrush: expanded.cells_with(|action| matches!(action, Action::Inrush(_))),
+    };
+    let planned: Vec<PlannedRule> = sequence.rules.iter().map(planned).collect();
+    for (rule, written) in planned.iter().zip(&sequence.rules) {
+        if names_known(sequence, written, notes) {
+            cells.can_feed(appliance, rule, &written.kind.place, notes);
+        }
+        link_known(sequence, written, notes);
     }
-    sequence.rules.iter().map(planned).collect()
+    planned
 }
 
 fn planned(rule: &Rule) -> PlannedRule {
@@ -50,107 +63,210 @@ fn planned(rule: &Rule) -> PlannedRule {
     }
 }
 
-fn names_known(sequence: &Sequence, rule: &Rule, notes: &mut Notes) {
-    if let Some(position) = &rule.position {
-        let known: Vec<&str> = sequence
-            .appliance
-            .positions
-            .iter()
-            .map(|p| p.value.as_str())
-            .collect();
-        if !known.contains(&position.value.as_str()) {
-            notes.unknown(&position.place, "position", &position.value, &known);
+fn names_known(sequence: &Sequence, rule: &Rule, notes: &mut Notes) -> bool {
+    let positions = sequence.appliance.positions.iter();
+    let conditions = sequence.conditions.iter().map(|c| &c.name);
+    let mut all_known = true;
+    let mut must_be = |place: &Place, what: &str, name: &str, known: Vec<&str>| {
+        if !known.contains(&name) {
+            notes.unknown(place, what, name, &known);
+            all_known = false;
         }
+    };
+    if let Some(position) = &rule.position {
+        let known = positions.map(|p| p.value.as_str()).collect();
+        must_be(&position.place, "position", &position.value, known);
     }
     if let Some(condition) = &rule.condition {
-        let known: Vec<&str> = sequence
-            .conditions
-            .iter()
-            .map(|c| c.name.value.as_str())
-            .collect();
-        if !known.contains(&condition.value.as_str()) {
-            notes.unknown(&condition.place, "condition", &condition.value, &known);
-        }
+        let known = conditions.map(|c| c.value.as_str()).collect();
+        must_be(&condition.place, "condition", &condition.value, known);
     }
     if let RuleKind::TemperatureRise { role, .. } = &rule.kind.value {
         let temperatures = sequence
             .roles
             .iter()
             .filter(|need| need.kind == RoleKind::Temperature);
-        let known: Vec<&str> = temperatures.map(|need| need.name.value.as_str()).collect();
-        if !known.contains(&role.as_str()) {
-            notes.unknown(&rule.kind.place, "temperature role", role, &known);
-        }
+        let known = temperatures.map(|need| need.name.value.as_str()).collect();
+        must_be(&rule.kind.place, "temperature role", role, known);
     }
+    all_known
 }
 
-fn can_be_fed(sequence: &Sequence, expanded: &Expanded, rule: &Rule, notes: &mut Notes) {
-    let place = &rule.kind.place;
-    let has = |verb: &str| expanded.steps.iter().any(|step| step.action.verb() == verb);
-    match &rule.kind.value {
-        RuleKind::PlatePower if sequence.appliance.plate.is_empty() => {
-            notes.error(
+/// What the cells are fed with.
+struct Fed<'a> {
+    cells: &'a [Cell],
+    soaked: Vec<bool>,
+    inrush: Vec<bool>,
+}
+
+impl Fed<'_> {
+    fn can_feed(
+        &self,
+        appliance: &PlannedAppliance,
+        rule: &PlannedRule,
+        place: &Place,
+        notes: &mut Notes,
+    ) {
+        let plate = &appliance.plate;
+        let for_it = |cell: &Cell| {
+            rule.is_for(cell)
+                && (rule.kind != RuleKind::PlatePower || rated_in(plate, cell).is_some())
+        };
+        match &rule.kind {
+            RuleKind::PlatePower if plate.is_empty() => notes.error(
                 place,
                 "the appliance has no rating plate to judge by",
                 "add entries below `plate:`",
-            );
-        }
-        RuleKind::PlatePower | RuleKind::PowerLimits { .. } if !has("soak") => {
-            notes.error(
+            ),
+            RuleKind::PositionOrder => self.in_order(appliance, rule, place, notes),
+            _ if self.cells.is_empty() => {}
+            _ if !self.cells.iter().any(for_it) => notes.warning(
                 place,
-                "no step soaks the unit: its settled power is never known",
-                "add a `soak` step",
-            );
-        }
-        RuleKind::Inrush { .. } if !has("inrush") => {
-            notes.error(
+                "no step runs what this rule is for: it will be not judged",
+                "run its position and condition, or take the rule out",
+            ),
+            RuleKind::PlatePower | RuleKind::PowerLimits { .. } => self.every_cell(
+                &self.soaked,
+                for_it,
+                Lack {
+                    anywhere: "no step soaks the unit: its settled power is never known",
+                    somewhere: "no step soaks the unit",
+                    hint: "add a `soak` step after `energise`",
+                },
                 place,
-                "no step captures the inrush",
-                "add an `inrush` step right after `energise`",
-            );
+                notes,
+            ),
+            RuleKind::Inrush { .. } => self.every_cell(
+                &self.inrush,
+                for_it,
+                Lack {
+                    anywhere: "no step captures the inrush",
+                    somewhere: "no step captures the inrush",
+                    hint: "add an `inrush` step right after `energise`",
+                },
+                place,
+                notes,
+            ),
+            RuleKind::LinkHolding | RuleKind::LinkOpening | RuleKind::TemperatureRise { .. } => {}
         }
-        RuleKind::LinkHolding | RuleKind::LinkOpening => link_known(sequence, rule, place, notes),
-        RuleKind::PositionOrder if sequence.appliance.positions.len() < 2 => {
-            notes.error(
+    }
+
+    /// An error where no cell of the rule is fed, a warning for the first that is not.
+    fn every_cell(
+        &self,
+        fed: &[bool],
+        for_it: impl Fn(&Cell) -> bool,
+        lack: Lack,
+        place: &Place,
+        notes: &mut Notes,
+    ) {
+        let mut of_rule = self.cells.iter().zip(fed).filter(|(cell, _)| for_it(cell));
+        if !of_rule.clone().any(|(_, fed)| *fed) {
+            notes.error(place, lack.anywhere, lack.hint);
+        } else if let Some((cell, _)) = of_rule.find(|(_, fed)| !**fed) {
+            let what = format!(
+                "{} in {}: there the rule will be not judged",
+                lack.somewhere,
+                cell.words()
+            );
+            notes.warning(place, what, lack.hint);
+        }
+    }
+
+    fn in_order(
+        &self,
+        appliance: &PlannedAppliance,
+        rule: &PlannedRule,
+        place: &Place,
+        notes: &mut Notes,
+    ) {
+        if appliance.positions.len() < 2 {
+            return notes.error(
                 place,
                 "there is only one position: nothing can be in order",
                 "take this rule out",
             );
         }
-        _ => {}
+        let soaked: Vec<&Cell> = self
+            .cells
+            .iter()
+            .zip(&self.soaked)
+            .filter(|(cell, soaked)| **soaked && rule.is_for(cell))
+            .map(|(cell, _)| cell)
+            .collect();
+        let comparable = soaked.iter().any(|a| {
+            soaked.iter().any(|b| {
+                a.position != b.position && a.condition == b.condition && a.supply == b.supply
+            })
+        });
+        if !comparable && !self.cells.is_empty() {
+            notes.warning(
+                place,
+                "no two positions are soaked in the same condition at the same supply: their order will be not judged",
+                "run every position in one `each` block",
+            );
+        }
     }
 }
 
-fn link_known(sequence: &Sequence, rule: &Rule, place: &Place, notes: &mut Notes) {
-    match &sequence.appliance.link {
-        None => notes.error(
-            place,
+/// What cells lack.
+struct Lack {
+    anywhere: &'static str,
+    somewhere: &'static str,
+    hint: &'static str,
+}
+
+fn link_known(sequence: &Sequence, rule: &Rule, notes: &mut Notes) {
+    if !matches!(
+        rule.kind.value,
+        RuleKind::LinkHolding | RuleKind::LinkOpening
+    ) {
+        return;
+    }
+    let Some(link) = &sequence.appliance.link else {
+        return notes.error(
+            &rule.kind.place,
             "the appliance states no thermal link",
             "add `thermal link:` with Tf and Th from the part's data sheet, or take this rule out",
-        ),
-        Some(link) if link.th.is_none() && rule.kind.value == RuleKind::LinkHolding => notes.error(
+        );
+    };
+    if link.th.is_none() && rule.kind.value == RuleKind::LinkHolding {
+        notes.error(
             &link.tf.place,
             "the thermal link states no Th: its holding temperature lies anywhere from 13 to 45 K below Tf",
-            "add `Th:` from the part's data sheet",
-        ),
-        Some(_) => {}
+            "add `Th:` from the part's data sheet below `thermal link:`",
+        );
+    }
+    if let MeasuredAt::Elsewhere {
+        place,
+        allowance: None,
+        ..
+    } = &link.measured_at
+    {
+        notes.warning(
+            &link.tf.place,
+            format!(
+                "the temperature is measured at {place}, and nothing says how much hotter the link may be: its margins will be not judged"
+            ),
+            "add `allowance:` and `allowance source:`, or measure at the link's body",
+        );
     }
 }
 
-/// What can be known before anything is energised and would leave results not judged.
-pub(super) fn warn_early(
+/// Every position, every rated position, and every voltage at which the plate is judged.
+pub(super) fn every_rating_is_run(
     sequence: &Sequence,
     appliance: &PlannedAppliance,
     expanded: &Expanded,
-    meter: Option<&crate::spec::driver::Driver>,
     notes: &mut Notes,
 ) {
+    let cells = &expanded.cells;
+    if cells.is_empty() {
+        return;
+    }
+    let is_run = |position: &str| cells.iter().any(|cell| cell.position == position);
     for position in &sequence.appliance.positions {
-        if !expanded
-            .cells
-            .iter()
-            .any(|cell| cell.position == position.value)
-        {
+        if !is_run(&position.value) {
             notes.warning(
                 &position.place,
                 format!(
@@ -161,80 +277,39 @@ pub(super) fn warn_early(
             );
         }
     }
-    for step in &expanded.steps {
-        if let Action::Soak {
-            at_least, until, ..
-        } = &step.action
-            && let CriterionKind::Slope { window } = until.kind
-            && window > *at_least
-            && let Some(place) = soak_place(sequence)
+    for (entry, written) in appliance.plate.iter().zip(&sequence.appliance.plate) {
+        if entry.element.is_some() || !is_run(&entry.position) {
+            continue;
+        }
+        for rated in rated_points(entry) {
+            let volts = rated.voltage.get();
+            let reached = cells.iter().any(|cell| {
+                let away = (cell.supply.voltage.get() - volts).abs();
+                cell.position == entry.position && at_most(away, CORRECTABLE * volts)
+            });
+            if !reached {
+                notes.warning(
+                    &written.voltage.place,
+                    format!(
+                        "no step runs the position `{}` near {}, at which this entry is judged: it will be not judged",
+                        entry.position, rated.voltage
+                    ),
+                    format!("add a supply of {}", rated.voltage),
+                );
+            }
+        }
+    }
+    for condition in &sequence.conditions {
+        let name = &condition.name;
+        if !cells
+            .iter()
+            .any(|c| c.condition.as_ref() == Some(&name.value))
         {
             notes.warning(
-                place,
-                format!("the criterion's window of {window} is longer than the shortest soak of {at_least}"),
-                "the soak lasts at least the window in any case",
-            );
-            break;
-        }
-    }
-    if let Some(meter) = meter {
-        meter_fits(sequence, appliance, meter, notes);
-        polled_too_fast(sequence, expanded, meter.update_interval, notes);
-    }
-}
-
-/// U at the plate value against the distance to the limit: above it nothing can pass.
-fn meter_fits(
-    sequence: &Sequence,
-    appliance: &PlannedAppliance,
-    meter: &crate::spec::driver::Driver,
-    notes: &mut Notes,
-) {
-    let Some(accuracy) = meter.accuracy_of(crate::quantity::Reading::Power) else {
-        return;
-    };
-    for (entry, written) in appliance.plate.iter().zip(&sequence.appliance.plate) {
-        let band = plate::limits(appliance.kind, entry.power);
-        let Span { low, high } = entry.power;
-        let up = band.at_most.get() - high.get();
-        let room = band
-            .at_least
-            .map_or(up, |at_least| up.min(low.get() - at_least.get()));
-        // Rectangular half-width, k = 2.
-        let expanded = 2.0 * accuracy.half_width(high.get()) / 3f64.sqrt();
-        if expanded > room {
-            notes.warning(
-                &written.power.place,
-                format!(
-                    "the meter's accuracy alone makes U {expanded:.2} W, the band leaves {room:.2} W: the power will be not judged"
-                ),
-                "use a meter with a range that fits, or a more accurate one",
+                &name.place,
+                format!("no step is run in the condition `{}`", name.value),
+                "add it to the `conditions:` of an `each` block, or take it out",
             );
         }
     }
-}
-
-fn polled_too_fast(sequence: &Sequence, expanded: &Expanded, update: Seconds, notes: &mut Notes) {
-    let faster = expanded.steps.iter().find_map(|step| match &step.action {
-        Action::Inrush(timed) | Action::Measure(timed) if timed.every < update => Some(timed.every),
-        _ => None,
-    });
-    if let Some(every) = faster {
-        notes.warning(
-            &sequence.title.place,
-            format!("a step asks for a reading every {every}, the meter updates every {update}"),
-            "it is polled at its own interval",
-        );
-    }
-}
-
-fn soak_place(sequence: &Sequence) -> Option<&Place> {
-    use crate::spec::sequence::StepAction;
-    let flat = sequence.steps.iter().flat_map(|step| match &step.action {
-        StepAction::Each(each) => each.steps.iter().collect::<Vec<_>>(),
-        _ => vec![step],
-    });
-    flat.into_iter()
-        .find(|step| matches!(step.action, StepAction::Soak(_)))
-        .map(|step| &step.verb.place)
 }

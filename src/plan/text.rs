@@ -1,89 +1,212 @@
-//! A plan for people, as `check` prints it.
+//! A plan for people, as `check` prints it, at most 80 columns wide.
 
-use super::types::{Action, Plan, PlannedRule, PlannedStep};
-use crate::quantity::{Seconds, Watts};
+use super::types::{Action, Plan, PlannedRole, PlannedRule, PlannedStep};
+use super::words::{answers, between, criterion, degrees, measured, span, time};
+use crate::quantity::{Volts, Watts};
 use crate::spec::plate;
-use crate::spec::sequence::{
-    AnswerKind, Criterion, CriterionKind, Decision, RuleKind, RuleWeight, Span,
-};
+use crate::spec::sequence::{Decision, RuleKind, RuleWeight};
+
+use super::reference::rated_points;
+
+/// Widest line.
+const WIDTH: usize = 80;
+
+/// Columns before the value of a named line.
+const NAME: usize = 15;
+
+/// Columns before a step's detail.
+const STEP: usize = 19;
 
 impl Plan {
-    /// The plan in lines: what, with what, guards, steps, rules, how long.
+    /// The plan in lines of at most 80 columns: what, with what, guards, steps, rules,
+    /// how long.
     pub fn lines_of_text(&self) -> Vec<String> {
-        let mut lines = vec![
-            format!("{}, edition {}", self.title, self.edition),
-            format!("appliance  {}", self.appliance.model),
-            format!(
-                "bench      {}, {}, rated {}",
+        let parts = [
+            self.heading(),
+            self.instrument_lines(),
+            self.guard_lines(),
+            self.step_lines(),
+            self.rules
+                .iter()
+                .flat_map(|rule| self.rule_lines(rule))
+                .collect(),
+            self.duration_lines(),
+        ];
+        let titles = [
+            "",
+            "instruments, by role",
+            "guards while energised",
+            "steps",
+            "rules",
+            "",
+        ];
+        let mut lines = Vec::new();
+        for (title, part) in titles.into_iter().zip(parts) {
+            if !lines.is_empty() {
+                lines.push(String::new());
+            }
+            if !title.is_empty() {
+                lines.push(title.to_owned());
+            }
+            lines.extend(part);
+        }
+        lines
+    }
+
+    fn heading(&self) -> Vec<String> {
+        let appliance = &self.appliance;
+        let mut lines = wrapped("", 4, &format!("{}, edition {}", self.title, self.edition));
+        let facts = [
+            (appliance.fan, "fan"),
+            (appliance.thermostat, "thermostat"),
+            (!appliance.diode_in.is_empty(), "series diode"),
+        ];
+        let facts: String = facts
+            .into_iter()
+            .filter(|(is, _)| *is)
+            .map(|(_, what)| format!(", {what}"))
+            .collect();
+        lines.extend(named(
+            "appliance",
+            &format!(
+                "{}: {}, class {:?}{facts}, used up to {}",
+                appliance.model,
+                super::words::kind(appliance.kind),
+                appliance.protection_class,
+                appliance.highest_ambient
+            ),
+        ));
+        for entry in &appliance.plate {
+            let element = entry
+                .element
+                .as_ref()
+                .map_or_else(String::new, |e| format!(", element {e}"));
+            lines.extend(named(
+                "plate",
+                &format!(
+                    "{}{element}: {}, {}, {}",
+                    entry.position,
+                    span(entry.power),
+                    span(entry.voltage),
+                    span(entry.frequency)
+                ),
+            ));
+        }
+        if let Some(link) = &appliance.link {
+            lines.extend(named(
+                "thermal link",
+                &format!(
+                    "Tf {}, Th {}, Tm {}; {}; {}",
+                    link.tf,
+                    degrees(link.th),
+                    degrees(link.tm),
+                    link.sits,
+                    measured(&link.measured_at)
+                ),
+            ));
+        }
+        lines.extend(named(
+            "bench",
+            &format!(
+                "{}, {}, rated current {}",
                 self.bench, self.bay.name, self.bay.rated_current
             ),
-        ];
-        lines.extend(self.roles());
-        lines.extend(self.guard_lines());
-        lines.push(String::new());
-        lines.push("steps".to_owned());
-        lines.extend(self.step_lines());
-        lines.push(String::new());
-        lines.push("rules".to_owned());
-        lines.extend(self.rules.iter().flat_map(|rule| self.rule_lines(rule)));
-        lines.push(String::new());
-        lines.push(format!(
-            "expected about {}, at the longest {}, without the operator's time",
-            hours(self.expected),
-            hours(self.longest())
         ));
         lines
     }
 
-    fn roles(&self) -> Vec<String> {
-        let role = |role: &super::types::PlannedRole| {
-            let instrument = self.instrument_of(role);
-            let channel = role
-                .channel
-                .map_or_else(String::new, |c| format!(", channel {c}"));
-            let due = instrument
-                .due
-                .map_or_else(String::new, |due| format!(", due {due}"));
-            format!(
-                "  {:<10} {}{channel} ({}{due})",
-                role.name, instrument.name, instrument.driver.name
-            )
-        };
-        let mut lines = vec!["roles".to_owned()];
-        lines.extend(self.bay.roles.iter().map(role));
-        lines
+    fn instrument_lines(&self) -> Vec<String> {
+        self.bay
+            .roles
+            .iter()
+            .flat_map(|role| named(&role.name, &self.filled_by(role)))
+            .collect()
+    }
+
+    fn filled_by(&self, role: &PlannedRole) -> String {
+        let instrument = self.instrument_of(role);
+        let channel = role
+            .channel
+            .map_or_else(String::new, |c| format!(" channel {c}"));
+        let certificate = instrument
+            .certificate
+            .as_ref()
+            .map_or_else(String::new, |c| format!(", certificate {c}"));
+        let due = instrument
+            .due
+            .map_or_else(String::new, |due| format!(", due {due}"));
+        format!(
+            "{}{channel} on {}: {}, driver {}{certificate}{due}",
+            instrument.name,
+            self.lines[instrument.line].name,
+            instrument.identity,
+            instrument.driver.name
+        )
     }
 
     fn guard_lines(&self) -> Vec<String> {
         let guards = &self.guards;
-        let mut lines = vec!["guards while energised".to_owned()];
+        let mut lines = Vec::new();
         if let Some(body) = guards.body {
-            lines.push(format!(
-                "  body       {body} (the lower of Tf - 10 K and the sequence's)"
-            ));
+            let of = match &self.appliance.link {
+                Some(link) if link.opens_from <= body => "Tf - 10 K (house default)",
+                _ => "as the sequence states",
+            };
+            lines.extend(named("body", &format!("{body}, {of}")));
         }
-        lines.push(format!(
-            "  current    {} (the bay's rating)",
-            guards.current
+        lines.extend(named(
+            "current",
+            &format!("{}, the bay's rating", guards.current),
         ));
+        let mut told: Vec<String> = Vec::new();
         for (cell, input) in self.cells.iter().zip(&guards.input) {
-            let line = format!(
-                "  input      {input:.2}, position {}, from {} on",
-                cell.position, guards.input_after
-            );
-            if !lines.contains(&line) {
-                lines.push(line);
+            let line = format!("{}: {}", cell.position, digits(*input));
+            if !told.contains(&line) {
+                told.push(line);
             }
         }
-        let silence = guards.silence.iter().map(|s| s.get()).fold(0.0, f64::max);
-        lines.push(format!(
-            "  silence    {silence} s beyond the polling interval, at the longest"
-        ));
-        lines.push(format!(
-            "  sensor     rises by {} within {} (house default)",
-            guards.least_rise, guards.rise_within
+        if !told.is_empty() {
+            lines.extend(named(
+                "input",
+                &format!(
+                    "{}; from {} after energising on, 1.3 times the upper limit (house default)",
+                    told.join(", "),
+                    guards.input_after
+                ),
+            ));
+        }
+        lines.extend(self.silence_lines());
+        lines.extend(named(
+            "sensor",
+            &format!(
+                "the body rises by {} within {} (house default)",
+                guards.least_rise, guards.rise_within
+            ),
         ));
         lines
+    }
+
+    fn silence_lines(&self) -> Vec<String> {
+        let mut by_limit: Vec<(String, Vec<&str>)> = Vec::new();
+        for (role, silence) in self.bay.roles.iter().zip(&self.guards.silence) {
+            let limit = silence.to_string();
+            match by_limit.iter_mut().find(|(known, _)| *known == limit) {
+                Some((_, roles)) => roles.push(&role.name),
+                None => by_limit.push((limit, vec![&role.name])),
+            }
+        }
+        by_limit
+            .iter()
+            .flat_map(|(limit, roles)| {
+                named(
+                    "silence",
+                    &format!(
+                        "{limit} beyond the polling interval (house default): {}",
+                        roles.join(", ")
+                    ),
+                )
+            })
+            .collect()
     }
 
     fn step_lines(&self) -> Vec<String> {
@@ -92,19 +215,10 @@ impl Plan {
         for step in &self.steps {
             if step.cell != cell {
                 cell = step.cell;
-                lines.extend(cell.map(|n| {
-                    let cell = &self.cells[n];
-                    let condition = cell
-                        .condition
-                        .as_ref()
-                        .map_or_else(String::new, |c| format!("{c}, "));
-                    format!(
-                        "  -- {condition}{}, {} {}",
-                        cell.position, cell.supply.voltage, cell.supply.frequency
-                    )
-                }));
+                let words = cell.map(|n| self.cells[n].words());
+                lines.extend(words.map_or_else(Vec::new, |words| wrapped("  -- ", 5, &words)));
             }
-            lines.push(step_line(step));
+            lines.extend(step_line(step));
         }
         lines
     }
@@ -119,78 +233,95 @@ impl Plan {
             Decision::Guarded { ratio } => format!("guarded by {ratio} U"),
             Decision::FourOutcomes => "four outcomes".to_owned(),
         };
-        let of = [&rule.position, &rule.condition];
-        let of: String = of
+        let of: String = [&rule.position, &rule.condition]
             .into_iter()
             .flatten()
             .map(|name| format!(", {name}"))
             .collect();
-        let mut lines: Vec<String> = self
-            .limits_of(rule)
-            .into_iter()
-            .map(|limits| format!("  {limits}{of}; {weight}, {decision}"))
-            .collect();
-        lines.push(format!("    source: {}", rule.source));
+        let mut lines = wrapped(
+            "  ",
+            4,
+            &format!("{}{of}; {weight}, {decision}", self.rule_words(rule)),
+        );
+        if rule.kind == RuleKind::PlatePower {
+            let bands = self.plate_bands(rule.position.as_deref());
+            lines.extend(bands.iter().flat_map(|band| wrapped("    ", 6, band)));
+        }
+        lines.extend(wrapped("    ", 6, &format!("source: {}", rule.source)));
         lines
     }
 
-    fn limits_of(&self, rule: &PlannedRule) -> Vec<String> {
+    fn rule_words(&self, rule: &PlannedRule) -> String {
         let link = self.appliance.link.as_ref();
+        let ambient = self.appliance.highest_ambient;
         match &rule.kind {
-            RuleKind::PlatePower => self.plate_limits(rule.position.as_deref()),
+            RuleKind::PlatePower => "power within the plate's band".to_owned(),
             RuleKind::PowerLimits { at_least, at_most } => {
-                vec![format!("power {}", between(*at_least, *at_most))]
+                format!("power {}", between(*at_least, *at_most))
             }
             RuleKind::LinkHolding => {
-                let th = link
-                    .and_then(|link| link.th)
-                    .map_or_else(String::new, |th| th.to_string());
-                vec![format!("body at the highest ambient to Th {th}")]
+                let th = degrees(link.and_then(|link| link.th));
+                format!("link's body in {ambient} ambient at most Th, {th}")
             }
             RuleKind::LinkOpening => {
-                let from = link.map_or_else(String::new, |link| link.opens_from.to_string());
-                vec![format!("body at the highest ambient to Tf - 10 K, {from}")]
+                let from = degrees(link.map(|link| link.opens_from));
+                format!("link's body in {ambient} ambient at most Tf - 10 K, {from}")
             }
-            RuleKind::Inrush { at_most } => vec![format!("inrush to {at_most}")],
-            RuleKind::PositionOrder => vec![format!(
-                "input rises: {}",
-                self.appliance.positions.join(" < ")
-            )],
+            RuleKind::Inrush { at_most } => format!("inrush at most {at_most}"),
+            RuleKind::PositionOrder => format!(
+                "input rises in the order {}",
+                self.appliance.positions.join(", ")
+            ),
             RuleKind::TemperatureRise { role, at_most } => {
-                vec![format!("{role} rises to {at_most} over ambient")]
+                format!("{role} at most {at_most} above ambient")
             }
         }
     }
 
-    fn plate_limits(&self, position: Option<&str>) -> Vec<String> {
-        let wanted = self
-            .appliance
+    /// The band of each voltage at which the plate is judged.
+    fn plate_bands(&self, position: Option<&str>) -> Vec<String> {
+        let band = |position: &str, volts: Volts, power| {
+            let band = plate::limits(self.appliance.kind, power);
+            format!(
+                "{position}, {} at {volts}: {}",
+                span(power),
+                between(band.at_least, Some(band.at_most))
+            )
+        };
+        self.appliance
             .plate
             .iter()
-            .filter(|entry| position.is_none_or(|p| p == entry.position));
-        wanted
-            .map(|entry| {
-                let band = plate::limits(self.appliance.kind, entry.power);
-                let rated = span(entry.power);
-                format!(
-                    "power {}, rated {rated}: {}",
-                    entry.position,
-                    between(band.at_least, Some(band.at_most))
-                )
+            .filter(|entry| entry.element.is_none())
+            .filter(|entry| position.is_none_or(|p| p == entry.position))
+            .flat_map(|entry| {
+                rated_points(entry)
+                    .into_iter()
+                    .map(|rated| band(&entry.position, rated.voltage, rated.power))
+                    .collect::<Vec<_>>()
             })
             .collect()
     }
+
+    fn duration_lines(&self) -> Vec<String> {
+        wrapped(
+            "",
+            4,
+            &format!(
+                "expected about {}, an estimate; at the longest {}; the operator's own time comes on top",
+                time(self.expected),
+                time(self.longest())
+            ),
+        )
+    }
 }
 
-fn step_line(step: &PlannedStep) -> String {
-    format!(
-        "  {:>3} {:<11} {}",
-        step.number,
-        step.action.verb(),
-        detail(&step.action)
-    )
-    .trim_end()
-    .to_owned()
+fn digits(power: Watts) -> String {
+    format!("{power:.2}")
+}
+
+fn step_line(step: &PlannedStep) -> Vec<String> {
+    let head = format!("  {:>3} {:<12} ", step.number, step.action.verb());
+    wrapped(&head, STEP, &detail(&step.action))
 }
 
 fn detail(action: &Action) -> String {
@@ -200,22 +331,20 @@ fn detail(action: &Action) -> String {
             condition,
             instruction,
         } => format!("{condition}: {instruction}"),
-        Action::Ask(question) => format!("{} ({})", question.text, answers(&question.answer)),
+        Action::Ask(question) => format!("{} ({})", question.text, answers(question)),
         Action::Acclimatise(waiting) | Action::Rest(waiting) => format!(
             "until the body is within {} of ambient, at most {}, every {}",
             waiting.within, waiting.at_most, waiting.every
         ),
-        Action::SetSupply(point) => format!("{} {}", point.voltage, point.frequency),
+        Action::SetSupply(point) => format!("{}, {}", point.voltage, point.frequency),
         Action::SetPosition {
             position,
-            by_switch: true,
+            by_switch,
             ..
-        } => position.clone(),
-        Action::SetPosition {
-            position,
-            by_switch: false,
-            ..
-        } => format!("{position}, by the operator"),
+        } => {
+            let by = if *by_switch { "switch" } else { "operator" };
+            format!("{position}, by the {by}")
+        }
         Action::Energise | Action::Deenergise => String::new(),
         Action::Inrush(timed) | Action::Measure(timed) | Action::RunIn(timed) => {
             format!("for {}, every {}", timed.length, timed.every)
@@ -225,68 +354,96 @@ fn detail(action: &Action) -> String {
             at_most,
             every,
             until,
-        } => {
-            format!(
-                "{at_least} to {at_most}, every {every}, until {}",
-                criterion(until)
-            )
-        }
+        } => format!(
+            "{at_least} to {at_most}, every {every}, until {}",
+            criterion(until)
+        ),
         Action::Abnormal {
             fault,
             length,
             every,
             body,
-        } => {
-            format!("{fault}: for {length}, every {every}, trips at {body}; attended")
+        } => format!("{fault}: for {length}, every {every}, trips at {body}; attended"),
+    }
+}
+
+fn named(name: &str, text: &str) -> Vec<String> {
+    wrapped(&format!("  {name:<12} "), NAME, text)
+}
+
+/// Words behind a head, further lines indented. A word that is longer than a line is
+/// cut; a head that is too long has a line to itself.
+fn wrapped(head: &str, indent: usize, text: &str) -> Vec<String> {
+    let mut lines = Vec::new();
+    let mut line = String::new();
+    let mut length = 0;
+    let mut is_empty = true;
+    let push = |line: &mut String, lines: &mut Vec<String>| {
+        lines.push(line.trim_end().to_owned());
+        *line = " ".repeat(indent);
+    };
+    for c in head.chars() {
+        if length == WIDTH {
+            push(&mut line, &mut lines);
+            length = indent;
+        }
+        line.push(c);
+        length += 1;
+    }
+    for word in text.split_whitespace() {
+        let letters = word.chars().count();
+        let gap = usize::from(!is_empty);
+        if length + gap + letters > WIDTH && (!is_empty || length > indent) {
+            push(&mut line, &mut lines);
+            (length, is_empty) = (indent, true);
+        }
+        if !is_empty {
+            line.push(' ');
+            length += 1;
+        }
+        for c in word.chars() {
+            if length == WIDTH {
+                push(&mut line, &mut lines);
+                length = indent;
+            }
+            line.push(c);
+            length += 1;
+        }
+        is_empty = false;
+    }
+    lines.push(line.trim_end().to_owned());
+    lines
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn lines_break_between_words_and_are_indented() {
+        let text = "word ".repeat(30);
+        let lines = wrapped("  name ", 7, &text);
+        assert_eq!(lines.len(), 3);
+        assert!(lines[0].starts_with("  name word"));
+        assert!(lines[1].starts_with("       word"));
+        let words: usize = lines.iter().map(|line| line.matches("word").count()).sum();
+        assert_eq!(words, 30);
+        assert!(lines.iter().all(|line| line.chars().count() <= WIDTH));
+    }
+
+    #[test]
+    fn a_word_or_a_head_longer_than_a_line_is_cut_and_nothing_is_lost() {
+        let word = "ä".repeat(200);
+        for lines in [wrapped("  ", 4, &word), wrapped(&word, 4, "x")] {
+            assert!(lines.iter().all(|line| line.chars().count() <= WIDTH));
+            let letters: usize = lines.iter().map(|line| line.matches('ä').count()).sum();
+            assert_eq!(letters, 200);
         }
     }
-}
 
-fn answers(kind: &AnswerKind) -> String {
-    match kind {
-        AnswerKind::YesNo => "yes or no".to_owned(),
-        AnswerKind::Number { unit, .. } => format!("a number in {unit}"),
-        AnswerKind::Choice(choices) => choices.join(", "),
-    }
-}
-
-fn criterion(criterion: &Criterion) -> String {
-    let (what, per) = match criterion.kind {
-        CriterionKind::Slope { window } => (format!("slope over {window}"), " per hour"),
-        CriterionKind::ThreeReadings => ("three readings at 10 % of the time".to_owned(), ""),
-        CriterionKind::ChangeWithin { interval } => (format!("change within {interval}"), ""),
-    };
-    let power = criterion
-        .power_change
-        .map(|change| format!(", power {change}{per}"));
-    let body = criterion
-        .temperature_change
-        .map(|change| format!(", body {change}{per}"));
-    [Some(what), power, body].into_iter().flatten().collect()
-}
-
-fn between(at_least: Option<Watts>, at_most: Option<Watts>) -> String {
-    match (at_least, at_most) {
-        (Some(low), Some(high)) => format!("{low:.2} to {high:.2}"),
-        (None, Some(high)) => format!("to {high:.2}, no lower limit"),
-        (Some(low), None) => format!("from {low:.2}, no upper limit"),
-        (None, None) => "without limits".to_owned(),
-    }
-}
-
-fn span(power: Span<Watts>) -> String {
-    if power.low == power.high {
-        power.low.to_string()
-    } else {
-        format!("{} to {}", power.low, power.high)
-    }
-}
-
-fn hours(time: Seconds) -> String {
-    let minutes = (time.get() / 60.0).round() as u64;
-    if minutes < 120 {
-        format!("{minutes} min")
-    } else {
-        format!("{} h {:02} min", minutes / 60, minutes % 60)
+    #[test]
+    fn a_line_of_just_eighty_columns_stays_whole() {
+        assert_eq!(wrapped("", 4, &format!("{} b", "a".repeat(78))).len(), 1);
+        assert_eq!(wrapped("", 4, &format!("{} b", "a".repeat(79))).len(), 2);
     }
 }

@@ -303,6 +303,32 @@ pub struct PlannedRule {
     pub source: String,
 }
 
+impl Cell {
+    /// For people: condition, position and supply in one line.
+    pub fn words(&self) -> String {
+        let condition = match &self.condition {
+            Some(condition) => format!("{condition}, "),
+            None => String::new(),
+        };
+        let supply = &self.supply;
+        let position = &self.position;
+        format!(
+            "{condition}{position}, {}, {}",
+            supply.voltage, supply.frequency
+        )
+    }
+}
+
+impl PlannedRule {
+    /// Whether it is for a cell's position and condition.
+    pub fn is_for(&self, cell: &Cell) -> bool {
+        let position = self.position.as_ref();
+        let condition = self.condition.as_ref();
+        position.is_none_or(|position| *position == cell.position)
+            && condition.is_none_or(|condition| Some(condition) == cell.condition.as_ref())
+    }
+}
+
 impl Plan {
     /// The role called `name`, with its index.
     pub fn role(&self, name: &str) -> Option<(usize, &PlannedRole)> {

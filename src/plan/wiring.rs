@@ -2,11 +2,13 @@
 
 use chrono::NaiveDate;
 
-use super::notes::Notes;
+use super::calibration::calibration_stands;
+use super::notes::{Notes, listed};
 use super::types::{PlannedBay, PlannedInstrument, PlannedLine, PlannedRole};
 use crate::quantity::Reading;
 use crate::spec::bench::{Bay, Bench, Instrument, Port, RoleFilled};
 use crate::spec::driver::Driver;
+use crate::spec::nearest;
 use crate::spec::sequence::{RoleKind, RoleNeed, Sequence};
 
 /// A bay with everything behind its roles.
@@ -67,7 +69,7 @@ pub(super) fn wire(files: Files, bay: &Bay, notes: &mut Notes) -> Wired {
         }
     }
     one_role_per_channel(bay, &wired, notes);
-    must_have(files.sequence, notes);
+    one_line_per_port(files.bench, &wired, notes);
     wired
 }
 
@@ -77,11 +79,11 @@ fn filled_by<'a>(need: &RoleNeed, bay: &'a Bay, notes: &mut Notes) -> Option<&'a
         .iter()
         .find(|filled| filled.role.value == need.name.value);
     if found.is_none() {
-        let known: Vec<&str> = bay
-            .roles
-            .iter()
-            .map(|filled| filled.role.value.as_str())
-            .collect();
+        let known: Vec<&str> = bay.roles.iter().map(|f| f.role.value.as_str()).collect();
+        let meant = match nearest(&need.name.value, known.iter().copied()) {
+            Some(near) => format!("did you mean `{near}`? "),
+            None => String::new(),
+        };
         notes.error(
             &need.name.place,
             format!(
@@ -89,8 +91,8 @@ fn filled_by<'a>(need: &RoleNeed, bay: &'a Bay, notes: &mut Notes) -> Option<&'a
                 bay.name.value, need.name.value
             ),
             format!(
-                "add it below the bay's roles, or take it out here; the bay fills: {}",
-                known.join(", ")
+                "{meant}add it below the bay's roles, or take it out here; the bay fills: {}",
+                listed(&known)
             ),
         );
     }
@@ -155,12 +157,7 @@ fn can_fill(need: &RoleNeed, filled: &RoleFilled, driver: &Driver, notes: &mut N
         );
         return;
     }
-    let gives = |reading| {
-        driver
-            .readings
-            .iter()
-            .any(|query| query.gives.contains(&reading))
-    };
+    let gives = |reading| driver.readings.iter().any(|q| q.gives.contains(&reading));
     let lacking: &[(&str, bool)] = &match need.kind {
         RoleKind::Supply => vec![
             ("settings: voltage", driver.settings.voltage.is_none()),
@@ -191,6 +188,28 @@ fn can_fill(need: &RoleNeed, filled: &RoleFilled, driver: &Driver, notes: &mut N
             ),
             "add it to the driver from the instrument's manual, or use another instrument",
         );
+    }
+    for reading in read_by(need.kind) {
+        if gives(*reading) && driver.accuracy_of(*reading).is_none() {
+            notes.warning(
+                place,
+                format!(
+                    "driver `{}` states no accuracy of {}: what rests on it will be not judged",
+                    driver.name,
+                    reading.word()
+                ),
+                "add it below the driver's `accuracy:`, from the instrument's manual",
+            );
+        }
+    }
+}
+
+/// What the results of a kind of role rest on.
+fn read_by(kind: RoleKind) -> &'static [Reading] {
+    match kind {
+        RoleKind::PowerMeter => &[Reading::Voltage, Reading::Current, Reading::Power],
+        RoleKind::Temperature => &[Reading::Temperature],
+        RoleKind::Supply | RoleKind::PositionSwitch => &[],
     }
 }
 
@@ -243,6 +262,29 @@ fn one_role_per_channel(bay: &Bay, wired: &Wired, notes: &mut Notes) {
                     other.name, role.name
                 ),
                 "give each a channel of its own",
+            );
+        }
+    }
+}
+
+/// Two lines on one port would read each other's replies.
+fn one_line_per_port(bench: &Bench, wired: &Wired, notes: &mut Notes) {
+    for (n, line) in wired.lines.iter().enumerate() {
+        let Port::Serial(settings) = &line.port else {
+            continue;
+        };
+        let same = |other: &&PlannedLine| matches!(&other.port, Port::Serial(s) if s.path == settings.path);
+        let Some(other) = wired.lines[..n].iter().find(same) else {
+            continue;
+        };
+        if let Some(written) = bench.lines.iter().find(|l| l.name.value == line.name) {
+            notes.error(
+                &written.name.place,
+                format!(
+                    "lines `{}` and `{}` name the same port, {}",
+                    other.name, line.name, settings.path
+                ),
+                "give each line a port of its own, or put both instruments on one line",
             );
         }
     }
@@ -313,97 +355,4 @@ fn instrument_of(
         driver: driver.clone(),
     });
     wired.instruments.len() - 1
-}
-
-/// Only what is read needs a calibration, and only a real instrument has one.
-fn calibration_stands(
-    today: Option<NaiveDate>,
-    instrument: &Instrument,
-    driver: &Driver,
-    is_real: bool,
-    notes: &mut Notes,
-) {
-    if !is_real || driver.readings.is_empty() {
-        return;
-    }
-    let place = &instrument.name.place;
-    match (instrument.due, today) {
-        (Some(due), Some(today)) if due < today => notes.warning(
-            place,
-            format!(
-                "the calibration of `{}` was due on {due}",
-                instrument.name.value
-            ),
-            "have it calibrated; results are only as good as its last certificate",
-        ),
-        (None, _) => notes.warning(
-            place,
-            format!(
-                "`{}` states no due date of its calibration",
-                instrument.name.value
-            ),
-            "add `due: YYYY-MM-DD` and `certificate:`",
-        ),
-        _ => {}
-    }
-    if instrument.certificate.is_none() {
-        notes.warning(
-            place,
-            format!(
-                "`{}` names no calibration certificate",
-                instrument.name.value
-            ),
-            "add `certificate:` with its number",
-        );
-    }
-}
-
-/// Without these nothing can be energised or judged.
-fn must_have(sequence: &Sequence, notes: &mut Notes) {
-    let place = &sequence.title.place;
-    for (kind, why) in [
-        (
-            RoleKind::Supply,
-            "nothing could energise the unit, or switch it off",
-        ),
-        (RoleKind::PowerMeter, "the rating plate can't be judged"),
-    ] {
-        let count = sequence
-            .roles
-            .iter()
-            .filter(|need| need.kind == kind)
-            .count();
-        if count != 1 {
-            let word = kind.word();
-            notes.error(
-                place,
-                format!(
-                    "the sequence has {count} roles of the kind `{word}`: {why} without exactly one"
-                ),
-                format!(
-                    "below `roles:`, write `{}: {word}` once",
-                    word.split(' ').next_back().unwrap_or(word)
-                ),
-            );
-        }
-    }
-    for (name, why) in [
-        ("body", "no guard could watch the unit's temperature"),
-        ("ambient", "rises and cold starts are referred to it"),
-    ] {
-        let found = sequence.roles.iter().find(|need| need.name.value == name);
-        match found {
-            None => notes.error(
-                place,
-                format!("the sequence has no role `{name}`: {why}"),
-                format!("below `roles:`, write `{name}: temperature`"),
-            ),
-            Some(need) if need.kind != RoleKind::Temperature => notes.error(
-                &need.name.place,
-                format!("the role `{name}` must be a temperature"),
-                format!("write `{name}: temperature`"),
-            ),
-            Some(_) => {}
-        }
-    }
 }
