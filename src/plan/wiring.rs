@@ -267,7 +267,8 @@ fn one_role_per_channel(bay: &Bay, wired: &Wired, notes: &mut Notes) {
     }
 }
 
-/// Two lines on one port would read each other's replies.
+/// The second of two lines on one port can't be opened; the run then ends before
+/// anything is energised.
 fn one_line_per_port(bench: &Bench, wired: &Wired, notes: &mut Notes) {
     for (n, line) in wired.lines.iter().enumerate() {
         let Port::Serial(settings) = &line.port else {
@@ -278,10 +279,10 @@ fn one_line_per_port(bench: &Bench, wired: &Wired, notes: &mut Notes) {
             continue;
         };
         if let Some(written) = bench.lines.iter().find(|l| l.name.value == line.name) {
-            notes.error(
+            notes.warning(
                 &written.name.place,
                 format!(
-                    "lines `{}` and `{}` name the same port, {}",
+                    "lines `{}` and `{}` name the same port, {}: the second can't be opened",
                     other.name, line.name, settings.path
                 ),
                 "give each line a port of its own, or put both instruments on one line",

@@ -267,16 +267,16 @@ fn a_driver_without_accuracy_is_warned_of() {
 }
 
 #[test]
-fn two_lines_on_one_port_are_refused() {
+fn two_lines_on_one_port_are_warned_of() {
     let bench = BENCH.replace("port: virtual", "port: /dev/ttyS9");
     let resolved = cross(dryer(), &bench);
     resolved
-        .refuses(
+        .warns(
             "meter line",
             "`supply line` and `meter line` name the same port, /dev/ttyS9",
             "of its own",
         )
-        .refuses("switch line", "name the same port", "of its own");
+        .warns("switch line", "name the same port", "of its own");
 }
 
 /// The demo bench on real ports.
