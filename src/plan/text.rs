@@ -1,6 +1,6 @@
 //! A plan for people, as `check` prints it, at most 80 columns wide.
 
-use super::types::{Action, Plan, PlannedRole, PlannedRule, PlannedStep};
+use super::types::{Action, Plan, PlannedInstrument, PlannedRole, PlannedRule, PlannedStep};
 use super::words::{answers, between, criterion, degrees, measured, span, time};
 use crate::quantity::{Volts, Watts};
 use crate::spec::plate;
@@ -34,7 +34,7 @@ impl Plan {
         ];
         let titles = [
             "",
-            "instruments, by role",
+            "instruments",
             "guards while energised",
             "steps",
             "rules",
@@ -116,30 +116,38 @@ impl Plan {
     }
 
     fn instrument_lines(&self) -> Vec<String> {
-        self.bay
-            .roles
+        self.instruments
             .iter()
-            .flat_map(|role| named(&role.name, &self.filled_by(role)))
+            .enumerate()
+            .flat_map(|(n, instrument)| named(&instrument.name, &self.serves(n, instrument)))
             .collect()
     }
 
-    fn filled_by(&self, role: &PlannedRole) -> String {
-        let instrument = self.instrument_of(role);
-        let channel = role
-            .channel
-            .map_or_else(String::new, |c| format!(" channel {c}"));
+    /// The roles that an instrument fills, and who it is.
+    fn serves(&self, number: usize, instrument: &PlannedInstrument) -> String {
+        let filled = |role: &&PlannedRole| role.instrument == number;
+        let roles: Vec<String> = self
+            .bay
+            .roles
+            .iter()
+            .filter(filled)
+            .map(|role| match role.channel {
+                Some(channel) => format!("{} (channel {channel})", role.name),
+                None => role.name.clone(),
+            })
+            .collect();
         let certificate = instrument
             .certificate
             .as_ref()
-            .map_or_else(String::new, |c| format!(", certificate {c}"));
+            .map_or_else(String::new, |c| format!("; certificate: {c}"));
         let due = instrument
             .due
-            .map_or_else(String::new, |due| format!(", due {due}"));
+            .map_or_else(String::new, |due| format!("; calibration due {due}"));
         format!(
-            "{}{channel} on {}: {}, driver {}{certificate}{due}",
-            instrument.name,
-            self.lines[instrument.line].name,
+            "fills {}; {} on {}, driver {}{certificate}{due}",
+            roles.join(", "),
             instrument.identity,
+            self.lines[instrument.line].name,
             instrument.driver.name
         )
     }
@@ -390,7 +398,7 @@ fn wrapped(head: &str, indent: usize, text: &str) -> Vec<String> {
         line.push(c);
         length += 1;
     }
-    for word in text.split_whitespace() {
+    for word in bound(text) {
         let letters = word.chars().count();
         let gap = usize::from(!is_empty);
         if length + gap + letters > WIDTH && (!is_empty || length > indent) {
@@ -415,9 +423,29 @@ fn wrapped(head: &str, indent: usize, text: &str) -> Vec<String> {
     lines
 }
 
+/// The words of a text; a number stays with the unit behind it.
+fn bound(text: &str) -> Vec<String> {
+    let mut words: Vec<String> = Vec::new();
+    let mut after_number = false;
+    for word in text.split_whitespace() {
+        match words.last_mut() {
+            Some(number) if after_number => *number = format!("{number} {word}"),
+            _ => words.push(word.to_owned()),
+        }
+        after_number = !after_number && word.parse::<f64>().is_ok();
+    }
+    words
+}
+
 #[cfg(test)]
 mod tests {
     use super::*;
+
+    #[test]
+    fn a_number_and_its_unit_stay_on_one_line() {
+        let text = format!("{} 2 % per hour", "a".repeat(77));
+        assert_eq!(wrapped("", 2, &text)[1], "  2 % per hour");
+    }
 
     #[test]
     fn lines_break_between_words_and_are_indented() {
