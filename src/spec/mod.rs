@@ -3,6 +3,7 @@
 
 pub mod bench;
 pub mod driver;
+pub mod plate;
 pub mod sequence;
 mod source;
 pub mod virtual_unit;
