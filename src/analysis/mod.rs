@@ -3,4 +3,6 @@
 
 mod types;
 
-pub use types::{Analysis, CellResult, Estimate, Figure, Inrush, Looked, Peak, Share, Steady};
+pub use types::{
+    Analysis, CellResult, Drawn, Estimate, Figure, Inrush, Looked, Peak, Share, Steady,
+};

@@ -67,7 +67,7 @@ mod tests {
         ]
         .map(|(standard, freedom)| Part { standard, freedom });
         assert!((parts[2].standard - 2.9).abs() < 0.05);
-        // The published 16.6 nm is rounded from 16.675 by truncation.
+        // Full digits give 16.675; 16.6 is printed.
         assert!((parts[3].standard - 16.6).abs() < 0.1);
         let all = combine(&parts);
         assert!((all.standard - 31.71).abs() < 0.01, "{}", all.standard);

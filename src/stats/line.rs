@@ -24,6 +24,16 @@ impl Line {
         self.mean_y + self.slope * (x - self.mean_x)
     }
 
+    /// What is left of a sum of squares by rounding alone is nothing.
+    fn without_rounding(&self, squares: f64) -> f64 {
+        let last_digits = 1e-14 * self.mean_y.abs();
+        if squares <= self.n as f64 * last_digits * last_digits {
+            0.0
+        } else {
+            squares
+        }
+    }
+
     /// Standard deviation of the residuals, n - 2 degrees of freedom.
     pub fn residual_sd(&self) -> f64 {
         (self.residual_squares / (self.n as f64 - 2.0)).sqrt()
@@ -46,12 +56,18 @@ impl Line {
 
 /// The least-squares line through points; nothing from fewer than three points,
 /// or where all have the same x, or where a value is not finite.
-pub fn line_through(points: impl IntoIterator<Item = (f64, f64)>) -> Option<Line> {
+pub fn line_through(points: impl IntoIterator<IntoIter: Clone, Item = (f64, f64)>) -> Option<Line> {
+    let points = points.into_iter();
     let mut running = RunningLine::default();
-    for (x, y) in points {
+    for (x, y) in points.clone() {
         running.add(x, y);
     }
-    running.line()
+    let line = running.line()?;
+    let residual_squares = points.map(|(x, y)| (y - line.at(x)).powi(2)).sum();
+    Some(Line {
+        residual_squares: line.without_rounding(residual_squares),
+        ..line
+    })
 }
 
 /// Running sums of a least-squares line, kept about the mean (Welford's update
@@ -113,19 +129,21 @@ impl RunningLine {
         }
         let slope = self.xy / self.xx;
         let residual_squares = (self.yy - slope * self.xy).max(0.0);
-        // What is left of a sum by rounding alone is nothing.
-        let rounding = 1e-14 * self.yy.abs();
-        Some(Line {
+        let line = Line {
             n: self.n,
             mean_x: self.mean_x,
             mean_y: self.mean_y,
             slope,
-            residual_squares: if residual_squares <= rounding {
+            residual_squares: if residual_squares <= 1e-14 * self.yy.abs() {
                 0.0
             } else {
                 residual_squares
             },
             spread_x: self.xx,
+        };
+        Some(Line {
+            residual_squares: line.without_rounding(line.residual_squares),
+            ..line
         })
     }
 }
