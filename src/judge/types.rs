@@ -28,6 +28,18 @@ impl Outcome {
             Outcome::NotJudged => "not judged",
         }
     }
+
+    /// How much it weighs in a verdict: 0 for a pass up to 4 for a fail. What is not
+    /// judged outweighs a conditional fail, because it could be a fail.
+    pub fn rank(self) -> u8 {
+        match self {
+            Outcome::Pass => 0,
+            Outcome::ConditionalPass => 1,
+            Outcome::ConditionalFail => 2,
+            Outcome::NotJudged => 3,
+            Outcome::Fail => 4,
+        }
+    }
 }
 
 /// One rule's outcome.
