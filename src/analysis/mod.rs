@@ -3,6 +3,8 @@
 
 mod belief;
 mod cell;
+#[cfg(test)]
+pub(crate) mod fixture;
 mod inrush;
 mod measured;
 mod steady;
@@ -151,3 +153,6 @@ fn half_wave(plan: &Plan, cell: &CellResult) -> Option<String> {
 
 /// Half-way between 1/sqrt(2) and 0.917.
 const HALF_WAVE_MIDDLE: f64 = 0.81;
+
+#[cfg(test)]
+mod tests;
