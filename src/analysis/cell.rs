@@ -24,8 +24,8 @@ pub(super) struct Switched {
     pub(super) began: bool,
 }
 
-/// What the happenings say of every cell: the first time it was energised, and
-/// the last OFF after that.
+/// What the happenings say of every cell: the first time that energising was
+/// announced, and the last OFF after that.
 pub(super) fn switched(plan: &Plan, happenings: &[Happening]) -> Vec<Switched> {
     let mut all = vec![Switched::default(); plan.cells.len()];
     let cell_of = |number: u32| {
@@ -41,7 +41,8 @@ pub(super) fn switched(plan: &Plan, happenings: &[Happening]) -> Vec<Switched> {
                     all[cell].began = true;
                 }
             }
-            Event::Energised => {
+            // The announcement counts: from then on the output may be on.
+            Event::Energising | Event::Energised => {
                 on = current;
                 if let Some(cell) = on {
                     all[cell].energised.get_or_insert(happening.at);

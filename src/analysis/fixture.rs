@@ -560,7 +560,7 @@ impl<U: Fn(Now) -> Seen, E: Fn(&PlannedStep, f64) -> Option<RunOutcome>> Player<
 
     fn energised(&self) -> Moment {
         let happened = self.happenings.iter().rev();
-        let mut energised = happened.filter(|h| h.event == Event::Energised);
+        let mut energised = happened.filter(|h| h.event == Event::Energising);
         energised.next().map_or(Moment::START, |h| h.at)
     }
 

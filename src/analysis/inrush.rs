@@ -2,7 +2,7 @@
 
 use crate::plan::{Action, PlannedStep};
 use crate::quantity::Reading;
-use crate::record::Status;
+use crate::record::{Sample, Status};
 use crate::spec::sequence::Timed;
 
 use super::cell::{CellView, Track, highest, mean, time, within};
@@ -74,6 +74,12 @@ fn captured(
     })
 }
 
+/// Rows of the inrush: energised, up to the end of its step. The first of them come
+/// while the step that energises is still waiting for its confirmation.
+fn is_of(step: &PlannedStep, row: &Sample) -> bool {
+    row.energised && row.step <= step.number
+}
+
 /// Power while energised from a moment on, through inrush and soak.
 fn power_after(view: &CellView, from: f64) -> Track {
     let power = view.energised(view.meter, Reading::Power);
@@ -120,7 +126,7 @@ fn lower_bound(
     let lost = view
         .rows
         .iter()
-        .filter(|row| row.step == step.number && Some(row.role) == view.meter)
+        .filter(|row| is_of(step, row) && Some(row.role) == view.meter)
         .filter(|row| row.status != Status::Ok)
         .collect::<Vec<_>>();
     if let Some(first) = lost.first() {

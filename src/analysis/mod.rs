@@ -8,10 +8,12 @@ pub(crate) mod fixture;
 mod inrush;
 mod measured;
 mod steady;
+mod table;
 mod temperature;
 mod types;
 mod voltage;
 
+pub use table::results_csv;
 pub use types::{
     Analysis, CellResult, Drawn, Estimate, Figure, Inrush, Looked, Peak, Share, Steady,
 };
@@ -126,7 +128,7 @@ fn tripped(input: &Input) -> Option<String> {
         _ => None,
     });
     recorded.or(match input.outcome {
-        RunOutcome::Tripped { reason } => Some(reason.clone()),
+        RunOutcome::Tripped { reason, .. } => Some(reason.clone()),
         _ => None,
     })
 }

@@ -3,7 +3,7 @@
 use crate::analysis::{Analysis, CellResult, Estimate, Figure, plate_point, plate_points};
 use crate::plan::{Action, Plan};
 use crate::quantity::{at_least, shortest};
-use crate::record::RunOutcome;
+use crate::record::{RunOutcome, TripOf};
 use crate::spec::sequence::{FindingClass, Question, RuleWeight};
 
 use super::decision::Limits;
@@ -15,42 +15,51 @@ const OF_PLATE: f64 = 0.1;
 /// and more than so many times the meter's floor (house defaults).
 const OF_FLOOR: f64 = 5.0;
 
-/// How the run ended, where it did not end as planned. A body that reached its trip
-/// temperature while energised is evidence against the unit; any other trip, stop or
-/// failure leaves it unjudged.
-pub(super) fn run(plan: &Plan, outcome: &RunOutcome, analysis: &Analysis) -> Vec<Finding> {
-    let incomplete = Draft::house("run complete", "");
-    let finding = match outcome {
-        RunOutcome::Complete => return Vec::new(),
-        RunOutcome::Tripped { reason } => guard(plan, analysis, reason),
-        RunOutcome::Stopped => incomplete.not_judged(None, "the operator stopped the run"),
+/// How the run ended. A guard that tripped on the unit itself (too hot, or drawing too
+/// much) is evidence against it, unless the temperatures of a cell are not believed;
+/// any other trip, stop or failure leaves it unjudged.
+pub(super) fn run(plan: &Plan, outcome: &RunOutcome, analysis: &Analysis) -> Finding {
+    let draft = Draft::house("run complete", "");
+    match outcome {
+        RunOutcome::Complete => draft.plainly(None, Outcome::Pass, "every step was walked"),
+        RunOutcome::Tripped { reason, speaks_of } => guard(plan, analysis, reason, *speaks_of),
+        RunOutcome::Stopped => draft.not_judged(None, "the operator stopped the run"),
         RunOutcome::Failed { reason } => {
-            incomplete.not_judged(None, &format!("the run failed: {reason}"))
+            draft.not_judged(None, &format!("the run failed: {reason}"))
         }
         RunOutcome::Interrupted => {
-            incomplete.not_judged(None, "the run was interrupted and closed afterwards")
+            draft.not_judged(None, "the run was interrupted and closed afterwards")
         }
-    };
-    vec![finding]
+    }
 }
 
-fn guard(plan: &Plan, analysis: &Analysis, reason: &str) -> Finding {
+fn guard(plan: &Plan, analysis: &Analysis, reason: &str, speaks_of: TripOf) -> Finding {
     let draft = Draft::house("guard tripped", "");
-    let reached = |cell: &&CellResult| {
-        let (Some(limit), Some(peak)) = (plan.guards.body, cell.body_peak.known()) else {
-            return false;
-        };
-        let body = &peak.temperature_degc;
-        let near = at_least(body.value + body.expanded, limit.get());
-        near && !peak.after_heat && cell.disbelief.is_empty()
-    };
-    match analysis.cells.iter().find(reached) {
-        Some(cell) => {
-            let why = format!("the body reached its trip temperature while energised: {reason}");
-            draft.plainly(Some(&cell.cell), Outcome::Fail, &why)
-        }
-        None => draft.not_judged(None, &format!("a guard tripped: {reason}")),
+    let tripped = format!("a guard tripped: {reason}");
+    let last = analysis
+        .cells
+        .iter()
+        .rev()
+        .find(|cell| cell.energised_s.known().is_some());
+    let cell = last.map(|result| &result.cell);
+    if speaks_of == TripOf::Bench {
+        return draft.not_judged(cell, &tripped);
     }
+    // A sensor that is not believed may have tripped the body's guard for nothing.
+    let doubted = last.is_some_and(|cell| near_its_trip(plan, cell) && !cell.disbelief.is_empty());
+    if doubted {
+        let why = format!("{tripped}, and the sensors are not believed");
+        return draft.not_judged(cell, &why);
+    }
+    draft.plainly(cell, Outcome::Fail, &tripped)
+}
+
+fn near_its_trip(plan: &Plan, result: &CellResult) -> bool {
+    let (Some(limit), Some(peak)) = (plan.guards.body, result.body_peak.known()) else {
+        return false;
+    };
+    let body = &peak.temperature_degc;
+    at_least(body.value + body.expanded, limit.get())
 }
 
 /// Each position draws a settled input worth the name, and keeps drawing it.

@@ -10,12 +10,14 @@ mod always;
 mod decision;
 mod finding;
 mod rules;
+mod table;
 mod types;
 
 #[cfg(test)]
 mod tests;
 
 pub use decision::{Decided, Limits, decide};
+pub use table::findings_csv;
 pub use types::{Finding, Judgement, Outcome};
 
 use crate::analysis::Analysis;
@@ -28,7 +30,7 @@ use crate::spec::sequence::{ApplianceKind, RuleWeight, Span};
 /// Every finding and the unit's verdict, from a stored plan and what analysis says
 /// of the record.
 pub fn judge(plan: &Plan, outcome: &RunOutcome, analysis: &Analysis) -> Judgement {
-    let mut findings = always::run(plan, outcome, analysis);
+    let mut findings = vec![always::run(plan, outcome, analysis)];
     findings.extend(always::works_at_all(plan, analysis));
     findings.extend(always::believable(plan, analysis));
     findings.extend(always::plate_positions(plan));

@@ -4,7 +4,7 @@ use super::*;
 use crate::analysis::fixture::{Now, Played, Seen, good, noise, plan, play, play_until, rule};
 use crate::plan::{Action, PlannedRule};
 use crate::quantity::{Amps, Celsius, Kelvins, Volts};
-use crate::record::{Event, Sample};
+use crate::record::{Event, Sample, TripOf};
 use crate::spec::sequence::{Decision, FindingClass, RuleKind};
 
 fn judged(played: &Played) -> Judgement {
@@ -240,6 +240,7 @@ fn a_body_that_trips_the_guard_fails_and_leaves_the_rest_unjudged() {
         let high = step.cell == Some(1);
         (high && matches!(step.action, Action::Measure(_))).then(|| RunOutcome::Tripped {
             reason: "body 111.2 °C, limit 111 °C".to_owned(),
+            speaks_of: TripOf::Unit,
         })
     });
     let judgement = judged(&played);
@@ -259,6 +260,7 @@ fn another_trip_judges_nothing() {
     let played = play_until(plan(&["full"]), good, |step, _| {
         (step.cell == Some(1)).then(|| RunOutcome::Tripped {
             reason: "meter silent for 2 s".to_owned(),
+            speaks_of: TripOf::Bench,
         })
     });
     let judgement = judged(&played);
@@ -288,6 +290,7 @@ fn a_run_that_is_not_complete_never_passes_and_still_fails() {
         },
         RunOutcome::Tripped {
             reason: "input".to_owned(),
+            speaks_of: TripOf::Bench,
         },
     ] {
         let mut played = play(plan(&["full"]), good);

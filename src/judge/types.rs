@@ -77,6 +77,13 @@ pub struct Finding {
     pub reason: String,
 }
 
+impl Finding {
+    /// The unit of a difference: a margin of temperatures is in kelvins.
+    pub fn margin_unit(&self) -> &str {
+        if self.unit == "°C" { "K" } else { &self.unit }
+    }
+}
+
 /// The whole unit's outcome.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct Judgement {
