@@ -156,9 +156,11 @@ pub(super) fn plate_positions(plan: &Plan) -> Vec<Finding> {
     let draft = Draft::house("every position of the plate", "");
     missing
         .into_iter()
-        .map(|position| Finding {
-            position: Some(position.to_owned()),
-            ..draft.not_judged(None, "the sequence does not run this position of the plate")
+        .map(|position| {
+            draft.not_judged_in(
+                position,
+                "the sequence does not run this position of the plate",
+            )
         })
         .collect()
 }

@@ -42,7 +42,7 @@ impl Draft {
     /// An outcome that no number decided.
     pub(super) fn plainly(&self, cell: Option<&Cell>, outcome: Outcome, reason: &str) -> Finding {
         Finding {
-            rule: self.rule.clone(),
+            rule: self.rule_at(cell.map(|cell| cell.position.as_str())),
             condition: cell.and_then(|cell| cell.condition.clone()),
             position: cell.map(|cell| cell.position.clone()),
             supply: cell.map(|cell| supply_words(&cell.supply)),
@@ -51,12 +51,29 @@ impl Draft {
             value: None,
             expanded: None,
             unit: self.unit.to_owned(),
-            at_least: self.limits.at_least,
-            at_most: self.limits.at_most,
+            at_least: self.limits.at_least.and_then(twelve_digits),
+            at_most: self.limits.at_most.and_then(twelve_digits),
             margin: None,
             probability: None,
             source: self.source.clone(),
             reason: reason.to_owned(),
+        }
+    }
+
+    /// The rule in words: `inrush, high`.
+    fn rule_at(&self, position: Option<&str>) -> String {
+        match position {
+            Some(position) => format!("{}, {position}", self.rule),
+            None => self.rule.clone(),
+        }
+    }
+
+    /// Not judged in a position that no cell stands for, and why.
+    pub(super) fn not_judged_in(&self, position: &str, reason: &str) -> Finding {
+        Finding {
+            rule: self.rule_at(Some(position)),
+            position: Some(position.to_owned()),
+            ..self.not_judged(None, reason)
         }
     }
 
@@ -85,34 +102,59 @@ impl Draft {
             Outcome::NotJudged => decided.reason,
         };
         Finding {
-            value: value.value.is_finite().then_some(value.value),
-            expanded: value.expanded.is_finite().then_some(value.expanded),
-            margin: decided.margin.filter(|margin| margin.is_finite()),
-            probability: decided.probability,
+            value: twelve_digits(value.value),
+            expanded: twelve_digits(value.expanded),
+            margin: decided.margin.and_then(twelve_digits),
+            probability: decided.probability.and_then(twelve_digits),
             ..self.plainly(cell, decided.outcome, &reason)
         }
     }
 }
 
 impl Finding {
-    /// Rule, where it is for, outcome and reason in one line.
+    /// Rule, condition and supply, outcome and reason in one line.
     pub(super) fn in_words(&self) -> String {
-        let place: Vec<&str> = [&self.position, &self.condition, &self.supply]
+        let (place, outcome) = (self.place(), self.outcome.word());
+        format!("{}{place}: {outcome}: {}", self.rule, self.reason)
+    }
+
+    /// The nearest of all passes in words: its margin, and how many U that is.
+    pub(super) fn pass_in_words(&self) -> String {
+        let (Some(margin), Some(times)) = (self.margin, self.margin_in_u()) else {
+            return "every required finding passes".to_owned();
+        };
+        format!(
+            "every required finding passes; the smallest margin is {margin:.2} {}, {times:.1} times U: {}{}",
+            self.margin_unit(),
+            self.rule,
+            self.place()
+        )
+    }
+
+    /// Margin over U, where there are both.
+    pub(super) fn margin_in_u(&self) -> Option<f64> {
+        let expanded = self.expanded.filter(|u| *u > 0.0)?;
+        self.margin.map(|margin| margin / expanded)
+    }
+
+    fn place(&self) -> String {
+        let place: Vec<&str> = [&self.condition, &self.supply]
             .into_iter()
             .filter_map(Option::as_deref)
             .collect();
-        let place = if place.is_empty() {
+        if place.is_empty() {
             String::new()
         } else {
             format!(" ({})", place.join(", "))
-        };
-        format!(
-            "{}{place}: {}: {}",
-            self.rule,
-            self.outcome.word(),
-            self.reason
-        )
+        }
     }
+}
+
+/// A number as it is kept: twelve digits, so that 10.8 is not 10.799999999999999 and
+/// that any reader of decimals gets the same number back; nothing where it is not finite.
+fn twelve_digits(value: f64) -> Option<f64> {
+    let rounded = format!("{value:.11e}").parse::<f64>().ok()?;
+    rounded.is_finite().then_some(rounded)
 }
 
 /// The worst of several findings: by outcome, then by margin, then the first.

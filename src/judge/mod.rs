@@ -53,25 +53,32 @@ pub fn plate_limits(kind: ApplianceKind, rated: Span<Watts>) -> (Option<Watts>, 
     (band.at_least, band.at_most)
 }
 
-/// The worst required outcome, and the first finding that has it.
+/// The worst required outcome, and the finding that decided it: among equals the one
+/// whose margin is the smallest in units of U, one without a margin before all others
+/// unless it passes, else the first.
 fn verdict(findings: &[Finding]) -> (Outcome, String) {
+    let margin = |finding: &Finding| {
+        let without = match finding.outcome {
+            Outcome::Pass => f64::INFINITY,
+            _ => f64::NEG_INFINITY,
+        };
+        finding.margin_in_u().unwrap_or(without)
+    };
     let required = findings
         .iter()
         .filter(|finding| finding.weight == RuleWeight::Required);
-    let worst = required.reduce(|worst, next| {
-        if next.outcome.rank() > worst.outcome.rank() {
-            next
-        } else {
-            worst
-        }
+    let deciding = required.reduce(|worst, next| {
+        let (is, was) = (next.outcome.rank(), worst.outcome.rank());
+        let worse = is > was || (is == was && margin(next) < margin(worst));
+        if worse { next } else { worst }
     });
-    match worst {
+    match deciding {
         None => (
             Outcome::NotJudged,
             "there was nothing to judge it by".to_owned(),
         ),
         Some(finding) if finding.outcome == Outcome::Pass => {
-            (Outcome::Pass, "every required finding passes".to_owned())
+            (Outcome::Pass, finding.pass_in_words())
         }
         Some(finding) => (finding.outcome, finding.in_words()),
     }

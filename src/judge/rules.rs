@@ -155,10 +155,7 @@ impl Ask<'_> {
         let points = plate_points(self.plan, position);
         if points.is_empty() {
             let why = "the plate rates only an element in this position, not the whole";
-            return vec![Finding {
-                position: Some(position.to_owned()),
-                ..draft.not_judged(None, why)
-            }];
+            return vec![draft.not_judged_in(position, why)];
         }
         points
             .into_iter()
@@ -183,15 +180,12 @@ impl Ask<'_> {
                 && plate_point(self.plan, cell) == Some(point)
         });
         let found = worst(cells.map(|result| self.at_plate(&draft, result, point)));
-        found.unwrap_or_else(|| Finding {
-            position: Some(position.to_owned()),
-            ..draft.not_judged(
-                None,
-                &format!(
-                    "it is not run within reach of the plate's {}",
-                    point.voltage
-                ),
-            )
+        found.unwrap_or_else(|| {
+            let why = format!(
+                "it is not run within reach of the plate's {}",
+                point.voltage
+            );
+            draft.not_judged_in(position, &why)
         })
     }
 
@@ -282,6 +276,7 @@ impl Ask<'_> {
                 (Ok(low), Ok(more)) => draft.decided(Some(&high.cell), &difference(more, low)),
             };
             Some(Finding {
+                rule: draft.rule.clone(),
                 position: None,
                 ..finding
             })

@@ -40,6 +40,13 @@ fn a_good_unit_passes() {
     let judgement = judged(&play(plan(&["full", "dry"]), good));
     assert_eq!(judgement.verdict, Outcome::Pass, "{}", judgement.because);
     assert_reasons(&judgement);
+    assert!(
+        judgement.because.contains("times U: "),
+        "{}",
+        judgement.because
+    );
+    let text = serde_json::to_string(&judgement).unwrap();
+    assert_eq!(serde_json::from_str::<Judgement>(&text).unwrap(), judgement);
     for rule in [
         "works at all",
         "sensors believable",
