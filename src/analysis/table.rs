@@ -6,11 +6,33 @@ use crate::record::defused;
 
 /// Columns before the rises of the other temperature roles.
 const HEAD: [&str; 27] = [
-    "condition", "position", "supply_voltage_v", "supply_frequency_hz", "energised_s", "off_s",
-    "cold_start", "inrush_peak_a", "inrush_peak_u_a", "inrush_peak_w", "inrush_peak_after_s",
-    "inrush_ratio", "inrush_lower_bound", "settled_after_s", "steady_power_w", "steady_power_u_w",
-    "mean_power_w", "duty", "voltage_v", "samples", "effective_samples", "body_peak_degc",
-    "body_peak_u_k", "body_peak_after_heat", "body_worst_degc", "body_worst_u_k", "absent_because",
+    "condition",
+    "position",
+    "supply_voltage_v",
+    "supply_frequency_hz",
+    "energised_s",
+    "off_s",
+    "cold_start",
+    "inrush_peak_a",
+    "inrush_peak_u_a",
+    "inrush_peak_w",
+    "inrush_peak_after_s",
+    "inrush_ratio",
+    "inrush_lower_bound",
+    "settled_after_s",
+    "steady_power_w",
+    "steady_power_u_w",
+    "mean_power_w",
+    "duty",
+    "voltage_v",
+    "samples",
+    "effective_samples",
+    "body_peak_degc",
+    "body_peak_u_k",
+    "body_peak_after_heat",
+    "body_worst_degc",
+    "body_worst_u_k",
+    "absent_because",
 ];
 
 /// `results.csv` in bytes; absent values are empty cells, their reasons stand in the
@@ -28,12 +50,18 @@ pub fn results_csv(analysis: &Analysis) -> Result<Vec<u8>, csv::Error> {
     for cell in &analysis.cells {
         writer.write_record(row(cell))?;
     }
-    writer.into_inner().map_err(|e| csv::Error::from(e.into_error()))
+    writer
+        .into_inner()
+        .map_err(|e| csv::Error::from(e.into_error()))
 }
 
 fn row(cell: &CellResult) -> Vec<String> {
     let number = |value: Option<f64>| value.map_or_else(String::new, shortest);
-    let flag = |value: Option<bool>| value.map_or("", |set| if set { "1" } else { "0" }).to_owned();
+    let flag = |value: Option<bool>| {
+        value
+            .map_or("", |set| if set { "1" } else { "0" })
+            .to_owned()
+    };
     let inrush = cell.inrush.known();
     let steady = cell.steady.known();
     let peak = cell.body_peak.known();
@@ -67,7 +95,11 @@ fn row(cell: &CellResult) -> Vec<String> {
         number(worst.map(|w| w.expanded)),
         defused(&reasons(cell).join("; ")),
     ];
-    row.extend(cell.rises.iter().map(|(_, rise)| number(rise.known().map(|e| e.value))));
+    row.extend(
+        cell.rises
+            .iter()
+            .map(|(_, rise)| number(rise.known().map(|e| e.value))),
+    );
     row
 }
 
@@ -89,6 +121,10 @@ fn reasons(cell: &CellResult) -> Vec<String> {
     for (name, rise) in &cell.rises {
         add(name, Figure::reason(rise));
     }
-    all.extend(cell.disbelief.iter().map(|why| format!("not believed: {why}")));
+    all.extend(
+        cell.disbelief
+            .iter()
+            .map(|why| format!("not believed: {why}")),
+    );
     all
 }

@@ -67,12 +67,10 @@ pub struct CellResult {
     pub cold_start: Figure<()>,
     /// Switch-on.
     pub inrush: Figure<Inrush>,
+    /// What it drew, settled or not: whether it works at all.
+    pub drawn: Figure<Drawn>,
     /// When the soak settled, seconds after energising.
     pub settled_s: Figure<f64>,
-    /// Highest power in the last half of the energised time, W: whether it works at all.
-    pub drawn_w: Figure<f64>,
-    /// Whether the current vanished while energised.
-    pub went_open: bool,
     /// Settled input.
     pub steady: Figure<Steady>,
     /// Highest temperature of the body, after-heat included, corrected for calibration.
@@ -83,6 +81,17 @@ pub struct CellResult {
     pub rises: Vec<(String, Figure<Estimate>)>,
     /// Why the temperatures of this cell are not to be believed; empty where they are.
     pub disbelief: Vec<String>,
+}
+
+/// What a unit drew while it was energised, settled or not.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Drawn {
+    /// Mean power over the last minute before OFF; of a cycling load, while it is on.
+    pub power_w: f64,
+    /// Floor of the meter's accuracy, below which nothing is told from nothing.
+    pub floor_w: f64,
+    /// When the power vanished for good, seconds after energising; absent where it did not.
+    pub vanished_s: Option<f64>,
 }
 
 /// Switch-on, from samples: a lower bound of what really happened.

@@ -6,8 +6,21 @@ use crate::record::defused;
 use crate::spec::sequence::RuleWeight;
 
 const HEAD: [&str; 15] = [
-    "rule", "condition", "position", "supply", "weight", "outcome", "value", "expanded_u", "unit",
-    "at_least", "at_most", "margin", "probability", "source", "reason",
+    "rule",
+    "condition",
+    "position",
+    "supply",
+    "weight",
+    "outcome",
+    "value",
+    "expanded_u",
+    "unit",
+    "at_least",
+    "at_most",
+    "margin",
+    "probability",
+    "source",
+    "reason",
 ];
 
 /// `findings.csv` in bytes; the unit of value, U, limits and margin stands beside them.
@@ -20,7 +33,9 @@ pub fn findings_csv(judgement: &Judgement) -> Result<Vec<u8>, csv::Error> {
     for finding in &judgement.findings {
         writer.write_record(row(finding))?;
     }
-    writer.into_inner().map_err(|e| csv::Error::from(e.into_error()))
+    writer
+        .into_inner()
+        .map_err(|e| csv::Error::from(e.into_error()))
 }
 
 fn row(finding: &Finding) -> [String; 15] {

@@ -28,6 +28,18 @@ impl Outcome {
             Outcome::NotJudged => "not judged",
         }
     }
+
+    /// How much it weighs in a verdict: 0 for a pass up to 4 for a fail. What is not
+    /// judged outweighs a conditional fail, because it could be a fail.
+    pub fn rank(self) -> u8 {
+        match self {
+            Outcome::Pass => 0,
+            Outcome::ConditionalPass => 1,
+            Outcome::ConditionalFail => 2,
+            Outcome::NotJudged => 3,
+            Outcome::Fail => 4,
+        }
+    }
 }
 
 /// One rule's outcome.
@@ -66,7 +78,7 @@ pub struct Finding {
 }
 
 impl Finding {
-    /// The unit of a difference: a margin of temperatures is in kelvin.
+    /// The unit of a difference: a margin of temperatures is in kelvins.
     pub fn margin_unit(&self) -> &str {
         if self.unit == "°C" { "K" } else { &self.unit }
     }

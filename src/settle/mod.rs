@@ -1,188 +1,286 @@
-//! Is this soak settled? One object, fed with recorded values only, asked by `run`
-//! while running and by `analysis` from the record, so that both say the same.
+//! Is this soak settled, by which criterion, over which window? One object, asked
+//! on a grid of recorded values, while running and from the record alike: the
+//! same pushes give the same answer.
 //!
-//! Values are averaged on a grid of 5 s (or the polling interval, where that is
-//! longer), counted from energising; a decision is taken only when a grid cell
-//! closes. Temperatures are the body's rise over the bay's own ambient.
+//! What is pushed: every recorded value of the soak's own step, in the order of
+//! the record, with the moment of its reply. The grid starts at `energised`; a
+//! cell is closed, and the question decided, by the first value that lies beyond
+//! it. A cell holds the means of its values, so that polling faster does not
+//! change what is watched.
 //!
-//! A load that cycles (thermostat) is judged by the highest temperatures of its
-//! cycles, of which the window must hold four: a cycle's own swing is neither a
-//! trend nor scatter. Its power is not watched.
+//! The watched temperature is the body's rise over ambient; the body itself
+//! where no ambient was ever pushed.
+//!
+//! # Cycling loads
+//! Where the appliance has a thermostat and its power has been seen to fall below
+//! half of its highest, grid cells say nothing: every cycle breaks them. Then the
+//! criterion is asked of *whole cycles*, from one switching on to the next, each
+//! counting with its mean power and mean rise: a slope over the cycles in the
+//! window (at least the last four), three readings that are cycles, the change
+//! between the cycles within the interval (at least the last three). A load that
+//! has not switched off yet is asked on the grid. Power that vanishes means
+//! nothing there.
 
-mod criterion;
+mod criteria;
 mod cycles;
 
+use std::collections::VecDeque;
+
 use crate::quantity::{Moment, Seconds};
-use crate::spec::sequence::Criterion;
+use crate::spec::sequence::{Criterion, CriterionKind};
+use crate::stats::RunningLine;
 
-use criterion::{Asked, ask};
+use criteria::{Answer, Point};
+use cycles::Cycles;
 
-/// Least length of a grid cell.
-const GRID_S: f64 = 5.0;
-
-/// Power below this share of its highest in the soak has vanished ...
+/// A grid cell is never shorter than this, seconds.
+const SHORTEST_CELL_S: f64 = 5.0;
+/// Power below this share of its highest has vanished.
 const VANISHED: f64 = 0.01;
-
-/// ... where it lasts this long.
-const VANISHED_S: f64 = 10.0;
+/// For so long, seconds.
+const VANISHED_FOR_S: f64 = 10.0;
 
 /// What a value is of.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 pub enum Watched {
-    /// Power, W.
+    /// Active power, W.
     Power,
-    /// The body's temperature, degrees Celsius.
+    /// The watched body's temperature, degrees Celsius.
     Body,
     /// The bay's own ambient, degrees Celsius.
     Ambient,
 }
 
-/// Where a soak stands.
+/// Whether a soak is settled.
 #[derive(Debug, Clone, PartialEq)]
 pub enum Settling {
-    /// Before the shortest soak.
+    /// The least time has not passed.
     TooEarly,
-    /// Not yet, and why.
+    /// It is not, and this is what still changes, in words.
     NotYet(String),
-    /// Settled, for good.
+    /// It is, and stays so.
     Settled {
-        /// Start of the window that shows it.
+        /// Start of the criterion's window.
         from: Moment,
         /// Its end.
         to: Moment,
-        /// The criterion in words.
+        /// The criterion with what was found, in words.
         criterion: String,
     },
-    /// The current vanished: never settled.
+    /// The power vanished while energised: a link, an element or the switch
+    /// opened. It stays so and is never settled.
     WentOpen,
 }
 
-/// A soak as far as it is known.
+/// Watches one soak.
 #[derive(Debug, Clone)]
 pub struct Settle {
     criterion: Criterion,
-    at_least: f64,
-    grid: f64,
+    at_least_s: f64,
+    cell_us: u64,
     cycling: bool,
     energised: Moment,
-    cell: Option<u64>,
-    sums: [Sum; 3],
-    last_ambient: Option<f64>,
-    series: Series,
-    highest: f64,
+    open_cell: u64,
+    sums: Sums,
+    ambient_known: bool,
+    cells: VecDeque<Point>,
+    power_line: RunningLine,
+    rise_line: RunningLine,
+    cycles: Cycles,
+    highest_w: f64,
     vanished_since: Option<Moment>,
     state: Settling,
 }
 
-/// Grid values so far: seconds since energising, W or K.
-#[derive(Debug, Clone, Default)]
-struct Series {
-    power: Vec<(f64, f64)>,
-    rise: Vec<(f64, f64)>,
-}
-
-#[derive(Debug, Clone, Copy, Default)]
-struct Sum {
-    sum: f64,
-    n: f64,
-}
-
-impl Sum {
-    fn take(&mut self) -> Option<f64> {
-        let mean = (self.n > 0.0).then(|| self.sum / self.n);
-        *self = Sum::default();
-        mean
-    }
-}
-
 impl Settle {
-    /// A soak that is polled each `every` and was energised at `energised`; `cycling`
-    /// where a thermostat switches.
-    pub fn new(criterion: &Criterion, at_least: Seconds, every: Seconds, cycling: bool, energised: Moment) -> Self {
-        Self {
+    /// Watches a soak by `criterion`, not before `at_least` after `energised` (the
+    /// moment at which energising was announced), polled `every` so often; `cycling` where a thermostat is declared.
+    pub fn new(
+        criterion: &Criterion,
+        at_least: Seconds,
+        every: Seconds,
+        cycling: bool,
+        energised: Moment,
+    ) -> Self {
+        let cell_s = every.get().max(SHORTEST_CELL_S);
+        Settle {
             criterion: criterion.clone(),
-            at_least: at_least.get(),
-            grid: every.get().max(GRID_S),
+            at_least_s: at_least.get(),
+            cell_us: Seconds::of(cell_s).as_micros(),
             cycling,
             energised,
-            cell: None,
-            sums: [Sum::default(); 3],
-            last_ambient: None,
-            series: Series::default(),
-            highest: 0.0,
+            open_cell: 0,
+            sums: Sums::default(),
+            ambient_known: false,
+            cells: VecDeque::new(),
+            power_line: RunningLine::default(),
+            rise_line: RunningLine::default(),
+            cycles: Cycles::default(),
+            highest_w: 0.0,
             vanished_since: None,
             state: Settling::TooEarly,
         }
     }
 
-    /// Takes a recorded value; times must not fall. Values after the end change nothing.
+    /// Takes a recorded value in; `at` is the moment of its reply. Values from
+    /// before energising and values that are not finite are passed over.
     pub fn take(&mut self, at: Moment, watched: Watched, value: f64) {
-        if matches!(self.state, Settling::Settled { .. } | Settling::WentOpen) {
+        let over = matches!(self.state, Settling::Settled { .. } | Settling::WentOpen);
+        if over || at < self.energised || !value.is_finite() {
             return;
         }
-        let cell = (at.since(self.energised).get() / self.grid) as u64;
-        if self.cell.is_some_and(|open| cell > open) {
+        let cell = at.micros_since(self.energised) / self.cell_us;
+        if cell > self.open_cell {
             self.close_cell();
+            self.open_cell = cell;
+            if matches!(self.state, Settling::Settled { .. }) {
+                return;
+            }
         }
-        self.cell = Some(self.cell.map_or(cell, |open| open.max(cell)));
-        let sum = &mut self.sums[watched as usize];
-        sum.sum += value;
-        sum.n += 1.0;
-        if watched == Watched::Power && !self.cycling {
-            self.watch_vanishing(at, value);
+        self.ambient_known |= watched == Watched::Ambient;
+        self.sums.add(watched, value);
+        if self.cycling {
+            let t = at.since(self.energised).get();
+            self.cycles.take(t, watched, value);
+        } else if watched == Watched::Power {
+            self.watch_for_vanishing(at, value);
         }
     }
 
-    /// Where the soak stands.
+    /// Whether it is settled, as of the last closed cell.
     pub fn state(&self) -> &Settling {
         &self.state
     }
 
-    fn watch_vanishing(&mut self, at: Moment, power: f64) {
-        self.highest = self.highest.max(power);
-        if power >= VANISHED * self.highest || self.highest <= 0.0 {
+    fn watch_for_vanishing(&mut self, at: Moment, power_w: f64) {
+        self.highest_w = self.highest_w.max(power_w);
+        if self.highest_w <= 0.0 || power_w >= VANISHED * self.highest_w {
             self.vanished_since = None;
             return;
         }
         let since = *self.vanished_since.get_or_insert(at);
-        if at.since(since).get() >= VANISHED_S {
+        if at.since(since).get() >= VANISHED_FOR_S {
             self.state = Settling::WentOpen;
         }
     }
 
     fn close_cell(&mut self) {
-        let Some(cell) = self.cell else { return };
-        let middle = (cell as f64 + 0.5) * self.grid;
-        let [power, body, ambient] = [0, 1, 2].map(|n| self.sums[n].take());
-        self.last_ambient = ambient.or(self.last_ambient);
-        self.series.power.extend(power.map(|p| (middle, p)));
-        let rise = body.zip(self.last_ambient).map(|(body, ambient)| body - ambient);
-        self.series.rise.extend(rise.map(|r| (middle, r)));
-        if self.state == Settling::WentOpen {
-            return;
-        }
-        self.state = self.decide((cell + 1) as f64 * self.grid);
+        let cell_s = self.cell_us as f64 * 1e-6;
+        let from = self.open_cell as f64 * cell_s;
+        let point = Point {
+            from,
+            to: from + cell_s,
+            power: self.sums.power.mean(),
+            rise: self.sums.rise(self.ambient_known),
+        };
+        self.sums = Sums::default();
+        self.keep(point);
+        let now = from + cell_s;
+        self.state = if now < self.at_least_s {
+            Settling::TooEarly
+        } else {
+            self.decide(now, cell_s)
+        };
     }
 
-    fn decide(&self, elapsed: f64) -> Settling {
-        if elapsed < self.at_least {
-            return Settling::TooEarly;
+    /// Keeps a point and drops those that no criterion looks at any more.
+    fn keep(&mut self, point: Point) {
+        let (middle, now) = (point.middle(), point.to);
+        if let Some(power) = point.power {
+            self.power_line.add(middle, power);
         }
-        let asked = Asked {
-            power: if self.cycling { None } else { self.criterion.power_change.map(|_| self.series.power.as_slice()) },
-            rise: self.criterion.temperature_change.map(|_| self.series.rise.as_slice()),
-            cycling: self.cycling,
-            elapsed,
-            grid: self.grid,
+        if let Some(rise) = point.rise {
+            self.rise_line.add(middle, rise);
+        }
+        self.cells.push_back(point);
+        let oldest = now - criteria::looks_back(&self.criterion.kind, now) - 1e-6;
+        while let Some(first) = self.cells.front().copied().filter(|p| p.from < oldest) {
+            self.cells.pop_front();
+            if let Some(power) = first.power {
+                self.power_line.remove(first.middle(), power);
+            }
+            if let Some(rise) = first.rise {
+                self.rise_line.remove(first.middle(), rise);
+            }
+        }
+    }
+
+    fn decide(&self, now: f64, cell_s: f64) -> Settling {
+        let answer = if self.cycling && self.cycles.has_switched_off() {
+            criteria::over_cycles(&self.criterion, self.cycles.complete(), now)
+        } else {
+            self.over_cells(now, cell_s)
         };
-        match ask(&self.criterion, &asked) {
-            Err(reason) => Settling::NotYet(reason),
-            Ok(window) => Settling::Settled {
-                from: self.energised + Seconds::new(elapsed - window).unwrap_or_default(),
-                to: self.energised + Seconds::of(elapsed),
-                criterion: criterion::words(&self.criterion),
+        match answer {
+            Answer::NotYet(why) => Settling::NotYet(why),
+            Answer::Settled { from, to, found } => Settling::Settled {
+                from: self.energised + Seconds::of(from.max(0.0)),
+                to: self.energised + Seconds::of(to.max(0.0)),
+                criterion: found,
             },
         }
+    }
+
+    fn over_cells(&self, now: f64, cell_s: f64) -> Answer {
+        match self.criterion.kind {
+            CriterionKind::Slope { window } => {
+                let full = criteria::full(&self.cells, now, window.get(), cell_s);
+                let lines = (&self.power_line, &self.rise_line);
+                full.unwrap_or_else(|| criteria::slope(&self.criterion, &self.cells, lines))
+            }
+            CriterionKind::ThreeReadings => {
+                criteria::three_readings(&self.criterion, &self.cells, now, cell_s)
+            }
+            CriterionKind::ChangeWithin { interval } => {
+                let full = criteria::full(&self.cells, now, interval.get(), cell_s);
+                full.unwrap_or_else(|| criteria::change_within(&self.criterion, &self.cells))
+            }
+        }
+    }
+}
+
+/// A sum that becomes a mean.
+#[derive(Debug, Clone, Copy, Default)]
+struct Sum {
+    total: f64,
+    count: u32,
+}
+
+impl Sum {
+    fn add(&mut self, value: f64) {
+        self.total += value;
+        self.count += 1;
+    }
+
+    fn mean(&self) -> Option<f64> {
+        (self.count > 0).then(|| self.total / f64::from(self.count))
+    }
+}
+
+/// Sums of what is watched, over a grid cell or a cycle.
+#[derive(Debug, Clone, Copy, Default)]
+struct Sums {
+    power: Sum,
+    body: Sum,
+    ambient: Sum,
+}
+
+impl Sums {
+    fn add(&mut self, watched: Watched, value: f64) {
+        match watched {
+            Watched::Power => self.power.add(value),
+            Watched::Body => self.body.add(value),
+            Watched::Ambient => self.ambient.add(value),
+        }
+    }
+
+    /// The body's rise over ambient; the body itself where no ambient is known.
+    fn rise(&self, ambient_known: bool) -> Option<f64> {
+        let body = self.body.mean()?;
+        if !ambient_known {
+            return Some(body);
+        }
+        self.ambient.mean().map(|ambient| body - ambient)
     }
 }
 
