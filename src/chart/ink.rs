@@ -1,0 +1,118 @@
+//! Colours and strokes. Colours differ in lightness as well as in hue, and no
+//! meaning hangs on a colour alone: dash, marker or word says it too.
+
+/// A colour.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub struct Ink(pub u8, pub u8, pub u8);
+
+/// Paper.
+pub const PAPER: Ink = Ink(255, 255, 255);
+/// Text and frames.
+pub const INK: Ink = Ink(28, 32, 38);
+/// Lesser text.
+pub const SOFT: Ink = Ink(86, 92, 102);
+/// Grid.
+pub const GRID: Ink = Ink(226, 228, 232);
+/// Ruled lines between parts.
+pub const RULE: Ink = Ink(176, 180, 188);
+/// The allowed band.
+pub const BAND: Ink = Ink(219, 234, 224);
+/// The settled window.
+pub const WINDOW: Ink = Ink(196, 176, 128);
+/// Measured power.
+pub const POWER: Ink = Ink(20, 66, 132);
+/// Settled level.
+pub const LEVEL: Ink = Ink(150, 56, 0);
+/// Limits.
+pub const LIMIT: Ink = Ink(120, 16, 40);
+/// The plate's own value.
+pub const PLATE: Ink = Ink(30, 96, 62);
+
+/// How a line is broken, in pixels: on, off, on, off ...; empty is unbroken.
+pub type Dash = &'static [f64];
+
+/// Unbroken.
+pub const SOLID: Dash = &[];
+/// Limits.
+pub const DASHED: Dash = &[11.0, 6.0];
+/// The plate's own value.
+pub const DOTTED: Dash = &[2.5, 5.0];
+/// Earliest opening of a link.
+pub const DASH_DOT: Dash = &[14.0, 5.0, 2.5, 5.0];
+/// Values worked out rather than sampled.
+pub const SHORT: Dash = &[6.0, 4.0];
+
+/// A line's looks.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Stroke {
+    /// Colour.
+    pub ink: Ink,
+    /// Width in pixels.
+    pub width: f64,
+    /// Dash.
+    pub dash: Dash,
+}
+
+impl Stroke {
+    /// An unbroken line.
+    pub const fn solid(ink: Ink, width: f64) -> Self {
+        Self::broken(ink, width, SOLID)
+    }
+
+    /// A broken line.
+    pub const fn broken(ink: Ink, width: f64, dash: Dash) -> Self {
+        Self { ink, width, dash }
+    }
+}
+
+/// A shape that stands on a line or for an outcome.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Marker {
+    Disc,
+    Ring,
+    Square,
+    Triangle,
+    Diamond,
+    Cross,
+}
+
+/// Looks of one temperature's line.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct TraceInk {
+    /// The line.
+    pub stroke: Stroke,
+    /// Stands along the line.
+    pub marker: Marker,
+}
+
+/// The body's temperature.
+pub const BODY: TraceInk = TraceInk {
+    stroke: Stroke::solid(Ink(156, 36, 20), 2.5),
+    marker: Marker::Disc,
+};
+
+/// The bay's own ambient.
+pub const AMBIENT: TraceInk = TraceInk {
+    stroke: Stroke::broken(Ink(66, 122, 176), 2.0, &[9.0, 5.0]),
+    marker: Marker::Ring,
+};
+
+/// Every other role, in turn.
+pub const OTHERS: [TraceInk; 4] = [
+    TraceInk {
+        stroke: Stroke::broken(Ink(0, 84, 84), 2.0, &[16.0, 4.0, 4.0, 4.0]),
+        marker: Marker::Square,
+    },
+    TraceInk {
+        stroke: Stroke::broken(Ink(112, 60, 140), 2.0, &[4.0, 4.0]),
+        marker: Marker::Triangle,
+    },
+    TraceInk {
+        stroke: Stroke::broken(Ink(134, 104, 0), 2.0, &[20.0, 5.0]),
+        marker: Marker::Diamond,
+    },
+    TraceInk {
+        stroke: Stroke::broken(Ink(70, 74, 84), 2.0, &[12.0, 3.0, 3.0, 3.0, 3.0, 3.0]),
+        marker: Marker::Cross,
+    },
+];

@@ -1,0 +1,361 @@
+//! The summary's two tables of rows: a value with its U on a scale that all rows
+//! share, its numbers, and its outcome.
+
+use super::axis::{Scale, drawable, extent, widened};
+use super::caption::{self, About};
+use super::fonts::{Face, SMALL, TEXT};
+use super::header::{self, MARGIN};
+use super::ink::{BAND, DASHED, DOTTED, GRID, INK, LIMIT, Marker, PLATE, POWER, SOFT, Stroke};
+use super::limits::PowerLimits;
+use super::number::with_uncertainty;
+use super::power::{allowed, margin};
+use super::sheet::{Align, Frame, Sheet};
+use super::words::clean;
+use super::{DrawError, Scene};
+use crate::judge::Outcome;
+
+/// Height of a row.
+const ROW: f64 = 34.0;
+/// Above and below the rows: head, scale.
+const ABOVE: f64 = 46.0;
+const BELOW: f64 = 56.0;
+/// Where the scale begins and ends, where numbers begin, where outcomes begin.
+const SCALE_LEFT: f64 = 370.0;
+const SCALE_RIGHT: f64 = 960.0;
+const NUMBERS: f64 = 984.0;
+const OUTCOMES: f64 = 1396.0;
+
+/// A value on the scale.
+struct Mark {
+    value: f64,
+    expanded: f64,
+    marker: Marker,
+}
+
+/// One row.
+struct Row {
+    name: String,
+    /// What is allowed, on the scale; an absent end is open.
+    band: Option<(Option<f64>, Option<f64>)>,
+    marks: Vec<Mark>,
+    numbers: String,
+    outcomes: Vec<Outcome>,
+}
+
+/// A table of rows on one scale.
+pub struct Rows {
+    head: &'static str,
+    beside: String,
+    axis: &'static str,
+    /// The value that all rows share, and its looks.
+    reference: (f64, Stroke),
+    least: (f64, f64),
+    limit: (f64, f64),
+    rows: Vec<Row>,
+    /// Why there are no rows.
+    nothing: &'static str,
+}
+
+/// The input of `cells` in per cent of the plate.
+pub fn power(scene: &Scene, cells: &[usize]) -> Rows {
+    Rows {
+        head: "Power input against the plate",
+        beside: "settled input, with U".to_owned(),
+        axis: "per cent of the plate's value",
+        reference: (100.0, Stroke::broken(PLATE, 2.0, DOTTED)),
+        least: (75.0, 125.0),
+        limit: (-50.0, 300.0),
+        rows: cells.iter().map(|cell| power_row(scene, *cell)).collect(),
+        nothing: "the plan has no cells",
+    }
+}
+
+fn power_row(scene: &Scene, index: usize) -> Row {
+    let limits = PowerLimits::of(scene, index);
+    let result = scene.analysis.cells.get(index);
+    let percent = |watts: f64| {
+        let plate = limits.plate().filter(|plate| *plate > 0.0)?;
+        drawable(100.0 * watts / plate)
+    };
+    let steady = result.and_then(|result| result.steady.known());
+    let numbers = match (steady, result) {
+        (Some(steady), _) => {
+            let power = &steady.power_w;
+            let (value, expanded) = with_uncertainty(power.value, power.expanded);
+            format!("{value} W ± {expanded} W; {}", allowed(&limits))
+        }
+        (None, Some(result)) => clean(result.steady.reason().unwrap_or_default()),
+        (None, None) => "not run".to_owned(),
+    };
+    let mark = steady.and_then(|steady| {
+        Some(Mark {
+            value: percent(steady.power_w.value)?,
+            expanded: percent(steady.power_w.expanded)?,
+            marker: Marker::Disc,
+        })
+    });
+    let has_limits = limits.at_least.is_some() || limits.at_most.is_some();
+    let band = (
+        limits.at_least.and_then(percent),
+        limits.at_most.and_then(percent),
+    );
+    Row {
+        name: caption::cell(&scene.plan.cells[index]),
+        band: (has_limits && limits.plate().is_some()).then_some(band),
+        marks: mark.into_iter().collect(),
+        numbers,
+        outcomes: outcomes(scene, index, &[About::Power]),
+    }
+}
+
+/// The margins of `cells` to the thermal link in kelvin.
+pub fn thermal(scene: &Scene, cells: &[usize]) -> Rows {
+    let link = scene.plan.appliance.link.as_ref();
+    let beside = match link {
+        Some(link) => {
+            let th = link
+                .th
+                .map_or("Th not stated".to_owned(), |th| format!("Th {th}"));
+            format!(
+                "worst body temperature at {} ambient · disc: to {th} · diamond: to Tf − 10 K {}",
+                scene.plan.appliance.highest_ambient, link.opens_from
+            )
+        }
+        None => String::new(),
+    };
+    Rows {
+        head: "Margin to the thermal link",
+        beside,
+        axis: "kelvin below the limit",
+        reference: (0.0, Stroke::broken(LIMIT, 2.0, DASHED)),
+        least: (-5.0, 20.0),
+        limit: (-200.0, 300.0),
+        rows: match link {
+            Some(_) => cells.iter().map(|cell| thermal_row(scene, *cell)).collect(),
+            None => Vec::new(),
+        },
+        nothing: "the sequence names no thermal link",
+    }
+}
+
+fn thermal_row(scene: &Scene, index: usize) -> Row {
+    let link = scene.plan.appliance.link.as_ref();
+    let result = scene.analysis.cells.get(index);
+    let worst = result.and_then(|result| result.body_worst.known());
+    let limits = link.map(|link| {
+        let opens = (link.opens_from.get(), "Tf − 10 K", Marker::Diamond);
+        let holds = link.th.map(|th| (th.get(), "Th", Marker::Disc));
+        holds.into_iter().chain([opens]).collect::<Vec<_>>()
+    });
+    let mut marks = Vec::new();
+    let mut words = Vec::new();
+    if let Some(worst) = worst {
+        let (value, expanded) = with_uncertainty(worst.value, worst.expanded);
+        words.push(format!("{value} °C ± {expanded} K"));
+        for (limit, name, marker) in limits.into_iter().flatten() {
+            words.push(format!("{name} {}", margin(limit - worst.value, "K")));
+            marks.extend(drawable(limit - worst.value).map(|value| Mark {
+                value,
+                expanded: worst.expanded,
+                marker,
+            }));
+        }
+    } else {
+        let why = result.and_then(|result| result.body_worst.reason());
+        words.push(clean(why.unwrap_or("not run")));
+    }
+    Row {
+        name: caption::cell(&scene.plan.cells[index]),
+        band: Some((Some(0.0), None)),
+        marks,
+        numbers: words.join("; "),
+        outcomes: outcomes(scene, index, &[About::Holding, About::Opening]),
+    }
+}
+
+/// The gravest outcome of what is said about the cell; nothing where nothing is.
+fn outcomes(scene: &Scene, index: usize, abouts: &[About]) -> Vec<Outcome> {
+    let found = abouts
+        .iter()
+        .filter_map(|about| caption::finding(scene, index, *about))
+        .map(|finding| finding.outcome)
+        .max_by_key(|outcome| caption::gravity(*outcome));
+    found.into_iter().collect()
+}
+
+impl Rows {
+    /// Height of the table.
+    pub fn height(&self) -> f64 {
+        ABOVE + ROW * self.rows.len().max(1) as f64 + BELOW
+    }
+
+    /// Draws the table from `top` down; returns where it ends.
+    ///
+    /// # Errors
+    /// Those of the sheet.
+    pub fn draw(&self, sheet: &mut Sheet, top: f64) -> Result<f64, DrawError> {
+        header::head(sheet, top + 18.0, self.head, &self.beside)?;
+        let first = top + ABOVE;
+        if self.rows.is_empty() {
+            sheet.text((MARGIN, first + 20.0), self.nothing, TEXT, Align::Left)?;
+            return Ok(top + self.height());
+        }
+        let bottom = first + ROW * self.rows.len() as f64;
+        let scale = self.scale();
+        self.ground(sheet, &scale, first, bottom)?;
+        for (n, row) in self.rows.iter().enumerate() {
+            row.draw(sheet, &scale, first + (n as f64 + 0.5) * ROW)?;
+        }
+        Ok(top + self.height())
+    }
+
+    fn scale(&self) -> Scale {
+        let ends = |row: &Row| {
+            let marks = row.marks.iter();
+            let marks = marks.flat_map(|m| [m.value - m.expanded, m.value + m.expanded]);
+            let band = row.band.unwrap_or((None, None));
+            marks
+                .chain([band.0, band.1].into_iter().flatten())
+                .collect::<Vec<_>>()
+        };
+        let all = self.rows.iter().flat_map(ends);
+        let (low, high) = extent(all.chain([self.least.0, self.least.1])).unwrap_or(self.least);
+        let (low, high) = widened((low, high), 0.04);
+        Scale {
+            low: low.max(self.limit.0),
+            high: high.min(self.limit.1),
+            from: SCALE_LEFT,
+            to: SCALE_RIGHT,
+        }
+    }
+
+    /// Bands, grid, scale and the shared reference.
+    fn ground(
+        &self,
+        sheet: &mut Sheet,
+        scale: &Scale,
+        top: f64,
+        bottom: f64,
+    ) -> Result<(), DrawError> {
+        for (n, row) in self.rows.iter().enumerate() {
+            let middle = top + (n as f64 + 0.5) * ROW;
+            row.band(sheet, scale, middle)?;
+        }
+        for (value, label) in scale.ticks(8) {
+            let x = scale.at(value);
+            sheet.line((x, top), (x, bottom), Stroke::solid(GRID, 1.0))?;
+            let face = TEXT.in_ink(SOFT);
+            sheet.text((x, bottom + 19.0), &label, face, Align::Centre)?;
+        }
+        let (at, stroke) = self.reference;
+        sheet.line(
+            (scale.at(at), top - 4.0),
+            (scale.at(at), bottom + 4.0),
+            stroke,
+        )?;
+        sheet.line(
+            (SCALE_LEFT, bottom),
+            (SCALE_RIGHT, bottom),
+            Stroke::solid(INK, 1.0),
+        )?;
+        let middle = 0.5 * (SCALE_LEFT + SCALE_RIGHT);
+        sheet.text((middle, bottom + 40.0), self.axis, SMALL, Align::Centre)
+    }
+}
+
+impl Row {
+    fn band(&self, sheet: &mut Sheet, scale: &Scale, y: f64) -> Result<(), DrawError> {
+        let Some((low, high)) = self.band else {
+            return Ok(());
+        };
+        let x = |v: f64| scale.at(v).clamp(SCALE_LEFT, SCALE_RIGHT);
+        let (left, right) = (low.map_or(SCALE_LEFT, x), high.map_or(SCALE_RIGHT, x));
+        sheet.fill(Frame::new(left, y - 12.0, right, y + 12.0), BAND)?;
+        let edge = Stroke::solid(LIMIT, 2.0);
+        for x in [low.map(x), high.map(x)].into_iter().flatten() {
+            sheet.line((x, y - 12.0), (x, y + 12.0), edge)?;
+        }
+        Ok(())
+    }
+
+    fn draw(&self, sheet: &mut Sheet, scale: &Scale, y: f64) -> Result<(), DrawError> {
+        let name = TEXT.fit(&self.name, SCALE_LEFT - MARGIN - 14.0);
+        sheet.text((MARGIN, y + 6.0), &name, TEXT, Align::Left)?;
+        for mark in &self.marks {
+            mark.draw(sheet, scale, y)?;
+        }
+        let numbers = SMALL
+            .in_ink(INK)
+            .fit(&self.numbers, OUTCOMES - NUMBERS - 14.0);
+        sheet.text((NUMBERS, y + 5.0), &numbers, SMALL.in_ink(INK), Align::Left)?;
+        for outcome in &self.outcomes {
+            let (marker, ink) = caption::looks(*outcome);
+            sheet.marker((OUTCOMES + 6.0, y), 6.0, marker, ink)?;
+            let face = Face::bold(TEXT.em, ink);
+            sheet.text(
+                (OUTCOMES + 20.0, y + 6.0),
+                outcome.word(),
+                face,
+                Align::Left,
+            )?;
+        }
+        Ok(())
+    }
+}
+
+impl Mark {
+    /// The value with its U; beyond the scale, an arrow at its edge.
+    fn draw(&self, sheet: &mut Sheet, scale: &Scale, y: f64) -> Result<(), DrawError> {
+        if !scale.holds(self.value) {
+            let (x, tip) = if self.value > scale.high {
+                (SCALE_RIGHT - 16.0, SCALE_RIGHT - 2.0)
+            } else {
+                (SCALE_LEFT + 16.0, SCALE_LEFT + 2.0)
+            };
+            return sheet.polygon(&[(x, y - 8.0), (tip, y), (x, y + 8.0)], POWER);
+        }
+        let bar = Stroke::solid(POWER, 2.0);
+        if let Some(expanded) = drawable(self.expanded).filter(|u| *u > 0.0) {
+            let clamp = |v: f64| scale.at(v).clamp(SCALE_LEFT, SCALE_RIGHT);
+            let (left, right) = (clamp(self.value - expanded), clamp(self.value + expanded));
+            sheet.line((left, y), (right, y), bar)?;
+            for x in [left, right] {
+                sheet.line((x, y - 7.0), (x, y + 7.0), bar)?;
+            }
+        }
+        sheet.marker((scale.at(self.value), y), 5.0, self.marker, POWER)
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn a_shared_scale_stays_within_its_limits() {
+        let far = Mark {
+            value: 1e9,
+            expanded: 1.0,
+            marker: Marker::Disc,
+        };
+        let rows = Rows {
+            head: "",
+            beside: String::new(),
+            axis: "",
+            reference: (100.0, Stroke::solid(INK, 1.0)),
+            least: (75.0, 125.0),
+            limit: (-50.0, 300.0),
+            rows: vec![Row {
+                name: String::new(),
+                band: None,
+                marks: vec![far],
+                numbers: String::new(),
+                outcomes: Vec::new(),
+            }],
+            nothing: "",
+        };
+        let scale = rows.scale();
+        assert_eq!(scale.high, 300.0);
+        assert!(scale.low < 75.0 && scale.holds(100.0));
+    }
+}
