@@ -14,7 +14,8 @@ pub fn fixed(value: f64, places: usize) -> String {
     signed(format!("{value:.places$}"))
 }
 
-/// `value` to at most `digits` significant digits, trailing zeros dropped.
+/// `value` to `digits` significant digits, or whole where it has more; trailing zeros
+/// dropped.
 pub fn short(value: f64, digits: usize) -> String {
     if !value.is_finite() {
         return "?".to_owned();
@@ -98,7 +99,7 @@ mod tests {
             (0.11, "0.11"),
             (-0.0, "0"),
             (-1.5, "−1.5"),
-            (123456.0, "123500"),
+            (123456.7, "123457"),
             (1.25e9, "1.25e9"),
             (2.5e-7, "2.5e−7"),
             (f64::NAN, "?"),
