@@ -28,6 +28,18 @@ impl Outcome {
             Outcome::NotJudged => "not judged",
         }
     }
+
+    /// How much it weighs in a verdict: 0 for a pass up to 4 for a fail. What is not
+    /// judged outweighs a conditional fail, because it could be a fail.
+    pub fn rank(self) -> u8 {
+        match self {
+            Outcome::Pass => 0,
+            Outcome::ConditionalPass => 1,
+            Outcome::ConditionalFail => 2,
+            Outcome::NotJudged => 3,
+            Outcome::Fail => 4,
+        }
+    }
 }
 
 /// One rule's outcome.
@@ -63,6 +75,13 @@ pub struct Finding {
     pub source: String,
     /// Why, in one sentence: the reason for `not judged`, or what a fail means.
     pub reason: String,
+}
+
+impl Finding {
+    /// The unit of a difference: a margin of temperatures is in kelvins.
+    pub fn margin_unit(&self) -> &str {
+        if self.unit == "°C" { "K" } else { &self.unit }
+    }
 }
 
 /// The whole unit's outcome.

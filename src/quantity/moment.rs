@@ -76,6 +76,11 @@ impl Seconds {
         Self::new(s).expect("a duration is finite and not negative")
     }
 
+    /// A whole number of seconds, for constants.
+    pub const fn whole(s: u32) -> Self {
+        Seconds(s as f64)
+    }
+
     /// The number of seconds.
     pub fn get(self) -> f64 {
         self.0

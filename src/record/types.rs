@@ -171,6 +171,8 @@ pub enum StepEnd {
     Settled,
     /// Its time limit came first.
     TimeLimit,
+    /// The current vanished while energised.
+    WentOpen,
     /// It was cut short.
     Cut,
 }
@@ -185,6 +187,9 @@ pub enum RunOutcome {
     Tripped {
         /// Which.
         reason: String,
+        /// Whether it speaks about the unit (temperature, input, current) or about
+        /// the bench (silence, a sensor that can't be believed).
+        speaks_of: TripOf,
     },
     /// The operator stopped it.
     Stopped,
@@ -195,6 +200,16 @@ pub enum RunOutcome {
     },
     /// It was found open and was closed afterwards.
     Interrupted,
+}
+
+/// What a trip is evidence of.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(rename_all = "kebab-case")]
+pub enum TripOf {
+    /// The unit: it was too hot, or drew too much.
+    Unit,
+    /// The bench: an instrument was silent, or a sensor can't be believed.
+    Bench,
 }
 
 /// An event and when.

@@ -93,8 +93,8 @@ pub struct Settle {
 }
 
 impl Settle {
-    /// Watches a soak by `criterion`, not before `at_least` after `energised`,
-    /// polled `every` so often; `cycling` where a thermostat is declared.
+    /// Watches a soak by `criterion`, not before `at_least` after `energised` (the
+    /// moment at which energising was announced), polled `every` so often; `cycling` where a thermostat is declared.
     pub fn new(
         criterion: &Criterion,
         at_least: Seconds,

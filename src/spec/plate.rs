@@ -1,10 +1,13 @@
 //! Power input bands of IEC 60335-1 clause 10.1, by kind and rating.
 
 use super::sequence::{ApplianceKind, Span};
-use crate::quantity::Watts;
+use crate::quantity::{Volts, Watts, at_most, near};
 
 /// Where the bands come from, as it is printed beside a limit.
 pub const SOURCE: &str = "IEC 60335-1 clause 10.1";
+
+/// A marked voltage range wider than this share of its mean is judged at both ends.
+const WIDE_RANGE: f64 = 0.1;
 
 /// What clause 10.1 allows at rated voltage in normal operation; both ends inclusive.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -31,6 +34,42 @@ pub fn limits(kind: ApplianceKind, rated: Span<Watts>) -> PowerBand {
     }
 }
 
+/// A voltage at which the plate's promise is judged, and the input promised there.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct PlatePoint {
+    /// The voltage.
+    pub voltage: Volts,
+    /// Rated input at it.
+    pub rated: Span<Watts>,
+}
+
+/// At which voltages a plate entry is judged: a rated voltage at itself; a range
+/// wider than 10 % of its mean at both ends; a narrower one at its mean, unless
+/// the input is marked for both ends (IEC 60335-1 clause 10.1, from memory).
+pub fn points(voltage: Span<Volts>, power: Span<Watts>) -> Vec<PlatePoint> {
+    let (low, high) = (voltage.low.get(), voltage.high.get());
+    let mean = 0.5 * (low + high);
+    let whole = |volts: f64| PlatePoint {
+        voltage: Volts::of(volts),
+        rated: power,
+    };
+    if near(low, high) {
+        return vec![whole(low)];
+    }
+    let marked_for_both = power.low != power.high;
+    if at_most(high - low, WIDE_RANGE * mean) && !marked_for_both {
+        return vec![whole(mean)];
+    }
+    let end = |voltage: Volts, rated: Watts| PlatePoint {
+        voltage,
+        rated: Span {
+            low: rated,
+            high: rated,
+        },
+    };
+    vec![end(voltage.low, power.low), end(voltage.high, power.high)]
+}
+
 fn lower(kind: ApplianceKind, rated: f64) -> Option<f64> {
     match kind {
         ApplianceKind::MotorOperated => None,
@@ -53,7 +92,7 @@ fn upper(kind: ApplianceKind, rated: f64) -> f64 {
 #[cfg(test)]
 mod tests {
     use super::*;
-    use crate::quantity::{at_least, at_most, near};
+    use crate::quantity::at_least;
 
     fn band(kind: ApplianceKind, rated: f64) -> (Option<f64>, f64) {
         let rated = Watts::of(rated);
@@ -107,6 +146,32 @@ mod tests {
         }
         let low = band(ApplianceKind::Heating, 26.0).0;
         assert!(low.is_some_and(|low| at_least(23.4, low)));
+    }
+
+    fn judged_at(voltage: (f64, f64), power: (f64, f64)) -> Vec<(f64, f64, f64)> {
+        let voltage = Span {
+            low: Volts::of(voltage.0),
+            high: Volts::of(voltage.1),
+        };
+        let power = Span {
+            low: Watts::of(power.0),
+            high: Watts::of(power.1),
+        };
+        let flat = |p: PlatePoint| (p.voltage.get(), p.rated.low.get(), p.rated.high.get());
+        points(voltage, power).into_iter().map(flat).collect()
+    }
+
+    // IEC 60335-1 clause 10.1, from memory.
+    #[test]
+    fn the_voltages_at_which_a_plate_is_judged() {
+        assert_eq!(judged_at((230.0, 230.0), (9.0, 9.0)), [(230.0, 9.0, 9.0)]);
+        assert_eq!(judged_at((220.0, 240.0), (9.0, 9.0)), [(230.0, 9.0, 9.0)]);
+        let marked = [(220.0, 920.0, 920.0), (240.0, 1100.0, 1100.0)];
+        assert_eq!(judged_at((220.0, 240.0), (920.0, 1100.0)), marked);
+        let wide = [(100.0, 9.0, 9.0), (240.0, 9.0, 9.0)];
+        assert_eq!(judged_at((100.0, 240.0), (9.0, 9.0)), wide);
+        // 209..231 V is exactly 10 % of its mean: not wider.
+        assert_eq!(judged_at((209.0, 231.0), (9.0, 9.0)), [(220.0, 9.0, 9.0)]);
     }
 
     #[test]

@@ -1,2 +1,16 @@
-//! x
-fn main() {}
+//! Every integration test, one module per subject.
+
+#![forbid(unsafe_code)]
+
+mod bad_input;
+mod bench_of_tests;
+mod disk;
+mod faults;
+mod judging;
+mod readme;
+mod rehearsal;
+#[cfg(unix)]
+mod serial;
+mod shipped;
+mod tidy;
+mod ways_out;

@@ -1,0 +1,516 @@
+//! Analysis of played records with a known truth.
+
+use super::fixture::{BODY, METER, Now, Played, Seen, good, noise, plan, play, play_until};
+use super::*;
+use crate::plan::{Action, Plan};
+use crate::quantity::{Kelvins, Reading, Readings, Seconds, Volts};
+use crate::record::Status;
+use crate::spec::sequence::MeasuredAt;
+
+fn near(found: f64, wanted: f64, by: f64) {
+    assert!(
+        (found - wanted).abs() <= by,
+        "{found} is not {wanted} ± {by}"
+    );
+}
+
+fn first(played: &Played) -> CellResult {
+    played.analysis().cells.into_iter().next().unwrap()
+}
+
+/// The rows of one role of a played record, changed.
+fn changed(mut played: Played, role: usize, change: impl Fn(&mut crate::record::Sample)) -> Played {
+    for row in played.samples.iter_mut().filter(|row| row.role == role) {
+        change(row);
+    }
+    played
+}
+
+fn degrees(value: f64) -> Readings {
+    Readings::one(Reading::Temperature, value)
+}
+
+#[test]
+fn a_good_unit_is_measured_as_it_is() {
+    let analysis = play(plan(&["full"]), good).analysis();
+    for (cell, watts, rise) in [(0, 4.3, 40.0), (1, 8.6, 60.0)] {
+        let result = &analysis.cells[cell];
+        assert_eq!(result.disbelief, Vec::<String>::new());
+        assert!(
+            result.cold_start.known().is_some(),
+            "{:?}",
+            result.cold_start
+        );
+        let steady = result.steady.known().unwrap();
+        near(steady.power_w.value, watts, 0.005);
+        assert!(
+            (0.01..0.1).contains(&steady.power_w.expanded),
+            "{:?}",
+            steady.power_w
+        );
+        assert!((1.9..2.2).contains(&steady.power_w.coverage));
+        assert_eq!((steady.duty, steady.samples), (1.0, 120));
+        near(steady.to_s - steady.from_s, 119.0, 0.01);
+        let settled = *result.settled_s.known().unwrap();
+        assert!((600.0..1200.0).contains(&settled), "{settled}");
+        let peak = result.body_peak.known().unwrap();
+        near(peak.temperature_degc.value, 23.0 + rise, 0.8);
+        // Scanner: 0.1 % of reading + 1 K, rectangular, k = 2 (computed).
+        near(
+            peak.temperature_degc.expanded,
+            1.06 / 3f64.sqrt() * 2.0,
+            0.05,
+        );
+        near(result.body_worst.known().unwrap().value, 35.0 + rise, 0.8);
+        near(result.rises[0].1.known().unwrap().value, 0.3 * rise, 0.5);
+        let drawn = result.drawn.known().unwrap();
+        assert_eq!((drawn.floor_w, drawn.vanished_s), (0.005, None));
+    }
+}
+
+#[test]
+fn the_budget_adds_up_and_its_largest_share_comes_first() {
+    let played = play(plan(&["full"]), good);
+    let power = first(&played).steady.known().unwrap().power_w.clone();
+    let squares: f64 = power.budget.iter().map(|s| s.standard * s.standard).sum();
+    near(power.coverage * squares.sqrt(), power.expanded, 1e-9);
+    assert!(
+        power
+            .budget
+            .windows(2)
+            .all(|p| p[0].standard >= p[1].standard)
+    );
+    assert!(
+        power.budget[0].from.starts_with("accuracy, power"),
+        "{:?}",
+        power.budget
+    );
+    // 0.1 % of 4.3 W + 0.1 % of the 15 W range + 5 mW, rectangular (computed).
+    near(power.budget[0].standard, 0.0243 / 3f64.sqrt(), 1e-4);
+}
+
+#[test]
+fn inrush_is_measured_from_the_first_current() {
+    let result = first(&play(plan(&["full"]), good));
+    let inrush = result.inrush.known().unwrap();
+    near(inrush.peak_w, 4.3 * 4.0, 0.2);
+    near(inrush.ratio.unwrap(), 4.0, 0.05);
+    near(
+        inrush.half_way_s.unwrap(),
+        15.0 * std::f64::consts::LN_2,
+        0.3,
+    );
+    // 3 x 4.3 W x 15 s (computed).
+    near(
+        inrush.above_steady_wh.unwrap(),
+        3.0 * 4.3 * 15.0 / 3600.0,
+        0.002,
+    );
+    near(inrush.t0_s, result.energised_s.known().unwrap() + 0.0, 0.2);
+    assert_eq!(inrush.lower_bound, Vec::<String>::new());
+    assert_eq!(inrush.supply_limited, None);
+}
+
+#[test]
+fn an_overload_in_the_inrush_makes_it_a_lower_bound() {
+    let mut played = play(plan(&["full"]), good);
+    let row = played
+        .samples
+        .iter_mut()
+        .find(|row| row.role == METER && row.energised)
+        .unwrap();
+    row.status = Status::Overload;
+    row.readings = Readings::NONE;
+    let bounds = first(&played).inrush.known().unwrap().lower_bound.clone();
+    assert!(bounds[0].contains("overload"), "{bounds:?}");
+}
+
+#[test]
+fn a_spike_shorter_than_the_meter_follows_is_a_lower_bound() {
+    let spike = |now: Now| {
+        let mut seen = good(now);
+        if now.on.is_some_and(|on| on < 0.15) {
+            seen.watts = 60.0;
+        }
+        seen
+    };
+    let bounds = first(&play(plan(&["full"]), spike))
+        .inrush
+        .known()
+        .unwrap()
+        .lower_bound
+        .clone();
+    assert!(bounds[0].starts_with("sampled only"), "{bounds:?}");
+}
+
+#[test]
+fn after_heat_counts_and_a_body_that_is_not_followed_is_not_judged() {
+    let climbs = |now: Now| {
+        let mut seen = good(now);
+        if let Some((_, off)) = now.off.filter(|_| now.on.is_none()) {
+            seen.body += 12.0 * (off / 20.0) * libm::exp(1.0 - off / 20.0);
+        }
+        seen
+    };
+    let played = play(plan(&["full"]), climbs);
+    let result = first(&played);
+    let peak = result.body_peak.known().unwrap();
+    assert!(
+        peak.after_heat && peak.temperature_degc.value > 68.0,
+        "{peak:?}"
+    );
+    let mut cut = played.clone();
+    let off = result.off_s.known().unwrap();
+    cut.samples
+        .retain(|row| row.reply.as_secs_f64() < off + 60.0);
+    let result = first(&cut);
+    assert!(result.body_worst.reason().unwrap().contains("followed"));
+    assert!(result.body_peak.known().is_some());
+}
+
+#[test]
+fn off_the_links_body_without_an_allowance_there_is_no_worst_case() {
+    let elsewhere = |allowance: Option<f64>| {
+        let mut plan = plan(&["full"]);
+        plan.appliance.link.as_mut().unwrap().measured_at = MeasuredAt::Elsewhere {
+            place: "the lid".to_owned(),
+            allowance: allowance.map(Kelvins::of),
+            source: None,
+        };
+        first(&play(plan, good)).body_worst
+    };
+    assert!(elsewhere(None).reason().unwrap().contains("no allowance"));
+    near(elsewhere(Some(7.0)).known().unwrap().value, 82.0, 0.8);
+}
+
+#[test]
+fn a_voltage_off_the_wanted_one_is_corrected_widened_and_then_refused() {
+    let at = |volts: f64| {
+        let unit = move |now: Now| {
+            let mut seen = good(now);
+            seen.volts *= volts / 230.0;
+            seen
+        };
+        first(&play(plan(&["full"]), unit)).steady
+    };
+    let exact = at(230.0).known().unwrap().power_w.clone();
+    let beside = at(228.0).known().unwrap().power_w.clone();
+    let far = at(220.0).known().unwrap().power_w.clone();
+    // A PTC in still air: exponent 0..0.3, never V squared.
+    near(far.value / exact.value, (230.0f64 / 220.0).powf(0.15), 1e-3);
+    assert!(exact.expanded < beside.expanded && beside.expanded < far.expanded);
+    assert!(at(215.0).reason().unwrap().contains("not corrected"));
+}
+
+#[test]
+fn more_noise_never_shrinks_the_uncertainty() {
+    let with = |factor: f64| {
+        let unit = move |now: Now| {
+            let mut seen = good(now);
+            if seen.watts > 0.0 {
+                seen.watts += factor * 0.01 * noise(9, now.t);
+            }
+            seen
+        };
+        let result = first(&play(plan(&["full"]), unit));
+        result.steady.known().unwrap().power_w.expanded
+    };
+    let all: Vec<f64> = [0.0, 1.0, 2.0, 4.0].map(with).to_vec();
+    // 1 mW steps of the meter may move the last digit.
+    assert!(
+        all.windows(2).all(|pair| pair[1] >= pair[0] - 1e-4),
+        "{all:?}"
+    );
+}
+
+fn thermostat(now: Now) -> Seen {
+    let mut seen = good(now);
+    let Some(on) = now.on else {
+        return seen;
+    };
+    let phase = (on - 200.0).rem_euclid(120.0);
+    let heating = on < 200.0 || phase > 80.0;
+    seen.watts = if heating {
+        8.0 + 0.004 * noise(2, now.t)
+    } else {
+        0.0
+    };
+    let ripple = if on < 200.0 {
+        0.0
+    } else if heating {
+        (phase - 80.0) / 40.0
+    } else {
+        1.0 - phase / 80.0
+    };
+    seen.body += 4.0 * ripple;
+    seen
+}
+
+#[test]
+fn a_thermostat_has_an_on_state_a_mean_and_a_duty() {
+    let mut plan = plan(&["full"]);
+    plan.appliance.thermostat = true;
+    let result = first(&play(plan, thermostat));
+    let steady = result.steady.known().unwrap();
+    assert!(steady.criterion.contains("cycles"), "{}", steady.criterion);
+    near(steady.power_w.value, 8.0, 0.01);
+    // On 40 s of 120 s (computed).
+    near(steady.duty, 1.0 / 3.0, 0.03);
+    near(steady.mean_w, 8.0 / 3.0, 0.25);
+    assert_eq!(result.drawn.known().unwrap().vanished_s, None);
+}
+
+#[test]
+fn power_that_vanishes_is_told() {
+    let opens = |now: Now| {
+        let mut seen = good(now);
+        if now.on.is_some_and(|on| on > 400.0) {
+            seen.watts = 0.001;
+        }
+        seen
+    };
+    let result = first(&play(plan(&["full"]), opens));
+    near(
+        result.drawn.known().unwrap().vanished_s.unwrap(),
+        401.0,
+        2.5,
+    );
+    assert!(result.steady.reason().unwrap().contains("vanished"));
+}
+
+#[test]
+fn a_soak_that_does_not_settle_leaves_no_steady_input_and_no_worst_case() {
+    let drifts = |now: Now| {
+        let mut seen = good(now);
+        seen.body += 10.0 * now.on.unwrap_or(0.0) / 3600.0;
+        seen
+    };
+    let result = first(&play(plan(&["full"]), drifts));
+    for reason in [
+        result.steady.reason(),
+        result.body_worst.reason(),
+        result.settled_s.reason(),
+    ] {
+        assert!(reason.unwrap().contains("had not settled"), "{reason:?}");
+    }
+    assert!(result.body_peak.known().is_some());
+}
+
+#[test]
+fn sensors_that_lie_are_not_believed() {
+    let check = |played: &Played, word: &str| {
+        let all = first(played).disbelief.join("; ");
+        assert!(all.contains(word), "{word}: {all}");
+    };
+    let good_run = play(plan(&["full"]), good);
+    check(
+        &play(plan(&["full"]), |now| Seen {
+            body: 23.0 + 0.06 * noise(3, now.t),
+            ..good(now)
+        }),
+        "rose by",
+    );
+    check(
+        &play(plan(&["full"]), |now| {
+            let seen = good(now);
+            Seen {
+                body: seen.ambient,
+                ambient: seen.body,
+                ..seen
+            }
+        }),
+        "swapped",
+    );
+    check(
+        &play(plan(&["full"]), |now| Seen {
+            body: good(now).body - 9.0,
+            ..good(now)
+        }),
+        "differed from ambient",
+    );
+    check(
+        &play(plan(&["full"]), |now| {
+            let fallen = now.on.is_some_and(|on| on > 500.0);
+            let seen = good(now);
+            Seen {
+                body: if fallen {
+                    30.0 + 0.06 * noise(3, now.t)
+                } else {
+                    seen.body
+                },
+                ..seen
+            }
+        }),
+        "fell by",
+    );
+    check(
+        &changed(good_run.clone(), BODY, |row| {
+            if row.energised && row.reply.as_secs_f64() > 300.0 {
+                row.readings = degrees(55.5);
+            }
+        }),
+        "to the last digit",
+    );
+    check(
+        &changed(good_run, BODY, |row| {
+            if row.energised {
+                row.status = Status::NoValue;
+                row.readings = Readings::NONE;
+            }
+        }),
+        "hold no value",
+    );
+}
+
+#[test]
+fn a_dead_unit_says_nothing_against_its_sensors() {
+    let dead = |now: Now| Seen {
+        watts: 0.0,
+        body: 23.0 + 0.06 * noise(3, now.t),
+        enclosure: 23.0,
+        ..good(now)
+    };
+    let result = first(&play(plan(&["full"]), dead));
+    assert_eq!(result.disbelief, Vec::<String>::new());
+    assert_eq!(result.drawn.known().unwrap().power_w, 0.0);
+}
+
+#[test]
+fn a_warm_start_is_no_cold_start() {
+    let warm = |now: Now| {
+        let mut seen = good(now);
+        if now.cell.is_none() {
+            seen.body += 6.0;
+        }
+        seen
+    };
+    let result = first(&play(plan(&["full"]), warm));
+    assert!(
+        result.cold_start.reason().unwrap().contains("6"),
+        "{:?}",
+        result.cold_start
+    );
+}
+
+#[test]
+fn cells_that_were_not_run_say_why() {
+    let stopped = play_until(plan(&["full"]), good, |step, _| {
+        (step.cell == Some(0) && matches!(step.action, Action::Measure(_)))
+            .then_some(RunOutcome::Stopped)
+    });
+    let analysis = stopped.analysis();
+    // The soak had settled: its own window stands.
+    let steady = analysis.cells[0].steady.known().unwrap();
+    near(steady.to_s - steady.from_s, 298.0, 3.0);
+    let second = &analysis.cells[1];
+    assert_eq!(
+        second.energised_s.reason(),
+        Some("not run: the operator stopped the run before")
+    );
+    for reason in [
+        second.off_s.reason(),
+        second.cold_start.reason(),
+        second.inrush.reason(),
+        second.drawn.reason(),
+        second.settled_s.reason(),
+        second.steady.reason(),
+        second.body_peak.reason(),
+        second.body_worst.reason(),
+        second.rises[0].1.reason(),
+    ] {
+        assert!(!reason.unwrap().is_empty());
+    }
+}
+
+#[test]
+fn an_empty_record_is_analysed_without_a_panic() {
+    let plan = plan(&["full"]);
+    let analysis = analyse(&Input {
+        plan: &plan,
+        samples: &[],
+        happenings: &[],
+        outcome: &RunOutcome::Interrupted,
+    });
+    assert_eq!(analysis.cells.len(), 2);
+    assert!(
+        analysis
+            .cells
+            .iter()
+            .all(|cell| cell.steady.reason().is_some())
+    );
+}
+
+#[test]
+fn calibration_is_interpolated_and_applied_once() {
+    let mut plan = plan(&["full"]);
+    let points = &mut plan.instruments[1].calibration;
+    // 5 W -> +0.1 W, 50 W -> +1 W; at 8.6 W: 0.1 + 0.9 x 3.6/45 (computed).
+    (points[0].correction, points[1].correction) = (0.1, 1.0);
+    let result = play(plan, good).analysis().cells.swap_remove(1);
+    near(
+        result.steady.known().unwrap().power_w.value,
+        8.6 + 0.172,
+        0.005,
+    );
+}
+
+#[test]
+fn a_driver_without_accuracy_leaves_nothing_to_judge() {
+    let mut plan = plan(&["full"]);
+    plan.instruments[1].driver.accuracy.clear();
+    let result = first(&play(plan, good));
+    for reason in [result.steady.reason(), result.inrush.reason()] {
+        assert!(reason.unwrap().contains("no accuracy"), "{reason:?}");
+    }
+}
+
+fn diode_plan() -> Plan {
+    let mut plan = plan(&["full"]);
+    plan.appliance.element = HeatingElement::Resistor;
+    plan.appliance.diode_in = vec!["low".to_owned()];
+    plan
+}
+
+// Half-wave resistive load, current peak A: RMS A/2, factor 1/sqrt(2); a meter that
+// loses the DC part reads 0.38559 A instead of 0.5 A and shows 0.917 (computed).
+#[test]
+fn a_meter_that_loses_the_dc_part_is_noted() {
+    let with = |amps_for_full: f64| {
+        let played = play(diode_plan(), good);
+        let volts_rms = 230.0;
+        // P = V I / sqrt(2) with the true RMS current of the half wave.
+        changed(played, METER, |row| {
+            if let Some(watts) = row.readings.get(Reading::Power) {
+                let true_amps = watts * std::f64::consts::SQRT_2 / volts_rms;
+                row.readings
+                    .set(Reading::Current, true_amps * amps_for_full / 0.5);
+            }
+        })
+        .analysis()
+        .notes
+    };
+    assert_eq!(with(0.5), Vec::<String>::new());
+    let notes = with(0.385_59);
+    assert_eq!(notes.len(), 1);
+    assert!(notes[0].contains("0.917"), "{}", notes[0]);
+}
+
+#[test]
+fn the_plate_voltage_that_a_cell_is_for() {
+    let mut plan = plan(&["full"]);
+    let point = plate_point(&plan, &plan.cells[0]).unwrap();
+    assert_eq!(
+        (point.voltage, point.rated.low.get()),
+        (Volts::of(230.0), 4.5)
+    );
+    let mut cell = plan.cells[0].clone();
+    cell.supply.voltage = Volts::of(253.0);
+    assert_eq!(plate_point(&plan, &cell), None);
+    cell = plan.cells[0].clone();
+    cell.supply.frequency = crate::quantity::Hertz::of(60.0);
+    assert_eq!(plate_point(&plan, &cell), None);
+    plan.appliance.plate[0].element = Some("A".to_owned());
+    assert_eq!(plate_point(&plan, &plan.cells[0]), None);
+    assert!(plate_points(&plan, "low").is_empty());
+    assert!(Seconds::new(1.0).is_some());
+}

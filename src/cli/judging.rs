@@ -1,0 +1,174 @@
+//! Judging a closed record: read, analyse, judge, draw, and write an annex.
+
+use std::path::{Path, PathBuf};
+
+use super::exit::Exit;
+use super::say::{complain, say};
+use super::table::verdict_table;
+use crate::analysis::{self, Analysis};
+use crate::chart::{self, Scene};
+use crate::judge::{self, Judgement};
+use crate::record::{Folder, RecordError, RunOutcome, newest_judgement, write_judgement};
+
+/// Why a record could not be judged.
+#[derive(Debug, thiserror::Error)]
+pub enum JudgingError {
+    /// It can't be read.
+    #[error(transparent)]
+    Record(#[from] RecordError),
+    /// The judgement can't be written.
+    #[error("{}: the judgement can't be written: {source}", record.display())]
+    Write {
+        /// The record.
+        record: PathBuf,
+        /// Why.
+        source: std::io::Error,
+    },
+    /// A chart can't be drawn.
+    #[error("the charts can't be drawn: {0}")]
+    Draw(#[from] chart::DrawError),
+}
+
+/// A record that was judged.
+#[derive(Debug)]
+pub struct Judged {
+    /// The record.
+    pub folder: Folder,
+    /// Its analysis.
+    pub analysis: Analysis,
+    /// Its judgement.
+    pub judgement: Judgement,
+    /// The annex that was written.
+    pub annex: PathBuf,
+    /// The verdict of the judgement before, where there is one.
+    pub before: Option<Judgement>,
+}
+
+/// Judges the record at `path` from what the folder holds, and writes the judgement
+/// beside the others.
+///
+/// # Errors
+/// [`JudgingError`]; a record that was never closed is not judged.
+pub fn judge_record(path: &Path) -> Result<Judged, JudgingError> {
+    let folder = Folder::open(path)?;
+    let analysis = analysis::analyse(&analysis::Input {
+        plan: &folder.plan,
+        samples: &folder.samples,
+        happenings: &folder.happenings,
+        outcome: &folder.manifest.outcome,
+    });
+    let judgement = judge::judge(&folder.plan, &folder.manifest.outcome, &analysis);
+    let before = newest_judgement(path, "judgement.json")
+        .ok()
+        .flatten()
+        .and_then(|(_, bytes)| serde_json::from_slice(&bytes).ok());
+    let annex = write_annex(&folder, &analysis, &judgement)?;
+    Ok(Judged {
+        folder,
+        analysis,
+        judgement,
+        annex,
+        before,
+    })
+}
+
+fn write_annex(
+    folder: &Folder,
+    analysis: &Analysis,
+    judgement: &Judgement,
+) -> Result<PathBuf, JudgingError> {
+    let virtual_bench = folder.manifest.virtual_bench.clone();
+    let scene = Scene {
+        plan: &folder.plan,
+        analysis,
+        judgement,
+        samples: &folder.samples,
+        unit: &folder.manifest.unit,
+        virtual_bench: virtual_bench.is_some(),
+    };
+    let mut files: Vec<(String, Vec<u8>)> = chart::draw(&scene)?
+        .into_iter()
+        .map(|p| (p.name, p.png))
+        .collect();
+    let failed = |source| JudgingError::Write {
+        record: folder.path().to_owned(),
+        source,
+    };
+    let json =
+        |bytes: serde_json::Result<Vec<u8>>| bytes.map_err(|e| failed(std::io::Error::other(e)));
+    files.push((
+        "analysis.json".to_owned(),
+        json(serde_json::to_vec_pretty(analysis))?,
+    ));
+    files.push((
+        "judgement.json".to_owned(),
+        json(serde_json::to_vec_pretty(judgement))?,
+    ));
+    let csv =
+        |bytes: Result<Vec<u8>, csv::Error>| bytes.map_err(|e| failed(std::io::Error::other(e)));
+    files.push((
+        "results.csv".to_owned(),
+        csv(analysis::results_csv(analysis))?,
+    ));
+    files.push((
+        "findings.csv".to_owned(),
+        csv(judge::findings_csv(judgement))?,
+    ));
+    write_judgement(folder.path(), virtual_bench, folder.seal()?, &files).map_err(failed)
+}
+
+/// `judge`: the table, what changed since the judgement before, the exit code.
+pub fn judge_again(path: &Path) -> Exit {
+    match judge_record(path) {
+        Ok(judged) => {
+            print_judged(&judged);
+            exit_of(&judged)
+        }
+        Err(error) => {
+            complain(&format!("error: {error}"));
+            Exit::Record
+        }
+    }
+}
+
+/// Prints the verdict table and where everything is.
+pub fn print_judged(judged: &Judged) {
+    say(&verdict_table(
+        &judged.folder,
+        &judged.analysis,
+        &judged.judgement,
+    ));
+    if let Some(before) = &judged.before {
+        say(&compared(before, &judged.judgement));
+    }
+    say(&format!("record     {}", judged.folder.path().display()));
+    say(&format!("judgement  {}", judged.annex.display()));
+}
+
+fn compared(before: &Judgement, now: &Judgement) -> String {
+    if before == now {
+        return "the same as the judgement before, finding by finding".to_owned();
+    }
+    let changed = now
+        .findings
+        .iter()
+        .filter(|finding| !before.findings.contains(finding))
+        .count();
+    format!(
+        "the judgement before said {}, this one says {}; {changed} of {} findings differ",
+        before.verdict.word(),
+        now.verdict.word(),
+        now.findings.len()
+    )
+}
+
+/// The verdict's code; a run that was cut short without a fail says so.
+pub fn exit_of(judged: &Judged) -> Exit {
+    match (
+        Exit::of(judged.judgement.verdict),
+        &judged.folder.manifest.outcome,
+    ) {
+        (Exit::NotJudged, outcome) if *outcome != RunOutcome::Complete => Exit::CutShort,
+        (exit, _) => exit,
+    }
+}

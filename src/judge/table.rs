@@ -1,0 +1,65 @@
+//! `findings.csv`: a row per finding.
+
+use super::types::{Finding, Judgement};
+use crate::quantity::shortest;
+use crate::record::defused;
+use crate::spec::sequence::RuleWeight;
+
+const HEAD: [&str; 15] = [
+    "rule",
+    "condition",
+    "position",
+    "supply",
+    "weight",
+    "outcome",
+    "value",
+    "expanded_u",
+    "unit",
+    "at_least",
+    "at_most",
+    "margin",
+    "probability",
+    "source",
+    "reason",
+];
+
+/// `findings.csv` in bytes; the unit of value, U, limits and margin stands beside them.
+///
+/// # Errors
+/// Where a row can't be formed.
+pub fn findings_csv(judgement: &Judgement) -> Result<Vec<u8>, csv::Error> {
+    let mut writer = csv::Writer::from_writer(Vec::new());
+    writer.write_record(HEAD)?;
+    for finding in &judgement.findings {
+        writer.write_record(row(finding))?;
+    }
+    writer
+        .into_inner()
+        .map_err(|e| csv::Error::from(e.into_error()))
+}
+
+fn row(finding: &Finding) -> [String; 15] {
+    let number = |value: Option<f64>| value.map_or_else(String::new, shortest);
+    let text = |value: &Option<String>| defused(value.as_deref().unwrap_or(""));
+    let weight = match finding.weight {
+        RuleWeight::Required => "required",
+        RuleWeight::Information => "information",
+    };
+    [
+        defused(&finding.rule),
+        text(&finding.condition),
+        text(&finding.position),
+        text(&finding.supply),
+        weight.to_owned(),
+        finding.outcome.word().to_owned(),
+        number(finding.value),
+        number(finding.expanded),
+        defused(&finding.unit),
+        number(finding.at_least),
+        number(finding.at_most),
+        number(finding.margin),
+        number(finding.probability),
+        defused(&finding.source),
+        defused(&finding.reason),
+    ]
+}

@@ -1,0 +1,547 @@
+//! Verdicts of played records.
+
+use super::*;
+use crate::analysis::fixture::{Now, Played, Seen, good, noise, plan, play, play_until, rule};
+use crate::plan::{Action, PlannedRule};
+use crate::quantity::{Amps, Celsius, Kelvins, Volts};
+use crate::record::{Event, Sample, TripOf};
+use crate::spec::sequence::{Decision, FindingClass, RuleKind};
+
+fn judged(played: &Played) -> Judgement {
+    judge(&played.plan, &played.outcome, &played.analysis())
+}
+
+fn find<'a>(judgement: &'a Judgement, rule: &str, position: Option<&str>) -> &'a Finding {
+    judgement
+        .findings
+        .iter()
+        .find(|f| {
+            f.rule.starts_with(rule) && (position.is_none() || f.position.as_deref() == position)
+        })
+        .unwrap_or_else(|| panic!("no finding {rule} {position:?}: {:#?}", judgement.findings))
+}
+
+fn assert_reasons(judgement: &Judgement) {
+    for finding in &judgement.findings {
+        assert!(!finding.reason.is_empty(), "{finding:?}");
+    }
+    assert!(!judgement.because.is_empty());
+}
+
+/// A run with one rule only.
+fn with_rule(rule: PlannedRule, unit: impl Fn(Now) -> Seen) -> Judgement {
+    let mut plan = plan(&["full"]);
+    plan.rules = vec![rule];
+    judged(&play(plan, unit))
+}
+
+#[test]
+fn a_good_unit_passes() {
+    let judgement = judged(&play(plan(&["full", "dry"]), good));
+    assert_eq!(judgement.verdict, Outcome::Pass, "{}", judgement.because);
+    assert_reasons(&judgement);
+    for rule in [
+        "works at all",
+        "sensors believable",
+        "power against the plate",
+        "thermal link, holding",
+        "thermal link, earliest",
+        "inrush",
+        "order of positions",
+        "temperature rise, enclosure",
+        "Is the plate legible?",
+    ] {
+        assert_eq!(
+            find(&judgement, rule, None).outcome,
+            Outcome::Pass,
+            "{rule}"
+        );
+    }
+    let power = find(&judgement, "power against", Some("high"));
+    assert_eq!(power.at_least, None);
+    assert!((power.at_most.unwrap() - 10.8).abs() < 1e-9);
+    assert!((power.margin.unwrap() - 2.2).abs() < 0.02);
+}
+
+#[test]
+fn the_worst_condition_is_reported_and_named() {
+    let unit = |now: Now| {
+        let mut seen = good(now);
+        if now.cell.is_some_and(|cell| cell >= 2) && now.on.is_some() {
+            seen.watts *= 1.05;
+        }
+        seen
+    };
+    let judgement = judged(&play(plan(&["full", "dry"]), unit));
+    let power = find(&judgement, "power against", Some("high"));
+    assert_eq!(power.condition.as_deref(), Some("dry"));
+    let of_rule = |f: &&Finding| f.rule.starts_with("power against");
+    assert_eq!(judgement.findings.iter().filter(of_rule).count(), 2);
+}
+
+#[test]
+fn a_rule_for_one_condition_or_position_judges_only_that() {
+    let mut only = rule(RuleKind::PlatePower);
+    only.position = Some("low".to_owned());
+    only.condition = Some("dry".to_owned());
+    let mut plan = plan(&["full", "dry"]);
+    plan.rules = vec![only.clone()];
+    let judgement = judged(&play(plan.clone(), good));
+    let found: Vec<&Finding> = judgement
+        .findings
+        .iter()
+        .filter(|f| f.rule.starts_with("power"))
+        .collect();
+    assert_eq!(found.len(), 1);
+    assert_eq!(found[0].condition.as_deref(), Some("dry"));
+    only.condition = Some("upside down".to_owned());
+    plan.rules = vec![only];
+    let judgement = judged(&play(plan, good));
+    assert_eq!(find(&judgement, "power", None).outcome, Outcome::NotJudged);
+    assert_eq!(judgement.verdict, Outcome::NotJudged);
+}
+
+#[test]
+fn a_unit_that_draws_too_much_fails() {
+    let judgement = judged(&play(plan(&["full"]), |now| {
+        let seen = good(now);
+        Seen {
+            watts: seen.watts * 1.4,
+            ..seen
+        }
+    }));
+    assert_eq!(judgement.verdict, Outcome::Fail);
+    assert_eq!(
+        find(&judgement, "power against", Some("high")).outcome,
+        Outcome::Fail
+    );
+    assert!(
+        judgement.because.contains("power against the plate"),
+        "{}",
+        judgement.because
+    );
+}
+
+#[test]
+fn a_dead_unit_does_not_pass() {
+    let judgement = judged(&play(plan(&["full"]), |now| Seen {
+        watts: 0.0,
+        body: 23.0 + 0.06 * noise(3, now.t),
+        enclosure: 23.0,
+        ..good(now)
+    }));
+    assert_eq!(judgement.verdict, Outcome::Fail);
+    let works = find(&judgement, "works at all", Some("low"));
+    assert_eq!(works.outcome, Outcome::Fail);
+    // A tenth of 4.5 W (house default).
+    assert!((works.at_least.unwrap() - 0.45).abs() < 1e-9);
+    assert_reasons(&judgement);
+}
+
+#[test]
+fn a_link_that_opens_mid_soak_fails() {
+    let judgement = judged(&play(plan(&["full"]), |now| {
+        let seen = good(now);
+        let open = now.on.is_some_and(|on| on > 400.0) && now.position == "high";
+        Seen {
+            watts: if open { 0.0 } else { seen.watts },
+            ..seen
+        }
+    }));
+    let works = find(&judgement, "works at all", Some("high"));
+    assert_eq!(works.outcome, Outcome::Fail);
+    assert!(works.reason.contains("vanished"), "{}", works.reason);
+    assert_eq!(
+        find(&judgement, "works at all", Some("low")).outcome,
+        Outcome::Pass
+    );
+}
+
+#[test]
+fn swapped_positions_are_found() {
+    let judgement = judged(&play(plan(&["full"]), |now| {
+        let position = if now.position == "low" { "high" } else { "low" };
+        good(Now { position, ..now })
+    }));
+    let order = find(&judgement, "order of positions, low before high", None);
+    assert_eq!(order.outcome, Outcome::Fail);
+    assert!((order.value.unwrap() + 4.3).abs() < 0.02);
+    assert_eq!(judgement.verdict, Outcome::Fail);
+}
+
+#[test]
+fn doubtful_sensors_leave_the_thermal_findings_unjudged() {
+    let judgement = judged(&play(plan(&["full"]), |now| Seen {
+        body: 23.0 + 0.06 * noise(3, now.t),
+        ..good(now)
+    }));
+    assert_eq!(judgement.verdict, Outcome::NotJudged);
+    for rule in [
+        "sensors believable",
+        "thermal link, holding",
+        "thermal link, earliest",
+        "temperature rise",
+    ] {
+        let finding = find(&judgement, rule, None);
+        assert_eq!(finding.outcome, Outcome::NotJudged, "{rule}");
+        assert!(finding.reason.contains("rose by"), "{}", finding.reason);
+    }
+    assert_eq!(
+        find(&judgement, "power against", None).outcome,
+        Outcome::Pass
+    );
+}
+
+/// A unit whose settled body in position high rises by `rise` K.
+fn hot(rise: f64) -> impl Fn(Now) -> Seen {
+    move |now| {
+        let mut seen = good(now);
+        if now.position == "high" {
+            seen.body = seen.ambient + (seen.body - seen.ambient) * rise / 60.0;
+        }
+        seen
+    }
+}
+
+#[test]
+fn the_link_is_judged_at_the_highest_ambient() {
+    // At 35 °C ambient: 35 + rise against Th 100 °C with U about 1.3 K (computed).
+    for (rise, outcome) in [
+        (60.0, Outcome::Pass),
+        (64.2, Outcome::ConditionalPass),
+        (65.5, Outcome::ConditionalFail),
+        (70.0, Outcome::Fail),
+    ] {
+        let judgement = with_rule(rule(RuleKind::LinkHolding), hot(rise));
+        let holding = find(&judgement, "thermal link, holding", Some("high"));
+        assert_eq!(holding.outcome, outcome, "{rise}: {holding:?}");
+        assert_eq!(judgement.verdict, outcome);
+    }
+}
+
+#[test]
+fn a_link_without_its_data_sheets_temperature_is_not_judged() {
+    let mut plan = plan(&["full"]);
+    plan.appliance.link.as_mut().unwrap().th = None;
+    let judgement = judged(&play(plan.clone(), good));
+    let holding = find(&judgement, "thermal link, holding", None);
+    assert_eq!(holding.outcome, Outcome::NotJudged);
+    plan.appliance.link = None;
+    let judgement = judged(&play(plan, good));
+    assert_eq!(
+        find(&judgement, "thermal link, earliest", None).outcome,
+        Outcome::NotJudged
+    );
+}
+
+#[test]
+fn a_body_that_trips_the_guard_fails_and_leaves_the_rest_unjudged() {
+    let played = play_until(plan(&["full"]), hot(100.0), |step, _| {
+        let high = step.cell == Some(1);
+        (high && matches!(step.action, Action::Measure(_))).then(|| RunOutcome::Tripped {
+            reason: "body 111.2 °C, limit 111 °C".to_owned(),
+            speaks_of: TripOf::Unit,
+        })
+    });
+    let judgement = judged(&played);
+    assert_eq!(
+        find(&judgement, "guard tripped", None).outcome,
+        Outcome::Fail
+    );
+    assert_eq!(judgement.verdict, Outcome::Fail);
+    // What was seen alone lies above Th.
+    let holding = find(&judgement, "thermal link, holding", Some("high"));
+    assert_eq!(holding.outcome, Outcome::Fail);
+    assert_reasons(&judgement);
+}
+
+#[test]
+fn another_trip_judges_nothing() {
+    let played = play_until(plan(&["full"]), good, |step, _| {
+        (step.cell == Some(1)).then(|| RunOutcome::Tripped {
+            reason: "meter silent for 2 s".to_owned(),
+            speaks_of: TripOf::Bench,
+        })
+    });
+    let judgement = judged(&played);
+    assert_eq!(
+        find(&judgement, "guard tripped", None).outcome,
+        Outcome::NotJudged
+    );
+    assert_eq!(
+        find(&judgement, "power against", Some("low")).outcome,
+        Outcome::Pass
+    );
+    assert_eq!(
+        find(&judgement, "power against", Some("high")).outcome,
+        Outcome::NotJudged
+    );
+    assert_eq!(judgement.verdict, Outcome::NotJudged);
+    assert_reasons(&judgement);
+}
+
+#[test]
+fn a_run_that_is_not_complete_never_passes_and_still_fails() {
+    for outcome in [
+        RunOutcome::Stopped,
+        RunOutcome::Interrupted,
+        RunOutcome::Failed {
+            reason: "meter lost".to_owned(),
+        },
+        RunOutcome::Tripped {
+            reason: "input".to_owned(),
+            speaks_of: TripOf::Bench,
+        },
+    ] {
+        let mut played = play(plan(&["full"]), good);
+        played.outcome = outcome.clone();
+        let judgement = judged(&played);
+        assert_eq!(judgement.verdict, Outcome::NotJudged, "{outcome:?}");
+        assert_reasons(&judgement);
+        let mut played = play(plan(&["full"]), |now| {
+            let seen = good(now);
+            Seen {
+                watts: seen.watts * 1.5,
+                ..seen
+            }
+        });
+        played.outcome = outcome;
+        assert_eq!(judged(&played).verdict, Outcome::Fail);
+    }
+}
+
+#[test]
+fn inrush_is_judged_only_from_a_cold_start() {
+    let limit = RuleKind::Inrush {
+        at_most: Amps::of(0.1),
+    };
+    let judgement = with_rule(rule(limit.clone()), good);
+    // 4 x 8.6 W at 230 V is 0.15 A (computed).
+    assert_eq!(
+        find(&judgement, "inrush", Some("high")).outcome,
+        Outcome::Fail
+    );
+    assert_eq!(
+        find(&judgement, "inrush", Some("low")).outcome,
+        Outcome::Pass
+    );
+    let judgement = with_rule(rule(limit), |now| {
+        let mut seen = good(now);
+        if now.cell.is_none() {
+            seen.body += 8.0;
+        }
+        seen
+    });
+    let warm = find(&judgement, "inrush", Some("low"));
+    assert_eq!(warm.outcome, Outcome::NotJudged);
+    assert!(warm.reason.contains("no cold start"), "{}", warm.reason);
+}
+
+#[test]
+fn a_lower_bound_can_exceed_a_limit_and_never_meet_it() {
+    let spike = |now: Now| {
+        let mut seen = good(now);
+        if now.on.is_some_and(|on| on < 0.15) {
+            seen.watts = 60.0;
+        }
+        seen
+    };
+    for (limit, outcome) in [(0.5, Outcome::NotJudged), (0.2, Outcome::Fail)] {
+        let rule = rule(RuleKind::Inrush {
+            at_most: Amps::of(limit),
+        });
+        let judgement = with_rule(rule, spike);
+        assert_eq!(
+            find(&judgement, "inrush", Some("high")).outcome,
+            outcome,
+            "{limit}"
+        );
+    }
+}
+
+#[test]
+fn an_inrush_that_the_supply_limits_is_not_judged() {
+    let sags = |now: Now| {
+        let mut seen = good(now);
+        if now.on.is_some_and(|on| on < 5.0) {
+            seen.volts *= 0.95;
+        }
+        seen
+    };
+    let judgement = with_rule(
+        rule(RuleKind::Inrush {
+            at_most: Amps::of(0.5),
+        }),
+        sags,
+    );
+    assert!(find(&judgement, "inrush", None).reason.contains("sagged"));
+}
+
+#[test]
+fn operators_findings_fail_unless_they_are_minor() {
+    for (class, verdict) in [
+        (FindingClass::Critical, Outcome::Fail),
+        (FindingClass::Major, Outcome::Fail),
+        (FindingClass::Minor, Outcome::Pass),
+    ] {
+        let mut played = play(plan(&["full"]), good);
+        for step in &mut played.plan.steps {
+            if let Action::Ask(question) = &mut step.action {
+                question.finding.as_mut().unwrap().class = class;
+            }
+        }
+        for happening in &mut played.happenings {
+            if let Event::Answered {
+                answer, finding, ..
+            } = &mut happening.event
+            {
+                *answer = "no".to_owned();
+                *finding = Some(class);
+            }
+        }
+        let judgement = judged(&played);
+        assert_eq!(
+            find(&judgement, "Is the plate", None).outcome,
+            Outcome::Fail
+        );
+        assert_eq!(judgement.verdict, verdict, "{class:?}");
+    }
+}
+
+#[test]
+fn a_question_that_was_not_answered_is_not_judged() {
+    let mut played = play(plan(&["full"]), good);
+    played
+        .happenings
+        .retain(|h| !matches!(h.event, Event::Answered { .. }));
+    assert_eq!(judged(&played).verdict, Outcome::NotJudged);
+}
+
+#[test]
+fn a_position_of_the_plate_that_is_not_run_leaves_the_unit_unjudged() {
+    let mut plan = plan(&["full"]);
+    plan.cells.truncate(1);
+    plan.steps.retain(|step| step.cell != Some(1));
+    let judgement = judged(&play(plan, good));
+    assert_eq!(judgement.verdict, Outcome::NotJudged);
+    let missing = find(&judgement, "every position", None);
+    assert_eq!(missing.position.as_deref(), Some("high"));
+    assert_reasons(&judgement);
+}
+
+#[test]
+fn a_wide_voltage_range_is_judged_at_both_ends_and_only_where_it_is_run() {
+    let mut plan = plan(&["full"]);
+    for entry in &mut plan.appliance.plate {
+        entry.voltage.low = Volts::of(110.0);
+    }
+    let judgement = judged(&play(plan, good));
+    let found: Vec<(Outcome, String)> = judgement
+        .findings
+        .iter()
+        .filter(|f| f.rule.starts_with("power against") && f.position.as_deref() == Some("high"))
+        .map(|f| (f.outcome, f.reason.clone()))
+        .collect();
+    assert_eq!(found.len(), 2);
+    assert_eq!(found[0].0, Outcome::NotJudged);
+    assert!(found[0].1.contains("110 V"), "{}", found[0].1);
+    // 230 V is within 6 % of 240 V.
+    assert_eq!(found[1].0, Outcome::Pass);
+}
+
+#[test]
+fn information_decides_nothing() {
+    let mut inform = rule(RuleKind::TemperatureRise {
+        role: "enclosure".to_owned(),
+        at_most: Kelvins::of(1.0),
+    });
+    inform.weight = RuleWeight::Information;
+    let judgement = with_rule(inform, good);
+    assert_eq!(
+        find(&judgement, "temperature rise", None).outcome,
+        Outcome::Fail
+    );
+    assert_eq!(judgement.verdict, Outcome::Pass);
+}
+
+#[test]
+fn explicit_limits_are_judged_in_every_cell() {
+    let limits = RuleKind::PowerLimits {
+        at_least: Some(Watts::of(5.0)),
+        at_most: Some(Watts::of(10.0)),
+    };
+    for decision in [
+        Decision::Simple,
+        Decision::FourOutcomes,
+        Decision::Guarded { ratio: 1.0 },
+    ] {
+        let one = PlannedRule {
+            decision,
+            ..rule(limits.clone())
+        };
+        let judgement = with_rule(one, good);
+        assert_eq!(
+            find(&judgement, "power", Some("low")).outcome,
+            Outcome::Fail
+        );
+        assert_eq!(
+            find(&judgement, "power", Some("high")).outcome,
+            Outcome::Pass
+        );
+    }
+}
+
+// IEC 60335-1 clause 10.1: the same numbers as in `spec::plate`.
+#[test]
+fn plate_limits_are_those_of_the_plate() {
+    let rated = Span {
+        low: Watts::of(1500.0),
+        high: Watts::of(1500.0),
+    };
+    let (least, most) = plate_limits(ApplianceKind::Heating, rated);
+    assert!((least.unwrap().get() - 1350.0).abs() < 1e-9 && (most.get() - 1575.0).abs() < 1e-9);
+}
+
+#[test]
+fn rows_of_other_roles_between_change_nothing() {
+    // Rows of one role stay in order; rows of different roles may come in any.
+    let played = play(plan(&["full"]), good);
+    let mut other = played.clone();
+    for round in other.samples.chunks_mut(4) {
+        round.reverse();
+    }
+    assert_eq!(judged(&played), judged(&other));
+}
+
+#[test]
+fn a_hollow_record_judges_nothing_and_says_why() {
+    let lose = |keep: fn(&Sample) -> bool| {
+        let mut played = play(plan(&["full"]), good);
+        played.samples.retain(keep);
+        judged(&played)
+    };
+    for keep in [
+        (|_: &Sample| false) as fn(&Sample) -> bool,
+        |row| row.role != 1,
+        |row| row.role != 2,
+        |row| row.role != 3,
+        |row| !row.energised,
+        |row| row.energised,
+    ] {
+        let judgement = lose(keep);
+        assert_eq!(
+            judgement.verdict,
+            Outcome::NotJudged,
+            "{}",
+            judgement.because
+        );
+        assert_reasons(&judgement);
+    }
+}
+
+#[test]
+fn a_cooler_guard_changes_no_verdict_of_a_complete_run() {
+    let mut plan = plan(&["full"]);
+    plan.guards.body = Some(Celsius::of(50.0));
+    assert_eq!(judged(&play(plan, good)).verdict, Outcome::Pass);
+}

@@ -1,0 +1,235 @@
+//! The rules of a sequence.
+
+use crate::quantity::{Amps, Kelvins, Watts};
+use crate::spec::Located;
+use crate::spec::fields::{Field, Fields};
+use crate::spec::scalars::{Allowed, choice, located_name, name, number, quantity, text};
+use crate::spec::sequence::{Decision, Rule, RuleKind, RuleWeight};
+use crate::spec::yaml::NodeKind;
+
+use super::sequence::limits;
+
+/// What a rule can compare: the key that names it, and how its value is read.
+type Kind = (&'static str, fn(Field<'_>) -> Option<RuleKind>);
+
+const KINDS: &[Kind] = &[
+    ("power", power),
+    ("thermal link", thermal_link),
+    ("inrush", inrush),
+    ("order of positions", order),
+    ("temperature", temperature_rise),
+];
+
+const WEIGHTS: &[(&str, RuleWeight)] = &[
+    ("required", RuleWeight::Required),
+    ("information", RuleWeight::Information),
+];
+
+/// One rule.
+pub(super) fn rule(field: Field<'_>) -> Option<Rule> {
+    let fields = field.fields()?;
+    let kind = kind(&fields, field);
+    let decision = fields.or("decision", Decision::FourOutcomes, decision);
+    let weight = fields.or("weight", RuleWeight::Required, choice(WEIGHTS));
+    let position = fields.optional("position", located_name);
+    let condition = fields.optional("condition", located_name);
+    let source = fields.optional("source", text);
+    fields.finish()?;
+    Some(Rule {
+        kind: kind?,
+        decision: decision?,
+        weight: weight?,
+        position: position?,
+        condition: condition?,
+        source: source?,
+    })
+}
+
+/// The one key that says what the rule compares.
+fn kind(fields: &Fields<'_>, whole: Field<'_>) -> Option<Located<RuleKind>> {
+    let found: Vec<(Field<'_>, Option<RuleKind>)> = KINDS
+        .iter()
+        .filter_map(|(key, decode)| fields.find(key).map(|field| (field, decode(field))))
+        .collect();
+    let known = || {
+        let words: Vec<&str> = KINDS.iter().map(|(key, _)| *key).collect();
+        format!("one of: {}", words.join(", "))
+    };
+    match found.as_slice() {
+        [(field, kind)] => kind.clone().map(|value| Located {
+            value,
+            place: field.key.clone(),
+        }),
+        // A misspelt key is reported once, as the unknown one that it is.
+        [] if KINDS.iter().any(|(key, _)| fields.misspelt(key).is_some()) => None,
+        [] => whole
+            .notes
+            .error(whole.key, "a rule that compares nothing", known()),
+        [_, (second, _), ..] => whole.notes.error(
+            second.key,
+            "a rule compares one thing",
+            "begin each rule with its own dash",
+        ),
+    }
+}
+
+fn power(field: Field<'_>) -> Option<RuleKind> {
+    if let NodeKind::Scalar(_) = field.node.kind {
+        return choice(&[("plate", RuleKind::PlatePower)])(field);
+    }
+    let fields = field.fields()?;
+    let at_least = fields.optional("at least", quantity::<Watts>(Allowed::NotNegative));
+    let at_most = fields.optional("at most", quantity::<Watts>(Allowed::Positive));
+    let watts = |limit: Option<Option<Watts>>| limit.map(|l| l.map(Watts::get));
+    let ordered = limits(&fields, field, (watts(at_least), watts(at_most)));
+    fields.finish()?;
+    ordered?;
+    Some(RuleKind::PowerLimits {
+        at_least: at_least?,
+        at_most: at_most?,
+    })
+}
+
+fn thermal_link(field: Field<'_>) -> Option<RuleKind> {
+    choice(&[
+        ("holding", RuleKind::LinkHolding),
+        ("earliest opening", RuleKind::LinkOpening),
+    ])(field)
+}
+
+fn inrush(field: Field<'_>) -> Option<RuleKind> {
+    let fields = field.fields()?;
+    let at_most = fields.required("at most", quantity::<Amps>(Allowed::Positive));
+    fields.finish()?;
+    Some(RuleKind::Inrush { at_most: at_most? })
+}
+
+fn order(field: Field<'_>) -> Option<RuleKind> {
+    choice(&[("rising", RuleKind::PositionOrder)])(field)
+}
+
+fn temperature_rise(field: Field<'_>) -> Option<RuleKind> {
+    let fields = field.fields()?;
+    let role = fields.required("role", name);
+    let at_most = fields.required("rise at most", quantity::<Kelvins>(Allowed::Positive));
+    fields.finish()?;
+    Some(RuleKind::TemperatureRise {
+        role: role?,
+        at_most: at_most?,
+    })
+}
+
+fn decision(field: Field<'_>) -> Option<Decision> {
+    if let NodeKind::Scalar(_) = field.node.kind {
+        return choice(&[
+            ("simple", Decision::Simple),
+            ("four outcomes", Decision::FourOutcomes),
+        ])(field);
+    }
+    let fields = field.fields()?;
+    let ratio = fields.required("guarded", number(Allowed::Within(0.0, 3.0)));
+    fields.finish()?;
+    Some(Decision::Guarded { ratio: ratio? })
+}
+
+#[cfg(test)]
+mod tests {
+    use crate::spec::wrong_files::{Kind, wrong};
+
+    #[test]
+    fn each_wrong_rule_is_one_problem() {
+        Kind::Sequence.check(&[
+            wrong(
+                "- power: plate",
+                "- power: label",
+                "67:12",
+                "can't be `label`",
+                "one of: plate",
+            ),
+            wrong(
+                "- power: plate",
+                "- power: {}",
+                "67:5",
+                "no limit is stated",
+                "at least",
+            ),
+            wrong(
+                "- power: plate",
+                "- power: {at least: 9 W, at most: 8 W}",
+                "67:37",
+                "below `at least`",
+                "larger",
+            ),
+            wrong(
+                "- power: plate",
+                "- powr: plate",
+                "67:5",
+                "unknown key `powr`",
+                "mean `power`",
+            ),
+            wrong(
+                "- thermal link: holding",
+                "- weight: information",
+                "70:5",
+                "compares nothing",
+                "one of",
+            ),
+            wrong(
+                "- thermal link: holding",
+                "- thermal link: holding\n    inrush: {at most: 1 A}",
+                "71:5",
+                "compares one thing",
+                "dash",
+            ),
+            wrong(
+                "link: holding",
+                "link: hold",
+                "70:19",
+                "can't be `hold`",
+                "one of",
+            ),
+            wrong(
+                "positions: rising",
+                "positions: falling",
+                "72:25",
+                "can't be `falling`",
+                "one of: rising",
+            ),
+            wrong(
+                "decision: four outcomes",
+                "decision: {guarded: -1}",
+                "68:25",
+                "out of range",
+                "unit",
+            ),
+            wrong(
+                "decision: four outcomes",
+                "decision: fair",
+                "68:15",
+                "can't be `fair`",
+                "simple",
+            ),
+            wrong(
+                "weight: required",
+                "weight: heavy",
+                "69:13",
+                "can't be `heavy`",
+                "required",
+            ),
+            wrong(
+                "at most: 0.5 A",
+                "at most: 0.5",
+                "73:23",
+                "has no unit",
+                "`0.5 A`",
+            ),
+            wrong(
+                "rise at most: 50 K",
+                "rise at most: 50 °C",
+                "76:50",
+                "not a temperature difference",
+                "K",
+            ),
+        ]);
+    }
+}
