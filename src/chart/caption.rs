@@ -6,13 +6,14 @@ use super::ink::{Ink, Marker};
 use super::words::{clean, safe_name, squeezed};
 use crate::judge::{Finding, Outcome};
 use crate::plan::Cell;
+use crate::spec::sequence::RuleWeight;
 
-/// A supply in words: `230 V 50 Hz`.
+/// A supply in words: `230 V, 50 Hz`.
 pub fn supply(cell: &Cell) -> String {
-    format!("{} {}", cell.supply.voltage, cell.supply.frequency)
+    format!("{}, {}", cell.supply.voltage, cell.supply.frequency)
 }
 
-/// A cell in words: `high · refill full · 230 V 50 Hz`.
+/// A cell in words: `high · refill full · 230 V, 50 Hz`.
 pub fn cell(cell: &Cell) -> String {
     let condition = cell.condition.as_deref().map(clean);
     let parts = [Some(clean(&cell.position)), condition, Some(supply(cell))];
@@ -62,45 +63,68 @@ impl About {
     }
 }
 
-/// Whether `finding` names this very cell; what it leaves open, it names in every cell.
-pub fn names(finding: &Finding, cell: &Cell) -> bool {
-    let position = finding.position.as_ref();
-    let condition = finding.condition.as_ref();
-    let supply = finding.supply.as_deref();
-    position.is_none_or(|position| *position == cell.position)
-        && condition.is_none_or(|condition| Some(condition) == cell.condition.as_ref())
-        && supply.is_none_or(|words| squeezed(words) == squeezed(&self::supply(cell)))
+/// What a judgement says of a cell.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub enum Said<'a> {
+    /// A finding is about this very cell.
+    Here(&'a Finding),
+    /// The rule judges the worst condition, and that is another one.
+    Elsewhere(&'a Finding),
 }
 
-/// The finding about `about` that names cell `index`; the gravest of several.
-pub fn finding<'a>(scene: &Scene<'a>, index: usize, about: About) -> Option<&'a Finding> {
-    let cell = scene.plan.cells.get(index)?;
-    let found = scene.judgement.findings.iter();
-    found
-        .filter(|finding| About::of(finding) == Some(about))
-        .filter(|finding| names_one_cell(scene, finding) && names(finding, cell))
-        .max_by_key(|finding| gravity(finding.outcome))
-}
+impl<'a> Said<'a> {
+    /// About `about` in cell `index`: the required finding before one that informs,
+    /// then the gravest.
+    pub fn of(scene: &Scene<'a>, index: usize, about: About) -> Option<Self> {
+        let cell = scene.plan.cells.get(index)?;
+        let supply = squeezed(&supply(cell));
+        let found = scene.judgement.findings.iter().filter(|finding| {
+            About::of(finding) == Some(about)
+                && finding.position.as_ref() == Some(&cell.position)
+                && finding.supply.as_deref().map(squeezed).as_ref() == Some(&supply)
+        });
+        let weight = |finding: &&Finding| {
+            let required = finding.weight == RuleWeight::Required;
+            (required, finding.outcome.rank())
+        };
+        let (here, elsewhere): (Vec<_>, Vec<_>) =
+            found.partition(|finding| finding.condition == cell.condition);
+        let here = here.into_iter().max_by_key(weight).map(Said::Here);
+        here.or_else(|| {
+            elsewhere
+                .into_iter()
+                .max_by_key(weight)
+                .map(Said::Elsewhere)
+        })
+    }
 
-/// A finding without a position, where cells differ in theirs, is about no one cell.
-fn names_one_cell(scene: &Scene, finding: &Finding) -> bool {
-    let cells = &scene.plan.cells;
-    let alike = |differ: &dyn Fn(&Cell) -> bool| !cells.iter().any(differ);
-    let first = cells.first();
-    (finding.position.is_some()
-        || alike(&|cell| first.is_some_and(|first| first.position != cell.position)))
-        && (finding.condition.is_some()
-            || alike(&|cell| first.is_some_and(|first| first.condition != cell.condition)))
-}
+    /// The finding, wherever it was made.
+    pub fn finding(self) -> &'a Finding {
+        match self {
+            Said::Here(finding) | Said::Elsewhere(finding) => finding,
+        }
+    }
 
-/// How grave an outcome is for the unit, as the unit's verdict ranks them.
-pub fn gravity(outcome: Outcome) -> u8 {
-    match outcome {
-        Outcome::Pass => 0,
-        Outcome::ConditionalPass => 1,
-        Outcome::ConditionalFail => 2,
-        Outcome::NotJudged => 3,
-        Outcome::Fail => 4,
+    /// The graver of two; what is said here counts before what is said elsewhere.
+    pub fn graver(self, other: Self) -> Self {
+        let weight = |said: Said| {
+            let here = matches!(said, Said::Here(_));
+            (here, said.finding().outcome.rank())
+        };
+        if weight(other) > weight(self) {
+            other
+        } else {
+            self
+        }
+    }
+
+    /// Where the finding was made, if not here: `worst condition: dry`.
+    pub fn worst_condition(self) -> Option<String> {
+        let Said::Elsewhere(finding) = self else {
+            return None;
+        };
+        let condition = finding.condition.as_deref().unwrap_or("another");
+        Some(format!("worst condition: {}", clean(condition)))
     }
 }
 

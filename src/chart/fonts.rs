@@ -131,25 +131,45 @@ impl Face {
     /// an ellipsis where there is more.
     pub fn wrap(self, text: &str, width: f64, lines: usize) -> Vec<String> {
         let mut out: Vec<String> = Vec::new();
-        let mut words = text.split_whitespace();
+        let mut words = together(text).into_iter();
         while let Some(word) = words.next() {
             let full = out.len() == lines;
             let Some(line) = out.last_mut() else {
-                out.push(word.to_owned());
+                out.push(word);
                 continue;
             };
             let longer = format!("{line} {word}");
             if self.width(&longer) <= width {
                 *line = longer;
             } else if full {
-                let rest: Vec<&str> = words.by_ref().collect();
+                let rest: Vec<String> = words.by_ref().collect();
                 *line = format!("{longer} {}", rest.join(" "));
             } else {
-                out.push(word.to_owned());
+                out.push(word);
             }
         }
         out.iter().map(|line| self.fit(line, width)).collect()
     }
+}
+
+/// The words of a text; a number and its unit are one word.
+fn together(text: &str) -> Vec<String> {
+    const UNITS: [&str; 12] = [
+        "W", "V", "A", "Hz", "K", "°C", "s", "min", "h", "%", "ms", "mK",
+    ];
+    let mut words: Vec<String> = Vec::new();
+    for word in text.split_whitespace() {
+        let bare = word.trim_end_matches([',', ';', '.', ':', ')']);
+        let is_unit = UNITS.contains(&bare);
+        match words.last_mut() {
+            Some(last) if is_unit && last.ends_with(|c: char| c.is_ascii_digit()) => {
+                last.push(' ');
+                last.push_str(word);
+            }
+            _ => words.push(word.to_owned()),
+        }
+    }
+    words
 }
 
 #[cfg(test)]
@@ -175,6 +195,7 @@ mod tests {
         assert!(lines.iter().all(|line| TEXT.width(line) <= 150.0));
         assert_eq!(TEXT.wrap("one", 150.0, 3), ["one"]);
         assert!(TEXT.wrap("", 150.0, 3).is_empty());
+        assert_eq!(together("up to 2.9 K, not"), ["up", "to", "2.9 K,", "not"]);
         let one_word = TEXT.wrap(&"x".repeat(300), 150.0, 3);
         assert!(one_word.len() == 1 && one_word[0].ends_with('…'));
     }

@@ -26,8 +26,8 @@ pub struct Header {
     pub title: String,
     /// The stretch of the record that it shows, in words.
     pub record_time: String,
-    /// An outcome and what it is the outcome of.
-    pub outcome: Option<(Outcome, String)>,
+    /// An outcome, where there is one, and what it is the outcome of.
+    pub outcome: Option<(Option<Outcome>, String)>,
 }
 
 /// A picture `height` pixels high, with its title block, drawn on by `draw`.
@@ -99,17 +99,20 @@ fn block(sheet: &mut Sheet, scene: &Scene, header: &Header) -> Result<(), DrawEr
 }
 
 /// The outcome's word with its shape at the upper right; returns the width taken.
-fn outcome_badge(sheet: &mut Sheet, outcome: Outcome, of: &str) -> Result<f64, DrawError> {
-    let (marker, ink) = caption::looks(outcome);
-    let face = Face::bold(30.0, ink);
+fn outcome_badge(sheet: &mut Sheet, outcome: Option<Outcome>, of: &str) -> Result<f64, DrawError> {
     let right = WIDTH - MARGIN;
-    let width = face.width(outcome.word());
-    sheet.text((right, 46.0), outcome.word(), face, Align::Right)?;
-    sheet.marker((right - width - 24.0, 36.0), 11.0, marker, ink)?;
-    let lines = TEXT.wrap(of, 460.0, 2);
-    let mut widest = width + 40.0;
+    let mut widest = 0.0_f64;
+    if let Some(outcome) = outcome {
+        let (marker, ink) = caption::looks(outcome);
+        let face = Face::bold(38.0, ink);
+        let width = face.width(outcome.word());
+        sheet.text((right, 50.0), outcome.word(), face, Align::Right)?;
+        sheet.marker((right - width - 26.0, 36.0), 13.0, marker, ink)?;
+        widest = width + 46.0;
+    }
+    let lines = TEXT.wrap(of, 560.0, 2);
     for (n, line) in lines.iter().enumerate() {
-        let baseline = 73.0 + n as f64 * TEXT.leading();
+        let baseline = 78.0 + n as f64 * TEXT.leading();
         sheet.text((right, baseline), line, TEXT, Align::Right)?;
         widest = widest.max(TEXT.width(line));
     }

@@ -12,11 +12,11 @@ pub const INK: Ink = Ink(28, 32, 38);
 /// Lesser text.
 pub const SOFT: Ink = Ink(86, 92, 102);
 /// Grid.
-pub const GRID: Ink = Ink(226, 228, 232);
+pub const GRID: Ink = Ink(212, 215, 219);
 /// Ruled lines between parts.
 pub const RULE: Ink = Ink(176, 180, 188);
 /// The allowed band.
-pub const BAND: Ink = Ink(219, 234, 224);
+pub const BAND: Ink = Ink(222, 237, 227);
 /// The settled window.
 pub const WINDOW: Ink = Ink(196, 176, 128);
 /// Measured power.
@@ -25,6 +25,8 @@ pub const POWER: Ink = Ink(20, 66, 132);
 pub const LEVEL: Ink = Ink(150, 56, 0);
 /// Limits.
 pub const LIMIT: Ink = Ink(120, 16, 40);
+/// Means that no rule judges.
+pub const MEAN: Ink = Ink(92, 60, 112);
 /// The plate's own value.
 pub const PLATE: Ink = Ink(30, 96, 62);
 
@@ -74,6 +76,8 @@ pub enum Marker {
     Triangle,
     Diamond,
     Cross,
+    Hollow,
+    Plus,
 }
 
 /// Looks of one temperature's line.
@@ -98,7 +102,7 @@ pub const AMBIENT: TraceInk = TraceInk {
 };
 
 /// Every other role, in turn.
-pub const OTHERS: [TraceInk; 4] = [
+pub const OTHERS: [TraceInk; 6] = [
     TraceInk {
         stroke: Stroke::broken(Ink(0, 84, 84), 2.0, &[16.0, 4.0, 4.0, 4.0]),
         marker: Marker::Square,
@@ -114,5 +118,13 @@ pub const OTHERS: [TraceInk; 4] = [
     TraceInk {
         stroke: Stroke::broken(Ink(70, 74, 84), 2.0, &[12.0, 3.0, 3.0, 3.0, 3.0, 3.0]),
         marker: Marker::Cross,
+    },
+    TraceInk {
+        stroke: Stroke::broken(Ink(24, 44, 96), 2.0, &[6.0, 2.5]),
+        marker: Marker::Hollow,
+    },
+    TraceInk {
+        stroke: Stroke::broken(Ink(176, 84, 60), 2.0, &[2.5, 4.0]),
+        marker: Marker::Plus,
     },
 ];

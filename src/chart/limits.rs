@@ -1,13 +1,12 @@
 //! Which limits are drawn: those that a finding was judged by, else those that the
 //! plan's rules give.
 
-use std::cmp::Ordering;
-
 use super::Scene;
 use super::axis::drawable;
-use super::caption::{self, About};
+use super::caption::{About, Said};
 use super::words::clean;
-use crate::plan::{Cell, PlannedPlate};
+use crate::analysis::plate_point;
+use crate::plan::Cell;
 use crate::quantity::Watts;
 use crate::spec::plate;
 use crate::spec::sequence::{RuleKind, Span};
@@ -31,13 +30,14 @@ impl PowerLimits {
         let Some(cell) = scene.plan.cells.get(index) else {
             return Self::default();
         };
-        let rated = rated_at(scene, cell);
+        let rated = plate_point(scene.plan, cell).map(|point| point.rated);
         let watts = |w: f64| drawable(w);
         let mut limits = Self {
             rated: rated.map(|span| (span.low.get(), span.high.get())),
             ..Self::default()
         };
-        let judged = caption::finding(scene, index, About::Power)
+        let judged = Said::of(scene, index, About::Power)
+            .map(Said::finding)
             .filter(|finding| finding.unit == Watts::UNIT)
             .filter(|finding| finding.at_least.is_some() || finding.at_most.is_some());
         if let Some(finding) = judged {
@@ -76,29 +76,4 @@ impl PowerLimits {
     pub fn plate(&self) -> Option<f64> {
         self.rated.map(|(low, high)| 0.5 * (low + high))
     }
-}
-
-/// What the plate promises for the cell's position at the voltage nearest to its
-/// supply; for the whole appliance rather than for one of its elements.
-fn rated_at(scene: &Scene, cell: &Cell) -> Option<Span<Watts>> {
-    let volts = cell.supply.voltage.get();
-    let outside = |entry: &PlannedPlate| {
-        let (low, high) = (entry.voltage.low.get(), entry.voltage.high.get());
-        (low - volts).max(volts - high).max(0.0)
-    };
-    let entries = scene.plan.appliance.plate.iter();
-    let entry = entries
-        .filter(|entry| entry.position == cell.position && entry.element.is_none())
-        .min_by(|a, b| outside(a).total_cmp(&outside(b)))?;
-    let Span { low, high } = entry.power;
-    let (to_low, to_high) = (
-        (entry.voltage.low.get() - volts).abs(),
-        (entry.voltage.high.get() - volts).abs(),
-    );
-    // A range of power is marked for the ends of the range of voltage.
-    Some(match to_low.total_cmp(&to_high) {
-        Ordering::Less => Span { low, high: low },
-        Ordering::Equal => entry.power,
-        Ordering::Greater => Span { low: high, high },
-    })
 }

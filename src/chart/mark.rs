@@ -11,7 +11,7 @@ use super::ink::INK;
 pub const WORDS: &str = "VIRTUAL BENCH";
 
 /// By how much it darkens.
-const STRENGTH: f64 = 0.105;
+const STRENGTH: f64 = 0.09;
 /// From one mark to the next along its line and across, in pixels.
 const BESIDE: usize = 130;
 const BELOW: usize = 150;

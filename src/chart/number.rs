@@ -40,9 +40,9 @@ pub fn with_uncertainty(value: f64, expanded: f64) -> (String, String) {
     (fixed(value, places), fixed(expanded, places))
 }
 
-/// `value` with its sign always written.
-pub fn with_sign(value: f64, digits: usize) -> String {
-    let text = short(value, digits);
+/// A difference with its sign always written, cut where its uncertainty is.
+pub fn with_sign(value: f64, expanded: f64) -> String {
+    let (text, _) = with_uncertainty(value, expanded);
     if value > 0.0 && value.is_finite() {
         format!("+{text}")
     } else {
@@ -109,8 +109,8 @@ mod tests {
         }
         assert_eq!(fixed(-0.04, 1), "0.0");
         assert_eq!(fixed(2500.0, 0), "2500");
-        assert_eq!(with_sign(4.0, 3), "+4");
-        assert_eq!(with_sign(-4.0, 3), "−4");
+        assert_eq!(with_sign(4.0, 1.9), "+4.0");
+        assert_eq!(with_sign(-4.0, 1.9), "−4.0");
     }
 
     #[test]

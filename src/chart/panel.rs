@@ -2,7 +2,7 @@
 
 use super::DrawError;
 use super::axis::Scale;
-use super::fonts::{HEAD, SMALL, TEXT};
+use super::fonts::{Face, HEAD, SMALL, TEXT};
 use super::ink::{GRID, INK, Ink, SOFT, Stroke, WINDOW};
 use super::sheet::{Align, At, Frame, Sheet};
 
@@ -135,6 +135,33 @@ impl Panel {
         sheet.text((frame.left, frame.top - 12.0), head, HEAD, Align::Left)?;
         let middle = 0.5 * (frame.left + frame.right);
         sheet.text((middle, frame.bottom + 46.0), below, TEXT, Align::Centre)
+    }
+
+    /// Names a point: `text` above it, or farther above where a line at one of
+    /// `levels` would run through it, or else below.
+    ///
+    /// # Errors
+    /// Those of the sheet.
+    pub fn name(
+        &self,
+        sheet: &mut Sheet,
+        (x, y): At,
+        text: &str,
+        face: Face,
+        levels: &[f64],
+    ) -> Result<(), DrawError> {
+        let frame = self.frame;
+        let half = 0.5 * face.width(text) + 8.0;
+        let x = x.min(frame.right - half).max(frame.left + half);
+        let is_free = |baseline: &f64| {
+            let (top, bottom) = (baseline - face.em, baseline + 5.0);
+            let crossed = |level: &f64| (top..=bottom).contains(&self.y.at(*level));
+            top > frame.top && bottom < frame.bottom && !levels.iter().any(crossed)
+        };
+        let wanted = [14.0, 24.0, 34.0, 44.0, 54.0, 64.0, -28.0, -40.0];
+        let mut baselines = wanted.into_iter().map(|up| y - up);
+        let baseline = baselines.find(is_free).unwrap_or(y - 14.0);
+        sheet.text_on_paper((x, baseline), text, face, Align::Centre)
     }
 
     /// A text in the panel's middle, where there is nothing to draw.

@@ -3,7 +3,7 @@
 //! hour.
 
 use super::axis::drawable;
-use super::caption::{self, About};
+use super::caption::{self, About, Said};
 use super::header::{self, FIGURES_END, Header, KeyFigure};
 use super::limits::PowerLimits;
 use super::number::{fixed, short, with_sign, with_uncertainty};
@@ -11,6 +11,7 @@ use super::series::{Span, Trace};
 use super::words::clean;
 use super::{DrawError, Picture, Scene, power_panels};
 use crate::analysis::{CellResult, Figure, Inrush, Steady};
+use crate::judge::Outcome;
 use crate::quantity::Reading;
 use crate::spec::sequence::RoleKind;
 
@@ -83,8 +84,7 @@ pub fn draw(scene: &Scene, index: usize) -> Result<Picture, DrawError> {
     let header = Header {
         title: format!("Power input · {}", caption::cell(cell)),
         record_time: record_time(&input.span),
-        outcome: caption::finding(scene, index, About::Power)
-            .map(|finding| (finding.outcome, clean(&finding.rule))),
+        outcome: Said::of(scene, index, About::Power).map(outcome),
     };
     let figures = key_figures(&input);
     let name = caption::file_name(scene, "power", index);
@@ -93,6 +93,16 @@ pub fn draw(scene: &Scene, index: usize) -> Result<Picture, DrawError> {
         power_panels::switch_on(sheet, &input, HEIGHT)?;
         power_panels::soak(sheet, &input, HEIGHT)
     })
+}
+
+/// What the title block says of a finding.
+pub fn outcome(said: Said) -> (Option<Outcome>, String) {
+    let finding = said.finding();
+    let rule = clean(&finding.rule);
+    match said.worst_condition() {
+        Some(worst) => (None, format!("{rule}: judged in the {worst}")),
+        None => (Some(finding.outcome), rule),
+    }
 }
 
 /// The stretch of the record that a cell's pictures show, in words.
@@ -139,7 +149,7 @@ fn settled(input: &Input) -> KeyFigure {
     let power = &steady.power_w;
     let (value, expanded) = with_uncertainty(power.value, power.expanded);
     let note = format!(
-        "U for k = {}; {} samples, {} independent; at {} V",
+        "k = {}; {} samples, {} independent; at {} V",
         short(power.coverage, 3),
         steady.samples,
         short(steady.effective, 2),
@@ -152,7 +162,7 @@ fn plate(input: &Input) -> KeyFigure {
     let limits = &input.limits;
     let allowed = allowed(limits);
     let Some((low, high)) = limits.rated else {
-        let why = format!("the plate does not rate this position; {allowed}");
+        let why = format!("no promise for this position and supply; {allowed}");
         return KeyFigure::absent("plate", &why);
     };
     let value = if low == high {
@@ -176,7 +186,9 @@ pub fn allowed(limits: &PowerLimits) -> String {
 }
 
 fn switch_on(inrush: &Inrush) -> KeyFigure {
-    let mut notes = Vec::new();
+    let peak = &inrush.peak_a;
+    let (amps, expanded) = with_uncertainty(peak.value, peak.expanded);
+    let mut notes = vec![format!("{amps} A ± {expanded} A")];
     if let Some(ratio) = inrush.ratio {
         notes.push(format!("{} times settled", short(ratio, 3)));
     }
@@ -189,9 +201,7 @@ fn switch_on(inrush: &Inrush) -> KeyFigure {
     if let Some(why) = inrush.lower_bound.first() {
         notes.push(format!("lower bound: {}", clean(why)));
     }
-    let peak = &inrush.peak_a;
-    let (amps, expanded) = with_uncertainty(peak.value, peak.expanded);
-    let value = format!("{} W; {amps} A ± {expanded} A", short(inrush.peak_w, 4));
+    let value = format!("{} W", short(inrush.peak_w, 4));
     KeyFigure::known("switch-on peak", value, notes.join("; "))
 }
 
@@ -208,7 +218,7 @@ fn time_to_settle(input: &Input) -> KeyFigure {
     }
 }
 
-/// A margin in words: `+1.27 W`.
-pub fn margin(value: f64, unit: &str) -> String {
-    format!("{} {}", with_sign(value, 3), clean(unit))
+/// A margin in kelvin, in words: `+1.3 K`.
+pub fn margin(value: f64, expanded: f64) -> String {
+    format!("{} K", with_sign(value, expanded))
 }

@@ -3,7 +3,9 @@
 use super::DrawError;
 use super::axis::{drawable, extent, widened};
 use super::fonts::{Face, SMALL, TEXT};
-use super::ink::{BAND, DASHED, DOTTED, INK, LEVEL, LIMIT, Marker, PLATE, POWER, SHORT, Stroke};
+use super::ink::{
+    BAND, DASHED, DOTTED, INK, LEVEL, LIMIT, MEAN, Marker, PAPER, PLATE, POWER, SHORT, Stroke,
+};
 use super::labels::{self, Label};
 use super::number::{short, with_uncertainty};
 use super::panel::Panel;
@@ -15,6 +17,10 @@ type Drawn = Result<(), DrawError>;
 
 /// Room below the panels for ticks and the axis' name.
 const BELOW: f64 = 62.0;
+/// Left and right side of the two panels.
+pub const SWITCH_ON_SIDES: (f64, f64) = (84.0, 486.0);
+/// See [`SWITCH_ON_SIDES`].
+pub const SOAK_SIDES: (f64, f64) = (790.0, 1334.0);
 /// Longest and shortest stretch that the panel of the switch-on shows, in seconds.
 const LONGEST_SWITCH_ON: f64 = 120.0;
 const SHORTEST_SWITCH_ON: f64 = 1.0;
@@ -27,15 +33,16 @@ const RUNNING_IN: f64 = 0.2;
 const LINE: Stroke = Stroke::solid(POWER, 2.0);
 const SETTLED: Stroke = Stroke::broken(LEVEL, 2.0, SHORT);
 const AT_LIMIT: Stroke = Stroke::broken(LIMIT, 2.0, DASHED);
+const AT_MEAN: Stroke = Stroke::broken(MEAN, 2.0, &[14.0, 4.0]);
 const AT_PLATE: Stroke = Stroke::broken(PLATE, 2.0, DOTTED);
 
 /// The switch-on in seconds, from zero to its peak.
 pub fn switch_on(sheet: &mut Sheet, input: &Input, height: f64) -> Drawn {
-    let frame = Frame::new(84.0, PANELS_TOP, 486.0, height - BELOW - 8.0);
+    let frame = frame(SWITCH_ON_SIDES, height);
     let length = input
         .span
         .inrush
-        .map_or(USUAL_SWITCH_ON, |end| end - input.t0)
+        .map_or(USUAL_SWITCH_ON, |end| (end - input.t0).ceil())
         .clamp(SHORTEST_SWITCH_ON, LONGEST_SWITCH_ON);
     let early: Vec<Point> = input
         .trace
@@ -48,18 +55,14 @@ pub fn switch_on(sheet: &mut Sheet, input: &Input, height: f64) -> Drawn {
     let values = early.iter().map(|point| point.v);
     let (low, high) = extent(values.chain(marks.into_iter().flatten()).chain([0.0]))
         .map_or((0.0, 1.0), |range| widened(range, 0.12));
-    let low = if low < 0.0 && early.iter().all(|point| point.v >= 0.0) {
-        0.0
-    } else {
-        low
-    };
+    let low = not_below_zero((low, high), early.iter().map(|point| point.v));
     let panel = Panel::new(frame, (-0.02 * length, length), (low, high));
 
     panel.grid(sheet)?;
     lines_behind(sheet, &panel, input, false)?;
     curve(sheet, &panel, input, |t| t - input.t0)?;
     if let Some(peak) = highest(&early) {
-        name_peak(sheet, &panel, peak, peak.t - input.t0)?;
+        name_peak(sheet, &panel, input, peak)?;
     } else {
         panel.nothing(sheet, "no sample of the input")?;
     }
@@ -68,13 +71,13 @@ pub fn switch_on(sheet: &mut Sheet, input: &Input, height: f64) -> Drawn {
         "switch-on: power in W",
         "seconds after the first current",
     )?;
-    let column = Frame::new(frame.right, frame.top, 690.0, frame.bottom);
+    let column = Frame::new(frame.right, frame.top, 724.0, frame.bottom);
     labels::draw(sheet, column, &line_labels(&panel, input, column, false))
 }
 
 /// The soak in minutes, its power scale drawn close around plate and settled level.
 pub fn soak(sheet: &mut Sheet, input: &Input, height: f64) -> Drawn {
-    let frame = Frame::new(766.0, PANELS_TOP, 1330.0, height - BELOW - 8.0);
+    let frame = frame(SOAK_SIDES, height);
     let span = &input.span;
     let minutes = |t: f64| (t - span.energised) / 60.0;
     let last = input.trace.last().map_or(0.0, |point| point.t);
@@ -101,6 +104,10 @@ pub fn soak(sheet: &mut Sheet, input: &Input, height: f64) -> Drawn {
     labels::draw(sheet, column, &line_labels(&panel, input, column, true))
 }
 
+fn frame((left, right): (f64, f64), height: f64) -> Frame {
+    Frame::new(left, PANELS_TOP, right, height - BELOW - 8.0)
+}
+
 /// The range of the soak's power scale.
 fn soak_range(input: &Input, minutes: impl Fn(f64) -> f64, end: f64) -> (f64, f64) {
     let limits = &input.limits;
@@ -118,7 +125,22 @@ fn soak_range(input: &Input, minutes: impl Fn(f64) -> f64, end: f64) -> (f64, f6
         late.filter(|point| minutes(point.t) >= RUNNING_IN * end)
             .map(|point| point.v),
     );
-    extent(values).map_or((0.0, 1.0), |range| widened(range, 0.14))
+    // Where there is no lower limit, as much again is shown below the plate.
+    if let (None, Some(plate), Some(most)) = (limits.at_least, limits.plate(), limits.at_most) {
+        values.push(plate - 0.5 * (most - plate).max(0.0));
+    }
+    let (low, high) = extent(values).map_or((0.0, 1.0), |range| widened(range, 0.14));
+    let low = not_below_zero((low, high), input.trace.points().map(|point| point.v));
+    (low, high)
+}
+
+/// The lower end of a range: a little below zero at most, unless values are.
+fn not_below_zero((low, high): (f64, f64), mut values: impl Iterator<Item = f64>) -> f64 {
+    if low < 0.0 && values.all(|v| v >= 0.0) {
+        low.max(-0.02 * high.max(0.0))
+    } else {
+        low
+    }
 }
 
 /// Band, plate and limits.
@@ -140,6 +162,9 @@ fn lines_behind(sheet: &mut Sheet, panel: &Panel, input: &Input, windowed: bool)
         level(sheet, panel, plate, AT_PLATE)?;
     }
     if let Some(steady) = input.steady() {
+        if windowed && steady.duty < 0.999 {
+            level(sheet, panel, steady.mean_w, AT_MEAN)?;
+        }
         level(sheet, panel, steady.power_w.value, SETTLED)?;
     }
     Ok(())
@@ -182,16 +207,20 @@ fn settled_level(
     let from = panel.at(minutes(steady.from_s), value);
     let to = panel.at(minutes(steady.to_s), value);
     let inside = Some(panel.frame);
-    sheet.path(&[from, to], Stroke::solid(LEVEL, 3.0), inside)?;
+    for (ink, width) in [(PAPER, 6.0), (LEVEL, 3.0)] {
+        sheet.path(&[from, to], Stroke::solid(ink, width), inside)?;
+    }
     let Some(expanded) = drawable(expanded).filter(|u| *u > 0.0) else {
         return Ok(());
     };
     let x = 0.5 * (from.0 + to.0);
     let (top, bottom) = (panel.y.at(value + expanded), panel.y.at(value - expanded));
-    let bar = Stroke::solid(LEVEL, 2.0);
-    sheet.path(&[(x, top), (x, bottom)], bar, inside)?;
-    for y in [top, bottom] {
-        sheet.path(&[(x - 7.0, y), (x + 7.0, y)], bar, inside)?;
+    for (ink, width) in [(PAPER, 5.0), (LEVEL, 2.0)] {
+        let bar = Stroke::solid(ink, width);
+        sheet.path(&[(x, top), (x, bottom)], bar, inside)?;
+        for y in [top, bottom] {
+            sheet.path(&[(x - 7.0, y), (x + 7.0, y)], bar, inside)?;
+        }
     }
     Ok(())
 }
@@ -236,27 +265,18 @@ fn highest(points: &[Point]) -> Option<Point> {
         })
 }
 
-/// A ring around the peak, and its value beside it.
-fn name_peak(sheet: &mut Sheet, panel: &Panel, peak: Point, after: f64) -> Drawn {
+/// A ring around the peak, and its value above it, clear of level lines.
+fn name_peak(sheet: &mut Sheet, panel: &Panel, input: &Input, peak: Point) -> Drawn {
+    let after = peak.t - input.t0;
     let at = panel.at(after, peak.v);
     sheet.marker(at, 5.5, Marker::Ring, POWER)?;
-    let value = format!("peak {} W", short(peak.v, 4));
-    let when = format!("after {} s", short(after.max(0.0), 2));
-    let right_of_it = at.0 < 0.5 * (panel.frame.left + panel.frame.right);
-    let (x, align) = if right_of_it {
-        (at.0 + 16.0, Align::Left)
-    } else {
-        (at.0 - 16.0, Align::Right)
-    };
-    let y = at.1.max(panel.frame.top + 22.0);
-    let face = Face::bold(TEXT.em, POWER);
-    sheet.text_on_paper((x, y + 3.0), &value, face, align)?;
-    sheet.text_on_paper(
-        (x, y + 3.0 + TEXT.leading()),
-        &when,
-        TEXT.in_ink(POWER),
-        align,
-    )
+    let when = short(after.max(0.0), 2);
+    let text = format!("peak {} W after {when} s", short(peak.v, 4));
+    let limits = &input.limits;
+    let level = input.steady().map(|steady| steady.power_w.value);
+    let levels = [limits.at_most, limits.at_least, limits.plate(), level];
+    let levels: Vec<f64> = levels.into_iter().flatten().collect();
+    panel.name(sheet, at, &text, Face::bold(TEXT.em, POWER), &levels)
 }
 
 /// Labels at the right-hand ends of the lines; `whole` adds sources and U.
@@ -290,6 +310,11 @@ fn line_labels(panel: &Panel, input: &Input, column: Frame, whole: bool) -> Vec<
             lines.push((format!("± {expanded} W"), TEXT.in_ink(LEVEL)));
         }
         found.push(label(panel, power.value, lines, SETTLED));
+        if whole && steady.duty < 0.999 && panel.y.holds(steady.mean_w) {
+            let text = format!("mean {} W", short(steady.mean_w, 4));
+            let lines = vec![(text, TEXT.in_ink(MEAN))];
+            found.push(label(panel, steady.mean_w, lines, AT_MEAN));
+        }
     }
     found
 }

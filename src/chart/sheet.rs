@@ -211,7 +211,7 @@ impl Sheet<'_> {
         for (r, ink) in [(radius + 1.5, PAPER), (radius, ink)] {
             match marker {
                 Marker::Disc | Marker::Ring => self.disc((x, y), r, ink)?,
-                Marker::Square => {
+                Marker::Square | Marker::Hollow => {
                     let r = 0.9 * r;
                     self.fill(Frame::new(x - r, y - r, x + r, y + r), ink)?;
                 }
@@ -226,14 +226,23 @@ impl Sheet<'_> {
                     self.polygon(&corners, ink)?;
                 }
                 Marker::Cross => {
-                    let stroke = Stroke::solid(ink, if ink == PAPER { 4.5 } else { 2.0 });
+                    let stroke = Stroke::solid(ink, arm(radius, ink));
                     self.line((x - radius, y - radius), (x + radius, y + radius), stroke)?;
                     self.line((x - radius, y + radius), (x + radius, y - radius), stroke)?;
                 }
+                Marker::Plus => {
+                    let stroke = Stroke::solid(ink, arm(radius, ink));
+                    self.line((x - r, y), (x + r, y), stroke)?;
+                    self.line((x, y - r), (x, y + r), stroke)?;
+                }
             }
         }
+        if marker == Marker::Hollow {
+            let r = 0.9 * radius - 2.0;
+            self.fill(Frame::new(x - r, y - r, x + r, y + r), PAPER)?;
+        }
         if marker == Marker::Ring {
-            self.disc((x, y), (radius - 2.0).max(1.0), PAPER)?;
+            self.disc((x, y), (0.62 * radius).min(radius - 2.0).max(1.0), PAPER)?;
         }
         Ok(())
     }
@@ -275,6 +284,12 @@ impl Sheet<'_> {
         self.fill(patch, PAPER)?;
         self.text((left, at.1), text, face, Align::Left)
     }
+}
+
+/// Width of a cross's arms; its rim is wider.
+fn arm(radius: f64, ink: Ink) -> f64 {
+    let width = (0.38 * radius).max(2.0);
+    if ink == PAPER { width + 2.5 } else { width }
 }
 
 /// The pieces of a line through `points` that a dash leaves.

@@ -1,7 +1,7 @@
 //! The summary: the verdict, every cell's input against its plate, every cell's
 //! worst body temperature against the thermal link, and the other findings.
 
-use super::caption::{self, About};
+use super::caption::{self, About, Said};
 use super::fonts::{Face, SMALL, TEXT};
 use super::header::{self, Header, MARGIN, WIDTH};
 use super::number::{fixed, short};
@@ -14,7 +14,7 @@ use crate::spec::sequence::RuleWeight;
 /// Cells on one page.
 const CELLS_PER_PAGE: usize = 12;
 /// Other findings that are listed on the first page.
-const MOST_OTHERS: usize = 14;
+const MOST_OTHERS: usize = 16;
 /// From one finding to the next, in pixels.
 const FINDING: f64 = 27.0;
 /// The least height of a page.
@@ -50,7 +50,7 @@ fn page(scene: &Scene, cells: &[usize], n: usize, pages: usize) -> Result<Pictur
     let header = Header {
         title,
         record_time: record_time(scene),
-        outcome: Some((judgement.verdict, clean(&judgement.because))),
+        outcome: Some((Some(judgement.verdict), clean(&judgement.because))),
     };
     let others = if n == 0 { others(scene) } else { Vec::new() };
     let power = summary_rows::power(scene, cells);
@@ -80,7 +80,7 @@ fn record_time(scene: &Scene) -> String {
     let time = |sample: Option<&crate::record::Sample>| sample.map(|s| s.reply.as_secs_f64());
     match (time(scene.samples.first()), time(scene.samples.last())) {
         (Some(from), Some(to)) => format!(
-            "record time {} s to {} s; {} samples; bay {}",
+            "record time {} s to {} s; {} samples; {}",
             fixed(from, 1),
             fixed(to, 1),
             scene.samples.len(),
@@ -95,7 +95,7 @@ fn others<'a>(scene: &Scene<'a>) -> Vec<&'a Finding> {
     let shown = |finding: &Finding| {
         About::of(finding).is_some_and(|about| {
             (0..scene.plan.cells.len()).any(|cell| {
-                caption::finding(scene, cell, about).is_some_and(|f| std::ptr::eq(f, finding))
+                matches!(Said::of(scene, cell, about), Some(Said::Here(f)) if std::ptr::eq(f, finding))
             })
         })
     };
@@ -104,10 +104,7 @@ fn others<'a>(scene: &Scene<'a>) -> Vec<&'a Finding> {
     // The gravest first, and what decides before what only informs; otherwise in order.
     rest.sort_by_key(|finding| {
         let informs = finding.weight == RuleWeight::Information;
-        (
-            informs,
-            std::cmp::Reverse(caption::gravity(finding.outcome)),
-        )
+        (informs, std::cmp::Reverse(finding.outcome.rank()))
     });
     rest
 }

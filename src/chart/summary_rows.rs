@@ -2,9 +2,9 @@
 //! share, its numbers, and its outcome.
 
 use super::axis::{Scale, drawable, extent, widened};
-use super::caption::{self, About};
+use super::caption::{self, About, Said};
 use super::fonts::{Face, SMALL, TEXT};
-use super::header::{self, MARGIN};
+use super::header::{self, MARGIN, WIDTH};
 use super::ink::{BAND, DASHED, DOTTED, GRID, INK, LIMIT, Marker, PLATE, POWER, SOFT, Stroke};
 use super::limits::PowerLimits;
 use super::number::with_uncertainty;
@@ -14,10 +14,13 @@ use super::words::clean;
 use super::{DrawError, Scene};
 use crate::judge::Outcome;
 
-/// Height of a row.
-const ROW: f64 = 34.0;
+/// Height of a row where there are few and where there are many.
+const TALL: f64 = 50.0;
+const LOW: f64 = 34.0;
+/// Room for the rows of one table before they get lower.
+const ROOM: f64 = 260.0;
 /// Above and below the rows: head, scale.
-const ABOVE: f64 = 46.0;
+const ABOVE: f64 = 58.0;
 const BELOW: f64 = 56.0;
 /// Where the scale begins and ends, where numbers begin, where outcomes begin.
 const SCALE_LEFT: f64 = 370.0;
@@ -30,6 +33,8 @@ struct Mark {
     value: f64,
     expanded: f64,
     marker: Marker,
+    /// What is named above the rows; empty where nothing needs a name.
+    name: &'static str,
 }
 
 /// One row.
@@ -39,7 +44,7 @@ struct Row {
     band: Option<(Option<f64>, Option<f64>)>,
     marks: Vec<Mark>,
     numbers: String,
-    outcomes: Vec<Outcome>,
+    said: Option<(Option<Outcome>, String)>,
 }
 
 /// A table of rows on one scale.
@@ -82,7 +87,11 @@ fn power_row(scene: &Scene, index: usize) -> Row {
         (Some(steady), _) => {
             let power = &steady.power_w;
             let (value, expanded) = with_uncertainty(power.value, power.expanded);
-            format!("{value} W ± {expanded} W; {}", allowed(&limits))
+            let held = match limits.plate() {
+                Some(_) => allowed(&limits),
+                None => "no plate value".to_owned(),
+            };
+            format!("{value} W ± {expanded} W; {held}")
         }
         (None, Some(result)) => clean(result.steady.reason().unwrap_or_default()),
         (None, None) => "not run".to_owned(),
@@ -92,6 +101,7 @@ fn power_row(scene: &Scene, index: usize) -> Row {
             value: percent(steady.power_w.value)?,
             expanded: percent(steady.power_w.expanded)?,
             marker: Marker::Disc,
+            name: "",
         })
     });
     let has_limits = limits.at_least.is_some() || limits.at_most.is_some();
@@ -104,7 +114,7 @@ fn power_row(scene: &Scene, index: usize) -> Row {
         band: (has_limits && limits.plate().is_some()).then_some(band),
         marks: mark.into_iter().collect(),
         numbers,
-        outcomes: outcomes(scene, index, &[About::Power]),
+        said: said(scene, index, &[About::Power]),
     }
 }
 
@@ -115,9 +125,9 @@ pub fn thermal(scene: &Scene, cells: &[usize]) -> Rows {
         Some(link) => {
             let th = link
                 .th
-                .map_or("Th not stated".to_owned(), |th| format!("Th {th}"));
+                .map_or("Th not stated".to_owned(), |th| format!("Th, {th}"));
             format!(
-                "worst body temperature at {} ambient · disc: to {th} · diamond: to Tf − 10 K {}",
+                "worst body temperature at {} ambient · disc: to {th} · diamond: to Tf − 10 K, {} · outcome: the graver of the two",
                 scene.plan.appliance.highest_ambient, link.opens_from
             )
         }
@@ -153,11 +163,13 @@ fn thermal_row(scene: &Scene, index: usize) -> Row {
         let (value, expanded) = with_uncertainty(worst.value, worst.expanded);
         words.push(format!("{value} °C ± {expanded} K"));
         for (limit, name, marker) in limits.into_iter().flatten() {
-            words.push(format!("{name} {}", margin(limit - worst.value, "K")));
+            let margin = margin(limit - worst.value, worst.expanded);
+            words.push(format!("{margin} to {name}"));
             marks.extend(drawable(limit - worst.value).map(|value| Mark {
                 value,
                 expanded: worst.expanded,
                 marker,
+                name,
             }));
         }
     } else {
@@ -169,24 +181,33 @@ fn thermal_row(scene: &Scene, index: usize) -> Row {
         band: Some((Some(0.0), None)),
         marks,
         numbers: words.join("; "),
-        outcomes: outcomes(scene, index, &[About::Holding, About::Opening]),
+        said: said(scene, index, &[About::Holding, About::Opening]),
     }
 }
 
-/// The gravest outcome of what is said about the cell; nothing where nothing is.
-fn outcomes(scene: &Scene, index: usize, abouts: &[About]) -> Vec<Outcome> {
-    let found = abouts
+/// The gravest outcome of what is said about the cell, or where it was judged.
+fn said(scene: &Scene, index: usize, abouts: &[About]) -> Option<(Option<Outcome>, String)> {
+    let all = abouts
         .iter()
-        .filter_map(|about| caption::finding(scene, index, *about))
-        .map(|finding| finding.outcome)
-        .max_by_key(|outcome| caption::gravity(*outcome));
-    found.into_iter().collect()
+        .filter_map(|about| Said::of(scene, index, *about));
+    let said = all.reduce(Said::graver)?;
+    Some(match said.worst_condition() {
+        Some(worst) => (None, worst),
+        None => {
+            let outcome = said.finding().outcome;
+            (Some(outcome), outcome.word().to_owned())
+        }
+    })
 }
 
 impl Rows {
     /// Height of the table.
     pub fn height(&self) -> f64 {
-        ABOVE + ROW * self.rows.len().max(1) as f64 + BELOW
+        ABOVE + self.row() * self.rows.len().max(1) as f64 + BELOW
+    }
+
+    fn row(&self) -> f64 {
+        (ROOM / self.rows.len().max(1) as f64).clamp(LOW, TALL)
     }
 
     /// Draws the table from `top` down; returns where it ends.
@@ -200,11 +221,11 @@ impl Rows {
             sheet.text((MARGIN, first + 20.0), self.nothing, TEXT, Align::Left)?;
             return Ok(top + self.height());
         }
-        let bottom = first + ROW * self.rows.len() as f64;
+        let bottom = first + self.row() * self.rows.len() as f64;
         let scale = self.scale();
         self.ground(sheet, &scale, first, bottom)?;
         for (n, row) in self.rows.iter().enumerate() {
-            row.draw(sheet, &scale, first + (n as f64 + 0.5) * ROW)?;
+            row.draw(sheet, &scale, first + (n as f64 + 0.5) * self.row())?;
         }
         Ok(top + self.height())
     }
@@ -237,16 +258,16 @@ impl Rows {
         top: f64,
         bottom: f64,
     ) -> Result<(), DrawError> {
-        for (n, row) in self.rows.iter().enumerate() {
-            let middle = top + (n as f64 + 0.5) * ROW;
-            row.band(sheet, scale, middle)?;
-        }
+        let (row, face) = (self.row(), TEXT.in_ink(SOFT));
         for (value, label) in scale.ticks(8) {
             let x = scale.at(value);
             sheet.line((x, top), (x, bottom), Stroke::solid(GRID, 1.0))?;
-            let face = TEXT.in_ink(SOFT);
             sheet.text((x, bottom + 19.0), &label, face, Align::Centre)?;
         }
+        for (n, each) in self.rows.iter().enumerate() {
+            each.band(sheet, scale, top + (n as f64 + 0.5) * row)?;
+        }
+        self.names_of_marks(sheet, scale, top)?;
         let (at, stroke) = self.reference;
         sheet.line(
             (scale.at(at), top - 4.0),
@@ -260,6 +281,29 @@ impl Rows {
         )?;
         let middle = 0.5 * (SCALE_LEFT + SCALE_RIGHT);
         sheet.text((middle, bottom + 40.0), self.axis, SMALL, Align::Centre)
+    }
+}
+
+impl Rows {
+    /// Names the marks of the first row that has any, above the rows.
+    fn names_of_marks(&self, sheet: &mut Sheet, scale: &Scale, top: f64) -> Result<(), DrawError> {
+        let first = self.rows.iter().find(|row| !row.marks.is_empty());
+        let marks = first.map_or(&[][..], |row| &row.marks[..]);
+        let mut shown: Vec<_> = marks
+            .iter()
+            .filter(|mark| scale.holds(mark.value) && !mark.name.is_empty())
+            .collect();
+        shown.sort_by(|a, b| a.value.total_cmp(&b.value));
+        let mut free_from = SCALE_LEFT;
+        for mark in shown {
+            let width = SMALL.width(mark.name);
+            let left = (scale.at(mark.value) - 0.5 * width)
+                .min(SCALE_RIGHT - width)
+                .max(free_from);
+            sheet.text_on_paper((left, top - 6.0), mark.name, SMALL, Align::Left)?;
+            free_from = left + width + 14.0;
+        }
+        Ok(())
     }
 }
 
@@ -288,16 +332,19 @@ impl Row {
             .in_ink(INK)
             .fit(&self.numbers, OUTCOMES - NUMBERS - 14.0);
         sheet.text((NUMBERS, y + 5.0), &numbers, SMALL.in_ink(INK), Align::Left)?;
-        for outcome in &self.outcomes {
-            let (marker, ink) = caption::looks(*outcome);
-            sheet.marker((OUTCOMES + 6.0, y), 6.0, marker, ink)?;
-            let face = Face::bold(TEXT.em, ink);
-            sheet.text(
-                (OUTCOMES + 20.0, y + 6.0),
-                outcome.word(),
-                face,
-                Align::Left,
-            )?;
+        match &self.said {
+            Some((Some(outcome), word)) => {
+                let (marker, ink) = caption::looks(*outcome);
+                sheet.marker((OUTCOMES + 7.0, y), 6.5, marker, ink)?;
+                let face = Face::bold(TEXT.em, ink);
+                sheet.text((OUTCOMES + 22.0, y + 6.0), word, face, Align::Left)?;
+            }
+            Some((None, elsewhere)) => {
+                let room = WIDTH - MARGIN - OUTCOMES;
+                let text = SMALL.fit(elsewhere, room);
+                sheet.text((OUTCOMES, y + 6.0), &text, SMALL, Align::Left)?;
+            }
+            None => {}
         }
         Ok(())
     }
@@ -337,6 +384,7 @@ mod tests {
             value: 1e9,
             expanded: 1.0,
             marker: Marker::Disc,
+            name: "",
         };
         let rows = Rows {
             head: "",
@@ -350,7 +398,7 @@ mod tests {
                 band: None,
                 marks: vec![far],
                 numbers: String::new(),
-                outcomes: Vec::new(),
+                said: None,
             }],
             nothing: "",
         };

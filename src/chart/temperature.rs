@@ -2,7 +2,7 @@
 //! that the after-heat is in it, with the thermal link's temperatures as lines.
 
 use super::axis::{drawable, extent, widened};
-use super::caption;
+use super::caption::{self, About, Said};
 use super::fonts::{Face, SMALL, TEXT};
 use super::header::{self, FIGURES_END, Header, KeyFigure};
 use super::ink::{
@@ -12,14 +12,14 @@ use super::ink::{
 use super::labels::{self, Label};
 use super::number::{fixed, short, with_uncertainty};
 use super::panel::Panel;
-use super::power::{margin, record_time};
+use super::power::{margin, outcome, record_time};
 use super::series::{Span, Trace, thinned};
 use super::sheet::{Align, Frame, Sheet};
 use super::words::clean;
 use super::{DrawError, Picture, Scene};
 use crate::analysis::{CellResult, Figure};
 use crate::plan::PlannedLink;
-use crate::quantity::Reading;
+use crate::quantity::{Celsius, Reading};
 use crate::spec::sequence::RoleKind;
 
 type Drawn = Result<(), DrawError>;
@@ -28,7 +28,7 @@ const HEIGHT: f64 = 900.0;
 /// Markers stand this far apart along a line, in pixels.
 const MARKERS_APART: f64 = 150.0;
 /// More roles than these are not drawn; the picture says how many.
-const MOST_OTHERS: usize = 8;
+const MOST_OTHERS: usize = 6;
 
 const TF: Stroke = Stroke::solid(LIMIT, 2.0);
 const OPENS: Stroke = Stroke::broken(LIMIT, 2.0, DASH_DOT);
@@ -61,7 +61,7 @@ pub fn draw(scene: &Scene, index: usize) -> Result<Picture, DrawError> {
     let header = Header {
         title: format!("Temperatures · {}", caption::cell(&scene.plan.cells[index])),
         record_time: record_time(&all.span),
-        outcome: gravest(scene, index),
+        outcome: gravest(scene, index).map(outcome),
     };
     let figures = key_figures(scene, &all);
     let name = caption::file_name(scene, "temperature", index);
@@ -119,12 +119,11 @@ impl<'a> Temperatures<'a> {
 }
 
 /// The graver of the thermal-link findings of the cell.
-fn gravest(scene: &Scene, index: usize) -> Option<(crate::judge::Outcome, String)> {
-    [caption::About::Holding, caption::About::Opening]
+fn gravest<'a>(scene: &Scene<'a>, index: usize) -> Option<Said<'a>> {
+    [About::Holding, About::Opening]
         .into_iter()
-        .filter_map(|about| caption::finding(scene, index, about))
-        .max_by_key(|finding| caption::gravity(finding.outcome))
-        .map(|finding| (finding.outcome, clean(&finding.rule)))
+        .filter_map(|about| Said::of(scene, index, about))
+        .reduce(Said::graver)
 }
 
 fn key_figures(scene: &Scene, all: &Temperatures) -> Vec<KeyFigure> {
@@ -170,7 +169,7 @@ fn margins(all: &Temperatures) -> Vec<KeyFigure> {
         return vec![KeyFigure::absent("margin to the thermal link", why)];
     };
     let one = |name: &str, limit: f64, note: String| match all.worst() {
-        Some((worst, _)) => KeyFigure::known(name, margin(limit - worst, "K"), note),
+        Some((worst, expanded)) => KeyFigure::known(name, margin(limit - worst, expanded), note),
         None => KeyFigure::absent(name, "there is no worst case"),
     };
     let th = match link.th {
@@ -211,6 +210,7 @@ fn disbelief(sheet: &mut Sheet, all: &Temperatures) -> Result<f64, DrawError> {
 struct LinkLine {
     value: f64,
     name: String,
+    note: &'static str,
     stroke: Stroke,
 }
 
@@ -218,19 +218,28 @@ fn link_lines(link: Option<&PlannedLink>, hottest: f64) -> Vec<LinkLine> {
     let Some(link) = link else {
         return Vec::new();
     };
-    let line = |value: crate::quantity::Celsius, name: &str, stroke| LinkLine {
+    let line = |value: Celsius, name: &str, note, stroke| LinkLine {
         value: value.get(),
-        name: format!("{name} {value}"),
+        name: format!("{name}  {value}"),
+        note,
         stroke,
     };
     let mut lines = vec![
-        line(link.tf, "Tf, functioning", TF),
-        line(link.opens_from, "Tf − 10 K, earliest", OPENS),
+        line(link.tf, "Tf", "functioning temperature", TF),
+        line(
+            link.opens_from,
+            "Tf − 10 K",
+            "earliest opening, IEC 60691",
+            OPENS,
+        ),
     ];
-    lines.extend(link.th.map(|th| line(th, "Th, holding", TH)));
+    lines.extend(
+        link.th
+            .map(|th| line(th, "Th", "holding, from the data sheet", TH)),
+    );
     // Tm matters only where the link has opened; else it would flatten the rest.
     let tm = link.tm.filter(|_| hottest > link.tf.get());
-    lines.extend(tm.map(|tm| line(tm, "Tm, maximum", TM)));
+    lines.extend(tm.map(|tm| line(tm, "Tm", "maximum limit", TM)));
     lines
 }
 
@@ -271,7 +280,7 @@ fn panel(sheet: &mut Sheet, scene: &Scene, all: &Temperatures, below: f64) -> Dr
         trace(sheet, &panel, all, role)?;
     }
     off(sheet, &panel, all)?;
-    highest(sheet, &panel, all)?;
+    highest(sheet, &panel, all, &lines)?;
     let head = match all.left_out {
         0 => "temperatures in °C".to_owned(),
         n => format!("temperatures in °C ({n} more roles are in the record)"),
@@ -362,7 +371,7 @@ fn off(sheet: &mut Sheet, panel: &Panel, all: &Temperatures) -> Drawn {
 }
 
 /// A ring around the body's highest temperature, and its value.
-fn highest(sheet: &mut Sheet, panel: &Panel, all: &Temperatures) -> Drawn {
+fn highest(sheet: &mut Sheet, panel: &Panel, all: &Temperatures, lines: &[LinkLine]) -> Drawn {
     let Some(body) = all.roles.iter().find(|role| role.name == "body") else {
         return Ok(());
     };
@@ -370,13 +379,12 @@ fn highest(sheet: &mut Sheet, panel: &Panel, all: &Temperatures) -> Drawn {
         return Ok(());
     };
     let ink: Ink = body.looks.stroke.ink;
-    let (x, y) = panel.at(all.minutes(peak.t), peak.v);
-    sheet.marker((x, y), 6.0, Marker::Ring, ink)?;
-    let text = format!("highest {} °C", short(peak.v, 4));
-    let face = Face::bold(TEXT.em, ink);
-    let half = 0.5 * face.width(&text) + 6.0;
-    let x = x.min(panel.frame.right - half).max(panel.frame.left + half);
-    sheet.text_on_paper((x, y + 26.0), &text, face, Align::Centre)
+    let at = panel.at(all.minutes(peak.t), peak.v);
+    sheet.marker(at, 6.0, Marker::Ring, ink)?;
+    let text = format!("highest {} °C", fixed(peak.v, 1));
+    let mut levels: Vec<f64> = lines.iter().map(|line| line.value).collect();
+    levels.extend(all.worst().map(|worst| worst.0));
+    panel.name(sheet, at, &text, Face::bold(TEXT.em, ink), &levels)
 }
 
 fn line_labels(scene: &Scene, panel: &Panel, all: &Temperatures, lines: &[LinkLine]) -> Vec<Label> {
@@ -384,7 +392,10 @@ fn line_labels(scene: &Scene, panel: &Panel, all: &Temperatures, lines: &[LinkLi
         .iter()
         .map(|line| Label {
             y: panel.y.at(line.value),
-            lines: vec![(line.name.clone(), TEXT.in_ink(LIMIT))],
+            lines: vec![
+                (line.name.clone(), TEXT.in_ink(LIMIT)),
+                (line.note.to_owned(), SMALL),
+            ],
             stroke: line.stroke,
             marker: None,
         })
