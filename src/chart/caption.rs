@@ -118,13 +118,12 @@ impl<'a> Said<'a> {
         }
     }
 
-    /// Where the finding was made, if not here: `worst condition: dry`.
+    /// The condition in which the finding was made, if not in this one.
     pub fn worst_condition(self) -> Option<String> {
         let Said::Elsewhere(finding) = self else {
             return None;
         };
-        let condition = finding.condition.as_deref().unwrap_or("another");
-        Some(format!("worst condition: {}", clean(condition)))
+        Some(clean(finding.condition.as_deref().unwrap_or("another")))
     }
 }
 

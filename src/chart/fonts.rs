@@ -160,7 +160,10 @@ fn together(text: &str) -> Vec<String> {
     let mut words: Vec<String> = Vec::new();
     for word in text.split_whitespace() {
         let bare = word.trim_end_matches([',', ';', '.', ':', ')']);
-        let is_unit = UNITS.contains(&bare);
+        let is_unit = bare
+            .split('/')
+            .next()
+            .is_some_and(|unit| UNITS.contains(&unit));
         match words.last_mut() {
             Some(last) if is_unit && last.ends_with(|c: char| c.is_ascii_digit()) => {
                 last.push(' ');
@@ -195,7 +198,10 @@ mod tests {
         assert!(lines.iter().all(|line| TEXT.width(line) <= 150.0));
         assert_eq!(TEXT.wrap("one", 150.0, 3), ["one"]);
         assert!(TEXT.wrap("", 150.0, 3).is_empty());
-        assert_eq!(together("up to 2.9 K, not"), ["up", "to", "2.9 K,", "not"]);
+        assert_eq!(
+            together("up to 2.9 K/h, not"),
+            ["up", "to", "2.9 K/h,", "not"]
+        );
         let one_word = TEXT.wrap(&"x".repeat(300), 150.0, 3);
         assert!(one_word.len() == 1 && one_word[0].ends_with('…'));
     }

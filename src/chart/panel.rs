@@ -58,7 +58,7 @@ impl Panel {
         sheet.fill(frame, ink)
     }
 
-    /// Hatches the stretch from `from` to `to` and names it below the upper edge.
+    /// Hatches the stretch from `from` to `to` and names it at the upper edge.
     ///
     /// # Errors
     /// Those of the sheet.
@@ -91,9 +91,16 @@ impl Panel {
         for x in [x0, x1] {
             sheet.line((x, top), (x, bottom), Stroke::solid(WINDOW, 1.5))?;
         }
-        let room = 0.5 * TEXT.width(name) + 6.0;
-        let middle = (0.5 * (x0 + x1)).min(right - room).max(left + room);
-        sheet.text_on_paper((middle, top + 20.0), name, TEXT, Align::Centre)
+        // Beside a window that is narrower than its name.
+        let width = TEXT.width(name) + 12.0;
+        let (x, align) = if width < x1 - x0 {
+            (0.5 * (x0 + x1), Align::Centre)
+        } else if x0 - width > left {
+            (x0 - 8.0, Align::Right)
+        } else {
+            (x1 + 8.0, Align::Left)
+        };
+        sheet.text_on_paper((x, top + 20.0), name, TEXT, align)
     }
 
     /// Grid lines; drawn above bands and below data.

@@ -100,7 +100,10 @@ pub fn outcome(said: Said) -> (Option<Outcome>, String) {
     let finding = said.finding();
     let rule = clean(&finding.rule);
     match said.worst_condition() {
-        Some(worst) => (None, format!("{rule}: judged in the {worst}")),
+        Some(worst) => (
+            None,
+            format!("{rule}: judged in the worst condition, {worst}"),
+        ),
         None => (Some(finding.outcome), rule),
     }
 }

@@ -207,9 +207,7 @@ fn settled_level(
     let from = panel.at(minutes(steady.from_s), value);
     let to = panel.at(minutes(steady.to_s), value);
     let inside = Some(panel.frame);
-    for (ink, width) in [(PAPER, 6.0), (LEVEL, 3.0)] {
-        sheet.path(&[from, to], Stroke::solid(ink, width), inside)?;
-    }
+    sheet.path(&[from, to], Stroke::solid(LEVEL, 3.0), inside)?;
     let Some(expanded) = drawable(expanded).filter(|u| *u > 0.0) else {
         return Ok(());
     };
@@ -291,7 +289,7 @@ fn line_labels(panel: &Panel, input: &Input, column: Frame, whole: bool) -> Vec<
         let text = format!("{words} {} W", short(limit, 5));
         let mut lines = vec![(text, TEXT.in_ink(LIMIT))];
         if whole {
-            let source = SMALL.wrap(&limits.source, room, 2);
+            let source = SMALL.wrap(&limits.source, room, 3);
             lines.extend(source.into_iter().map(|line| (line, SMALL)));
         }
         found.push(label(panel, limit, lines, AT_LIMIT));

@@ -159,8 +159,8 @@ fn value(finding: &Finding) -> String {
         return String::new();
     };
     let limit = match (finding.at_least, finding.at_most) {
-        (_, Some(most)) => format!(", at most {}", short(most, 4)),
-        (Some(least), None) => format!(", at least {}", short(least, 4)),
+        (_, Some(most)) => format!(", at most {} {unit}", short(most, 4)),
+        (Some(least), None) => format!(", at least {} {unit}", short(least, 4)),
         (None, None) => String::new(),
     };
     format!("{} {unit}{limit}", short(value, 4))

@@ -192,7 +192,7 @@ fn said(scene: &Scene, index: usize, abouts: &[About]) -> Option<(Option<Outcome
         .filter_map(|about| Said::of(scene, index, *about));
     let said = all.reduce(Said::graver)?;
     Some(match said.worst_condition() {
-        Some(worst) => (None, worst),
+        Some(worst) => (None, format!("worst: {worst}")),
         None => {
             let outcome = said.finding().outcome;
             (Some(outcome), outcome.word().to_owned())
