@@ -5,8 +5,8 @@ use super::Scene;
 use super::ink::{Ink, Marker};
 use super::words::{clean, safe_name, squeezed};
 use crate::judge::{Finding, Outcome};
-use crate::plan::Cell;
-use crate::spec::sequence::RuleWeight;
+use crate::plan::{Cell, PlannedRule};
+use crate::spec::sequence::{RuleKind, RuleWeight};
 
 /// A supply in words: `230 V, 50 Hz`.
 pub fn supply(cell: &Cell) -> String {
@@ -68,7 +68,7 @@ impl About {
 pub enum Said<'a> {
     /// A finding is about this very cell.
     Here(&'a Finding),
-    /// The rule judges the worst condition, and that is another one.
+    /// A rule is for this cell too, but judges the worst condition: another one.
     Elsewhere(&'a Finding),
 }
 
@@ -90,12 +90,11 @@ impl<'a> Said<'a> {
         let (here, elsewhere): (Vec<_>, Vec<_>) =
             found.partition(|finding| finding.condition == cell.condition);
         let here = here.into_iter().max_by_key(weight).map(Said::Here);
-        here.or_else(|| {
-            elsewhere
-                .into_iter()
-                .max_by_key(weight)
-                .map(Said::Elsewhere)
-        })
+        let elsewhere = elsewhere
+            .into_iter()
+            .filter(|_| has_rule(scene, cell, about))
+            .max_by_key(weight);
+        here.or(elsewhere.map(Said::Elsewhere))
     }
 
     /// The finding, wherever it was made.
@@ -125,6 +124,23 @@ impl<'a> Said<'a> {
         };
         Some(clean(finding.condition.as_deref().unwrap_or("another")))
     }
+}
+
+/// Whether a rule about `about` is for `cell`.
+fn has_rule(scene: &Scene, cell: &Cell, about: About) -> bool {
+    let is_about = |kind: &RuleKind| match about {
+        About::Power => matches!(kind, RuleKind::PlatePower | RuleKind::PowerLimits { .. }),
+        About::Holding => *kind == RuleKind::LinkHolding,
+        About::Opening => *kind == RuleKind::LinkOpening,
+    };
+    let mut rules = scene.plan.rules.iter();
+    rules.any(|rule| is_about(&rule.kind) && is_for(rule, cell))
+}
+
+/// Whether `rule` is for `cell`, by position and condition.
+pub fn is_for(rule: &PlannedRule, cell: &Cell) -> bool {
+    rule.position.as_ref().is_none_or(|p| *p == cell.position)
+        && (rule.condition.is_none() || rule.condition == cell.condition)
 }
 
 /// The shape and the colour that go with an outcome's word.

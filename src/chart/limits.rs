@@ -3,7 +3,7 @@
 
 use super::Scene;
 use super::axis::drawable;
-use super::caption::{About, Said};
+use super::caption::{About, Said, is_for};
 use super::words::clean;
 use crate::analysis::plate_point;
 use crate::plan::Cell;
@@ -52,10 +52,8 @@ impl PowerLimits {
 
     fn by_the_rules(&mut self, scene: &Scene, cell: &Cell, rated: Option<Span<Watts>>) {
         for rule in &scene.plan.rules {
-            let is_for = rule.position.as_ref().is_none_or(|p| *p == cell.position)
-                && (rule.condition.is_none() || rule.condition == cell.condition);
             match (&rule.kind, rated) {
-                _ if !is_for => continue,
+                _ if !is_for(rule, cell) => continue,
                 (RuleKind::PlatePower, Some(rated)) => {
                     let band = plate::limits(scene.plan.appliance.kind, rated);
                     self.at_least = band.at_least.map(Watts::get);

@@ -80,8 +80,8 @@ pub fn soak(sheet: &mut Sheet, input: &Input, height: f64) -> Drawn {
     let frame = frame(SOAK_SIDES, height);
     let span = &input.span;
     let minutes = |t: f64| (t - span.energised) / 60.0;
-    let last = input.trace.last().map_or(0.0, |point| point.t);
-    let end = minutes(span.off.unwrap_or(last).max(last)).max(1.0 / 60.0);
+    let last = input.trace.last().map(|point| minutes(point.t));
+    let end = last.unwrap_or(1.0).max(0.05);
     let panel = Panel::new(frame, (0.0, end), soak_range(input, minutes, end));
 
     lines_behind(sheet, &panel, input, true)?;
@@ -214,6 +214,9 @@ fn settled_level(
     let x = 0.5 * (from.0 + to.0);
     let (top, bottom) = (panel.y.at(value + expanded), panel.y.at(value - expanded));
     for (ink, width) in [(PAPER, 5.0), (LEVEL, 2.0)] {
+        if ink == PAPER && bottom - top < 16.0 {
+            continue;
+        }
         let bar = Stroke::solid(ink, width);
         sheet.path(&[(x, top), (x, bottom)], bar, inside)?;
         for y in [top, bottom] {
@@ -288,9 +291,11 @@ fn line_labels(panel: &Panel, input: &Input, column: Frame, whole: bool) -> Vec<
         };
         let text = format!("{words} {} W", short(limit, 5));
         let mut lines = vec![(text, TEXT.in_ink(LIMIT))];
-        if whole {
-            let source = SMALL.wrap(&limits.source, room, 3);
+        if whole && found.is_empty() {
+            let source = SMALL.wrap(&limits.source, room, 4);
             lines.extend(source.into_iter().map(|line| (line, SMALL)));
+        } else if whole {
+            lines.push(("by the same".to_owned(), SMALL));
         }
         found.push(label(panel, limit, lines, AT_LIMIT));
     }

@@ -328,9 +328,19 @@ impl Row {
         for mark in &self.marks {
             mark.draw(sheet, scale, y)?;
         }
-        let numbers = SMALL
-            .in_ink(INK)
-            .fit(&self.numbers, OUTCOMES - NUMBERS - 14.0);
+        if self.marks.is_empty() {
+            // Why there is no value stands where the value would be.
+            let face = SMALL.in_ink(INK);
+            let text = face.fit(&self.numbers, SCALE_RIGHT - SCALE_LEFT - 16.0);
+            let middle = 0.5 * (SCALE_LEFT + SCALE_RIGHT);
+            sheet.text_on_paper((middle, y + 5.0), &text, face, Align::Centre)?;
+        }
+        let numbers = if self.marks.is_empty() {
+            "none"
+        } else {
+            &self.numbers
+        };
+        let numbers = SMALL.in_ink(INK).fit(numbers, OUTCOMES - NUMBERS - 14.0);
         sheet.text((NUMBERS, y + 5.0), &numbers, SMALL.in_ink(INK), Align::Left)?;
         match &self.said {
             Some((Some(outcome), word)) => {
@@ -344,7 +354,7 @@ impl Row {
                 let text = SMALL.fit(elsewhere, room);
                 sheet.text((OUTCOMES, y + 6.0), &text, SMALL, Align::Left)?;
             }
-            None => {}
+            None => sheet.text((OUTCOMES, y + 6.0), "no finding", SMALL, Align::Left)?,
         }
         Ok(())
     }
