@@ -238,7 +238,7 @@ pub fn sample(cell: usize, step: u32, role: usize, t: f64, value: Option<f64>) -
         step,
         cell: Some(cell),
         role,
-        energised: step % 4 != 0,
+        energised: !step.is_multiple_of(4),
         status: if value.is_some() {
             Status::Ok
         } else {

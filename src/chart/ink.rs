@@ -97,7 +97,7 @@ pub const BODY: TraceInk = TraceInk {
 
 /// The bay's own ambient.
 pub const AMBIENT: TraceInk = TraceInk {
-    stroke: Stroke::broken(Ink(66, 122, 176), 2.0, &[9.0, 5.0]),
+    stroke: Stroke::broken(Ink(48, 100, 156), 2.0, &[9.0, 5.0]),
     marker: Marker::Ring,
 };
 
@@ -128,3 +128,48 @@ pub const OTHERS: [TraceInk; 6] = [
         marker: Marker::Plus,
     },
 ];
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    /// Relative luminance, and contrast of two colours, as WCAG 2 defines them (from
+    /// memory).
+    fn luminance(ink: Ink) -> f64 {
+        let part = |value: u8| {
+            let v = f64::from(value) / 255.0;
+            if v <= 0.040_45 {
+                v / 12.92
+            } else {
+                ((v + 0.055) / 1.055).powf(2.4)
+            }
+        };
+        0.2126 * part(ink.0) + 0.7152 * part(ink.1) + 0.0722 * part(ink.2)
+    }
+
+    fn contrast(a: Ink, b: Ink) -> f64 {
+        let (a, b) = (luminance(a) + 0.05, luminance(b) + 0.05);
+        a.max(b) / a.min(b)
+    }
+
+    #[test]
+    fn whatever_is_written_is_legible_on_paper_and_on_the_band() {
+        let lines = OTHERS.iter().chain([&BODY, &AMBIENT]);
+        let inks = lines.map(|line| line.stroke.ink);
+        for ink in inks.chain([INK, SOFT, POWER, LEVEL, LIMIT, MEAN, PLATE]) {
+            assert!(contrast(ink, PAPER) >= 4.5, "{ink:?}");
+            assert!(contrast(ink, BAND) >= 3.9, "{ink:?}");
+        }
+        assert!((contrast(Ink(0, 0, 0), PAPER) - 21.0).abs() < 1e-9);
+    }
+
+    #[test]
+    fn no_two_temperatures_share_their_dash_or_their_marker() {
+        let all: Vec<TraceInk> = OTHERS.into_iter().chain([BODY, AMBIENT]).collect();
+        for (n, a) in all.iter().enumerate() {
+            for b in &all[n + 1..] {
+                assert!(a.marker != b.marker && a.stroke.dash != b.stroke.dash);
+            }
+        }
+    }
+}

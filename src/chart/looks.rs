@@ -198,6 +198,35 @@ fn ink_stands_where_the_peak_is() {
     }
 }
 
+/// Pixels of the power's colour in the soak panel's column at `t` seconds.
+fn power_ink(picture: &Picture, t: f64) -> usize {
+    let (width, height, rgb) = decoded(picture);
+    let (left, right) = power_panels::SOAK_SIDES;
+    let column = (left + (right - left) * (t + 0.3) / 1260.0) as usize;
+    let is_power = |y: &usize| {
+        let at = 3 * (y * width + column);
+        i32::from(rgb[at + 2]) - i32::from(rgb[at]) > 70
+    };
+    (300..height - 80).filter(is_power).count()
+}
+
+#[test]
+fn where_samples_are_missing_or_bad_the_line_has_a_gap() {
+    let mut whole = one_cell();
+    whole.virtual_bench = false;
+    let whole = &drawn("whole", &whole)[1];
+    let (_, mut staged) = degenerate()
+        .into_iter()
+        .find(|(name, _)| *name == "gaps")
+        .unwrap();
+    staged.virtual_bench = false;
+    let gaps = &drawn("gaps", &staged)[1];
+    for (t, is_gap) in [(300.0, false), (450.0, true), (600.0, false), (730.0, true)] {
+        assert!(power_ink(whole, t) > 0, "{t}");
+        assert_eq!(power_ink(gaps, t) == 0, is_gap, "{t}");
+    }
+}
+
 /// Every way in which a record can be poor.
 fn degenerate() -> Vec<(&'static str, Staged)> {
     let mut all = Vec::new();

@@ -81,7 +81,10 @@ pub fn soak(sheet: &mut Sheet, input: &Input, height: f64) -> Drawn {
     let span = &input.span;
     let minutes = |t: f64| (t - span.energised) / 60.0;
     let last = input.trace.last().map(|point| minutes(point.t));
-    let end = last.unwrap_or(1.0).max(0.05);
+    // OFF comes a moment after the last sample; one that is far from it is not believed.
+    let off = span.off.map(minutes);
+    let off = off.filter(|off| last.is_some_and(|last| (last..last + 0.5).contains(off)));
+    let end = off.or(last).unwrap_or(1.0).max(0.05);
     let panel = Panel::new(frame, (0.0, end), soak_range(input, minutes, end));
 
     lines_behind(sheet, &panel, input, true)?;
