@@ -1,6 +1,8 @@
 //! Guards: limits that trip. None may be absent.
 
-use super::types::{Cell, Guards, PlannedAppliance, PlannedBay, PlannedInstrument, PlannedRule};
+use super::types::{
+    Cell, Guards, PlannedAppliance, PlannedBay, PlannedInstrument, PlannedRule,
+};
 use crate::quantity::{Celsius, Kelvins, Seconds, Watts};
 use crate::spec::plate;
 use crate::spec::sequence::{GuardLimits, RuleKind};
