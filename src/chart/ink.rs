@@ -1,81 +1,175 @@
-//! Colours and line styles: told apart without colour vision and in grey, because
-//! every line has its own dash and its own label.
+//! Colours and strokes. Colours differ in lightness as well as in hue, and no
+//! meaning hangs on a colour alone: dash, marker or word says it too.
 
-use plotters::style::RGBColor;
-
-use super::canvas::Point;
-
-/// Text and frames.
-pub(super) const INK: RGBColor = RGBColor(32, 36, 42);
-/// Secondary text.
-pub(super) const SOFT: RGBColor = RGBColor(96, 102, 110);
-/// Grid.
-pub(super) const GRID: RGBColor = RGBColor(226, 229, 233);
-/// The words across a virtual picture.
-pub(super) const WATERMARK: RGBColor = RGBColor(234, 234, 238);
-/// Power, and the body.
-pub(super) const MAIN: RGBColor = RGBColor(0, 76, 138);
-/// Limits.
-pub(super) const LIMIT: RGBColor = RGBColor(176, 58, 0);
-/// The allowed band.
-pub(super) const BAND: RGBColor = RGBColor(120, 170, 215);
-/// The settled window.
-pub(super) const WINDOW: RGBColor = RGBColor(232, 196, 80);
-/// Other temperature roles, one after the other.
-pub(super) const OTHERS: [RGBColor; 3] = [RGBColor(0, 120, 96), RGBColor(140, 70, 130), RGBColor(110, 100, 20)];
-/// Ambient.
-pub(super) const AMBIENT: RGBColor = RGBColor(110, 116, 124);
-
-/// How a line is broken.
+/// A colour.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
-pub(super) enum Dash {
-    Solid,
-    Long,
-    Short,
-    Dotted,
+pub struct Ink(pub u8, pub u8, pub u8);
+
+/// Paper.
+pub const PAPER: Ink = Ink(255, 255, 255);
+/// Text and frames.
+pub const INK: Ink = Ink(28, 32, 38);
+/// Lesser text.
+pub const SOFT: Ink = Ink(86, 92, 102);
+/// Grid.
+pub const GRID: Ink = Ink(212, 215, 219);
+/// Ruled lines between parts.
+pub const RULE: Ink = Ink(176, 180, 188);
+/// The allowed band.
+pub const BAND: Ink = Ink(222, 237, 227);
+/// The settled window.
+pub const WINDOW: Ink = Ink(196, 176, 128);
+/// Measured power.
+pub const POWER: Ink = Ink(20, 66, 132);
+/// Settled level.
+pub const LEVEL: Ink = Ink(150, 56, 0);
+/// Limits.
+pub const LIMIT: Ink = Ink(120, 16, 40);
+/// Means that no rule judges.
+pub const MEAN: Ink = Ink(92, 60, 112);
+/// The plate's own value.
+pub const PLATE: Ink = Ink(30, 96, 62);
+
+/// How a line is broken, in pixels: on, off, on, off ...; empty is unbroken.
+pub type Dash = &'static [f64];
+
+/// Unbroken.
+pub const SOLID: Dash = &[];
+/// Limits.
+pub const DASHED: Dash = &[11.0, 6.0];
+/// The plate's own value.
+pub const DOTTED: Dash = &[2.5, 5.0];
+/// Earliest opening of a link.
+pub const DASH_DOT: Dash = &[14.0, 5.0, 2.5, 5.0];
+/// Values worked out rather than sampled.
+pub const SHORT: Dash = &[6.0, 4.0];
+
+/// A line's looks.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Stroke {
+    /// Colour.
+    pub ink: Ink,
+    /// Width in pixels.
+    pub width: f64,
+    /// Dash.
+    pub dash: Dash,
 }
 
-impl Dash {
-    /// Lengths of stroke and gap in pixels.
-    fn lengths(self) -> Option<(f64, f64)> {
-        match self {
-            Dash::Solid => None,
-            Dash::Long => Some((16.0, 6.0)),
-            Dash::Short => Some((7.0, 5.0)),
-            Dash::Dotted => Some((2.0, 4.0)),
-        }
+impl Stroke {
+    /// An unbroken line.
+    pub const fn solid(ink: Ink, width: f64) -> Self {
+        Self::broken(ink, width, SOLID)
     }
 
-    /// A line cut into its strokes.
-    pub(super) fn cut(self, points: &[Point]) -> Vec<Vec<Point>> {
-        let Some((stroke, gap)) = self.lengths() else { return vec![points.to_vec()] };
-        let mut pieces = Vec::new();
-        let mut piece: Vec<Point> = points.first().copied().into_iter().collect();
-        let (mut drawing, mut left) = (true, stroke);
-        for pair in points.windows(2) {
-            let (mut from, to) = (pair[0], pair[1]);
-            let mut length = (to.0 - from.0).hypot(to.1 - from.1);
-            while length > left {
-                let share = left / length;
-                from = (from.0 + share * (to.0 - from.0), from.1 + share * (to.1 - from.1));
-                length -= left;
-                if drawing {
-                    piece.push(from);
-                    pieces.push(std::mem::take(&mut piece));
-                } else {
-                    piece = vec![from];
-                }
-                drawing = !drawing;
-                left = if drawing { stroke } else { gap };
+    /// A broken line.
+    pub const fn broken(ink: Ink, width: f64, dash: Dash) -> Self {
+        Self { ink, width, dash }
+    }
+}
+
+/// A shape that stands on a line or for an outcome.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Marker {
+    Disc,
+    Ring,
+    Square,
+    Triangle,
+    Diamond,
+    Cross,
+    Hollow,
+    Plus,
+}
+
+/// Looks of one temperature's line.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct TraceInk {
+    /// The line.
+    pub stroke: Stroke,
+    /// Stands along the line.
+    pub marker: Marker,
+}
+
+/// The body's temperature.
+pub const BODY: TraceInk = TraceInk {
+    stroke: Stroke::solid(Ink(156, 36, 20), 2.5),
+    marker: Marker::Disc,
+};
+
+/// The bay's own ambient.
+pub const AMBIENT: TraceInk = TraceInk {
+    stroke: Stroke::broken(Ink(48, 100, 156), 2.0, &[9.0, 5.0]),
+    marker: Marker::Ring,
+};
+
+/// Every other role, in turn.
+pub const OTHERS: [TraceInk; 6] = [
+    TraceInk {
+        stroke: Stroke::broken(Ink(0, 84, 84), 2.0, &[16.0, 4.0, 4.0, 4.0]),
+        marker: Marker::Square,
+    },
+    TraceInk {
+        stroke: Stroke::broken(Ink(112, 60, 140), 2.0, &[4.0, 4.0]),
+        marker: Marker::Triangle,
+    },
+    TraceInk {
+        stroke: Stroke::broken(Ink(134, 104, 0), 2.0, &[20.0, 5.0]),
+        marker: Marker::Diamond,
+    },
+    TraceInk {
+        stroke: Stroke::broken(Ink(70, 74, 84), 2.0, &[12.0, 3.0, 3.0, 3.0, 3.0, 3.0]),
+        marker: Marker::Cross,
+    },
+    TraceInk {
+        stroke: Stroke::broken(Ink(24, 44, 96), 2.0, &[6.0, 2.5]),
+        marker: Marker::Hollow,
+    },
+    TraceInk {
+        stroke: Stroke::broken(Ink(176, 84, 60), 2.0, &[2.5, 4.0]),
+        marker: Marker::Plus,
+    },
+];
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    /// Relative luminance, and contrast of two colours, as WCAG 2 defines them (from
+    /// memory).
+    fn luminance(ink: Ink) -> f64 {
+        let part = |value: u8| {
+            let v = f64::from(value) / 255.0;
+            if v <= 0.040_45 {
+                v / 12.92
+            } else {
+                ((v + 0.055) / 1.055).powf(2.4)
             }
-            left -= length;
-            if drawing {
-                piece.push(to);
+        };
+        0.2126 * part(ink.0) + 0.7152 * part(ink.1) + 0.0722 * part(ink.2)
+    }
+
+    fn contrast(a: Ink, b: Ink) -> f64 {
+        let (a, b) = (luminance(a) + 0.05, luminance(b) + 0.05);
+        a.max(b) / a.min(b)
+    }
+
+    #[test]
+    fn whatever_is_written_is_legible_on_paper_and_on_the_band() {
+        let lines = OTHERS.iter().chain([&BODY, &AMBIENT]);
+        let inks = lines.map(|line| line.stroke.ink);
+        for ink in inks.chain([INK, SOFT, POWER, LEVEL, LIMIT, MEAN, PLATE]) {
+            assert!(contrast(ink, PAPER) >= 4.5, "{ink:?}");
+            assert!(contrast(ink, BAND) >= 3.9, "{ink:?}");
+        }
+        assert!((contrast(Ink(0, 0, 0), PAPER) - 21.0).abs() < 1e-9);
+    }
+
+    #[test]
+    fn no_two_temperatures_share_their_dash_or_their_marker() {
+        let all: Vec<TraceInk> = OTHERS.into_iter().chain([BODY, AMBIENT]).collect();
+        for (n, a) in all.iter().enumerate() {
+            for b in &all[n + 1..] {
+                assert!(a.marker != b.marker && a.stroke.dash != b.stroke.dash);
             }
         }
-        if drawing && piece.len() > 1 {
-            pieces.push(piece);
-        }
-        pieces
     }
 }

@@ -1,197 +1,227 @@
-//! Power over time: the switch-on in seconds at full height, the soak in minutes
-//! zoomed to the plate's band and the settled level. One axis could show only one of
-//! the two: the inrush lasts seconds, the soak half an hour.
+//! The picture of one cell's input: key figures, the switch-on in seconds and the
+//! soak in minutes side by side, for the one lasts seconds and the other half an
+//! hour.
 
-use super::axis::{Panel, SMALL, number, spread};
-use super::canvas::{Anchor, Canvas, Lettering};
-use super::ink::{BAND, Dash, INK, LIMIT, MAIN, SOFT, WINDOW};
-use super::names::wrapped;
-use super::series::Series;
-use super::{DrawError, Scene};
-use crate::analysis::{CellResult, Figure};
-use crate::plan::Action;
+use super::axis::drawable;
+use super::caption::{self, About, Said};
+use super::header::{self, FIGURES_END, Header, KeyFigure};
+use super::limits::PowerLimits;
+use super::number::{fixed, short, with_sign, with_uncertainty};
+use super::series::{Span, Trace};
+use super::words::clean;
+use super::{DrawError, Picture, Scene, power_panels};
+use crate::analysis::{CellResult, Figure, Inrush, Steady};
+use crate::judge::Outcome;
 use crate::quantity::Reading;
-use crate::spec::plate;
-use crate::spec::sequence::{RoleKind, RuleKind};
+use crate::spec::sequence::RoleKind;
 
-/// Allowed power in a cell and where it comes from.
-#[derive(Debug, Clone)]
-pub(super) struct Allowed {
-    pub(super) at_least: Option<f64>,
-    pub(super) at_most: Option<f64>,
-    pub(super) source: &'static str,
+/// Height of the picture.
+const HEIGHT: f64 = 900.0;
+/// Where its panels begin.
+pub const PANELS_TOP: f64 = FIGURES_END + 44.0;
+
+/// Everything that the panels of a cell's input need.
+pub struct Input<'a> {
+    /// What analysis says of the cell, where it says anything.
+    pub result: Option<&'a CellResult>,
+    /// Power while energised.
+    pub trace: Trace,
+    /// When it was energised and when not any more.
+    pub span: Span,
+    /// First current, seconds since the record's start.
+    pub t0: f64,
+    /// Limits and plate.
+    pub limits: PowerLimits,
 }
 
-/// The band of a cell: a rule's explicit limits, else the plate's.
-pub(super) fn allowed(scene: &Scene, cell: &CellResult) -> Option<Allowed> {
-    let explicit = scene.plan.rules.iter().find_map(|rule| match &rule.kind {
-        RuleKind::PowerLimits { at_least, at_most } if rule.position.as_ref().is_none_or(|p| *p == cell.cell.position) => {
-            Some(Allowed { at_least: at_least.map(|w| w.get()), at_most: at_most.map(|w| w.get()), source: "limit" })
+impl<'a> Input<'a> {
+    fn of(scene: &Scene<'a>, index: usize) -> Self {
+        let result = scene.analysis.cells.get(index);
+        let trace = match scene.plan.role_of_kind(RoleKind::PowerMeter) {
+            Some((role, _)) => {
+                let energised = |sample: &crate::record::Sample| sample.energised;
+                Trace::of(scene, index, role, Reading::Power, energised)
+            }
+            None => Trace::default(),
+        };
+        let span = Span::of(scene, index);
+        let inrush = result.and_then(|result| result.inrush.known());
+        let t0 = inrush
+            .and_then(|inrush| drawable(inrush.t0_s))
+            .unwrap_or(span.energised);
+        Self {
+            result,
+            trace,
+            span,
+            t0,
+            limits: PowerLimits::of(scene, index),
         }
-        _ => None,
-    });
-    explicit.or_else(|| {
-        let rated = scene.plan.rated_in(&cell.cell)?;
-        let band = plate::limits(scene.plan.appliance.kind, rated.power);
-        let at_least = band.at_least.map(|w| w.get());
-        Some(Allowed { at_least, at_most: Some(band.at_most.get()), source: "plate band" })
+    }
+
+    /// The settled input, where it is known and can be drawn.
+    pub fn steady(&self) -> Option<&'a Steady> {
+        let steady = self.result?.steady.known()?;
+        let all = [steady.power_w.value, steady.from_s, steady.to_s];
+        all.iter().all(|v| drawable(*v).is_some()).then_some(steady)
+    }
+
+    /// Why there is no settled input.
+    pub fn why_not_steady(&self) -> &'a str {
+        match self.result {
+            Some(result) => result.steady.reason().unwrap_or("it cannot be drawn"),
+            None => "not run",
+        }
+    }
+}
+
+/// Draws the input of cell `index`.
+///
+/// # Errors
+/// Those of drawing and encoding.
+pub fn draw(scene: &Scene, index: usize) -> Result<Picture, DrawError> {
+    let input = Input::of(scene, index);
+    let cell = &scene.plan.cells[index];
+    let header = Header {
+        title: format!("Power input · {}", caption::cell(cell)),
+        record_time: record_time(&input.span),
+        outcome: Said::of(scene, index, About::Power).map(outcome),
+    };
+    let figures = key_figures(&input);
+    let name = caption::file_name(scene, "power", index);
+    header::picture(scene, name, HEIGHT, &header, |sheet| {
+        header::key_figures(sheet, &figures)?;
+        power_panels::switch_on(sheet, &input, HEIGHT)?;
+        power_panels::soak(sheet, &input, HEIGHT)
     })
 }
 
-/// Both panels in a rectangle.
-pub(super) fn draw(canvas: &Canvas, scene: &Scene, number: usize, [left, top, right, bottom]: [f64; 4]) -> Result<(), DrawError> {
-    let cell = &scene.analysis.cells[number];
-    let meter = scene.plan.role_of_kind(RoleKind::PowerMeter).map(|(n, _)| n);
-    let power = Series::of(scene.samples, number, meter, Reading::Power);
-    let (Figure::Known(on), false) = (&cell.energised_s, power.0.is_empty()) else {
-        return nothing(canvas, [left, top, right, bottom], cell);
-    };
-    let off = cell.off_s.known().copied().unwrap_or_else(|| power.0.last().map_or(*on, |(t, _)| *t));
-    let middle = left + 0.36 * (right - left);
-    let allowed = allowed(scene, cell);
-    switch_on(canvas, scene, cell, &power.since(*on, 1.0), [left, top, middle - 70.0, bottom])?;
-    let soak = power.since(*on, 60.0).between(0.0, (off - on) / 60.0);
-    soaked(canvas, cell, &soak, allowed.as_ref(), (*on, off), [middle + 60.0, top, right - 190.0, bottom])
-}
-
-fn nothing(canvas: &Canvas, [left, top, right, bottom]: [f64; 4], cell: &CellResult) -> Result<(), DrawError> {
-    canvas.frame((left, top), (right, bottom), SOFT)?;
-    let why = cell.energised_s.reason().unwrap_or("no reading of the power");
-    let middle = ((left + right) / 2.0, (top + bottom) / 2.0);
-    canvas.text(&format!("no power: {why}"), middle, Anchor::Centre, Lettering::bold(20.0, SOFT))
-}
-
-fn switch_on(canvas: &Canvas, scene: &Scene, cell: &CellResult, power: &Series, rect: [f64; 4]) -> Result<(), DrawError> {
-    let shown_s = inrush_length(scene, cell);
-    let part = power.between(-2.0, shown_s);
-    let highest = part.values().fold(0.0, f64::max);
-    let panel = Panel::new(rect, (-2.0_f64.min(shown_s / 20.0), shown_s), (0.0, highest * 1.18 + 1e-3));
-    panel.draw(canvas, "switch-on", "time after energising / s", "power / W")?;
-    part.draw(canvas, &panel, MAIN, 2.0, Dash::Solid)?;
-    let text = Lettering::plain(SMALL, INK);
-    match &cell.inrush {
-        Figure::Known(inrush) => {
-            let peak = part.0.iter().filter_map(|(t, v)| Some((*t, (*v)?))).reduce(|a, b| if b.1 > a.1 { b } else { a });
-            if let Some((t, w)) = peak {
-                let at = panel.at(t, w);
-                canvas.dot(at, 4.0, MAIN)?;
-                let (x, anchor) = if at.0 > (panel.left + panel.right) / 2.0 { (at.0 - 10.0, Anchor::Right) } else { (at.0 + 10.0, Anchor::Left) };
-                let ratio = inrush.ratio.map_or_else(String::new, |r| format!(", {r:.1} x settled"));
-                canvas.text(&format!("peak {} W, {} A{ratio}", short(w), short(inrush.peak_a.value)), (x, at.1 - 12.0), anchor, text)?;
-            }
-            if !inrush.lower_bound.is_empty() {
-                let at = (panel.right - 8.0, panel.top + 16.0);
-                canvas.text("a lower bound", at, Anchor::Right, Lettering::plain(SMALL, LIMIT))?;
-            }
-        }
-        Figure::Absent(reason) => {
-            let at = ((panel.left + panel.right) / 2.0, panel.top + 20.0);
-            canvas.text(&format!("inrush: {reason}"), at, Anchor::Centre, text)?;
-        }
+/// What the title block says of a finding.
+pub fn outcome(said: Said) -> (Option<Outcome>, String) {
+    let finding = said.finding();
+    let rule = clean(&finding.rule);
+    match said.worst_condition() {
+        Some(worst) => (
+            None,
+            format!("{rule}: judged in the worst condition, {worst}"),
+        ),
+        None => (Some(finding.outcome), rule),
     }
-    Ok(())
 }
 
-/// What the first panel shows: the inrush step, else a minute.
-fn inrush_length(scene: &Scene, cell: &CellResult) -> f64 {
-    let of_cell = scene.plan.steps.iter().filter(|s| s.cell.is_some_and(|n| scene.plan.cells[n] == cell.cell));
-    let length = of_cell.filter_map(|s| match &s.action {
-        Action::Inrush(timed) => Some(timed.length.get()),
-        _ => None,
+/// The stretch of the record that a cell's pictures show, in words.
+pub fn record_time(span: &Span) -> String {
+    match span.sampled {
+        Some((from, to)) => format!(
+            "record time {} s to {} s; energised at {} s",
+            fixed(from, 1),
+            fixed(to, 1),
+            fixed(span.energised, 1)
+        ),
+        None => "not run: there are no samples".to_owned(),
+    }
+}
+
+fn key_figures(input: &Input) -> Vec<KeyFigure> {
+    let mut figures = vec![settled(input)];
+    if let Some(steady) = input.steady()
+        && steady.duty < 0.999
+    {
+        let note = format!("on for {} % of the window", short(100.0 * steady.duty, 2));
+        let value = format!("{} W", short(steady.mean_w, 4));
+        figures.push(KeyFigure::known("mean, off times included", value, note));
+    }
+    figures.push(plate(input));
+    figures.push(match input.result.map(|result| &result.inrush) {
+        Some(Figure::Known(inrush)) => switch_on(inrush),
+        Some(Figure::Absent(why)) => KeyFigure::absent("switch-on", why),
+        None => KeyFigure::absent("switch-on", "not run"),
     });
-    length.reduce(f64::max).unwrap_or(60.0)
+    figures.push(time_to_settle(input));
+    figures
 }
 
-fn soaked(
-    canvas: &Canvas,
-    cell: &CellResult,
-    power: &Series,
-    allowed: Option<&Allowed>,
-    (on, off): (f64, f64),
-    rect: [f64; 4],
-) -> Result<(), DrawError> {
-    let minutes = |s: f64| (s - on) / 60.0;
-    let range = zoom(cell, power, allowed);
-    let panel = Panel::new(rect, (0.0, minutes(off)), range);
-    if let Some(allowed) = allowed {
-        let low = allowed.at_least.unwrap_or(f64::NEG_INFINITY).max(range.0);
-        let high = allowed.at_most.unwrap_or(f64::INFINITY).min(range.1);
-        if low < high {
-            canvas.fill(panel.at(0.0, high), panel.at(f64::INFINITY, low), BAND, 0.28)?;
-        }
-    }
-    let steady = cell.steady.known();
-    if let Some(steady) = steady {
-        let (from, to) = (minutes(steady.from_s), minutes(steady.to_s));
-        canvas.fill(panel.at(from, f64::INFINITY), panel.at(to, f64::NEG_INFINITY), WINDOW, 0.45)?;
-    }
-    let title = match &cell.steady {
-        Figure::Known(s) => {
-            let settled = cell.settled_s.known().map_or_else(String::new, |t| format!(", settled after {} min", short(t / 60.0)));
-            let cycling = if s.duty < 0.999 { format!(" while on, duty {:.0} %", s.duty * 100.0) } else { String::new() };
-            format!("soak: {} W ± {} W{cycling}{settled}", short(s.power_w.value), short(s.power_w.expanded))
-        }
-        Figure::Absent(_) => "soak".to_owned(),
+fn settled(input: &Input) -> KeyFigure {
+    let Some(steady) = input.steady() else {
+        return KeyFigure::absent("settled input", input.why_not_steady());
     };
-    panel.draw(canvas, &title, "time after energising / min", "power / W")?;
-    power.draw(canvas, &panel, MAIN, 2.0, Dash::Solid)?;
-    if let Figure::Absent(reason) = &cell.steady {
-        for (n, line) in wrapped(&format!("no settled power: {reason}"), 70).iter().take(3).enumerate() {
-            let at = ((panel.left + panel.right) / 2.0, panel.top + 24.0 + 20.0 * n as f64);
-            canvas.text(line, at, Anchor::Centre, Lettering::plain(16.0, LIMIT))?;
+    let name = if steady.duty < 0.999 {
+        "settled input, while on"
+    } else {
+        "settled input"
+    };
+    let power = &steady.power_w;
+    let (value, expanded) = with_uncertainty(power.value, power.expanded);
+    let note = format!(
+        "k = {}; {} samples, {} independent; at {} V",
+        short(power.coverage, 3),
+        steady.samples,
+        short(steady.effective, 2),
+        short(steady.voltage_v, 4),
+    );
+    KeyFigure::known(name, format!("{value} W ± {expanded} W"), note)
+}
+
+fn plate(input: &Input) -> KeyFigure {
+    let limits = &input.limits;
+    let allowed = allowed(limits);
+    let Some((low, high)) = limits.rated else {
+        let why = format!("no promise for this position and supply; {allowed}");
+        return KeyFigure::absent("plate", &why);
+    };
+    let value = if low == high {
+        format!("{} W", short(low, 4))
+    } else {
+        format!("{} W to {} W", short(low, 4), short(high, 4))
+    };
+    KeyFigure::known("plate", value, allowed)
+}
+
+/// What is allowed, in words.
+pub fn allowed(limits: &PowerLimits) -> String {
+    let at_least = limits.at_least.map(|w| short(w, 5));
+    let at_most = limits.at_most.map(|w| short(w, 5));
+    match (at_least, at_most) {
+        (Some(low), Some(high)) => format!("allowed {low} W to {high} W"),
+        (None, Some(high)) => format!("at most {high} W, no lower limit"),
+        (Some(low), None) => format!("at least {low} W, no upper limit"),
+        (None, None) => "no limit is set".to_owned(),
+    }
+}
+
+fn switch_on(inrush: &Inrush) -> KeyFigure {
+    let peak = &inrush.peak_a;
+    let (amps, expanded) = with_uncertainty(peak.value, peak.expanded);
+    let mut notes = vec![format!("{amps} A ± {expanded} A")];
+    if let Some(ratio) = inrush.ratio {
+        notes.push(format!("{} times settled", short(ratio, 3)));
+    }
+    if let Some(half) = inrush.half_way_s {
+        notes.push(format!("half-way in {} s", short(half, 3)));
+    }
+    if let Some(why) = &inrush.supply_limited {
+        notes.push(format!("supply-limited: {}", clean(why)));
+    }
+    if let Some(why) = inrush.lower_bound.first() {
+        notes.push(format!("lower bound: {}", clean(why)));
+    }
+    let value = format!("{} W", short(inrush.peak_w, 4));
+    KeyFigure::known("switch-on peak", value, notes.join("; "))
+}
+
+fn time_to_settle(input: &Input) -> KeyFigure {
+    let name = "settled after";
+    match input.result.map(|result| &result.settled_s) {
+        Some(Figure::Known(s)) => {
+            let criterion = input.steady().map(|steady| clean(&steady.criterion));
+            let value = format!("{} min", fixed(s / 60.0, 1));
+            KeyFigure::known(name, value, criterion.unwrap_or_default())
         }
+        Some(Figure::Absent(why)) => KeyFigure::absent(name, why),
+        None => KeyFigure::absent(name, "not run"),
     }
-    labels(canvas, &panel, cell, allowed)
 }
 
-/// Settled level, band and window in view; the first minutes' peak is not.
-fn zoom(cell: &CellResult, power: &Series, allowed: Option<&Allowed>) -> (f64, f64) {
-    let level = cell.steady.known().map(|s| s.power_w.value).or(power.last()).unwrap_or(1.0).max(1e-3);
-    let mut low = allowed.and_then(|a| a.at_least).map_or(0.6 * level, |l| l.min(level)).max(0.0);
-    let mut high = allowed.and_then(|a| a.at_most).map_or(1.4 * level, |h| h.max(level));
-    if cell.steady.known().is_some_and(|s| s.duty < 0.999) {
-        low = 0.0;
-    }
-    let room = 0.12 * (high - low);
-    low = (low - room).max(0.0);
-    high += 1.8 * room;
-    (low, high)
-}
-
-fn labels(canvas: &Canvas, panel: &Panel, cell: &CellResult, allowed: Option<&Allowed>) -> Result<(), DrawError> {
-    let mut marks: Vec<(f64, String, bool)> = Vec::new();
-    if let Some(allowed) = allowed {
-        let limit = |value: f64, side: &str| (value, format!("{side} {} W, {}", number(value), allowed.source), true);
-        marks.extend(allowed.at_most.map(|v| limit(v, "to")));
-        marks.extend(allowed.at_least.map(|v| limit(v, "from")));
-    }
-    marks.extend(cell.steady.known().map(|s| (s.power_w.value, format!("settled {} W", short(s.power_w.value)), false)));
-    marks.retain(|(value, ..)| panel.y.holds(*value));
-    let wanted: Vec<f64> = marks.iter().map(|(value, ..)| panel.y.at(*value)).collect();
-    let places = spread(&wanted, 19.0, panel.top + 8.0, panel.bottom - 8.0);
-    for ((value, text, is_limit), place) in marks.iter().zip(places) {
-        let y = panel.y.at(*value);
-        let (colour, dash) = if *is_limit { (LIMIT, Dash::Long) } else { (INK, Dash::Dotted) };
-        canvas.line(&[(panel.left, y), (panel.right, y)], colour, 1.5, dash)?;
-        canvas.line(&[(panel.right, y), (panel.right + 10.0, place)], colour, 1.0, Dash::Solid)?;
-        canvas.text(text, (panel.right + 13.0, place), Anchor::Left, Lettering::plain(SMALL, colour))?;
-    }
-    if let Some(steady) = cell.steady.known() {
-        let at = |s: f64| panel.x.within((s - cell.energised_s.known().unwrap_or(&0.0)) / 60.0);
-        let (from, to) = (at(steady.from_s), at(steady.to_s));
-        let (x, anchor) = if from - panel.left > 120.0 { (from - 6.0, Anchor::Right) } else { (to + 6.0, Anchor::Left) };
-        let look = Lettering::plain(SMALL, INK);
-        canvas.text("measured window", (x, panel.bottom - 14.0), anchor, look)?;
-    }
-    Ok(())
-}
-
-/// Four significant digits.
-pub(super) fn short(value: f64) -> String {
-    if value == 0.0 || !value.is_finite() {
-        return "0".to_owned();
-    }
-    let magnitude = value.abs().log10().floor();
-    let places = (3.0 - magnitude).clamp(0.0, 4.0) as usize;
-    number(format!("{value:.places$}").parse().unwrap_or(value))
+/// A margin in kelvin, in words: `+1.3 K`.
+pub fn margin(value: f64, expanded: f64) -> String {
+    format!("{} K", with_sign(value, expanded))
 }
