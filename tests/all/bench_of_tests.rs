@@ -7,7 +7,7 @@ use std::sync::{Arc, Mutex};
 use rateplate::bench::{FarSide, simulated_line};
 use rateplate::clock::Clock;
 use rateplate::plan::{Plan, PlannedRole, resolve};
-use rateplate::quantity::{Celsius, Moment};
+use rateplate::quantity::Celsius;
 use rateplate::record::{Flushing, Heading, Journal, Store};
 use rateplate::run::{
     self, Answering, Bay, Ended, Observer, Operator, Permissions, Prompt, Reply, Want, hearing,
@@ -195,9 +195,4 @@ pub async fn run_bay(bay: Bay) -> Ended {
 /// A far side as it is.
 pub fn as_it_is(far: Box<dyn FarSide>) -> Box<dyn FarSide> {
     far
-}
-
-/// A moment in seconds.
-pub fn at(seconds: u64) -> Moment {
-    Moment::from_micros(seconds * 1_000_000)
 }
