@@ -7,7 +7,9 @@
 //! with a deadline of our own, no flush, no clone.
 
 use std::io::{ErrorKind, Read, Write};
-use std::time::{Duration, Instant};
+use std::time::Duration;
+
+use crate::clock::Deadline;
 
 use serialport::{ClearBuffer, DataBits, SerialPort, StopBits};
 
@@ -93,7 +95,7 @@ fn available() -> Vec<String> {
 impl Wire {
     /// Writes all of `bytes` within `within`; false where the port took only a part.
     pub(super) fn write(&mut self, bytes: &[u8], within: Duration) -> Result<bool, Gone> {
-        let deadline = Instant::now() + within;
+        let deadline = Deadline::within(within);
         let mut left = bytes;
         while !left.is_empty() {
             let piece = &left[..left.len().min(PIECE)];
@@ -101,7 +103,7 @@ impl Wire {
                 Ok(n) => left = &left[n.min(left.len())..],
                 Err(error) => not_yet(&error)?,
             }
-            if !left.is_empty() && Instant::now() >= deadline {
+            if !left.is_empty() && deadline.has_passed() {
                 return Ok(false);
             }
         }

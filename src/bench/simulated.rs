@@ -7,7 +7,6 @@ use std::sync::Arc;
 use std::time::Duration;
 
 use tokio::sync::mpsc::{UnboundedReceiver, unbounded_channel};
-use tokio::time::Instant;
 
 use super::handle::{Door, Facts, LineHandle};
 use super::line::Line;
@@ -83,9 +82,11 @@ struct Pump {
 
 impl Pump {
     async fn run(mut self, mut messages: UnboundedReceiver<Message>) {
-        let (began, origin) = (Instant::now(), self.now);
+        let (began, origin) = (tokio::time::Instant::now(), self.now);
         // One timer, moved along: cheaper than a new one for each wait.
         let mut timer = std::pin::pin!(tokio::time::sleep_until(began));
+        // A closed channel is ready for ever: asked again, it would hold up time itself.
+        let mut open = true;
         loop {
             let wake = self.guarded_turn();
             if self.line.is_ended() || self.panics > PANICS {
@@ -95,13 +96,16 @@ impl Pump {
             timer.as_mut().reset(began + ahead);
             let message = tokio::select! {
                 biased;
-                message = messages.recv() => Some(message),
+                message = messages.recv(), if open => Some(message),
                 () = timer.as_mut() => None,
             };
             self.now = self.clock.now();
             match message {
                 Some(Some(message)) => self.line.take(message, self.now),
-                Some(None) => self.line.close("the line's handle was dropped", self.now),
+                Some(None) => {
+                    open = false;
+                    self.line.close("the line's handle was dropped", self.now);
+                }
                 None => {}
             }
             while let Ok(message) = messages.try_recv() {

@@ -118,6 +118,23 @@ impl Clock {
     }
 }
 
+/// A limit in wall time, for calls that block: whatever a run's own time does, a port
+/// that hangs must be given up.
+#[derive(Debug, Clone, Copy)]
+pub struct Deadline(Instant);
+
+impl Deadline {
+    /// `within` from now.
+    pub fn within(within: Duration) -> Self {
+        Self(Instant::now() + within)
+    }
+
+    /// Whether it has passed.
+    pub fn has_passed(self) -> bool {
+        Instant::now() >= self.0
+    }
+}
+
 #[cfg(test)]
 mod tests {
     use super::*;

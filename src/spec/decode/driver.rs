@@ -353,14 +353,14 @@ mod tests {
             wrong(
                 "VOLT:AC?;",
                 "VOLT:AC? (@{channel});",
-                "8:10",
+                "9:10",
                 "no meaning here",
                 "write the command out",
             ),
             wrong(
                 "[voltage, current, power]",
                 "[voltage, power, power]",
-                "9:29",
+                "10:29",
                 "stands twice",
                 "one of",
             ),

@@ -269,7 +269,7 @@ mod tests {
         assert_eq!(link.measured_at, MeasuredAt::LinkBody);
         assert!(appliance.facts.fan && !appliance.facts.thermostat);
         assert_eq!(sequence.roles[1].kind, RoleKind::PowerMeter);
-        assert_eq!(sequence.guards.input_after, Some(Seconds::of(60.0)));
+        assert_eq!(sequence.guards.input_after, Some(Seconds::of(300.0)));
         let StepAction::Each(each) = &sequence.steps[3].action else {
             panic!("{:?}", sequence.steps[3]);
         };
