@@ -353,14 +353,14 @@ mod tests {
             wrong(
                 "VOLT:AC?;",
                 "VOLT:AC? (@{channel});",
-                "9:10",
+                "8:10",
                 "no meaning here",
                 "write the command out",
             ),
             wrong(
                 "[voltage, current, power]",
                 "[voltage, power, power]",
-                "10:29",
+                "9:29",
                 "stands twice",
                 "one of",
             ),
