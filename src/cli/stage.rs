@@ -79,7 +79,10 @@ fn serve_hands(hands: &Hands, plan: &Plan, clock: &Clock) {
             _ => false,
         };
         if !done {
-            say(&format!("not known here; positions are: {}", plan.appliance.positions.join(", ")));
+            say(&format!(
+                "not known here; positions are: {}",
+                plan.appliance.positions.join(", ")
+            ));
         }
     }
     // Standard input is closed: serve until a signal ends the process.

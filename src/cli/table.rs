@@ -131,9 +131,10 @@ fn finding_row(finding: &Finding) -> Vec<String> {
         (None, Some(high)) => format!("to {}", with_unit(high)),
         (None, None) => "-".to_owned(),
     };
-    let margin = finding
-        .margin
-        .map_or_else(|| "-".to_owned(), |m| format!("{m:+.2} {}", finding.margin_unit()));
+    let margin = finding.margin.map_or_else(
+        || "-".to_owned(),
+        |m| format!("{m:+.2} {}", finding.margin_unit()),
+    );
     vec![
         rule,
         value,

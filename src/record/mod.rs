@@ -23,6 +23,7 @@ pub use hash::{sha256_of, sha256_of_file};
 pub use journal::{Flushing, Heading, Journal, Way};
 pub use store::{FolderStore, Store, StoreFile, put_whole};
 pub use types::{
-    Event, FileHash, Happening, Manifest, RECORD_FORMAT, RunOutcome, Sample, Status, StepEnd, TripOf,
+    Event, FileHash, Happening, Manifest, RECORD_FORMAT, RunOutcome, Sample, Status, StepEnd,
+    TripOf,
 };
 pub use unit_number::{UnitNumber, UnitNumberError};

@@ -102,7 +102,9 @@ pub fn put_whole(path: &Path, bytes: &[u8]) -> io::Result<()> {
 
 #[cfg(unix)]
 fn sync_folder_of(path: &Path) -> io::Result<()> {
-    let folder = path.parent().filter(|folder| !folder.as_os_str().is_empty());
+    let folder = path
+        .parent()
+        .filter(|folder| !folder.as_os_str().is_empty());
     StoreFile::sync(&File::open(folder.unwrap_or(Path::new(".")))?)
 }
 

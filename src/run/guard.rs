@@ -16,11 +16,17 @@ pub struct Trip {
 
 impl Trip {
     fn of_unit(reason: String) -> Self {
-        Self { reason, speaks_of: TripOf::Unit }
+        Self {
+            reason,
+            speaks_of: TripOf::Unit,
+        }
     }
 
     fn of_bench(reason: String) -> Self {
-        Self { reason, speaks_of: TripOf::Bench }
+        Self {
+            reason,
+            speaks_of: TripOf::Bench,
+        }
     }
 }
 
@@ -186,7 +192,11 @@ impl Watchman {
         };
         let from_start = on.body_then.map(|then| value - then);
         let from_ambient = ambient.map(|ambient| value - ambient);
-        if [from_start, from_ambient].into_iter().flatten().any(|rise| rise >= least) {
+        if [from_start, from_ambient]
+            .into_iter()
+            .flatten()
+            .any(|rise| rise >= least)
+        {
             on.rise_seen = true;
         }
         match self.body_limit {

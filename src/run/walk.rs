@@ -353,7 +353,9 @@ fn record_cut(bay: &mut Working, walked: &Result<(), Cut>) -> Result<(), Cut> {
     bay.poll_nothing();
     let event = match walked {
         Ok(()) | Err(Cut::Record(_)) => return Ok(()),
-        Err(Cut::Tripped(trip)) => Event::Tripped { reason: trip.reason.clone() },
+        Err(Cut::Tripped(trip)) => Event::Tripped {
+            reason: trip.reason.clone(),
+        },
         Err(Cut::Stopped) => Event::Stopped,
         Err(Cut::Lost { instrument, detail }) => Event::Lost {
             instrument: instrument.clone(),
@@ -384,7 +386,10 @@ fn outcome_of(walked: Result<(), Cut>, written: [Result<(), Cut>; 2]) -> RunOutc
         .find(|cut| matches!(cut, Cut::Record(_)));
     match unwritten.map_or(walked, Err) {
         Ok(()) => RunOutcome::Complete,
-        Err(Cut::Tripped(trip)) => RunOutcome::Tripped { reason: trip.reason, speaks_of: trip.speaks_of },
+        Err(Cut::Tripped(trip)) => RunOutcome::Tripped {
+            reason: trip.reason,
+            speaks_of: trip.speaks_of,
+        },
         Err(Cut::Stopped) => RunOutcome::Stopped,
         Err(Cut::Lost { detail, .. }) => RunOutcome::Failed { reason: detail },
         Err(Cut::Failed(reason)) => RunOutcome::Failed { reason },

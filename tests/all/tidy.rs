@@ -59,7 +59,9 @@ fn table() -> BTreeMap<String, BTreeSet<String>> {
 
 /// Whether a file holds tests only: `tests.rs`, or anything below a folder `tests`.
 fn is_test(path: &Path) -> bool {
-    path.components().any(|c| c.as_os_str() == "tests") || path.ends_with("tests.rs") || path.ends_with("demo_units.rs")
+    path.components().any(|c| c.as_os_str() == "tests")
+        || path.ends_with("tests.rs")
+        || path.ends_with("demo_units.rs")
 }
 
 /// Code of a file without comments' and tests' lines.

@@ -40,7 +40,9 @@ fn shipped_as(name: &str) -> &'static str {
 /// would answer beside every rule that a test is about.
 fn dryer() -> &'static str {
     let whole = shipped_as("cupboard-dryer");
-    let end = whole.find("  - power: {at least").expect("the house lower limit");
+    let end = whole
+        .find("  - power: {at least")
+        .expect("the house lower limit");
     &whole[..end]
 }
 
