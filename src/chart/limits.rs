@@ -44,29 +44,35 @@ impl PowerLimits {
             limits.at_least = finding.at_least.and_then(watts);
             limits.at_most = finding.at_most.and_then(watts);
             limits.source = clean(&finding.source);
-        } else {
-            limits.by_the_rules(scene, cell, rated);
         }
+        limits.fill_by_the_rules(scene, cell, rated);
         limits
     }
 
-    fn by_the_rules(&mut self, scene: &Scene, cell: &Cell, rated: Option<Span<Watts>>) {
-        for rule in &scene.plan.rules {
-            match (&rule.kind, rated) {
-                _ if !is_for(rule, cell) => continue,
+    /// A side that no finding was judged by is drawn from the rules: a house lower
+    /// limit beside a plate band that has none, and the other way round.
+    fn fill_by_the_rules(&mut self, scene: &Scene, cell: &Cell, rated: Option<Span<Watts>>) {
+        for rule in scene.plan.rules.iter().filter(|rule| is_for(rule, cell)) {
+            let (low, high) = match (&rule.kind, rated) {
                 (RuleKind::PlatePower, Some(rated)) => {
                     let band = plate::limits(scene.plan.appliance.kind, rated);
-                    self.at_least = band.at_least.map(Watts::get);
-                    self.at_most = Some(band.at_most.get());
+                    (band.at_least, Some(band.at_most))
                 }
-                (RuleKind::PowerLimits { at_least, at_most }, _) => {
-                    self.at_least = at_least.map(Watts::get);
-                    self.at_most = at_most.map(Watts::get);
-                }
+                (RuleKind::PowerLimits { at_least, at_most }, _) => (*at_least, *at_most),
                 _ => continue,
+            };
+            let fills = (self.at_least.is_none() && low.is_some())
+                || (self.at_most.is_none() && high.is_some());
+            if !fills {
+                continue;
             }
-            self.source = clean(&rule.source);
-            return;
+            self.at_least = self.at_least.or(low.map(Watts::get));
+            self.at_most = self.at_most.or(high.map(Watts::get));
+            let source = clean(&rule.source);
+            self.source = match self.source.is_empty() {
+                true => source,
+                false => format!("{}; {source}", self.source),
+            };
         }
     }
 
