@@ -15,6 +15,8 @@ const FIRST_CURRENT: f64 = 0.01;
 const PEAK_ABOVE: f64 = 0.9;
 /// A peak shorter than this many intervals may be higher between them.
 const INTERVALS: f64 = 5.0;
+/// A peak stands out from the settled power by this factor.
+const STANDS_OUT: f64 = 1.1;
 /// The supply limits where its voltage sags by more than this share.
 const SAG: f64 = 0.03;
 
@@ -87,11 +89,12 @@ fn power_after(view: &CellView, from: f64) -> Track {
 }
 
 /// Seconds from the peak until the power has fallen half-way to settled.
+/// Nothing where the peak does not stand out: what falls then is a thermostat's pause.
 fn half_way(after: &[(f64, f64)], peak_w: f64, steady_w: f64, peak_s: f64) -> Option<f64> {
-    let half = 0.5 * (peak_w + steady_w);
-    if peak_w <= steady_w {
+    if peak_w < STANDS_OUT * steady_w {
         return None;
     }
+    let half = 0.5 * (peak_w + steady_w);
     let fallen = after.iter().find(|(_, watts)| *watts <= half)?;
     Some(fallen.0 - peak_s)
 }

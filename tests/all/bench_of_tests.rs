@@ -4,7 +4,7 @@ use std::path::{Path, PathBuf};
 use std::process::{Command, Output};
 use std::sync::{Arc, Mutex};
 
-use rateplate::bench::{FarSide, simulated_line};
+use rateplate::bench::simulated_line;
 use rateplate::clock::Clock;
 use rateplate::plan::{Plan, PlannedRole, resolve};
 use rateplate::quantity::Celsius;
@@ -100,7 +100,21 @@ pub struct Setup {
     pub operator: Box<dyn Operator>,
     pub observer: Box<dyn Observer>,
     pub stop: tokio::sync::watch::Receiver<bool>,
-    pub wrap: fn(Box<dyn FarSide>) -> Box<dyn FarSide>,
+}
+
+impl Setup {
+    /// A willing operator, and nobody who looks on.
+    pub fn willing(
+        bench: &VirtualBench,
+        clock: &Clock,
+        stop: tokio::sync::watch::Receiver<bool>,
+    ) -> Self {
+        Self {
+            operator: Box::new(Willing(bench.hands(), clock.clone())),
+            observer: Box::new(Silent),
+            stop,
+        }
+    }
 }
 
 /// Whoever answers every prompt well at once.
@@ -164,7 +178,7 @@ pub fn bay(
     let lines = line_setups(plan)
         .into_iter()
         .map(|line| {
-            let far = (setup.wrap)(bench.far_side(&line.name));
+            let far = bench.far_side(&line.name);
             simulated_line(line, far, clock.clone(), mouth.ears())
         })
         .collect();
@@ -190,9 +204,4 @@ pub const SIMULATED: Permissions = Permissions {
 /// Runs a bay to its end.
 pub async fn run_bay(bay: Bay) -> Ended {
     run::run(bay, SIMULATED, "cautions").await
-}
-
-/// A far side as it is.
-pub fn as_it_is(far: Box<dyn FarSide>) -> Box<dyn FarSide> {
-    far
 }

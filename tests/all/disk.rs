@@ -8,9 +8,7 @@ use std::sync::atomic::{AtomicUsize, Ordering};
 use rateplate::clock::Clock;
 use rateplate::record::{Folder, FolderStore, RunOutcome, Store, StoreFile};
 
-use crate::bench_of_tests::{
-    SHORT, Setup, Silent, Willing, as_it_is, bay, paused, plan_of, run_bay, virtual_bench,
-};
+use crate::bench_of_tests::{SHORT, Setup, bay, paused, plan_of, run_bay, virtual_bench};
 
 /// A folder with room for so many bytes in all.
 struct Filling {
@@ -75,12 +73,7 @@ fn run_with_room(folder: &Path, room: usize) -> Option<(RunOutcome, bool, bool)>
             room: Arc::new(AtomicUsize::new(room)),
         };
         let (_stop, stopped) = tokio::sync::watch::channel(false);
-        let setup = Setup {
-            operator: Box::new(Willing(bench.hands(), clock.clone())),
-            observer: Box::new(Silent),
-            stop: stopped,
-            wrap: as_it_is,
-        };
+        let setup = Setup::willing(&bench, &clock, stopped);
         let bay = bay(&plan, &bench, Box::new(store), &clock, setup).ok()?;
         Some(run_bay(bay).await)
     })?;
@@ -149,12 +142,7 @@ fn the_systems_own_full_device_stops_a_run_before_it_starts() {
         let clock = Clock::simulated();
         let store = DevFull(FolderStore::create(&folder.path().join("run")).unwrap());
         let (_stop, stopped) = tokio::sync::watch::channel(false);
-        let setup = Setup {
-            operator: Box::new(Willing(bench.hands(), clock.clone())),
-            observer: Box::new(Silent),
-            stop: stopped,
-            wrap: as_it_is,
-        };
+        let setup = Setup::willing(&bench, &clock, stopped);
         let error = bay(&plan, &bench, Box::new(store), &clock, setup)
             .err()
             .expect("it can't be opened");

@@ -10,9 +10,7 @@ use rateplate::clock::Clock;
 use rateplate::judge::{Judgement, Outcome, judge};
 use rateplate::record::{Folder, FolderStore, RunOutcome};
 
-use crate::bench_of_tests::{
-    SHORT, Setup, Silent, Willing, as_it_is, bay, paused, plan_of, run_bay, virtual_bench,
-};
+use crate::bench_of_tests::{SHORT, Setup, bay, paused, plan_of, run_bay, virtual_bench};
 
 /// Faults of the unit and of its sensors.
 const FAULTS: [&str; 11] = [
@@ -41,12 +39,7 @@ fn outcome_of(fault: &str, seed: u64) -> (RunOutcome, Judgement) {
         let clock = Clock::simulated();
         let store = FolderStore::create(&folder.path().join("run")).unwrap();
         let (_stop, stopped) = tokio::sync::watch::channel(false);
-        let setup = Setup {
-            operator: Box::new(Willing(bench.hands(), clock.clone())),
-            observer: Box::new(Silent),
-            stop: stopped,
-            wrap: as_it_is,
-        };
+        let setup = Setup::willing(&bench, &clock, stopped);
         run_bay(bay(&plan, &bench, Box::new(store), &clock, setup).unwrap()).await
     });
     let record = Folder::open(folder.path()).unwrap();

@@ -10,9 +10,7 @@ use rateplate::record::{Event, Folder, FolderStore, Happening, RunOutcome};
 use rateplate::run::{Answering, Ended, Observer, Operator, Prompt, Reply, Want};
 use rateplate::virtual_bench::VirtualBench;
 
-use crate::bench_of_tests::{
-    SHORT, Setup, Silent, Willing, as_it_is, bay, paused, plan_of, run_bay, virtual_bench,
-};
+use crate::bench_of_tests::{SHORT, Setup, Willing, bay, paused, plan_of, run_bay, virtual_bench};
 
 /// Plays the short sequence with faults; gives the end, the bench and the record.
 fn play(folder: &Path, faults: &[&str]) -> (Ended, VirtualBench, Folder) {
@@ -22,12 +20,7 @@ fn play(folder: &Path, faults: &[&str]) -> (Ended, VirtualBench, Folder) {
         let clock = Clock::simulated();
         let store = FolderStore::create(&folder.join("run")).unwrap();
         let (_stop, stopped) = tokio::sync::watch::channel(false);
-        let setup = Setup {
-            operator: Box::new(Willing(bench.hands(), clock.clone())),
-            observer: Box::new(Silent),
-            stop: stopped,
-            wrap: as_it_is,
-        };
+        let setup = Setup::willing(&bench, &clock, stopped);
         run_bay(bay(&plan, &bench, Box::new(store), &clock, setup).unwrap()).await
     });
     let record = Folder::open(folder).unwrap();
@@ -152,13 +145,12 @@ fn a_panic_in_the_bays_task_de_energises_and_the_record_is_closed() {
         let clock = Clock::simulated();
         let store = FolderStore::create(&folder.path().join("run")).unwrap();
         let (_stop, stopped) = tokio::sync::watch::channel(false);
+        let observer = Box::new(Panicking {
+            at_step: step_of(&plan, "soak"),
+        });
         let setup = Setup {
-            operator: Box::new(Willing(bench.hands(), clock.clone())),
-            observer: Box::new(Panicking {
-                at_step: step_of(&plan, "soak"),
-            }),
-            stop: stopped,
-            wrap: as_it_is,
+            observer,
+            ..Setup::willing(&bench, &clock, stopped)
         };
         run_bay(bay(&plan, &bench, Box::new(store), &clock, setup).unwrap()).await
     });
@@ -179,12 +171,7 @@ fn a_task_that_is_dropped_while_energised_leaves_the_unit_off() {
         let clock = Clock::simulated();
         let store = FolderStore::create(&folder.path().join("run")).unwrap();
         let (_stop, stopped) = tokio::sync::watch::channel(false);
-        let setup = Setup {
-            operator: Box::new(Willing(bench.hands(), clock.clone())),
-            observer: Box::new(Silent),
-            stop: stopped,
-            wrap: as_it_is,
-        };
+        let setup = Setup::willing(&bench, &clock, stopped);
         let bay = bay(&plan, &bench, Box::new(store), &clock, setup).unwrap();
         let task = tokio::spawn(run_bay(bay));
         while !bench.output_is_on() {
@@ -212,12 +199,7 @@ fn one_stop_while_energised_is_enough() {
         let clock = Clock::simulated();
         let store = FolderStore::create(&folder.path().join("run")).unwrap();
         let (stop, stopped) = tokio::sync::watch::channel(false);
-        let setup = Setup {
-            operator: Box::new(Willing(bench.hands(), clock.clone())),
-            observer: Box::new(Silent),
-            stop: stopped,
-            wrap: as_it_is,
-        };
+        let setup = Setup::willing(&bench, &clock, stopped);
         let bay = bay(&plan, &bench, Box::new(store), &clock, setup).unwrap();
         let task = tokio::spawn(run_bay(bay));
         while !bench.output_is_on() {
@@ -302,9 +284,7 @@ fn prompts_with(answers: usize) -> (Ended, Vec<(Prompt, bool)>) {
         };
         let setup = Setup {
             operator: Box::new(operator),
-            observer: Box::new(Silent),
-            stop: stopped,
-            wrap: as_it_is,
+            ..Setup::willing(&bench, &clock, stopped)
         };
         run_bay(bay(&plan, &bench, Box::new(store), &clock, setup).unwrap()).await
     });
