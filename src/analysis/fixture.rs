@@ -10,7 +10,7 @@ use crate::quantity::{
 };
 use crate::record::{Event, Happening, RunOutcome, Sample, Status, StepEnd};
 use crate::settle::{Settle, Settling, Watched};
-use crate::spec::bench::{CalibrationPoint, Port};
+use crate::spec::bench::{CalibrationPoint, Connection, Port};
 use crate::spec::driver::{
     Accuracy, Driver, Framing, IdentityQuery, ReadingQuery, Settings, Terminator,
 };
@@ -41,6 +41,7 @@ fn accuracy(
         floor,
         resolution,
         ranges: ranges.to_vec(),
+        correlation: 0.0,
     }
 }
 
@@ -134,6 +135,8 @@ fn roles() -> Vec<PlannedRole> {
         kind,
         instrument,
         channel,
+        place: None,
+        connection: Connection::default(),
     };
     vec![
         role("supply", RoleKind::Supply, 0, None),
@@ -166,6 +169,8 @@ fn appliance() -> PlannedAppliance {
         kind: ApplianceKind::Combined,
         protection_class: ProtectionClass::II,
         highest_ambient: Celsius::of(35.0),
+        reference_ambient: Some(Celsius::of(23.0)),
+        supply_range: None,
         positions: vec!["low".to_owned(), "high".to_owned()],
         plate: vec![plate("low", 4.5), plate("high", 9.0)],
         link: Some(PlannedLink {
@@ -175,6 +180,7 @@ fn appliance() -> PlannedAppliance {
             tm: None,
             sits: "on the block".to_owned(),
             measured_at: MeasuredAt::LinkBody,
+            ambient_effect: None,
         }),
         element: HeatingElement::Ptc,
         fan: false,
@@ -255,6 +261,7 @@ pub(crate) fn rule(kind: RuleKind) -> PlannedRule {
         position: None,
         condition: None,
         source: "test".to_owned(),
+        process: None,
     }
 }
 

@@ -6,7 +6,7 @@ use crate::record::{Sample, Status};
 use crate::spec::sequence::Timed;
 
 use super::cell::{CellView, Track, highest, mean, time, within};
-use super::measured::{Gauge, estimate};
+use super::measured::Gauge;
 use super::types::{Figure, Inrush, Steady};
 
 /// First current: above this share of the highest, and above twice the floor.
@@ -64,7 +64,7 @@ fn captured(
     let interval_s = timed.every.get().max(gauge.update_s());
     Ok(Inrush {
         t0_s,
-        peak_a: estimate(gauge.corrected(top.1), gauge.lines(top.1)?),
+        peak_a: gauge.estimate(top.1)?,
         peak_w,
         peak_after_s: top.0 - t0_s,
         ratio: steady_w.map(|watts| peak_w / watts),

@@ -4,58 +4,9 @@
 use crate::plan::{Plan, PlannedInstrument};
 use crate::quantity::Reading;
 use crate::spec::bench::CalibrationPoint;
-use crate::stats::{Part, RECTANGULAR, RESOLUTION, combine};
 
-use super::types::{Estimate, Share};
-
-/// One named line of a budget, before it is combined.
-#[derive(Debug, Clone, PartialEq)]
-pub(super) struct Line {
-    pub(super) from: String,
-    pub(super) part: Part,
-}
-
-impl Line {
-    /// A line that is no estimate from data.
-    pub(super) fn stated(from: impl Into<String>, standard: f64) -> Self {
-        Line::of(from, standard, f64::INFINITY)
-    }
-
-    /// A line with its degrees of freedom.
-    pub(super) fn of(from: impl Into<String>, standard: f64, freedom: f64) -> Self {
-        Line {
-            from: from.into(),
-            part: Part { standard, freedom },
-        }
-    }
-
-    /// The same line times a sensitivity.
-    pub(super) fn times(mut self, sensitivity: f64) -> Self {
-        self.part.standard *= sensitivity.abs();
-        self
-    }
-}
-
-/// Combines a budget into an estimate; shares of nothing are left out.
-pub(super) fn estimate(value: f64, lines: Vec<Line>) -> Estimate {
-    let parts: Vec<Part> = lines.iter().map(|line| line.part).collect();
-    let combined = combine(&parts);
-    let mut budget: Vec<Share> = lines
-        .into_iter()
-        .filter(|line| line.part.standard > 0.0)
-        .map(|line| Share {
-            from: line.from,
-            standard: line.part.standard,
-        })
-        .collect();
-    budget.sort_by(|a, b| b.standard.total_cmp(&a.standard));
-    Estimate {
-        value,
-        expanded: combined.expanded,
-        coverage: combined.coverage,
-        budget,
-    }
-}
+use super::budget::Share;
+use super::types::Estimate;
 
 /// One reading of the instrument that fills a role.
 pub(super) struct Gauge<'a> {
@@ -101,11 +52,20 @@ impl<'a> Gauge<'a> {
         indicated + self.calibration(indicated).0
     }
 
+    /// The indicated value corrected by its calibration, with its budget.
+    ///
+    /// # Errors
+    /// See [`Gauge::lines`].
+    pub(super) fn estimate(&self, indicated: f64) -> Result<Estimate, String> {
+        let lines = self.lines(indicated)?;
+        Ok(Estimate::combined(self.corrected(indicated), lines))
+    }
+
     /// Shares of accuracy on the range in force, resolution and calibration.
     ///
     /// # Errors
     /// Where the driver states no accuracy: then nothing can be said of U.
-    pub(super) fn lines(&self, indicated: f64) -> Result<Vec<Line>, String> {
+    pub(super) fn lines(&self, indicated: f64) -> Result<Vec<Share>, String> {
         let word = self.reading.word();
         let Some(accuracy) = self.accuracy() else {
             return Err(format!(
@@ -114,15 +74,22 @@ impl<'a> Gauge<'a> {
             ));
         };
         let of = |what: &str| format!("{what}, {word} of {}", self.role);
-        let mut lines = vec![
-            Line::stated(of("accuracy"), accuracy.half_width(indicated) / RECTANGULAR),
-            Line::stated(of("resolution"), accuracy.resolution / RESOLUTION),
-        ];
-        let calibration = self.calibration(indicated).1;
-        if calibration > 0.0 {
-            lines.push(Line::stated(of("calibration"), calibration));
+        let error = format!("accuracy, {word} of instrument {}", self.instrument.name);
+        let unit = self.unit();
+        Ok(vec![
+            Share::rectangular(of("accuracy"), accuracy.half_width(indicated), unit)
+                .shared_by(error, accuracy.correlation),
+            Share::resolution(of("resolution"), accuracy.resolution, unit),
+            Share::normal(of("calibration"), self.calibration(indicated).1, unit),
+        ])
+    }
+
+    /// Unit of its errors: those of a temperature are in kelvins.
+    fn unit(&self) -> &'static str {
+        match self.reading {
+            Reading::Temperature => "K",
+            other => other.unit(),
         }
-        Ok(lines)
     }
 
     /// Correction and standard uncertainty at an indicated value: interpolated

@@ -2,24 +2,32 @@
 //! record alone. Cannot fail: absent values carry a reason.
 
 mod belief;
+mod budget;
+mod budget_table;
 mod cell;
 #[cfg(test)]
 pub(crate) mod fixture;
+mod input;
 mod inrush;
 mod measured;
+mod opening;
+mod plate;
+mod referral;
 mod steady;
 mod table;
 mod temperature;
 mod types;
-mod voltage;
 
+pub use budget::{Distribution, Share, SharedError};
+pub use budget_table::{budgets_csv, budgets_text};
+pub use plate::{plate_point, plate_points, points_in_reach};
+pub use referral::at_voltage;
 pub use table::results_csv;
 pub use types::{
-    Analysis, CellResult, Drawn, Estimate, Figure, Inrush, Looked, Peak, Share, Steady,
+    Analysis, CellResult, Drawn, Estimate, Exponent, Figure, Inrush, Looked, Opening, Peak, Steady,
 };
-pub use voltage::{at_voltage, plate_point, plate_points};
 
-use crate::plan::Plan;
+use crate::plan::{Action, Plan};
 use crate::record::{Event, Happening, RunOutcome, Sample};
 use crate::spec::sequence::HeatingElement;
 
@@ -41,29 +49,32 @@ pub struct Input<'a> {
 /// What the record says, cell by cell.
 pub fn analyse(input: &Input) -> Analysis {
     let switched = cell::switched(input.plan, input.happenings);
-    let cells: Vec<CellResult> = switched
+    let views: Vec<CellView> = switched
         .into_iter()
         .enumerate()
-        .map(|(index, switched)| result(input, index, switched))
+        .map(|(index, switched)| CellView::new(input, index, switched))
         .collect();
+    let mut cells: Vec<CellResult> = views.iter().map(|view| result(input, view)).collect();
+    referral::refer(input.plan, &mut cells);
     let notes = cells
         .iter()
         .filter_map(|cell| half_wave(input.plan, cell))
         .collect();
     Analysis {
         cells,
+        openings: views.iter().flat_map(opening::openings).collect(),
         looked: looked(input.happenings),
         tripped: tripped(input),
         notes,
     }
 }
 
-fn result(input: &Input, index: usize, switched: Switched) -> CellResult {
-    let view = CellView::new(input, index, switched);
-    let settled = steady::settled(&view);
-    let steady = steady::steady(&view, &settled);
-    let drawn = steady::drawn(&view);
-    let peak = temperature::body_peak(&view);
+fn result(input: &Input, view: &CellView) -> CellResult {
+    let switched = view.switched;
+    let settled = steady::settled(view);
+    let steady = steady::steady(view, &settled);
+    let drawn = steady::drawn(view);
+    let peak = temperature::body_peak(view);
     let seconds = |moment: Option<crate::quantity::Moment>, otherwise: String| match moment {
         Some(moment) => Figure::Known(moment.as_secs_f64()),
         None => Figure::Absent(otherwise),
@@ -72,16 +83,19 @@ fn result(input: &Input, index: usize, switched: Switched) -> CellResult {
         cell: view.cell.clone(),
         energised_s: seconds(switched.energised, not_run(input.outcome, &switched)),
         off_s: seconds(switched.off, "no OFF is recorded after it".to_owned()),
-        cold_start: match belief::cold(&view) {
+        cold_start: match belief::cold(view) {
             Ok(()) => Figure::Known(()),
             Err(reason) => Figure::Absent(reason),
         },
-        inrush: inrush::inrush(&view, steady.known()),
-        settled_s: steady::settled_after(&view, &settled),
-        body_worst: temperature::body_worst(&view, &peak, &settled),
+        inrush: inrush::inrush(view, steady.known()),
+        settled_s: steady::settled_after(view, &settled),
+        body_worst: temperature::body_worst(view, &peak, &settled, steady.known()),
         body_peak: peak,
-        rises: temperature::rises(&view),
-        disbelief: belief::disbelief(&view, drawn.known()),
+        rises: temperature::rises(view),
+        disbelief: belief::disbelief(view, drawn.known()),
+        abnormal: view
+            .step(|action| matches!(action, Action::Abnormal { .. }))
+            .is_some(),
         drawn,
         steady,
     }

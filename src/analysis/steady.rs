@@ -5,12 +5,12 @@ use crate::plan::Action;
 use crate::quantity::{Moment, Reading};
 use crate::record::{Status, StepEnd};
 use crate::settle::{Settle, Settling, Watched};
-use crate::stats::{RECTANGULAR, effective_of};
 
 use super::cell::{CellView, Track, highest, mean, within};
-use super::measured::{Gauge, Line, estimate};
+use super::input::at_plug;
+use super::measured::Gauge;
+use super::referral::usual_exponent;
 use super::types::{Drawn, Estimate, Figure, Steady};
-use super::voltage::referral;
 
 /// A load is on above this share of its highest power.
 const ON: f64 = 0.5;
@@ -90,7 +90,7 @@ pub(super) fn settled(view: &CellView) -> Figure<Window> {
     }
 }
 
-/// The settled input of a cell, referred to the voltage that the cell is run at.
+/// The settled input of a cell, as it was measured at the plug.
 pub(super) fn steady(view: &CellView, settled: &Figure<Window>) -> Figure<Steady> {
     let window = match settled {
         Figure::Known(window) => measured_window(view, window),
@@ -151,19 +151,33 @@ fn over(view: &CellView, window: Window) -> Result<Steady, String> {
         .ok_or("the power meter gave no voltage in the settled window")?;
     let current = mean(&kept(&inside(Reading::Current)));
     let mean_w = mean(within(&power, on.from_s, on.to_s)).unwrap_or(0.0);
-    let (estimate, effective) = power_estimate(view, &on_power, voltage)?;
+    let plug = at_plug(view, &on_power, voltage, current)?;
     Ok(Steady {
-        power_w: estimate,
+        power_w: plug.power_w.clone(),
+        at_plug_w: plug.power_w,
+        exponent: usual_exponent(&view.plan.appliance),
+        ambient_degc: temperature_in(view, view.ambient, &window),
+        body_degc: temperature_in(view, view.body, &window).map(|body| body.value),
         mean_w,
         duty: on.duty,
-        voltage_v: voltage,
+        voltage_v: plug.volts.value,
+        plug_v: plug.volts,
         current_a: current,
         from_s: window.from_s,
         to_s: window.to_s,
         samples: on_power.len(),
-        effective,
+        effective: plug.effective,
         criterion: window.criterion,
     })
+}
+
+/// Mean of a temperature in a window, where it was read and its accuracy is stated.
+fn temperature_in(view: &CellView, role: Option<usize>, window: &Window) -> Option<Estimate> {
+    let track = view.track(role, Reading::Temperature, |_| true);
+    let indicated = mean(within(&track, window.from_s, window.to_s))?;
+    Gauge::of(view.plan, role?, Reading::Temperature)?
+        .estimate(indicated)
+        .ok()
 }
 
 /// When a load is on in a window.
@@ -216,61 +230,6 @@ fn on_times(view: &CellView, power: &[(f64, f64)]) -> Result<OnTimes, String> {
         from_s: whole[0].0,
         to_s: whole[whole.len() - 1].0,
     })
-}
-
-/// Mean power with its uncertainty, referred to the voltage of the cell's supply;
-/// and the effective number of rows.
-fn power_estimate(
-    view: &CellView,
-    power: &[(f64, f64)],
-    voltage_v: f64,
-) -> Result<(Estimate, f64), String> {
-    let gauge = |reading| {
-        view.meter
-            .and_then(|role| Gauge::of(view.plan, role, reading))
-            .ok_or("there is no power meter")
-    };
-    let values: Vec<f64> = power.iter().map(|(_, value)| *value).collect();
-    let worth = effective_of(&values).ok_or("too few power readings")?;
-    let indicated = mean(power).unwrap_or(0.0);
-    let watts = gauge(Reading::Power)?;
-    let mut lines = watts.lines(indicated)?;
-    lines.push(scatter(worth.scatter, worth.effective));
-    let drift = 0.5 * worth.trend.abs() * (worth.n as f64 - 1.0);
-    lines.push(Line::stated("drift over the window", drift / RECTANGULAR));
-    let volts = gauge(Reading::Voltage)?;
-    let true_volts = volts.corrected(voltage_v);
-    let wanted = view.cell.supply.voltage.get();
-    let referral = referral(&view.plan.appliance, true_volts, wanted)?;
-    let value = watts.corrected(indicated) * referral.factor;
-    let (low, high) = super::voltage::exponents(&view.plan.appliance);
-    let per_volt = 0.5 * (low + high) * value / true_volts;
-    let mut lines: Vec<Line> = lines
-        .into_iter()
-        .map(|l| l.times(referral.factor))
-        .collect();
-    lines.extend(
-        volts
-            .lines(voltage_v)?
-            .into_iter()
-            .map(|l| l.times(per_volt)),
-    );
-    let by_voltage = format!("input referred from {true_volts:.2} V to {wanted} V");
-    lines.push(Line::stated(by_voltage, referral.relative * value.abs()));
-    Ok((estimate(value, lines), worth.effective))
-}
-
-/// Type A: the scatter about the trend over the root of the effective number. Less
-/// than two independent rows average nothing out.
-fn scatter(sd: f64, effective: f64) -> Line {
-    if effective < 2.0 {
-        return Line::of("scatter (less than two independent rows)", sd, 1.0);
-    }
-    Line::of(
-        "scatter of the mean",
-        sd / effective.sqrt(),
-        effective - 1.0,
-    )
 }
 
 /// What a unit drew, settled or not.

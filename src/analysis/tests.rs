@@ -3,9 +3,9 @@
 use super::fixture::{BODY, METER, Now, Played, Seen, good, noise, plan, play, play_until};
 use super::*;
 use crate::plan::{Action, Plan};
-use crate::quantity::{Kelvins, Reading, Readings, Seconds, Volts};
+use crate::quantity::{Amps, Kelvins, Reading, Readings, Seconds, Volts};
 use crate::record::Status;
-use crate::spec::sequence::MeasuredAt;
+use crate::spec::sequence::{MeasuredAt, SelfHeating};
 
 fn near(found: f64, wanted: f64, by: f64) {
     assert!(
@@ -43,10 +43,14 @@ fn a_good_unit_is_measured_as_it_is() {
         );
         let steady = result.steady.known().unwrap();
         near(steady.power_w.value, watts, 0.005);
-        assert!(
-            (0.01..0.1).contains(&steady.power_w.expanded),
-            "{:?}",
-            steady.power_w
+        let expanded = steady.at_plug_w.expanded;
+        assert!((0.01..0.1).contains(&expanded), "{expanded}");
+        // The room, known to 1.023 K, moves a PTC's input by 0.6 to 1 share of its rise.
+        let room = 0.8 * watts / rise * 1.023 / 3f64.sqrt() * 2.0;
+        near(
+            steady.power_w.expanded,
+            libm::hypot(room, expanded),
+            0.02 * room,
         );
         assert!((1.9..2.2).contains(&steady.power_w.coverage));
         assert_eq!((steady.duty, steady.samples), (1.0, 120));
@@ -71,7 +75,10 @@ fn a_good_unit_is_measured_as_it_is() {
 #[test]
 fn the_budget_adds_up_and_its_largest_share_comes_first() {
     let played = play(plan(&["full"]), good);
-    let power = first(&played).steady.known().unwrap().power_w.clone();
+    let steady = first(&played).steady.known().unwrap().clone();
+    let referred = &steady.power_w.budget[0].from;
+    assert_eq!(referred, "accuracy, temperature of ambient");
+    let power = steady.at_plug_w;
     let squares: f64 = power.budget.iter().map(|s| s.standard * s.standard).sum();
     near(power.coverage * squares.sqrt(), power.expanded, 1e-9);
     assert!(
@@ -170,17 +177,27 @@ fn after_heat_counts_and_a_body_that_is_not_followed_is_not_judged() {
 
 #[test]
 fn off_the_links_body_without_an_allowance_there_is_no_worst_case() {
-    let elsewhere = |allowance: Option<f64>| {
+    let elsewhere = |allowance: Option<f64>, heating: Option<f64>| {
         let mut plan = plan(&["full"]);
         plan.appliance.link.as_mut().unwrap().measured_at = MeasuredAt::Elsewhere {
             place: "the lid".to_owned(),
             allowance: allowance.map(Kelvins::of),
             source: None,
+            self_heating: heating.map(|rise| SelfHeating {
+                rise: Kelvins::of(rise),
+                at: Amps::of(0.01),
+            }),
         };
         first(&play(plan, good)).body_worst
     };
-    assert!(elsewhere(None).reason().unwrap().contains("no allowance"));
-    near(elsewhere(Some(7.0)).known().unwrap().value, 82.0, 0.8);
+    let missing = |allowance, heating| elsewhere(allowance, heating).reason().unwrap().to_owned();
+    assert!(missing(None, Some(0.0)).contains("no allowance"));
+    assert!(missing(Some(7.0), None).contains("self-heating is not stated"));
+    let without = elsewhere(Some(7.0), Some(0.0)).known().unwrap().value;
+    near(without, 82.0, 0.8);
+    // 2 K at 10 mA goes with the square: 18.7 mA at 4.3 W and 230 V gives 7.0 K.
+    let with = elsewhere(Some(7.0), Some(2.0)).known().unwrap().value;
+    near(with - without, 2.0 * (4.3f64 / 230.0 / 0.01).powi(2), 0.05);
 }
 
 #[test]

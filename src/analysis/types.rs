@@ -2,6 +2,7 @@
 
 use serde::{Deserialize, Serialize};
 
+use super::budget::Share;
 use crate::plan::Cell;
 
 /// A value, or why there is none.
@@ -39,19 +40,12 @@ pub struct Estimate {
     pub value: f64,
     /// Expanded uncertainty U = k u_c.
     pub expanded: f64,
-    /// Coverage factor k.
+    /// Coverage factor k at 95.45 %.
     pub coverage: f64,
-    /// Standard uncertainty of each share, largest first.
+    /// Effective degrees of freedom; absent where they are infinite.
+    pub freedom: Option<f64>,
+    /// Its lines, largest first.
     pub budget: Vec<Share>,
-}
-
-/// One line of an uncertainty budget.
-#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
-pub struct Share {
-    /// What it comes from.
-    pub from: String,
-    /// Its standard uncertainty in the estimate's unit.
-    pub standard: f64,
 }
 
 /// The results of one cell.
@@ -81,6 +75,24 @@ pub struct CellResult {
     pub rises: Vec<(String, Figure<Estimate>)>,
     /// Why the temperatures of this cell are not to be believed; empty where they are.
     pub disbelief: Vec<String>,
+    /// Whether it was run with a named fault: then it is no normal operation, and only
+    /// what the link did is judged.
+    pub abnormal: bool,
+}
+
+/// What a thermal link did in an `abnormal` step.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Opening {
+    /// The step's fault.
+    pub fault: String,
+    /// When the link opened, seconds since the record's start; absent where it did not.
+    pub opened_s: Option<f64>,
+    /// The body then.
+    pub at_opening_degc: Figure<Estimate>,
+    /// Highest temperature of the body within 10 min from then on.
+    pub peak_degc: Figure<Estimate>,
+    /// When it closed again, seconds after it opened; absent where it stayed open.
+    pub closed_again_s: Option<f64>,
 }
 
 /// What a unit drew while it was energised, settled or not.
@@ -117,11 +129,35 @@ pub struct Inrush {
     pub supply_limited: Option<String>,
 }
 
+/// How an input depends on the voltage: d ln P / d ln V.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Exponent {
+    /// Its value.
+    pub value: f64,
+    /// Its standard uncertainty.
+    pub standard: f64,
+    /// Of which distribution.
+    pub distribution: super::budget::Distribution,
+    /// Where it comes from: measured, or a house default.
+    pub source: String,
+}
+
 /// Settled input.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct Steady {
-    /// Power; of a cycling load, while it is on.
+    /// Power referred to the cell's supply and the reference ambient; of a cycling load,
+    /// while it is on.
     pub power_w: Estimate,
+    /// Power as it was measured, at the plug.
+    pub at_plug_w: Estimate,
+    /// Voltage at the unit's plug.
+    pub plug_v: Estimate,
+    /// How the input depends on it.
+    pub exponent: Exponent,
+    /// Mean ambient in the window, where it was read.
+    pub ambient_degc: Option<Estimate>,
+    /// Mean temperature of the body in the window, where it was read.
+    pub body_degc: Option<f64>,
     /// Mean power over the window, off times included.
     pub mean_w: f64,
     /// Share of the window in which it is on; 1 where it does not cycle.
@@ -171,6 +207,8 @@ pub struct Looked {
 pub struct Analysis {
     /// Results in the order of the plan's cells.
     pub cells: Vec<CellResult>,
+    /// What thermal links did in `abnormal` steps, in the order of the plan.
+    pub openings: Vec<Opening>,
     /// What the operator saw.
     pub looked: Vec<Looked>,
     /// The guard that tripped, where one did.

@@ -1,7 +1,10 @@
 //! Believable and degenerate scenes for this room's tests; appliances invented.
 
 use super::Scene;
-use crate::analysis::{Analysis, CellResult, Drawn, Estimate, Figure, Inrush, Peak, Steady};
+use crate::analysis::{
+    Analysis, CellResult, Distribution, Drawn, Estimate, Exponent, Figure, Inrush, Peak, Share,
+    Steady,
+};
 use crate::judge::{Finding, Judgement, Outcome, judge};
 use crate::plan::{
     Action, Cell, Guards, PLAN_FORMAT, Plan, PlannedAppliance, PlannedBay, PlannedLink,
@@ -11,6 +14,7 @@ use crate::quantity::{
     Amps, Celsius, Hertz, Kelvins, Moment, Reading, Readings, Seconds, Volts, Watts,
 };
 use crate::record::{RunOutcome, Sample, Status};
+use crate::spec::bench::Connection;
 use crate::spec::plate;
 use crate::spec::sequence::{
     ApplianceKind, Criterion, CriterionKind, Decision, HeatingElement, MeasuredAt, ProtectionClass,
@@ -69,6 +73,8 @@ fn role(name: &str, kind: RoleKind) -> PlannedRole {
         kind,
         instrument: 0,
         channel: None,
+        place: None,
+        connection: Connection::default(),
     }
 }
 
@@ -80,6 +86,7 @@ fn rule(kind: RuleKind, source: &str) -> PlannedRule {
         position: None,
         condition: None,
         source: source.to_owned(),
+        process: None,
     }
 }
 
@@ -125,6 +132,8 @@ pub fn plan(model: &str, cells: &[(Option<&str>, &str, f64)]) -> Plan {
             kind: ApplianceKind::Combined,
             protection_class: ProtectionClass::II,
             highest_ambient: Celsius::of(35.0),
+            reference_ambient: None,
+            supply_range: None,
             positions,
             plate: entries,
             link: Some(PlannedLink {
@@ -134,6 +143,7 @@ pub fn plan(model: &str, cells: &[(Option<&str>, &str, f64)]) -> Plan {
                 tm: Some(Celsius::of(175.0)),
                 sits: "on the heater block".to_owned(),
                 measured_at: MeasuredAt::LinkBody,
+                ambient_effect: None,
             }),
             element: HeatingElement::Ptc,
             fan: true,
@@ -312,12 +322,7 @@ pub fn samples(cell: usize, start: f64, unit: Behaviour) -> Vec<Sample> {
 }
 
 pub fn estimate(value: f64, expanded: f64) -> Estimate {
-    Estimate {
-        value,
-        expanded,
-        coverage: 2.0,
-        budget: Vec::new(),
-    }
+    Estimate::combined(value, vec![Share::normal("stated", 0.5 * expanded, "")])
 }
 
 /// What analysis would say of such a cell.
@@ -347,6 +352,16 @@ pub fn result(cell: &Cell, start: f64, unit: Behaviour) -> CellResult {
         settled_s: Figure::Known(960.0),
         steady: Figure::Known(Steady {
             power_w: estimate(unit.settled * 1.002, 0.004 * unit.settled + 0.02),
+            at_plug_w: estimate(unit.settled * 1.002, 0.004 * unit.settled + 0.02),
+            plug_v: estimate(230.04, 0.4),
+            exponent: Exponent {
+                value: 0.15,
+                standard: 0.09,
+                distribution: Distribution::Rectangular,
+                source: "house default".to_owned(),
+            },
+            ambient_degc: Some(estimate(AMBIENT, 1.0)),
+            body_degc: Some(AMBIENT + unit.rise),
             mean_w: match unit.cycle {
                 Some((on, off)) => unit.settled * on / (on + off),
                 None => unit.settled * 1.002,
@@ -369,6 +384,7 @@ pub fn result(cell: &Cell, start: f64, unit: Behaviour) -> CellResult {
         body_worst: Figure::Known(estimate(hottest + 12.5, 1.9)),
         rises: vec![("enclosure".to_owned(), Figure::Known(estimate(31.0, 1.5)))],
         disbelief: Vec::new(),
+        abnormal: false,
     }
 }
 
@@ -379,9 +395,12 @@ pub fn finding(rule: &str, cell: Option<&Cell>, outcome: Outcome) -> Finding {
         position: cell.map(|cell| cell.position.clone()),
         supply: cell.map(|_| "230 V, 50 Hz".to_owned()),
         weight: RuleWeight::Required,
+        decision: None,
         outcome,
         value: None,
         expanded: None,
+        coverage: None,
+        budget: Vec::new(),
         unit: String::new(),
         at_least: None,
         at_most: None,
@@ -408,6 +427,7 @@ pub fn stage(model: &str, cells: &[(Option<&str>, &str, f64, Behaviour)]) -> Sta
     }
     let analysis = Analysis {
         cells: results,
+        openings: Vec::new(),
         looked: Vec::new(),
         tripped: None,
         notes: Vec::new(),

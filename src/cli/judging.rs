@@ -111,6 +111,14 @@ fn write_annex(
         csv(analysis::results_csv(analysis))?,
     ));
     files.push((
+        "budgets.csv".to_owned(),
+        csv(analysis::budgets_csv(analysis))?,
+    ));
+    files.push((
+        "budgets.txt".to_owned(),
+        analysis::budgets_text(analysis).into_bytes(),
+    ));
+    files.push((
         "findings.csv".to_owned(),
         csv(judge::findings_csv(judgement))?,
     ));

@@ -20,7 +20,6 @@ mod types;
 mod wiring;
 mod words;
 
-pub use reference::Rated;
 pub use resolve::{Resolved, resolve};
 pub use types::{
     Action, Cell, Guards, PLAN_FORMAT, Plan, PlannedAppliance, PlannedBay, PlannedInstrument,

@@ -130,6 +130,8 @@ fn appliance(written: &Appliance, notes: &mut Notes) -> PlannedAppliance {
         kind: written.kind,
         protection_class: written.protection_class,
         highest_ambient: written.highest_ambient,
+        reference_ambient: Some(written.reference_ambient),
+        supply_range: written.supply_range.as_ref().map(|range| range.value),
         plate: plate.collect(),
         link: written.link.as_ref().map(link),
         element: written.facts.element,
@@ -153,5 +155,6 @@ fn link(written: &ThermalLink) -> PlannedLink {
         tm: written.tm,
         sits: written.sits.clone(),
         measured_at: written.measured_at.clone(),
+        ambient_effect: written.ambient_effect.clone(),
     }
 }

@@ -4,13 +4,11 @@ use super::expand::Expanded;
 use super::notes::Notes;
 use super::reference::{rated_in, rated_points};
 use super::types::{Action, Cell, PlannedAppliance, PlannedRule};
+use super::words::span;
 use crate::quantity::at_most;
 use crate::spec::Place;
+use crate::spec::plate::CORRECTABLE;
 use crate::spec::sequence::{MeasuredAt, RoleKind, Rule, RuleKind, Sequence};
-
-/// An input is corrected to a plate's voltage up to this distance (house default);
-/// beyond, it is not judged.
-const CORRECTABLE: f64 = 0.06;
 
 /// Where the limits of a rule come from, where the sequence does not say.
 fn usual_source(kind: &RuleKind) -> &'static str {
@@ -20,6 +18,8 @@ fn usual_source(kind: &RuleKind) -> &'static str {
         }
         RuleKind::LinkHolding => "IEC 60691: holding temperature Th of the part's data sheet",
         RuleKind::LinkOpening => "IEC 60691: Tf - 10 K, earliest opening",
+        RuleKind::LinkHouse { .. } => "house limit: the lower of Th and Tf less a distance",
+        RuleKind::LinkMaximum => "IEC 60691: maximum limit Tm of the part's data sheet",
         RuleKind::PositionOrder => "the declared order of positions",
         RuleKind::PowerLimits { .. }
         | RuleKind::Inrush { .. }
@@ -38,6 +38,7 @@ pub(super) fn rules(
         cells: &expanded.cells,
         soaked: expanded.cells_with(|action| matches!(action, Action::Soak { .. })),
         inrush: expanded.cells_with(|action| matches!(action, Action::Inrush(_))),
+        abnormal: expanded.cells_with(|action| matches!(action, Action::Abnormal { .. })),
     };
     let planned: Vec<PlannedRule> = sequence.rules.iter().map(planned).collect();
     for (rule, written) in planned.iter().zip(&sequence.rules) {
@@ -60,6 +61,7 @@ fn planned(rule: &Rule) -> PlannedRule {
             .source
             .clone()
             .unwrap_or_else(|| usual_source(&rule.kind.value).to_owned()),
+        process: rule.process,
     }
 }
 
@@ -97,6 +99,7 @@ struct Fed<'a> {
     cells: &'a [Cell],
     soaked: Vec<bool>,
     inrush: Vec<bool>,
+    abnormal: Vec<bool>,
 }
 
 impl Fed<'_> {
@@ -147,7 +150,15 @@ impl Fed<'_> {
                 place,
                 notes,
             ),
-            RuleKind::LinkHolding | RuleKind::LinkOpening | RuleKind::TemperatureRise { .. } => {}
+            RuleKind::LinkHolding | RuleKind::LinkOpening | RuleKind::LinkHouse { .. } => {
+                self.both_ends(appliance, rule, place, notes);
+            }
+            RuleKind::LinkMaximum if !self.abnormal.contains(&true) => notes.warning(
+                place,
+                "no step runs the unit with a fault until its link opens: this rule will be not judged",
+                "add an `abnormal` step, or take this rule out",
+            ),
+            RuleKind::LinkMaximum | RuleKind::TemperatureRise { .. } => {}
         }
     }
 
@@ -170,6 +181,38 @@ impl Fed<'_> {
                 cell.words()
             );
             notes.warning(place, what, lack.hint);
+        }
+    }
+
+    /// A unit with a fan is run at both ends of its supply range.
+    fn both_ends(
+        &self,
+        appliance: &PlannedAppliance,
+        rule: &PlannedRule,
+        place: &Place,
+        notes: &mut Notes,
+    ) {
+        if !appliance.fan {
+            return;
+        }
+        for position in &appliance.positions {
+            let of_it = |cell: &&Cell| cell.position == *position && rule.is_for(cell);
+            if !self.cells.iter().any(|cell| of_it(&cell)) {
+                continue;
+            }
+            let (low, high) = appliance.supply_ends(position);
+            for end in [low, high] {
+                let at_end = |cell: &&Cell| appliance.is_at_end(cell, end);
+                if !self.cells.iter().filter(of_it).any(|cell| at_end(&cell)) {
+                    return notes.warning(
+                        place,
+                        format!(
+                            "a unit with a fan is run at both ends of its supply range, and no step runs `{position}` at {end}: this rule will be not judged"
+                        ),
+                        format!("add a supply of {end}, or state the `supply range:` in which it may be used"),
+                    );
+                }
+            }
         }
     }
 
@@ -281,20 +324,22 @@ pub(super) fn every_rating_is_run(
         if entry.element.is_some() || !is_run(&entry.position) {
             continue;
         }
-        for rated in rated_points(entry) {
+        for rated in rated_points(entry, appliance.fan) {
             let volts = rated.voltage.get();
             let reached = cells.iter().any(|cell| {
                 let away = (cell.supply.voltage.get() - volts).abs();
-                cell.position == entry.position && at_most(away, CORRECTABLE * volts)
+                cell.position == entry.position
+                    && at_most(away, CORRECTABLE * volts)
+                    && rated.has_frequency(cell.supply.frequency)
             });
             if !reached {
                 notes.warning(
                     &written.voltage.place,
                     format!(
-                        "no step runs the position `{}` near {}, at which this entry is judged: it will be not judged",
-                        entry.position, rated.voltage
+                        "no step runs the position `{}` near {} at {}, where this entry is judged: it will be not judged",
+                        entry.position, rated.voltage, span(rated.frequency)
                     ),
-                    format!("add a supply of {}", rated.voltage),
+                    format!("add a supply of {} at {}", rated.voltage, span(rated.frequency)),
                 );
             }
         }

@@ -2,7 +2,7 @@
 
 use super::types::{Action, Plan, PlannedInstrument, PlannedRole, PlannedRule, PlannedStep};
 use super::words::{answers, between, criterion, degrees, measured, span, time};
-use crate::quantity::{Volts, Watts};
+use crate::quantity::{Volts, Watts, shortest};
 use crate::spec::plate;
 use crate::spec::sequence::{Decision, RuleKind, RuleWeight};
 
@@ -238,6 +238,13 @@ impl Plan {
         };
         let decision = match rule.decision {
             Decision::Simple => "simple".to_owned(),
+            Decision::SimpleUpTo { largest } => {
+                format!(
+                    "simple with U up to {} {}",
+                    shortest(largest),
+                    unit_of(&rule.kind)
+                )
+            }
             Decision::Guarded { ratio } => format!("guarded by {ratio} U"),
             Decision::FourOutcomes => "four outcomes".to_owned(),
         };
@@ -275,6 +282,13 @@ impl Plan {
                 let from = degrees(link.map(|link| link.opens_from));
                 format!("link's body in {ambient} ambient at most Tf - 10 K, {from}")
             }
+            RuleKind::LinkHouse { below_tf } => format!(
+                "link's body in {ambient} ambient at most Th and at most Tf - {below_tf}, house limit"
+            ),
+            RuleKind::LinkMaximum => {
+                let tm = degrees(link.and_then(|link| link.tm));
+                format!("link's body at most Tm, {tm}, for 10 min after it opened")
+            }
             RuleKind::Inrush { at_most } => format!("inrush at most {at_most}"),
             RuleKind::PositionOrder => format!(
                 "input rises in the order {}",
@@ -302,9 +316,9 @@ impl Plan {
             .filter(|entry| entry.element.is_none())
             .filter(|entry| position.is_none_or(|p| p == entry.position))
             .flat_map(|entry| {
-                rated_points(entry)
+                rated_points(entry, self.appliance.fan)
                     .into_iter()
-                    .map(|rated| band(&entry.position, rated.voltage, rated.power))
+                    .map(|rated| band(&entry.position, rated.voltage, rated.rated))
                     .collect::<Vec<_>>()
             })
             .collect()
@@ -320,6 +334,19 @@ impl Plan {
                 time(self.longest())
             ),
         )
+    }
+}
+
+/// The unit of what a rule compares, as its U is stated in.
+fn unit_of(kind: &RuleKind) -> &'static str {
+    match kind {
+        RuleKind::PlatePower | RuleKind::PowerLimits { .. } | RuleKind::PositionOrder => "W",
+        RuleKind::Inrush { .. } => "A",
+        RuleKind::LinkHolding
+        | RuleKind::LinkOpening
+        | RuleKind::LinkHouse { .. }
+        | RuleKind::LinkMaximum
+        | RuleKind::TemperatureRise { .. } => "K",
     }
 }
 

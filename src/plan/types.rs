@@ -4,11 +4,11 @@
 use serde::{Deserialize, Serialize};
 
 use crate::quantity::{Amps, Celsius, Hertz, Kelvins, Seconds, Volts, Watts};
-use crate::spec::bench::{CalibrationPoint, Port};
+use crate::spec::bench::{CalibrationPoint, Connection, Port};
 use crate::spec::driver::Driver;
 use crate::spec::sequence::{
-    ApplianceKind, Criterion, Decision, HeatingElement, MeasuredAt, ProtectionClass, Question,
-    RoleKind, RuleKind, RuleWeight, Span, SupplyPoint, Timed, Waiting,
+    AmbientEffect, ApplianceKind, Criterion, Decision, HeatingElement, MeasuredAt, ProcessSpread,
+    ProtectionClass, Question, RoleKind, RuleKind, RuleWeight, Span, SupplyPoint, Timed, Waiting,
 };
 
 /// Version of `plan.json`; raised when its meaning changes.
@@ -56,6 +56,12 @@ pub struct PlannedAppliance {
     pub protection_class: ProtectionClass,
     /// Highest ambient.
     pub highest_ambient: Celsius,
+    /// Ambient that the input is referred to; absent in plans of before, which refer to none.
+    #[serde(default)]
+    pub reference_ambient: Option<Celsius>,
+    /// Supply range in which it may be used; absent: the plate's.
+    #[serde(default)]
+    pub supply_range: Option<Span<Volts>>,
     /// Positions from the lowest input to the highest, off left out.
     pub positions: Vec<String>,
     /// What the plate promises.
@@ -102,6 +108,9 @@ pub struct PlannedLink {
     pub sits: String,
     /// Where it is measured.
     pub measured_at: MeasuredAt,
+    /// How far it follows the room; absent: 1 K per K.
+    #[serde(default)]
+    pub ambient_effect: Option<AmbientEffect>,
 }
 
 /// The bay.
@@ -126,6 +135,12 @@ pub struct PlannedRole {
     pub instrument: usize,
     /// Channel.
     pub channel: Option<u32>,
+    /// Where a temperature is measured, in words.
+    #[serde(default)]
+    pub place: Option<String>,
+    /// How it is connected.
+    #[serde(default)]
+    pub connection: Connection,
 }
 
 /// A line.
@@ -301,6 +316,9 @@ pub struct PlannedRule {
     pub condition: Option<String>,
     /// Where its limits come from, printed beside them.
     pub source: String,
+    /// How the quantity spreads over units, where it is stated.
+    #[serde(default)]
+    pub process: Option<ProcessSpread>,
 }
 
 impl Cell {

@@ -137,6 +137,8 @@ fn fill(files: Files, need: &RoleNeed, filled: &RoleFilled, wired: &mut Wired, n
         kind: need.kind,
         instrument: number,
         channel: filled.channel.as_ref().map(|channel| channel.value),
+        place: need.place.clone(),
+        connection: filled.connection.clone(),
     });
 }
 

@@ -29,7 +29,12 @@ pub(super) fn measured(at: &MeasuredAt) -> String {
             place,
             allowance,
             source,
+            self_heating,
         } => {
+            let heating = self_heating.map_or_else(
+                || "no self-heating stated".to_owned(),
+                |heating| format!("self-heating {} at {}", heating.rise, heating.at),
+            );
             let allowance = allowance.map_or_else(
                 || "no allowance stated".to_owned(),
                 |allowance| format!("allowance {allowance}"),
@@ -37,7 +42,10 @@ pub(super) fn measured(at: &MeasuredAt) -> String {
             let source = source
                 .as_ref()
                 .map_or_else(String::new, |source| format!(" ({source})"));
-            format!("measured at {place}, {allowance}{source}")
+            format!("measured at {place}, {allowance}{source}, {heating}")
+        }
+        MeasuredAt::OutsideOnly { place, limit } => {
+            format!("not measured: only {place} is, against a house limit of {limit}")
         }
     }
 }

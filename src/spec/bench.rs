@@ -3,7 +3,7 @@
 use serde::{Deserialize, Serialize};
 
 use super::Located;
-use crate::quantity::{Amps, Reading};
+use crate::quantity::{Amps, Ohms, Ratio, Reading};
 
 /// A whole bench file.
 #[derive(Debug, Clone, PartialEq)]
@@ -117,4 +117,21 @@ pub struct RoleFilled {
     pub instrument: Located<String>,
     /// `channel:`
     pub channel: Option<Located<u32>>,
+    /// How it is connected, as far as it changes what is read.
+    pub connection: Connection,
+}
+
+/// How a role's instrument is connected to the unit.
+#[derive(Debug, Clone, PartialEq, Default, Serialize, Deserialize)]
+pub struct Connection {
+    /// `attachment:` how a sensor is held, in words.
+    #[serde(default)]
+    pub attachment: Option<String>,
+    /// `contact error:` by which share of the rise over ambient a surface sensor reads
+    /// too low at the most.
+    #[serde(default)]
+    pub contact_error: Option<Ratio>,
+    /// `lead resistance:` of both conductors between a power meter and the unit's plug.
+    #[serde(default)]
+    pub lead_resistance: Option<Ohms>,
 }

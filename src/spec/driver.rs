@@ -131,6 +131,10 @@ pub struct Accuracy {
     pub resolution: f64,
     /// `ranges:` full-scale values, rising, in the reading's base unit; empty: no range term.
     pub ranges: Vec<f64>,
+    /// `correlation:` how far the errors of two channels, or of two values, are one and
+    /// the same, 0 to 1; 0 where nothing is known, which is the safe side for differences.
+    #[serde(default)]
+    pub correlation: f64,
 }
 
 impl Driver {

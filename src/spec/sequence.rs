@@ -38,6 +38,10 @@ pub struct Appliance {
     pub protection_class: ProtectionClass,
     /// `highest ambient:` at which the appliance may be used.
     pub highest_ambient: Celsius,
+    /// `reference ambient:` that the input is referred to (house default 23 °C).
+    pub reference_ambient: Celsius,
+    /// `supply range:` in which the appliance may be used; absent: the plate's.
+    pub supply_range: Option<Located<Span<Volts>>>,
     /// `positions:` of the unit's own switch, off left out, from the lowest input to the highest.
     pub positions: Vec<Located<String>>,
     /// `plate:`
@@ -106,6 +110,28 @@ pub struct ThermalLink {
     pub sits: String,
     /// `measured at:` the link's own body or elsewhere.
     pub measured_at: MeasuredAt,
+    /// `ambient effect:` how far the link follows the room; absent: 1 K per K.
+    pub ambient_effect: Option<AmbientEffect>,
+}
+
+/// How far the link's temperature follows the room's, where it was measured.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct AmbientEffect {
+    /// `value:` kelvins per kelvin.
+    pub value: Ratio,
+    /// `U:` its expanded uncertainty (k = 2).
+    pub expanded: Ratio,
+    /// `source:` who measured it.
+    pub source: String,
+}
+
+/// How much hotter a link's body is than its surroundings by its own current.
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+pub struct SelfHeating {
+    /// `rise:` in kelvins
+    pub rise: Kelvins,
+    /// `at:` this current; it goes with the square (I2 Rth).
+    pub at: Amps,
 }
 
 /// Where the temperature that is judged against the link is measured.
@@ -121,6 +147,17 @@ pub enum MeasuredAt {
         allowance: Option<Kelvins>,
         /// `allowance source:` who says so.
         source: Option<String>,
+        /// `self-heating:` by the unit's own current.
+        #[serde(default)]
+        self_heating: Option<SelfHeating>,
+    },
+    /// Only the outside can be reached: the rules for the link are replaced by a house
+    /// limit for that place, which says that the link was not measured.
+    OutsideOnly {
+        /// `outside only:` where, in words.
+        place: String,
+        /// `house limit:` for it.
+        limit: Celsius,
     },
 }
 
@@ -154,6 +191,8 @@ pub struct RoleNeed {
     pub name: Located<String>,
     /// What kind of instrument fills it.
     pub kind: RoleKind,
+    /// `at:` where a temperature is measured, in words.
+    pub place: Option<String>,
 }
 
 /// Kinds of instrument that a role needs.
@@ -404,6 +443,18 @@ pub struct Rule {
     pub condition: Option<Located<String>>,
     /// `source:` of its limits; absent: the standard that the rule names, or `house limit`.
     pub source: Option<String>,
+    /// `process:` what units of the appliance are known to spread by; the risks of the
+    /// decision are then said beside it.
+    pub process: Option<ProcessSpread>,
+}
+
+/// How a quantity spreads over the units of an appliance (a normal distribution).
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+pub struct ProcessSpread {
+    /// `mean:` base unit of the rule's quantity.
+    pub mean: f64,
+    /// `spread:` standard deviation, base unit.
+    pub spread: f64,
 }
 
 /// What a rule compares.
@@ -422,6 +473,14 @@ pub enum RuleKind {
     LinkHolding,
     /// `thermal link: earliest opening` worst body temperature against Tf - 10 K.
     LinkOpening,
+    /// `thermal link: {below Tf}` worst body temperature against a house limit,
+    /// the lower of Th and Tf less this.
+    LinkHouse {
+        /// Kelvins below Tf.
+        below_tf: Kelvins,
+    },
+    /// `thermal link: after opening` body after the link opened, against Tm.
+    LinkMaximum,
     /// `inrush: {at most}` peak current from a cold start.
     Inrush {
         /// Upper limit.
@@ -441,8 +500,14 @@ pub enum RuleKind {
 /// How a value near a limit is decided.
 #[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
 pub enum Decision {
-    /// `simple`: the value alone.
+    /// The value alone, whatever its uncertainty: findings of the house that compare
+    /// no uncertain value.
     Simple,
+    /// `simple`: the value alone, where U is at most what is stated; else not judged.
+    SimpleUpTo {
+        /// `largest U:` base unit of the rule's quantity.
+        largest: f64,
+    },
     /// `guarded`: guard band of `ratio` times U.
     Guarded {
         /// `guard:` r of r U.

@@ -24,6 +24,38 @@ pub struct Combined {
     pub expanded: f64,
 }
 
+/// A correlation between two inputs of a budget.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Correlation {
+    /// Index of one part.
+    pub a: usize,
+    /// Index of the other.
+    pub b: usize,
+    /// Correlation coefficient, -1 to 1.
+    pub r: f64,
+}
+
+/// Like [`combine`], with parts that carry the sign of their sensitivity and whose
+/// inputs may be correlated: u_c^2 gains 2 sum r c_i u_i c_j u_j (JCGM 100, 5.2.2).
+pub fn combine_correlated(parts: &[Part], correlations: &[Correlation]) -> Combined {
+    let alone = combine(parts);
+    let both = |c: &Correlation| {
+        let (a, b) = (parts.get(c.a)?, parts.get(c.b)?);
+        Some(2.0 * c.r.clamp(-1.0, 1.0) * a.standard * b.standard)
+    };
+    let common: f64 = correlations.iter().filter_map(both).sum();
+    if common == 0.0 {
+        return alone;
+    }
+    let variance = (alone.standard * alone.standard + common).max(0.0);
+    let standard = variance.sqrt();
+    Combined {
+        standard,
+        expanded: alone.coverage * standard,
+        ..alone
+    }
+}
+
 /// u_c^2 = sum u_i^2 and nu_eff = u_c^4 / sum(u_i^4 / nu_i) (JCGM 100, 5.1.2 and G.4.1).
 pub fn combine(parts: &[Part]) -> Combined {
     let variance: f64 = parts.iter().map(|p| p.standard * p.standard).sum();

@@ -7,7 +7,7 @@ mod distribution;
 mod line;
 
 pub use autocorrelation::{Effective, effective_of, effective_with};
-pub use budget::{Combined, Part, combine};
+pub use budget::{Combined, Correlation, Part, combine, combine_correlated};
 pub use distribution::{coverage_factor, normal_cdf, student_quantile};
 pub use line::{Line, RunningLine, line_through};
 

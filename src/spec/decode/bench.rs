@@ -2,14 +2,15 @@
 
 use chrono::NaiveDate;
 
-use crate::quantity::{Amps, Dimension, Reading};
+use crate::quantity::{Amps, Dimension, Ohms, Reading};
 use crate::spec::Located;
 use crate::spec::bench::{
-    Bay, Bench, CalibrationPoint, Instrument, Line, Parity, Port, RoleFilled, SerialSettings,
+    Bay, Bench, CalibrationPoint, Connection, Instrument, Line, Parity, Port, RoleFilled,
+    SerialSettings,
 };
 use crate::spec::fields::{Field, Fields, list, located, named, shown};
 use crate::spec::scalars::{
-    Allowed, choice, located_name, name, number, quantity, text, value_of, whole,
+    Allowed, choice, located_name, name, number, quantity, share, text, value_of, whole,
 };
 
 /// `bench:`, `lines:`, `instruments:`, `bays:`.
@@ -174,11 +175,19 @@ fn role(role: Located<String>, field: Field<'_>) -> Option<RoleFilled> {
     let fields = field.fields()?;
     let instrument = fields.required("instrument", located_name);
     let channel = fields.optional("channel", located(whole(1, 9_999)));
+    let attachment = fields.optional("attachment", text);
+    let contact_error = fields.optional("contact error", share);
+    let lead_resistance = fields.optional("lead resistance", quantity::<Ohms>(Allowed::Positive));
     fields.finish()?;
     Some(RoleFilled {
         role,
         instrument: instrument?,
         channel: channel?,
+        connection: Connection {
+            attachment: attachment?,
+            contact_error: contact_error?,
+            lead_resistance: lead_resistance?,
+        },
     })
 }
 

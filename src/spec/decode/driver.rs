@@ -231,11 +231,13 @@ fn accuracy(reading: Located<String>, field: Field<'_>) -> Option<Accuracy> {
     let fields = field.fields()?;
     let of_reading = fields.optional("of reading", share);
     let of_range = fields.optional("of range", share);
+    let correlation = fields.optional("correlation", share);
     let floor = fields.or("floor", 0.0, value_of(width, Allowed::NotNegative));
     let resolution = fields.or("resolution", 0.0, value_of(width, Allowed::NotNegative));
     let full = value_of(kind.dimension(), Allowed::Positive);
     let ranges = fields.or("ranges", Vec::new(), list(full));
     let (of_reading, of_range) = (fraction(of_reading), fraction(of_range));
+    let correlation = fraction(correlation);
     let rising = match (&ranges, of_range) {
         (Some(ranges), _) if !ranges.is_sorted_by(|a, b| a < b) => fields.wrong(
             "ranges",
@@ -267,6 +269,7 @@ fn accuracy(reading: Located<String>, field: Field<'_>) -> Option<Accuracy> {
         floor: floor?,
         resolution: resolution?,
         ranges: ranges?,
+        correlation: correlation?,
     })
 }
 

@@ -1,10 +1,10 @@
 //! The rules of a sequence.
 
-use crate::quantity::{Amps, Kelvins, Watts};
+use crate::quantity::{Amps, Dimension, Kelvins, Watts};
 use crate::spec::Located;
 use crate::spec::fields::{Field, Fields};
-use crate::spec::scalars::{Allowed, choice, located_name, name, number, quantity, text};
-use crate::spec::sequence::{Decision, Rule, RuleKind, RuleWeight};
+use crate::spec::scalars::{Allowed, choice, located_name, name, number, quantity, text, value_of};
+use crate::spec::sequence::{Decision, ProcessSpread, Rule, RuleKind, RuleWeight};
 use crate::spec::yaml::NodeKind;
 
 use super::sequence::limits;
@@ -29,15 +29,23 @@ const WEIGHTS: &[(&str, RuleWeight)] = &[
 pub(super) fn rule(field: Field<'_>) -> Option<Rule> {
     let fields = field.fields()?;
     let kind = kind(&fields, field);
-    let decision = fields.or("decision", Decision::FourOutcomes, decision);
+    let decision = fields.or(
+        "decision",
+        Written::Decided(Decision::FourOutcomes),
+        decision,
+    );
     let weight = fields.or("weight", RuleWeight::Required, choice(WEIGHTS));
     let position = fields.optional("position", located_name);
     let condition = fields.optional("condition", located_name);
     let source = fields.optional("source", text);
+    let unit = kind.as_ref().and_then(|kind| unit_of(&kind.value));
+    let decision = decision.and_then(|decision| decided(&fields, decision, unit));
+    let process = fields.optional("process", |field| process(field, unit));
     fields.finish()?;
     Some(Rule {
         kind: kind?,
         decision: decision?,
+        process: process?,
         weight: weight?,
         position: position?,
         condition: condition?,
@@ -91,10 +99,19 @@ fn power(field: Field<'_>) -> Option<RuleKind> {
 }
 
 fn thermal_link(field: Field<'_>) -> Option<RuleKind> {
-    choice(&[
-        ("holding", RuleKind::LinkHolding),
-        ("earliest opening", RuleKind::LinkOpening),
-    ])(field)
+    if let NodeKind::Scalar(_) = field.node.kind {
+        return choice(&[
+            ("holding", RuleKind::LinkHolding),
+            ("earliest opening", RuleKind::LinkOpening),
+            ("after opening", RuleKind::LinkMaximum),
+        ])(field);
+    }
+    let fields = field.fields()?;
+    let below_tf = fields.required("below Tf", quantity::<Kelvins>(Allowed::Positive));
+    fields.finish()?;
+    Some(RuleKind::LinkHouse {
+        below_tf: below_tf?,
+    })
 }
 
 fn inrush(field: Field<'_>) -> Option<RuleKind> {
@@ -119,17 +136,91 @@ fn temperature_rise(field: Field<'_>) -> Option<RuleKind> {
     })
 }
 
-fn decision(field: Field<'_>) -> Option<Decision> {
+/// A decision as it is written: the largest U of a simple one still has to be read in
+/// the unit of what the rule compares.
+#[derive(Clone, Copy)]
+enum Written<'a> {
+    Decided(Decision),
+    UpTo(Field<'a>),
+}
+
+fn decision(field: Field<'_>) -> Option<Written<'_>> {
     if let NodeKind::Scalar(_) = field.node.kind {
-        return choice(&[
-            ("simple", Decision::Simple),
+        let words = &[
             ("four outcomes", Decision::FourOutcomes),
-        ])(field);
+            ("simple", Decision::Simple),
+        ];
+        let decision = choice(words)(field)?;
+        if decision == Decision::Simple {
+            return field.wrong(
+                "a simple decision without the largest U that it is good for",
+                "write `{simple: {largest U: 0.2 W}}` in the unit of the rule, or `four outcomes`",
+            );
+        }
+        return Some(Written::Decided(decision));
     }
     let fields = field.fields()?;
+    if let Some(simple) = fields.find("simple") {
+        fields.finish()?;
+        return Some(Written::UpTo(simple));
+    }
     let ratio = fields.required("guarded", number(Allowed::Within(0.0, 3.0)));
     fields.finish()?;
-    Some(Decision::Guarded { ratio: ratio? })
+    Some(Written::Decided(Decision::Guarded { ratio: ratio? }))
+}
+
+/// What a rule compares, as a dimension; absent where no uncertain value is compared.
+fn unit_of(kind: &RuleKind) -> Option<Dimension> {
+    match kind {
+        RuleKind::PlatePower | RuleKind::PowerLimits { .. } | RuleKind::PositionOrder => {
+            Some(Dimension::Power)
+        }
+        RuleKind::LinkHolding
+        | RuleKind::LinkOpening
+        | RuleKind::LinkHouse { .. }
+        | RuleKind::LinkMaximum
+        | RuleKind::TemperatureRise { .. } => Some(Dimension::TemperatureDifference),
+        RuleKind::Inrush { .. } => Some(Dimension::Current),
+    }
+}
+
+fn decided(rule: &Fields<'_>, written: Written<'_>, unit: Option<Dimension>) -> Option<Decision> {
+    match (written, unit) {
+        (Written::Decided(decision), _) => Some(decision),
+        (Written::UpTo(field), Some(unit)) => {
+            let fields = field.fields()?;
+            let largest = fields.required("largest U", value_of(unit, Allowed::Positive));
+            fields.finish()?;
+            Some(Decision::SimpleUpTo { largest: largest? })
+        }
+        (Written::UpTo(_), None) => rule.wrong(
+            "decision",
+            "this rule compares nothing that has an uncertainty",
+            "take the decision out",
+        ),
+    }
+}
+
+fn process(field: Field<'_>, unit: Option<Dimension>) -> Option<ProcessSpread> {
+    let Some(unit) = unit else {
+        return field.wrong(
+            "this rule compares nothing that spreads",
+            "take `process` out",
+        );
+    };
+    // A mean of temperatures is a point, their spread a difference.
+    let point = match unit {
+        Dimension::TemperatureDifference => Dimension::Temperature,
+        other => other,
+    };
+    let fields = field.fields()?;
+    let mean = fields.required("mean", value_of(point, Allowed::Any));
+    let spread = fields.required("spread", value_of(unit, Allowed::Positive));
+    fields.finish()?;
+    Some(ProcessSpread {
+        mean: mean?,
+        spread: spread?,
+    })
 }
 
 #[cfg(test)]
@@ -208,6 +299,34 @@ mod tests {
                 "68:15",
                 "can't be `fair`",
                 "simple",
+            ),
+            wrong(
+                "decision: four outcomes",
+                "decision: simple",
+                "68:15",
+                "without the largest U",
+                "largest U",
+            ),
+            wrong(
+                "decision: four outcomes",
+                "decision: {simple: {largest U: 2 K}}",
+                "68:36",
+                "not a power",
+                "W",
+            ),
+            wrong(
+                "decision: four outcomes",
+                "process: {mean: 9 W, spread: 0 W}",
+                "68:34",
+                "above zero",
+                "check",
+            ),
+            wrong(
+                "thermal link: holding",
+                "thermal link: {below Tf: 25 °C}",
+                "70:30",
+                "not a temperature difference",
+                "K",
             ),
             wrong(
                 "weight: required",
