@@ -3,6 +3,7 @@
 
 mod belief;
 mod cell;
+mod cycling;
 #[cfg(test)]
 pub(crate) mod fixture;
 mod inrush;

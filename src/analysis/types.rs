@@ -122,8 +122,19 @@ pub struct Inrush {
 pub struct Steady {
     /// Power; of a cycling load, while it is on.
     pub power_w: Estimate,
-    /// Mean power over the window, off times included.
+    /// Mean power over the window, off times included; of a cycling load over whole
+    /// cycles.
     pub mean_w: f64,
+    /// What the mean rests on: an energy counter, or rows weighted by time.
+    #[serde(default)]
+    pub mean_from: String,
+    /// Input of a representative period (IEC 60335-1 clause 10.1, from memory), as
+    /// indicated, W.
+    #[serde(default)]
+    pub representative_w: Option<f64>,
+    /// How it was found, in words.
+    #[serde(default)]
+    pub representative_how: Option<String>,
     /// Share of the window in which it is on; 1 where it does not cycle.
     pub duty: f64,
     /// Mean voltage.
@@ -140,6 +151,9 @@ pub struct Steady {
     pub effective: f64,
     /// How it was called settled, in words.
     pub criterion: String,
+    /// Whether the soak was ended early and the power is a predicted end.
+    #[serde(default)]
+    pub extrapolated: bool,
 }
 
 /// A highest temperature.

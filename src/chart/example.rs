@@ -13,8 +13,8 @@ use crate::quantity::{
 use crate::record::{RunOutcome, Sample, Status};
 use crate::spec::plate;
 use crate::spec::sequence::{
-    ApplianceKind, Criterion, CriterionKind, Decision, HeatingElement, MeasuredAt, ProtectionClass,
-    RoleKind, RuleKind, RuleWeight, Span, SupplyPoint, Timed, Waiting,
+    ApplianceKind, Criterion, CriterionKind, CyclingRule, Decision, HeatingElement, MeasuredAt,
+    ProtectionClass, RoleKind, RuleKind, RuleWeight, Span, SupplyPoint, Timed, Waiting,
 };
 
 /// How a unit of the example behaves in one cell.
@@ -80,6 +80,7 @@ fn rule(kind: RuleKind, source: &str) -> PlannedRule {
         position: None,
         condition: None,
         source: source.to_owned(),
+        cycling: CyclingRule::OnState,
     }
 }
 
@@ -198,6 +199,7 @@ fn steps(cells: usize) -> Vec<PlannedStep> {
                     power_change: None,
                     temperature_change: None,
                 },
+                early_finish: false,
             },
             Action::Rest(Waiting {
                 within: Kelvins::of(3.0),
@@ -351,6 +353,9 @@ pub fn result(cell: &Cell, start: f64, unit: Behaviour) -> CellResult {
                 Some((on, off)) => unit.settled * on / (on + off),
                 None => unit.settled * 1.002,
             },
+            mean_from: "rows weighted by time".to_owned(),
+            representative_w: None,
+            representative_how: None,
             duty: unit.cycle.map_or(1.0, |(on, off)| on / (on + off)),
             voltage_v: 230.04,
             current_a: Some(unit.settled / 230.0),
@@ -359,6 +364,7 @@ pub fn result(cell: &Cell, start: f64, unit: Behaviour) -> CellResult {
             samples: 151,
             effective: 42.3,
             criterion: "slope over 5 min within 2 %/h and 3 K/h".to_owned(),
+            extrapolated: false,
         }),
         body_peak: Figure::Known(Peak {
             temperature_degc: estimate(hottest, 1.6),

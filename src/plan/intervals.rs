@@ -13,6 +13,12 @@ const SLOWEST_ENERGISED: Seconds = Seconds::whole(10);
 /// Three readings, each at least 5 min after the one before (UL 1278 39.1.8 in a restatement).
 const THREE_READINGS: Seconds = Seconds::whole(600);
 
+/// The sampling method's shortest log (IEC 62301 ed. 2, from memory).
+const SAMPLING: Seconds = Seconds::whole(900);
+
+/// A slope over fewer rows says nothing of its own uncertainty (house default).
+const SLOPE_ROWS: f64 = 6.0;
+
 /// Whether a step's interval is asked while the unit is energised.
 #[derive(Clone, Copy, PartialEq, Eq)]
 enum While {
@@ -86,7 +92,21 @@ fn criterion_fits(place: &Place, soak: &Soak, notes: &mut Notes) {
         CriterionKind::Slope { window } => (window, "window"),
         CriterionKind::ChangeWithin { interval } => (interval, "interval"),
         CriterionKind::ThreeReadings => (THREE_READINGS, "three readings"),
+        CriterionKind::SamplingMethod => (SAMPLING, "log"),
     };
+    if let CriterionKind::Slope { window } = soak.until.kind {
+        let rows = window.get() / soak.every.get().max(1e-3);
+        if rows < SLOPE_ROWS {
+            notes.error(
+                place,
+                format!(
+                    "a reading every {} leaves {rows:.0} in the criterion's window of {window}, and a slope needs {SLOPE_ROWS}: it can never settle",
+                    soak.every
+                ),
+                "widen the `window`, poll faster, or take `three readings` or `change within`",
+            );
+        }
+    }
     if needs > soak.at_most {
         notes.error(
             place,

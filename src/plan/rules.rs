@@ -60,6 +60,7 @@ fn planned(rule: &Rule) -> PlannedRule {
             .source
             .clone()
             .unwrap_or_else(|| usual_source(&rule.kind.value).to_owned()),
+        cycling: rule.cycling,
     }
 }
 

@@ -7,8 +7,8 @@ use crate::quantity::{Amps, Celsius, Hertz, Kelvins, Seconds, Volts, Watts};
 use crate::spec::bench::{CalibrationPoint, Port};
 use crate::spec::driver::Driver;
 use crate::spec::sequence::{
-    ApplianceKind, Criterion, Decision, HeatingElement, MeasuredAt, ProtectionClass, Question,
-    RoleKind, RuleKind, RuleWeight, Span, SupplyPoint, Timed, Waiting,
+    ApplianceKind, Criterion, CyclingRule, Decision, HeatingElement, MeasuredAt, ProtectionClass,
+    Question, RoleKind, RuleKind, RuleWeight, Span, SupplyPoint, Timed, Waiting,
 };
 
 /// Version of `plan.json`; raised when its meaning changes.
@@ -222,6 +222,9 @@ pub enum Action {
         every: Seconds,
         /// Criterion.
         until: Criterion,
+        /// Whether two predictions that agree may end it.
+        #[serde(default)]
+        early_finish: bool,
     },
     /// Over a window.
     Measure(Timed),
@@ -301,6 +304,9 @@ pub struct PlannedRule {
     pub condition: Option<String>,
     /// Where its limits come from, printed beside them.
     pub source: String,
+    /// Which input of a cycling load a power rule compares.
+    #[serde(default)]
+    pub cycling: CyclingRule,
 }
 
 impl Cell {
