@@ -39,6 +39,7 @@ mod drift;
 mod limits;
 mod points;
 mod predict;
+mod slow;
 
 use std::collections::VecDeque;
 
@@ -184,7 +185,14 @@ impl Settle {
         if self.is_over() || at < self.energised || !value.is_finite() {
             return;
         }
+        // Before a cell is closed: what vanishes beyond it must not be called settled.
+        if watched == Watched::Power && !self.soaking.cycling {
+            self.watch_for_vanishing(at, value);
+        }
         let cell = self.cell_of(at);
+        if self.is_over() {
+            return;
+        }
         if cell > self.open_cell {
             self.close_cell();
             self.open_cell = cell;
@@ -197,8 +205,6 @@ impl Settle {
         if self.soaking.cycling {
             let t = at.since(self.energised).get();
             self.cycles.take(t, watched, value);
-        } else if watched == Watched::Power {
-            self.watch_for_vanishing(at, value);
         }
     }
 

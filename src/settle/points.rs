@@ -19,10 +19,11 @@ impl Point {
         0.5 * (self.from + self.to)
     }
 
-    /// Two neighbours as one.
+    /// Two neighbours as one, weighted by their lengths.
     pub(super) fn merged(&self, next: &Point) -> Point {
+        let (own, other) = (self.to - self.from, next.to - next.from);
         let mean = |a: Option<f64>, b: Option<f64>| match (a, b) {
-            (Some(a), Some(b)) => Some(0.5 * (a + b)),
+            (Some(a), Some(b)) => Some((own * a + other * b) / (own + other)),
             (one, other) => one.or(other),
         };
         Point {

@@ -3,11 +3,11 @@
 //! It starts after the fast phase: the earliest of a few starts behind which the
 //! residuals are without trend. Without 1.5 tau of data, or with a trend in every
 //! stretch, there is no prediction. The uncertainty of the end holds the fit's own and
-//! the distance to the end of a second fit that starts later: a slow second time
-//! constant moves the one against the other.
+//! what a slow second time constant could do that the data can't exclude.
 
 use super::limits::Quantity;
 use super::points::Point;
+use super::slow::possible_shift;
 use crate::quantity::{Moment, Seconds};
 use crate::spec::sequence::{CriterionKind, Soak};
 use crate::stats::{coverage_factor, first_order};
@@ -22,8 +22,6 @@ const FEWEST_POINTS: usize = 20;
 const TAUS_OF_DATA: f64 = 1.5;
 /// Shares of the soak that may be left out as its fast phase.
 const STARTS: [f64; 7] = [0.0, 0.1, 0.2, 0.3, 0.4, 0.5, 0.6];
-/// The second fit leaves out this share of the first's stretch.
-const LATER: f64 = 0.25;
 /// Fits are this far apart, seconds.
 const EVERY_S: f64 = 30.0;
 /// Fits that agree span this share of the elapsed time (house default).
@@ -177,13 +175,9 @@ fn fit_of(track: &[(f64, f64)], now: f64) -> Option<Fit> {
     STARTS.iter().find_map(|share| {
         let from = first + share * (last - first);
         let fit = accepted(track, from)?;
-        let span = last - from;
-        let second = first_order(behind(track, from + LATER * span))?;
-        let moved = (fit.end - second.end).abs();
-        // What the two may differ by from noise alone, one being a part of the other.
-        let own = (second.end_error.powi(2) - fit.end_error.powi(2)).max(0.0);
-        let model = if moved > 2.0 * own.sqrt() { moved } else { 0.0 };
-        let standard = libm::hypot(fit.end_error, model);
+        let stretch = behind(track, from);
+        let slow = possible_shift(stretch, fit.end, fit.tau, fit.effective)?;
+        let standard = libm::hypot(fit.end_error, slow);
         let expanded = coverage_factor(fit.effective - 3.0) * standard;
         let still = -fit.amplitude * libm::exp(-now / fit.tau);
         let known = [standard, expanded, still, fit.end];

@@ -334,3 +334,8 @@ fn the_same_pushes_give_the_same_answer_and_late_ones_change_nothing() {
     again.take(Moment::START + minutes(100.0), Watched::Body, 500.0);
     assert_eq!(*again.state(), settled);
 }
+
+mod drift;
+mod early;
+mod published;
+mod sparse;

@@ -78,7 +78,7 @@ pub fn first_order(points: &[(f64, f64)]) -> Option<FirstOrder> {
         tau_error: errors[2],
         residual_sd: (sum / (n as f64 - 3.0)).sqrt(),
         effective,
-        trend_free: is_trend_free(&residuals),
+        trend_free: is_trend_free(&residuals, 1e-6 * at_first.abs()),
         n,
     })
 }
@@ -133,7 +133,7 @@ fn errors(rows: impl Iterator<Item = [f64; 3]>, variance: f64) -> Option<[f64; 3
 
 /// Whether the means of blocks scatter no more than noise lets them; noise is told
 /// from the differences of neighbours.
-fn is_trend_free(residuals: &[f64]) -> bool {
+fn is_trend_free(residuals: &[f64], negligible: f64) -> bool {
     let n = residuals.len() as f64;
     let differences: f64 = residuals.windows(2).map(|w| (w[1] - w[0]).powi(2)).sum();
     let noise = 0.5 * differences / (n - 1.0);
@@ -147,5 +147,5 @@ fn is_trend_free(residuals: &[f64]) -> bool {
         .sum();
     let all: f64 = residuals.iter().map(|r| r * r).sum();
     // What rounding leaves has no trend that matters.
-    all <= 1e-18 * n || of_blocks / (BLOCKS as f64) <= TREND_FREE * noise
+    all <= n * negligible * negligible || of_blocks / (BLOCKS as f64) <= TREND_FREE * noise
 }
