@@ -50,15 +50,21 @@ pub fn effective_of(values: &[f64]) -> Option<Effective> {
         .enumerate()
         .map(|(i, y)| y - line.at(i as f64))
         .collect();
+    let (effective, lags) = worth_of_residuals(&residuals);
+    Some(worth(effective, lags))
+}
+
+/// What residuals in order are worth, and the lags that were summed.
+pub(super) fn worth_of_residuals(residuals: &[f64]) -> (f64, usize) {
+    let n = residuals.len();
+    let variance = residuals.iter().map(|r| r * r).sum::<f64>() / n as f64;
     let rho = |lag: usize| {
         let products = residuals.iter().zip(&residuals[lag..]).map(|(a, b)| a * b);
-        let mean = products.sum::<f64>() / (n - lag) as f64;
-        mean / (line.residual_squares / n as f64)
+        products.sum::<f64>() / (n - lag) as f64 / variance
     };
     let positive: Vec<f64> = (1..n).map(rho).take_while(|rho| *rho > 0.0).collect();
     let lags = positive.len();
-    let effective = effective_with(n, positive).min(n as f64);
-    Some(worth(effective, lags))
+    (effective_with(n, positive).min(n as f64), lags)
 }
 
 #[cfg(test)]

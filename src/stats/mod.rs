@@ -4,11 +4,13 @@
 mod autocorrelation;
 mod budget;
 mod distribution;
+mod fit;
 mod line;
 
 pub use autocorrelation::{Effective, effective_of, effective_with};
 pub use budget::{Combined, Part, combine};
 pub use distribution::{coverage_factor, normal_cdf, student_quantile};
+pub use fit::{FirstOrder, first_order};
 pub use line::{Line, RunningLine, line_through};
 
 /// Half-width of a rectangular distribution per standard deviation (JCGM 100, 4.3.7).
