@@ -179,7 +179,8 @@ fn fit_of(track: &[(f64, f64)], now: f64) -> Option<Fit> {
         let slow = possible_shift(stretch, fit.end, fit.tau, fit.effective)?;
         let standard = libm::hypot(fit.end_error, slow);
         let expanded = coverage_factor(fit.effective - 3.0) * standard;
-        let still = -fit.amplitude * libm::exp(-now / fit.tau);
+        // The amplitude is that of the stretch's first point.
+        let still = -fit.amplitude * libm::exp(-(now - stretch.first()?.0) / fit.tau);
         let known = [standard, expanded, still, fit.end];
         known.iter().all(|x| x.is_finite()).then_some(Fit {
             end: fit.end,
