@@ -4,7 +4,7 @@ use crate::quantity::Reading;
 use crate::spec::sequence::{MeasuredAt, RoleKind};
 
 use super::cell::{CellView, highest, time};
-use super::measured::{Gauge, estimate};
+use super::measured::{Gauge, Line, estimate};
 use super::steady::Window;
 use super::types::{Estimate, Figure, Peak};
 
@@ -50,8 +50,8 @@ fn ambient_corrected(view: &CellView, indicated: f64) -> f64 {
 }
 
 /// The worst case that is judged against the link: the peak moved to the highest
-/// ambient by 1 K/K (never down: a test in a hotter room is not credited), and the
-/// placement allowance.
+/// ambient by 1 K/K (never down: a test in a hotter room is not credited), the placement
+/// allowance, and the rise that an early finish left to come.
 ///
 /// Absent where the soak had not settled (the rise still to come is unknown), where
 /// the body was not followed until it had fallen for two minutes after OFF, and where
@@ -93,7 +93,10 @@ fn worst(
         let ambient = ambient_gauge(view).ok_or("the bay has no role ambient")?;
         lines.extend(ambient.lines(peak.ambient_degc)?);
     }
-    let value = peak.temperature_degc.value + moved + allowance;
+    let early = settled.known().and_then(|window| window.extrapolated);
+    let to_come = early.map_or(0.0, |early| early.rise_still_to_come_k.max(0.0));
+    lines.extend(early.map(|early| Line::stated("extrapolation", early.rise_standard)));
+    let value = peak.temperature_degc.value + moved + allowance + to_come;
     Ok(estimate(value, lines))
 }
 

@@ -315,8 +315,19 @@ fn known_steady(result: &CellResult) -> Result<&Estimate, String> {
 
 fn power(draft: &Draft, result: &CellResult) -> Finding {
     match known_steady(result) {
-        Ok(power) => draft.decided(Some(&result.cell), power),
+        Ok(power) => said_extrapolated(draft.decided(Some(&result.cell), power), result),
         Err(reason) => draft.not_judged(Some(&result.cell), &reason),
+    }
+}
+
+/// A finding whose soak was ended early says so.
+fn said_extrapolated(finding: Finding, result: &CellResult) -> Finding {
+    if !result.steady.known().is_some_and(|s| s.extrapolated) {
+        return finding;
+    }
+    Finding {
+        reason: format!("{}; extrapolated: the soak was ended early", finding.reason),
+        ..finding
     }
 }
 
@@ -337,7 +348,7 @@ fn body(draft: &Draft, result: &CellResult) -> Finding {
         return draft.not_judged(cell, &doubt);
     }
     let reason = match &result.body_worst {
-        Figure::Known(worst) => return draft.decided(cell, worst),
+        Figure::Known(worst) => return said_extrapolated(draft.decided(cell, worst), result),
         Figure::Absent(reason) => reason,
     };
     match result.body_peak.known() {
