@@ -9,15 +9,15 @@ use crate::quantity::{
     Amps, Celsius, Hertz, Kelvins, Moment, Ratio, Reading, Readings, Seconds, Volts, Watts,
 };
 use crate::record::{Event, Happening, RunOutcome, Sample, Status, StepEnd};
-use crate::settle::{Settle, Settling, Watched};
+use crate::settle::{Settle, Settling, watched_in};
 use crate::spec::bench::{CalibrationPoint, Connection, Port};
 use crate::spec::driver::{
     Accuracy, Driver, Framing, IdentityQuery, ReadingQuery, Settings, Terminator,
 };
 use crate::spec::sequence::{
-    AnswerKind, ApplianceKind, Criterion, CriterionKind, Decision, FindingClass, HeatingElement,
-    MeasuredAt, ProtectionClass, Question, QuestionFinding, RoleKind, RuleKind, RuleWeight, Span,
-    SupplyPoint, Timed, Waiting,
+    AnswerKind, ApplianceKind, Criterion, CriterionKind, CyclingRule, Decision, FindingClass,
+    HeatingElement, MeasuredAt, PowerChange, ProtectionClass, Question, QuestionFinding, RoleKind,
+    RuleKind, RuleWeight, Span, SupplyPoint, Timed, Waiting,
 };
 
 use super::{Analysis, Input, analyse};
@@ -262,6 +262,7 @@ pub(crate) fn rule(kind: RuleKind) -> PlannedRule {
         condition: None,
         source: "test".to_owned(),
         process: None,
+        cycling: CyclingRule::OnState,
     }
 }
 
@@ -296,9 +297,10 @@ fn steps(cells: &[Cell]) -> Vec<PlannedStep> {
                 kind: CriterionKind::Slope {
                     window: Seconds::of(300.0),
                 },
-                power_change: Some(Ratio::of(0.02)),
+                power_change: Some(PowerChange::Relative(Ratio::of(0.02))),
                 temperature_change: Some(Kelvins::of(3.0)),
             },
+            early_finish: false,
         };
         for action in [
             Action::SetSupply(cell.supply),
@@ -521,37 +523,26 @@ impl<U: Fn(Now) -> Seen, E: Fn(&PlannedStep, f64) -> Option<RunOutcome>> Player<
                 let rounds = polled(timed.length, timed.every);
                 ended = self.poll(plan, step, rounds, timed.every, |_, _| false);
             }
-            Action::Soak {
-                at_least,
-                at_most,
-                every,
-                until,
-            } => {
+            Action::Soak { at_most, every, .. } => {
                 let rounds = polled(*at_most, *every);
-                let energised = self.energised();
-                let cycling = plan.appliance.thermostat;
-                let mut settle = Settle::new(until, *at_least, *every, cycling, energised);
-                let mut settled = false;
+                let soaking = plan.soaking(&step.action).expect("a soak");
+                let mut settle = Settle::new(soaking, self.energised());
+                end = StepEnd::TimeLimit;
                 ended = self.poll(plan, step, rounds, *every, |_, rows| {
                     for row in rows {
-                        for (reading, value) in row.readings.iter() {
-                            let watched = match (row.role, reading) {
-                                (METER, Reading::Power) => Watched::Power,
-                                (BODY, _) => Watched::Body,
-                                (AMBIENT, _) => Watched::Ambient,
-                                _ => continue,
-                            };
+                        let role = &plan.bay.roles[row.role];
+                        for (watched, value) in watched_in(role.kind, &role.name, &row.readings) {
                             settle.take(row.reply, watched, value);
                         }
                     }
-                    settled = matches!(settle.state(), Settling::Settled { .. });
-                    settled
+                    end = match settle.state() {
+                        Settling::Settled { .. } => StepEnd::Settled,
+                        Settling::Extrapolated { .. } => StepEnd::Extrapolated,
+                        Settling::WentOpen => StepEnd::WentOpen,
+                        Settling::TooEarly | Settling::NotYet(_) => StepEnd::TimeLimit,
+                    };
+                    end != StepEnd::TimeLimit
                 });
-                end = if settled {
-                    StepEnd::Settled
-                } else {
-                    StepEnd::TimeLimit
-                };
             }
             _ => {}
         }

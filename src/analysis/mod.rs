@@ -5,6 +5,7 @@ mod belief;
 mod budget;
 mod budget_table;
 mod cell;
+mod cycling;
 #[cfg(test)]
 pub(crate) mod fixture;
 mod input;
@@ -91,7 +92,7 @@ fn result(input: &Input, view: &CellView) -> CellResult {
         settled_s: steady::settled_after(view, &settled),
         body_worst: temperature::body_worst(view, &peak, &settled, steady.known()),
         body_peak: peak,
-        rises: temperature::rises(view),
+        rises: followed(temperature::rises(view), &settled),
         disbelief: belief::disbelief(view, drawn.known()),
         abnormal: view
             .step(|action| matches!(action, Action::Abnormal { .. }))
@@ -99,6 +100,25 @@ fn result(input: &Input, view: &CellView) -> CellResult {
         drawn,
         steady,
     }
+}
+
+/// A soak that was ended early followed the body alone: no other temperature is known
+/// to have come to its end.
+fn followed(
+    rises: Vec<(String, Figure<Estimate>)>,
+    settled: &Figure<steady::Window>,
+) -> Vec<(String, Figure<Estimate>)> {
+    let early = settled.known().is_some_and(|w| w.extrapolated.is_some());
+    let cut = |rise: Figure<Estimate>| match rise {
+        Figure::Known(_) if early => Figure::Absent(
+            "the soak was ended early, and this temperature was not followed to its end".to_owned(),
+        ),
+        rise => rise,
+    };
+    rises
+        .into_iter()
+        .map(|(name, rise)| (name, cut(rise)))
+        .collect()
 }
 
 /// Why a cell was never energised.

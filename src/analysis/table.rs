@@ -5,7 +5,7 @@ use crate::quantity::shortest;
 use crate::record::defused;
 
 /// Columns before the rises of the other temperature roles.
-const HEAD: [&str; 27] = [
+const HEAD: [&str; 29] = [
     "condition",
     "position",
     "supply_voltage_v",
@@ -24,6 +24,8 @@ const HEAD: [&str; 27] = [
     "steady_power_u_w",
     "mean_power_w",
     "duty",
+    "representative_power_w",
+    "extrapolated",
     "voltage_v",
     "samples",
     "effective_samples",
@@ -85,6 +87,8 @@ fn row(cell: &CellResult) -> Vec<String> {
         number(steady.map(|s| s.power_w.expanded)),
         number(steady.map(|s| s.mean_w)),
         number(steady.map(|s| s.duty)),
+        number(steady.and_then(|s| s.representative_w)),
+        flag(steady.map(|s| s.extrapolated)),
         number(steady.map(|s| s.voltage_v)),
         steady.map_or_else(String::new, |s| s.samples.to_string()),
         number(steady.map(|s| s.effective)),

@@ -124,14 +124,25 @@ fn worst(
         Figure::Known(peak) => peak,
         Figure::Absent(reason) => return Err(reason.clone()),
     };
-    let _window = match settled {
+    let window = match settled {
         Figure::Known(window) => window,
         Figure::Absent(reason) => {
             return Err(format!("the rise still to come is unknown: {reason}"));
         }
     };
     followed(view, peak)?;
-    let seen = peak.temperature_degc.clone();
+    let (to_come, standard) = match window.extrapolated {
+        Some(early) => (early.rise_still_to_come_k, early.rise_standard),
+        None => window.rise_to_come_k.unwrap_or((0.0, 0.0)),
+    };
+    let seen = peak.temperature_degc.moved(
+        to_come.max(0.0),
+        [Share::normal(
+            "rise still to come, predicted",
+            standard,
+            "K",
+        )],
+    );
     let at_room = at_highest_ambient(view, seen, peak.ambient_degc)?;
     let at_supply = at_highest_supply(view, at_room, peak, steady)?;
     at_the_link(view, at_supply, steady)

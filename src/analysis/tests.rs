@@ -5,7 +5,7 @@ use super::*;
 use crate::plan::{Action, Plan};
 use crate::quantity::{Amps, Kelvins, Reading, Readings, Seconds, Volts};
 use crate::record::Status;
-use crate::spec::sequence::{MeasuredAt, SelfHeating};
+use crate::spec::sequence::{CriterionKind, MeasuredAt, SelfHeating};
 
 fn near(found: f64, wanted: f64, by: f64) {
     assert!(
@@ -530,4 +530,142 @@ fn the_plate_voltage_that_a_cell_is_for() {
     assert_eq!(plate_point(&plan, &plan.cells[0]), None);
     assert!(plate_points(&plan, "low").is_empty());
     assert!(Seconds::new(1.0).is_some());
+}
+
+// The overshoot of the first cycle is the highest temperature, whatever the settled
+// cycles reach.
+#[test]
+fn the_first_cycle_s_overshoot_counts_for_temperatures() {
+    let overshoots = |now: Now| {
+        let mut seen = thermostat(now);
+        if let Some(on) = now.on {
+            seen.body += 30.0 * libm::exp(-(on - 180.0).powi(2) / 1800.0);
+        }
+        seen
+    };
+    let mut plan = plan(&["full"]);
+    plan.appliance.thermostat = true;
+    let plain = first(&play(plan.clone(), thermostat));
+    let result = first(&play(plan, overshoots));
+    let peak = result.body_peak.known().unwrap();
+    let energised = *result.energised_s.known().unwrap();
+    near(peak.at_s - energised, 180.0, 25.0);
+    let without = plain.body_peak.known().unwrap().temperature_degc.value;
+    assert!(peak.temperature_degc.value > without + 3.0);
+    let worst = |result: &CellResult| result.body_worst.known().unwrap().value;
+    near(
+        worst(&result) - worst(&plain),
+        peak.temperature_degc.value - without,
+        0.5,
+    );
+}
+
+/// A slow unit: 8.6 W in the end, 60 K in the end, with 10 min.
+fn slow(now: Now) -> Seen {
+    let mut seen = good(now);
+    if let Some(on) = now.on {
+        let left = libm::exp(-on / 600.0);
+        seen.watts += 0.2 * left;
+        seen.body = 23.0 + 60.0 * (1.0 - left) + 0.06 * noise(3, now.t);
+    }
+    seen
+}
+
+#[test]
+fn an_early_finish_carries_the_extrapolation_and_the_rise_to_come() {
+    let mut early = plan(&["full"]);
+    for step in &mut early.steps {
+        if let Action::Soak {
+            early_finish,
+            until,
+            ..
+        } = &mut step.action
+        {
+            *early_finish = true;
+            // Within reach of no slope in the time at hand.
+            until.temperature_change = Some(Kelvins::of(1.0));
+        }
+    }
+    let played = play(early, slow);
+    let analysis = played.analysis();
+    let result = &analysis.cells[1];
+    let steady = result.steady.known().unwrap();
+    assert!(steady.extrapolated, "{}", steady.criterion);
+    assert!(
+        steady
+            .criterion
+            .contains("extrapolated by first-order fits")
+    );
+    assert!((steady.power_w.value - 8.6).abs() <= steady.power_w.expanded);
+    let after = *result.settled_s.known().unwrap();
+    let left = 60.0 * libm::exp(-after / 600.0);
+    let peak = result.body_peak.known().unwrap();
+    let worst = result.body_worst.known().unwrap();
+    // 12 K to the highest ambient of 35 degrees, and what the soak left to come.
+    near(worst.value, peak.temperature_degc.value + 12.0 + left, 1.0);
+    assert!(worst.value + worst.expanded >= 95.0, "{worst:?}");
+    assert!(
+        worst
+            .budget
+            .iter()
+            .any(|share| share.from == "extrapolation")
+    );
+    let (_, enclosure) = &result.rises[0];
+    assert!(enclosure.reason().unwrap().contains("ended early"));
+    // Without leave it runs on, and is no extrapolation.
+    let whole = first(&play(plan(&["full"]), slow));
+    assert!(
+        whole
+            .steady
+            .known()
+            .is_none_or(|steady| !steady.extrapolated)
+    );
+}
+
+#[test]
+fn what_is_still_to_come_is_stated_beside_a_settled_criterion() {
+    let result = first(&play(plan(&["full"]), slow));
+    if let Some(steady) = result.steady.known() {
+        assert!(steady.criterion.contains("still to come (slope x tau)"));
+    }
+    let mut long = plan(&["full"]);
+    for step in &mut long.steps {
+        if let Action::Soak { at_most, .. } = &mut step.action {
+            *at_most = Seconds::of(7200.0);
+        }
+    }
+    let result = first(&play(long, slow));
+    let criterion = &result.steady.known().unwrap().criterion;
+    assert!(
+        criterion.contains("K of rise") && criterion.contains("house default"),
+        "{criterion}"
+    );
+}
+
+#[test]
+fn the_sampling_method_s_result_is_the_mean_of_its_own_window() {
+    let mut sampled = plan(&["full"]);
+    for step in &mut sampled.steps {
+        if let Action::Soak {
+            until,
+            every,
+            at_least,
+            ..
+        } = &mut step.action
+        {
+            until.kind = CriterionKind::SamplingMethod;
+            until.power_change = None;
+            until.temperature_change = None;
+            *every = Seconds::of(1.0);
+            *at_least = Seconds::of(900.0);
+        }
+    }
+    let steady = first(&play(sampled, good)).steady.known().unwrap().clone();
+    assert!(
+        steady.criterion.contains("IEC 62301"),
+        "{}",
+        steady.criterion
+    );
+    assert!(steady.to_s - steady.from_s > 500.0 && steady.samples > 500);
+    near(steady.power_w.value, 4.3, 0.01);
 }

@@ -4,6 +4,7 @@ use serde::{Deserialize, Serialize};
 
 use super::budget::Share;
 use crate::plan::Cell;
+use crate::spec::sequence::CyclingRule;
 
 /// A value, or why there is none.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
@@ -158,8 +159,19 @@ pub struct Steady {
     pub ambient_degc: Option<Estimate>,
     /// Mean temperature of the body in the window, where it was read.
     pub body_degc: Option<f64>,
-    /// Mean power over the window, off times included.
+    /// Mean power over the window, off times included; of a cycling load over whole
+    /// cycles.
     pub mean_w: f64,
+    /// What the mean rests on: an energy counter, or rows weighted by time.
+    #[serde(default)]
+    pub mean_from: String,
+    /// Input of a representative period (IEC 60335-1 clause 10.1, from memory), as
+    /// indicated, W.
+    #[serde(default)]
+    pub representative_w: Option<f64>,
+    /// How it was found, in words.
+    #[serde(default)]
+    pub representative_how: Option<String>,
     /// Share of the window in which it is on; 1 where it does not cycle.
     pub duty: f64,
     /// Mean voltage.
@@ -176,6 +188,21 @@ pub struct Steady {
     pub effective: f64,
     /// How it was called settled, in words.
     pub criterion: String,
+    /// Whether the soak was ended early and the power is a predicted end.
+    #[serde(default)]
+    pub extrapolated: bool,
+}
+
+impl Steady {
+    /// The power that a rule compares: while it is on, or of a representative period.
+    pub fn judged_w(&self, cycling: CyclingRule) -> Estimate {
+        match (cycling, self.representative_w) {
+            (CyclingRule::RepresentativePeriod, Some(watts)) if self.at_plug_w.value > 0.0 => {
+                self.power_w.scaled(watts / self.at_plug_w.value)
+            }
+            _ => self.power_w.clone(),
+        }
+    }
 }
 
 /// A highest temperature.

@@ -17,8 +17,8 @@ use crate::record::{RunOutcome, Sample, Status};
 use crate::spec::bench::Connection;
 use crate::spec::plate;
 use crate::spec::sequence::{
-    ApplianceKind, Criterion, CriterionKind, Decision, HeatingElement, MeasuredAt, ProtectionClass,
-    RoleKind, RuleKind, RuleWeight, Span, SupplyPoint, Timed, Waiting,
+    ApplianceKind, Criterion, CriterionKind, CyclingRule, Decision, HeatingElement, MeasuredAt,
+    ProtectionClass, RoleKind, RuleKind, RuleWeight, Span, SupplyPoint, Timed, Waiting,
 };
 
 /// How a unit of the example behaves in one cell.
@@ -87,6 +87,7 @@ fn rule(kind: RuleKind, source: &str) -> PlannedRule {
         condition: None,
         source: source.to_owned(),
         process: None,
+        cycling: CyclingRule::OnState,
     }
 }
 
@@ -208,6 +209,7 @@ fn steps(cells: usize) -> Vec<PlannedStep> {
                     power_change: None,
                     temperature_change: None,
                 },
+                early_finish: false,
             },
             Action::Rest(Waiting {
                 within: Kelvins::of(3.0),
@@ -366,6 +368,9 @@ pub fn result(cell: &Cell, start: f64, unit: Behaviour) -> CellResult {
                 Some((on, off)) => unit.settled * on / (on + off),
                 None => unit.settled * 1.002,
             },
+            mean_from: "rows weighted by time".to_owned(),
+            representative_w: None,
+            representative_how: None,
             duty: unit.cycle.map_or(1.0, |(on, off)| on / (on + off)),
             voltage_v: 230.04,
             current_a: Some(unit.settled / 230.0),
@@ -374,6 +379,7 @@ pub fn result(cell: &Cell, start: f64, unit: Behaviour) -> CellResult {
             samples: 151,
             effective: 42.3,
             criterion: "slope over 5 min within 2 %/h and 3 K/h".to_owned(),
+            extrapolated: false,
         }),
         body_peak: Figure::Known(Peak {
             temperature_degc: estimate(hottest, 1.6),

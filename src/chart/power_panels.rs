@@ -310,7 +310,11 @@ fn line_labels(panel: &Panel, input: &Input, column: Frame, whole: bool) -> Vec<
     if let Some(steady) = input.steady() {
         let power = &steady.power_w;
         let (value, expanded) = with_uncertainty(power.value, power.expanded);
-        let word = if steady.duty < 0.999 { "on" } else { "settled" };
+        let word = match steady.extrapolated {
+            true => "extrapolated",
+            false if steady.duty < 0.999 => "on",
+            false => "settled",
+        };
         let mut lines = vec![(format!("{word} {value} W"), Face::bold(TEXT.em, LEVEL))];
         if whole {
             lines.push((format!("± {expanded} W"), TEXT.in_ink(LEVEL)));

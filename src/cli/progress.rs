@@ -90,6 +90,7 @@ fn step_ended(plan: &Plan, number: u32, end: &StepEnd) -> Option<String> {
     let how = match end {
         StepEnd::Done => "done",
         StepEnd::Settled => "settled",
+        StepEnd::Extrapolated => "ended early: its end is extrapolated",
         StepEnd::TimeLimit => "ended by its time limit",
         StepEnd::WentOpen => "ended: the current vanished",
         StepEnd::Cut => "cut short",

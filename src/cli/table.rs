@@ -60,7 +60,32 @@ fn results(plan: &Plan, analysis: &Analysis) -> Vec<String> {
     let rows = analysis.cells.iter().map(result_row).collect::<Vec<_>>();
     let mut lines = aligned(&head, &rows);
     lines.extend(plate_line(plan));
+    lines.extend(analysis.cells.iter().flat_map(remarks));
     lines
+}
+
+/// What a cell's settled input must not be read without.
+fn remarks(cell: &CellResult) -> Vec<String> {
+    let Some(steady) = cell.steady.known() else {
+        return Vec::new();
+    };
+    let mut remarks = Vec::new();
+    if steady.extrapolated {
+        remarks.push(steady.criterion.clone());
+    }
+    if steady.duty < 0.999 {
+        remarks.push(format!(
+            "on for {} % of the time, mean {} W ({})",
+            digits(100.0 * steady.duty, 3),
+            digits(steady.mean_w, 4),
+            steady.mean_from
+        ));
+    }
+    let label = format!("{}: ", cell_words(&cell.cell));
+    remarks
+        .iter()
+        .flat_map(|remark| wrapped("  ", &format!("{label}{remark}")))
+        .collect()
 }
 
 fn plate_line(plan: &Plan) -> Option<String> {

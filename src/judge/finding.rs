@@ -3,7 +3,7 @@
 use crate::analysis::{Analysis, CellResult, Estimate};
 use crate::plan::Cell;
 use crate::quantity::{at_most, shortest};
-use crate::spec::sequence::{Decision, RuleWeight, SupplyPoint};
+use crate::spec::sequence::{CyclingRule, Decision, RuleWeight, SupplyPoint};
 
 use super::decision::{Decided, Limits, decide, in_words};
 use super::types::{Finding, Outcome};
@@ -18,6 +18,8 @@ pub(super) struct Draft {
     pub(super) unit: &'static str,
     /// What the plate says, where the tolerance is meant around it.
     pub(super) nominal: Option<f64>,
+    /// Which input of a cycling load is compared.
+    pub(super) cycling: CyclingRule,
     pub(super) source: String,
     /// What a fail means, in words.
     pub(super) fail_means: String,
@@ -38,6 +40,7 @@ impl Draft {
             limits: Limits::default(),
             unit: "",
             nominal: None,
+            cycling: CyclingRule::OnState,
             source: "house rule".to_owned(),
             fail_means: fail_means.into(),
         }

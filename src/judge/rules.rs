@@ -27,6 +27,7 @@ pub(super) fn findings(plan: &Plan, analysis: &Analysis, rule: &PlannedRule) -> 
         limits: Limits::default(),
         unit: "",
         nominal: None,
+        cycling: rule.cycling,
         source: rule.source.clone(),
         fail_means: String::new(),
     };
@@ -229,7 +230,15 @@ impl Ask<'_> {
             return draft.not_judged(cell, &coarse);
         }
         match at_voltage(self.plan, steady, point.voltage.get()) {
-            Figure::Known(input) => draft.decided(cell, &input),
+            Figure::Known(input) => {
+                let judged = steady.judged_w(draft.cycling).value / steady.power_w.value;
+                let input = if judged.is_finite() {
+                    input.scaled(judged)
+                } else {
+                    input
+                };
+                said_extrapolated(draft.decided(cell, &input), result)
+            }
             Figure::Absent(reason) => draft.not_judged(cell, &reason),
         }
     }
@@ -451,8 +460,22 @@ fn known_steady(result: &CellResult) -> Result<&Steady, String> {
 
 fn power(draft: &Draft, result: &CellResult) -> Finding {
     match known_steady(result) {
-        Ok(steady) => draft.decided(Some(&result.cell), &steady.power_w),
+        Ok(steady) => {
+            let power = steady.judged_w(draft.cycling);
+            said_extrapolated(draft.decided(Some(&result.cell), &power), result)
+        }
         Err(reason) => draft.not_judged(Some(&result.cell), &reason),
+    }
+}
+
+/// A finding whose soak was ended early says so.
+fn said_extrapolated(finding: Finding, result: &CellResult) -> Finding {
+    if !result.steady.known().is_some_and(|s| s.extrapolated) {
+        return finding;
+    }
+    Finding {
+        reason: format!("{}; extrapolated: the soak was ended early", finding.reason),
+        ..finding
     }
 }
 
@@ -473,7 +496,7 @@ fn body(draft: &Draft, result: &CellResult) -> Finding {
         return draft.not_judged(cell, &doubt);
     }
     let reason = match &result.body_worst {
-        Figure::Known(worst) => return draft.decided(cell, worst),
+        Figure::Known(worst) => return said_extrapolated(draft.decided(cell, worst), result),
         Figure::Absent(reason) => reason,
     };
     match result.body_peak.known() {

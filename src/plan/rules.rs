@@ -3,12 +3,15 @@
 use super::expand::Expanded;
 use super::notes::Notes;
 use super::reference::{rated_in, rated_points};
+use super::resolve::written_steps;
 use super::types::{Action, Cell, PlannedAppliance, PlannedRule};
 use super::words::span;
 use crate::quantity::at_most;
 use crate::spec::Place;
 use crate::spec::plate::CORRECTABLE;
-use crate::spec::sequence::{MeasuredAt, RoleKind, Rule, RuleKind, Sequence};
+use crate::spec::sequence::{
+    CyclingRule, MeasuredAt, RoleKind, Rule, RuleKind, Sequence, StepAction,
+};
 
 /// Where the limits of a rule come from, where the sequence does not say.
 fn usual_source(kind: &RuleKind) -> &'static str {
@@ -46,6 +49,7 @@ pub(super) fn rules(
             cells.can_feed(appliance, rule, &written.kind.place, notes);
         }
         link_known(sequence, written, notes);
+        fits_the_load(sequence, written, notes);
     }
     planned
 }
@@ -62,6 +66,31 @@ fn planned(rule: &Rule) -> PlannedRule {
             .clone()
             .unwrap_or_else(|| usual_source(&rule.kind.value).to_owned()),
         process: rule.process,
+        cycling: rule.cycling,
+    }
+}
+
+/// A choice between inputs of a load that does not cycle, and a temperature that nobody
+/// follows to its end, are warned of.
+fn fits_the_load(sequence: &Sequence, rule: &Rule, notes: &mut Notes) {
+    let place = &rule.kind.place;
+    let chosen = rule.cycling == CyclingRule::RepresentativePeriod;
+    if chosen && !sequence.appliance.facts.thermostat {
+        notes.warning(
+            place,
+            "the rule of a representative period is for a load that cycles, and no thermostat is declared",
+            "write `thermostat: yes` below `facts:`, or take `cycling` out",
+        );
+    }
+    let early = written_steps(sequence)
+        .any(|step| matches!(&step.action, StepAction::Soak(soak) if soak.early_finish));
+    if early && matches!(&rule.kind.value, RuleKind::TemperatureRise { role, .. } if role != "body")
+    {
+        notes.warning(
+            place,
+            "a soak may finish early, and this temperature is not followed to its end: then the rule will be not judged",
+            "take `early finish` out of the soak, or this rule",
+        );
     }
 }
 

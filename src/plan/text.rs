@@ -389,9 +389,15 @@ fn detail(action: &Action) -> String {
             at_most,
             every,
             until,
+            early_finish,
         } => format!(
-            "{at_least} to {at_most}, every {every}, until {}",
-            criterion(until)
+            "{at_least} to {at_most}, every {every}, until {}{}",
+            criterion(until),
+            if *early_finish {
+                "; may finish early where two predictions agree (the result is then extrapolated)"
+            } else {
+                ""
+            }
         ),
         Action::Abnormal {
             fault,

@@ -7,8 +7,9 @@ use crate::quantity::{Amps, Celsius, Hertz, Kelvins, Seconds, Volts, Watts};
 use crate::spec::bench::{CalibrationPoint, Connection, Port};
 use crate::spec::driver::Driver;
 use crate::spec::sequence::{
-    AmbientEffect, ApplianceKind, Criterion, Decision, HeatingElement, MeasuredAt, ProcessSpread,
-    ProtectionClass, Question, RoleKind, RuleKind, RuleWeight, Span, SupplyPoint, Timed, Waiting,
+    AmbientEffect, ApplianceKind, Criterion, CyclingRule, Decision, HeatingElement, MeasuredAt,
+    ProcessSpread, ProtectionClass, Question, RoleKind, RuleKind, RuleWeight, Span, SupplyPoint,
+    Timed, Waiting,
 };
 
 /// Version of `plan.json`; raised when its meaning changes.
@@ -237,6 +238,9 @@ pub enum Action {
         every: Seconds,
         /// Criterion.
         until: Criterion,
+        /// Whether two predictions that agree may end it.
+        #[serde(default)]
+        early_finish: bool,
     },
     /// Over a window.
     Measure(Timed),
@@ -319,6 +323,9 @@ pub struct PlannedRule {
     /// How the quantity spreads over units, where it is stated.
     #[serde(default)]
     pub process: Option<ProcessSpread>,
+    /// Which input of a cycling load a power rule compares.
+    #[serde(default)]
+    pub cycling: CyclingRule,
 }
 
 impl Cell {

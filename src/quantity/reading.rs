@@ -15,17 +15,19 @@ pub enum Reading {
     PowerFactor,
     Frequency,
     Temperature,
+    Energy,
 }
 
 impl Reading {
     /// Every kind, in the order of the record's columns.
-    pub const ALL: [Reading; 6] = [
+    pub const ALL: [Reading; 7] = [
         Reading::Voltage,
         Reading::Current,
         Reading::Power,
         Reading::PowerFactor,
         Reading::Frequency,
         Reading::Temperature,
+        Reading::Energy,
     ];
 
     /// The column of a machine file, with its unit.
@@ -37,6 +39,7 @@ impl Reading {
             Reading::PowerFactor => "power_factor",
             Reading::Frequency => "frequency_hz",
             Reading::Temperature => "temperature_degc",
+            Reading::Energy => "energy_wh",
         }
     }
 
@@ -49,6 +52,7 @@ impl Reading {
             Reading::PowerFactor => "power factor",
             Reading::Frequency => "frequency",
             Reading::Temperature => "temperature",
+            Reading::Energy => "energy",
         }
     }
 
@@ -61,6 +65,7 @@ impl Reading {
             Reading::PowerFactor => "",
             Reading::Frequency => "Hz",
             Reading::Temperature => "°C",
+            Reading::Energy => "Wh",
         }
     }
 
@@ -73,6 +78,7 @@ impl Reading {
             Reading::PowerFactor => Dimension::Ratio,
             Reading::Frequency => Dimension::Frequency,
             Reading::Temperature => Dimension::Temperature,
+            Reading::Energy => Dimension::Energy,
         }
     }
 
@@ -83,11 +89,11 @@ impl Reading {
 
 /// The values of one exchange, in base units; absent is absent, never 0.
 #[derive(Debug, Clone, Copy, PartialEq, Default)]
-pub struct Readings([Option<f64>; 6]);
+pub struct Readings([Option<f64>; 7]);
 
 impl Readings {
     /// No value at all.
-    pub const NONE: Readings = Readings([None; 6]);
+    pub const NONE: Readings = Readings([None; 7]);
 
     /// A single value; a non-finite one is absent.
     pub fn one(reading: Reading, value: f64) -> Self {

@@ -42,6 +42,7 @@ pub struct Names {
     bay: String,
     roles: Vec<String>,
     cells: Vec<[String; 3]>,
+    readings: Vec<Reading>,
 }
 
 impl Names {
@@ -56,7 +57,14 @@ impl Names {
                 .map(|role| defused(&role.name))
                 .collect(),
             cells: plan.cells.iter().map(cell_names).collect(),
+            readings: columns_of(plan),
         }
+    }
+
+    /// The columns of `samples.csv`.
+    pub fn head(&self) -> Vec<&'static str> {
+        let quantities = self.readings.iter().map(|reading| reading.column());
+        SAMPLE_HEAD.into_iter().chain(quantities).collect()
     }
 
     /// One row of `samples.csv`.
@@ -77,11 +85,11 @@ impl Names {
         row.push_field(self.roles[sample.role].as_bytes());
         row.push_field(if sample.energised { b"1" } else { b"0" });
         row.push_field(sample.status.word().as_bytes());
-        for kind in Reading::ALL {
+        for kind in &self.readings {
             row.push_field(
                 sample
                     .readings
-                    .get(kind)
+                    .get(*kind)
                     .map_or(&[][..], |value| number.decimal(value)),
             );
         }
@@ -95,7 +103,7 @@ impl Names {
         let status = text_at(row, 10);
         let status = Status::ALL.into_iter().find(|s| s.word() == status);
         let mut readings = Readings::NONE;
-        for (n, kind) in Reading::ALL.into_iter().enumerate() {
+        for (n, kind) in self.readings.iter().copied().enumerate() {
             let column = SAMPLE_HEAD.len() + n;
             let text = text_at(row, column);
             if !text.is_empty() {
@@ -141,6 +149,22 @@ impl Names {
             .map(Some)
             .ok_or_else(|| wrong("position", &names.join(" / "), "a cell of the plan"))
     }
+}
+
+/// Quantities that a plan's record has a column for. An energy counter is rare, so
+/// its column is there only where a driver of the plan gives it: records without one
+/// keep the columns that they always had.
+fn columns_of(plan: &Plan) -> Vec<Reading> {
+    let given = |reading: Reading| {
+        plan.instruments
+            .iter()
+            .flat_map(|instrument| &instrument.driver.readings)
+            .any(|query| query.gives.contains(&reading))
+    };
+    Reading::ALL
+        .into_iter()
+        .filter(|reading| *reading != Reading::Energy || given(*reading))
+        .collect()
 }
 
 /// The supply of a cell in words: `230 V 50 Hz`.

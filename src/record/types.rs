@@ -169,6 +169,8 @@ pub enum StepEnd {
     Done,
     /// A soak was settled.
     Settled,
+    /// A soak was ended early by predictions that agree, as the sequence allows.
+    Extrapolated,
     /// Its time limit came first.
     TimeLimit,
     /// The current vanished while energised.

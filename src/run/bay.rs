@@ -16,7 +16,7 @@ use crate::clock::Clock;
 use crate::plan::{Plan, PlannedRole};
 use crate::quantity::{Moment, Reading, Readings, Seconds};
 use crate::record::{Event, Happening, Journal, Sample, Status, StepEnd};
-use crate::settle::Watched;
+use crate::settle::watched_in;
 use crate::spec::sequence::RoleKind;
 
 /// The bay wakes at least this often, to renew the lease and look at the guards.
@@ -124,7 +124,6 @@ pub(super) struct Working {
     pub(super) cell: Option<usize>,
     pub(super) energised_at: Option<Moment>,
     every: Vec<Option<Seconds>>,
-    watched: Vec<Option<(Option<Watched>, Reading)>>,
 }
 
 impl Working {
@@ -134,7 +133,6 @@ impl Working {
             wiring: wiring_of(&plan),
             watchman: Watchman::new(&plan),
             every: vec![None; plan.bay.roles.len()],
-            watched: plan.bay.roles.iter().map(watched_by).collect(),
             plan,
             unit: bay.unit,
             clock: bay.clock,
@@ -315,9 +313,13 @@ impl Working {
         self.watchman
             .sample(sample.reply, role, status, &readings)?;
         if let Some(goal) = goal {
-            let watched = self.watched[role];
-            let value = watched.and_then(|(_, reading)| readings.get(reading));
-            goal.take(sample.reply, role, watched.and_then(|(w, _)| w), value);
+            let planned = &self.plan.bay.roles[role];
+            if main_reading(planned.kind).is_some_and(|main| readings.get(main).is_some()) {
+                goal.heard(role);
+            }
+            for (watched, value) in watched_in(planned.kind, &planned.name, &readings) {
+                goal.take(sample.reply, watched, value);
+            }
         }
         match polled.result {
             Err(error) if is_failure(&error.fault) => Err(error.into()),
@@ -414,13 +416,12 @@ async fn stopped(stop: &mut watch::Receiver<bool>) {
     let _ = stop.wait_for(|stop| *stop).await;
 }
 
-fn watched_by(role: &PlannedRole) -> Option<(Option<Watched>, Reading)> {
-    match (role.kind, role.name.as_str()) {
-        (RoleKind::PowerMeter, _) => Some((Some(Watched::Power), Reading::Power)),
-        (RoleKind::Temperature, "body") => Some((Some(Watched::Body), Reading::Temperature)),
-        (RoleKind::Temperature, "ambient") => Some((Some(Watched::Ambient), Reading::Temperature)),
-        (RoleKind::Temperature, _) => Some((None, Reading::Temperature)),
-        _ => None,
+/// What a role of a kind is polled for.
+fn main_reading(kind: RoleKind) -> Option<Reading> {
+    match kind {
+        RoleKind::PowerMeter => Some(Reading::Power),
+        RoleKind::Temperature => Some(Reading::Temperature),
+        RoleKind::Supply | RoleKind::PositionSwitch => None,
     }
 }
 

@@ -15,7 +15,7 @@ use crate::plan::{Action, PlannedStep};
 use crate::quantity::{Moment, Seconds};
 use crate::record::{Event, Manifest, RunOutcome, StepEnd};
 use crate::settle::Settle;
-use crate::spec::sequence::{Criterion, Question, RoleKind, SupplyPoint};
+use crate::spec::sequence::{Question, RoleKind, SupplyPoint};
 
 /// How long the first readings of a polled step may take at the most.
 const FIRST_READINGS: Seconds = Seconds::whole(10);
@@ -130,12 +130,7 @@ async fn take_step(
         Action::Inrush(timed) | Action::Measure(timed) | Action::RunIn(timed) => {
             stay(bay, &step.action, timed.length, timed.every).await
         }
-        Action::Soak {
-            at_least,
-            at_most,
-            every,
-            until,
-        } => soak(bay, until, *at_least, *at_most, *every).await,
+        Action::Soak { at_most, every, .. } => soak(bay, &step.action, *at_most, *every).await,
         Action::Acclimatise(waiting) | Action::Rest(waiting) => {
             bay.poll_every(waiting.every);
             let rest = matches!(step.action, Action::Rest(_));
@@ -308,15 +303,16 @@ async fn stay(
 
 async fn soak(
     bay: &mut Working,
-    until: &Criterion,
-    at_least: Seconds,
+    action: &Action,
     at_most: Seconds,
     every: Seconds,
 ) -> Result<StepEnd, Cut> {
     bay.poll_every(every);
     let on = bay.energised_at.unwrap_or(Moment::START);
-    let cycling = bay.plan.appliance.thermostat;
-    let settle = Box::new(Settle::new(until, at_least, every, cycling, on));
+    let Some(soaking) = bay.plan.soaking(action) else {
+        return Err(Cut::Failed("the plan's soak is none".to_owned()));
+    };
+    let settle = Box::new(Settle::new(soaking, on));
     bay.attend(&mut Goal::Settled {
         settle,
         limit: on + at_most,

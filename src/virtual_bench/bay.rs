@@ -49,6 +49,10 @@ impl Bay {
         let seconds = at as f64 * 1e-6;
         self.specimen.advance(seconds);
         let instrument = &mut self.instruments[number];
+        let joules = match instrument.counts_energy() {
+            true => self.specimen.joules(seconds),
+            false => 0.0,
+        };
         instrument.look = Some(Look {
             tick: at / instrument.interval,
             at: seconds,
@@ -63,6 +67,7 @@ impl Bay {
             } else {
                 0.0
             },
+            watt_hours: joules / 3600.0,
         });
     }
 

@@ -80,6 +80,8 @@ pub struct Look {
     pub volts: f64,
     /// Frequency, Hz; 0 while the output is off.
     pub hertz: f64,
+    /// Energy drawn from the beginning on, Wh; only for an instrument that counts it.
+    pub watt_hours: f64,
 }
 
 /// One simulated instrument.
@@ -182,6 +184,12 @@ impl Instrument {
             setting: Display::of(0.001),
             driver: driver.clone(),
         }
+    }
+
+    /// Whether its driver asks for an energy counter.
+    pub fn counts_energy(&self) -> bool {
+        let queries = &self.driver.readings;
+        queries.iter().any(|q| q.gives.contains(&Reading::Energy))
     }
 
     /// Adds an error of the instrument's own.
@@ -291,6 +299,7 @@ fn electrical(reading: Reading, look: &Look) -> Option<f64> {
         Reading::Power => Some(look.state.watts),
         Reading::PowerFactor => (apparent > 0.0).then(|| look.state.watts / apparent),
         Reading::Frequency => Some(look.hertz),
+        Reading::Energy => Some(look.watt_hours),
         Reading::Temperature => None,
     }
 }

@@ -11,6 +11,7 @@ mod readme;
 mod rehearsal;
 #[cfg(unix)]
 mod serial;
+mod settling;
 mod shipped;
 mod tidy;
 mod ways_out;

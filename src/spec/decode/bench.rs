@@ -149,6 +149,7 @@ pub(super) const READINGS: &[(&str, Reading)] = &[
     ("power factor", Reading::PowerFactor),
     ("frequency", Reading::Frequency),
     ("temperature", Reading::Temperature),
+    ("energy", Reading::Energy),
 ];
 
 /// What a difference between two readings measures: kelvins between temperatures.

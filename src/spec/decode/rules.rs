@@ -4,7 +4,7 @@ use crate::quantity::{Amps, Dimension, Kelvins, Watts};
 use crate::spec::Located;
 use crate::spec::fields::{Field, Fields};
 use crate::spec::scalars::{Allowed, choice, located_name, name, number, quantity, text, value_of};
-use crate::spec::sequence::{Decision, ProcessSpread, Rule, RuleKind, RuleWeight};
+use crate::spec::sequence::{CyclingRule, Decision, ProcessSpread, Rule, RuleKind, RuleWeight};
 use crate::spec::yaml::NodeKind;
 
 use super::sequence::limits;
@@ -25,6 +25,11 @@ const WEIGHTS: &[(&str, RuleWeight)] = &[
     ("information", RuleWeight::Information),
 ];
 
+const CYCLING: &[(&str, CyclingRule)] = &[
+    ("on-state", CyclingRule::OnState),
+    ("representative period", CyclingRule::RepresentativePeriod),
+];
+
 /// One rule.
 pub(super) fn rule(field: Field<'_>) -> Option<Rule> {
     let fields = field.fields()?;
@@ -41,7 +46,17 @@ pub(super) fn rule(field: Field<'_>) -> Option<Rule> {
     let unit = kind.as_ref().and_then(|kind| unit_of(&kind.value));
     let decision = decision.and_then(|decision| decided(&fields, decision, unit));
     let process = fields.optional("process", |field| process(field, unit));
+    let cycling = fields.optional("cycling", choice(CYCLING));
+    let of_power = match (&kind, cycling) {
+        (Some(kind), Some(Some(_))) if !compares_power(&kind.value) => fields.wrong(
+            "cycling",
+            "only a rule of the power can choose between inputs of a cycling load",
+            "take it out",
+        ),
+        _ => Some(()),
+    };
     fields.finish()?;
+    of_power?;
     Some(Rule {
         kind: kind?,
         decision: decision?,
@@ -50,7 +65,12 @@ pub(super) fn rule(field: Field<'_>) -> Option<Rule> {
         position: position?,
         condition: condition?,
         source: source?,
+        cycling: cycling?.unwrap_or_default(),
     })
+}
+
+fn compares_power(kind: &RuleKind) -> bool {
+    matches!(kind, RuleKind::PlatePower | RuleKind::PowerLimits { .. })
 }
 
 /// The one key that says what the rule compares.

@@ -1,13 +1,14 @@
 //! The steps of a sequence.
 
-use crate::quantity::{Hertz, Kelvins, Ratio, Seconds, Volts};
+use crate::quantity::{Dimension, Hertz, Kelvins, Ratio, Seconds, Volts, Watts, parse_written};
 use crate::spec::fields::{Field, Fields, all_different, located, shown, some};
 use crate::spec::scalars::{
     Allowed, choice, duration, interval, located_name, name, number, quantity, temperature, text,
+    yes_no,
 };
 use crate::spec::sequence::{
-    Abnormal, AnswerKind, Criterion, CriterionKind, Each, FindingClass, Question, QuestionFinding,
-    Soak, Step, StepAction, SupplyPoint, Timed, Waiting,
+    Abnormal, AnswerKind, Criterion, CriterionKind, Each, FindingClass, PowerChange, Question,
+    QuestionFinding, Soak, Step, StepAction, SupplyPoint, Timed, Waiting,
 };
 use crate::spec::yaml::NodeKind;
 use crate::spec::{Located, nearest};
@@ -16,6 +17,11 @@ use super::sequence::{EachAllowed, axis, limits, names};
 
 /// House default: shortest soak.
 const SOAK_AT_LEAST: f64 = 600.0;
+
+/// The sampling method's longest interval and shortest log, seconds (IEC 62301 ed. 2,
+/// from memory).
+const SAMPLED_EVERY: f64 = 1.0;
+const SAMPLED_FOR: f64 = 900.0;
 
 /// House default: a body this near to ambient counts as cool.
 const COOL_WITHIN: f64 = 3.0;
@@ -320,6 +326,7 @@ fn soak(field: Field<'_>) -> Option<Soak> {
     let at_most = fields.required("at most", duration);
     let every = fields.required("every", interval);
     let until = fields.required("until", criterion);
+    let early_finish = fields.or("early finish", false, yes_no);
     let ordered = match (at_least, at_most) {
         (Some(least), Some(most)) if most < least => fields.wrong(
             "at most",
@@ -329,14 +336,42 @@ fn soak(field: Field<'_>) -> Option<Soak> {
         _ => Some(()),
     };
     let fits = fitting(&fields, ("at most", at_most), every);
+    let sampled = match &until {
+        Some(until) if until.kind == CriterionKind::SamplingMethod => {
+            sampled(&fields, at_least, every)
+        }
+        _ => Some(()),
+    };
     fields.finish()?;
-    ordered.and(fits)?;
+    ordered.and(fits).and(sampled)?;
     Some(Soak {
         at_least: at_least?,
         at_most: at_most?,
         every: every?,
         until: until?,
+        early_finish: early_finish?,
     })
+}
+
+/// The sampling method asks for a log of at least 15 min at 1 s or faster.
+fn sampled(fields: &Fields<'_>, at_least: Option<Seconds>, every: Option<Seconds>) -> Option<()> {
+    let fast = match every {
+        Some(every) if every.get() > SAMPLED_EVERY => fields.wrong(
+            "every",
+            format!("the sampling method needs a reading each second, not every {every}"),
+            "write `every: 1 s` or faster (IEC 62301 ed. 2, from memory)",
+        ),
+        _ => Some(()),
+    };
+    let long = match at_least {
+        Some(least) if least.get() < SAMPLED_FOR => fields.wrong(
+            if fields.find("at least").is_some() { "at least" } else { "at most" },
+            format!("the sampling method logs for at least 15 min, and `at least` is {least}"),
+            "write `at least: 15 min` or more (IEC 62301 ed. 2, from memory); left out it is 10 min",
+        ),
+        _ => Some(()),
+    };
+    fast.and(long)
 }
 
 #[derive(Clone, Copy)]
@@ -344,18 +379,20 @@ enum CriterionWord {
     Slope,
     ThreeReadings,
     ChangeWithin,
+    SamplingMethod,
 }
 
 const CRITERIA: &[(&str, CriterionWord)] = &[
     ("slope", CriterionWord::Slope),
     ("three readings", CriterionWord::ThreeReadings),
     ("change within", CriterionWord::ChangeWithin),
+    ("sampling method", CriterionWord::SamplingMethod),
 ];
 
 fn criterion(field: Field<'_>) -> Option<Criterion> {
     let fields = field.fields()?;
     let word = fields.required("criterion", choice(CRITERIA));
-    let power_change = fields.optional("power change", quantity::<Ratio>(Allowed::Positive));
+    let power_change = fields.optional("power change", power_change);
     let temperature_change =
         fields.optional("temperature change", quantity::<Kelvins>(Allowed::Positive));
     let kind = match word {
@@ -366,6 +403,7 @@ fn criterion(field: Field<'_>) -> Option<Criterion> {
             .required("interval", duration)
             .map(|interval| CriterionKind::ChangeWithin { interval }),
         Some(CriterionWord::ThreeReadings) => Some(CriterionKind::ThreeReadings),
+        Some(CriterionWord::SamplingMethod) => Some(CriterionKind::SamplingMethod),
         None => {
             // Either may belong to the word that was meant.
             fields.optional("window", duration);
@@ -373,7 +411,16 @@ fn criterion(field: Field<'_>) -> Option<Criterion> {
             None
         }
     };
+    let own_limit = match (word, power_change) {
+        (Some(CriterionWord::SamplingMethod), Some(Some(_))) => fields.wrong(
+            "power change",
+            "the sampling method brings its own limit of the power",
+            "take it out: 10 mW/h up to 1 W, above that 1 % of the power per hour",
+        ),
+        _ => Some(()),
+    };
     let watched = match (power_change, temperature_change) {
+        _ if matches!(word, Some(CriterionWord::SamplingMethod)) => Some(()),
         (Some(None), Some(None)) => field.notes.error(
             field.key,
             "the criterion watches nothing",
@@ -382,12 +429,23 @@ fn criterion(field: Field<'_>) -> Option<Criterion> {
         _ => Some(()),
     };
     fields.finish()?;
-    watched?;
+    watched.and(own_limit)?;
     Some(Criterion {
         kind: kind?,
         power_change: power_change?,
         temperature_change: temperature_change?,
     })
+}
+
+/// `2 %` of the mean, or `50 mW`.
+fn power_change(field: Field<'_>) -> Option<PowerChange> {
+    let text = field.scalar("2 %")?;
+    match parse_written(text) {
+        Ok(written) if written.dimension == Dimension::Power => {
+            quantity::<Watts>(Allowed::Positive)(field).map(PowerChange::Absolute)
+        }
+        _ => quantity::<Ratio>(Allowed::Positive)(field).map(PowerChange::Relative),
+    }
 }
 
 fn abnormal(field: Field<'_>) -> Option<Abnormal> {
