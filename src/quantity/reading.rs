@@ -15,17 +15,26 @@ pub enum Reading {
     PowerFactor,
     Frequency,
     Temperature,
+    /// Of a thermocouple, as read at its terminals.
+    ThermocoupleVoltage,
+    /// Of the terminals that a thermocouple is connected to.
+    TerminalTemperature,
+    /// Of a resistance thermometer.
+    Resistance,
 }
 
 impl Reading {
     /// Every kind, in the order of the record's columns.
-    pub const ALL: [Reading; 6] = [
+    pub const ALL: [Reading; 9] = [
         Reading::Voltage,
         Reading::Current,
         Reading::Power,
         Reading::PowerFactor,
         Reading::Frequency,
         Reading::Temperature,
+        Reading::ThermocoupleVoltage,
+        Reading::TerminalTemperature,
+        Reading::Resistance,
     ];
 
     /// The column of a machine file, with its unit.
@@ -37,6 +46,9 @@ impl Reading {
             Reading::PowerFactor => "power_factor",
             Reading::Frequency => "frequency_hz",
             Reading::Temperature => "temperature_degc",
+            Reading::ThermocoupleVoltage => "thermocouple_voltage_v",
+            Reading::TerminalTemperature => "terminal_temperature_degc",
+            Reading::Resistance => "resistance_ohm",
         }
     }
 
@@ -49,6 +61,9 @@ impl Reading {
             Reading::PowerFactor => "power factor",
             Reading::Frequency => "frequency",
             Reading::Temperature => "temperature",
+            Reading::ThermocoupleVoltage => "thermocouple voltage",
+            Reading::TerminalTemperature => "terminal temperature",
+            Reading::Resistance => "resistance",
         }
     }
 
@@ -60,7 +75,9 @@ impl Reading {
             Reading::Power => "W",
             Reading::PowerFactor => "",
             Reading::Frequency => "Hz",
-            Reading::Temperature => "°C",
+            Reading::Temperature | Reading::TerminalTemperature => "°C",
+            Reading::ThermocoupleVoltage => "V",
+            Reading::Resistance => "ohm",
         }
     }
 
@@ -72,7 +89,9 @@ impl Reading {
             Reading::Power => Dimension::Power,
             Reading::PowerFactor => Dimension::Ratio,
             Reading::Frequency => Dimension::Frequency,
-            Reading::Temperature => Dimension::Temperature,
+            Reading::Temperature | Reading::TerminalTemperature => Dimension::Temperature,
+            Reading::ThermocoupleVoltage => Dimension::Voltage,
+            Reading::Resistance => Dimension::Resistance,
         }
     }
 
@@ -83,11 +102,11 @@ impl Reading {
 
 /// The values of one exchange, in base units; absent is absent, never 0.
 #[derive(Debug, Clone, Copy, PartialEq, Default)]
-pub struct Readings([Option<f64>; 6]);
+pub struct Readings([Option<f64>; 9]);
 
 impl Readings {
     /// No value at all.
-    pub const NONE: Readings = Readings([None; 6]);
+    pub const NONE: Readings = Readings([None; 9]);
 
     /// A single value; a non-finite one is absent.
     pub fn one(reading: Reading, value: f64) -> Self {

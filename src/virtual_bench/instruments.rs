@@ -291,7 +291,8 @@ fn electrical(reading: Reading, look: &Look) -> Option<f64> {
         Reading::Power => Some(look.state.watts),
         Reading::PowerFactor => (apparent > 0.0).then(|| look.state.watts / apparent),
         Reading::Frequency => Some(look.hertz),
-        Reading::Temperature => None,
+        // Sensors are probes of their own.
+        _ => None,
     }
 }
 
