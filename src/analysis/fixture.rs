@@ -134,6 +134,7 @@ fn roles() -> Vec<PlannedRole> {
         kind,
         instrument,
         channel,
+        sensor: None,
     };
     vec![
         role("supply", RoleKind::Supply, 0, None),

@@ -69,6 +69,7 @@ fn role(name: &str, kind: RoleKind) -> PlannedRole {
         kind,
         instrument: 0,
         channel: None,
+        sensor: None,
     }
 }
 

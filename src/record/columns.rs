@@ -42,6 +42,8 @@ pub struct Names {
     bay: String,
     roles: Vec<String>,
     cells: Vec<[String; 3]>,
+    /// Quantities, in the order of their columns.
+    quantities: Vec<Reading>,
 }
 
 impl Names {
@@ -56,7 +58,14 @@ impl Names {
                 .map(|role| defused(&role.name))
                 .collect(),
             cells: plan.cells.iter().map(cell_names).collect(),
+            quantities: quantities_of(plan),
         }
+    }
+
+    /// The columns of `samples.csv`.
+    pub fn head(&self) -> Vec<&'static str> {
+        let quantities = self.quantities.iter().map(|kind| kind.column());
+        SAMPLE_HEAD.into_iter().chain(quantities).collect()
     }
 
     /// One row of `samples.csv`.
@@ -77,7 +86,7 @@ impl Names {
         row.push_field(self.roles[sample.role].as_bytes());
         row.push_field(if sample.energised { b"1" } else { b"0" });
         row.push_field(sample.status.word().as_bytes());
-        for kind in Reading::ALL {
+        for kind in self.quantities.iter().copied() {
             row.push_field(
                 sample
                     .readings
@@ -95,7 +104,7 @@ impl Names {
         let status = text_at(row, 10);
         let status = Status::ALL.into_iter().find(|s| s.word() == status);
         let mut readings = Readings::NONE;
-        for (n, kind) in Reading::ALL.into_iter().enumerate() {
+        for (n, kind) in self.quantities.iter().copied().enumerate() {
             let column = SAMPLE_HEAD.len() + n;
             let text = text_at(row, column);
             if !text.is_empty() {
@@ -141,6 +150,32 @@ impl Names {
             .map(Some)
             .ok_or_else(|| wrong("position", &names.join(" / "), "a cell of the plan"))
     }
+}
+
+/// Columns that every record has.
+const ALWAYS: [Reading; 6] = [
+    Reading::Voltage,
+    Reading::Current,
+    Reading::Power,
+    Reading::PowerFactor,
+    Reading::Frequency,
+    Reading::Temperature,
+];
+
+/// The quantities that a plan's rows have columns for: the usual ones, and the rarer
+/// ones that one of its drivers gives. So records from before these were known, and
+/// records that have no use for them, look the same.
+fn quantities_of(plan: &Plan) -> Vec<Reading> {
+    let gives = |kind: &Reading| {
+        plan.instruments.iter().any(|instrument| {
+            let mut queries = instrument.driver.readings.iter();
+            queries.any(|query| query.gives.contains(kind))
+        })
+    };
+    Reading::ALL
+        .into_iter()
+        .filter(|kind| ALWAYS.contains(kind) || gives(kind))
+        .collect()
 }
 
 /// The supply of a cell in words: `230 V 50 Hz`.

@@ -6,11 +6,10 @@ use std::path::{Path, PathBuf};
 
 use csv::ByteRecord;
 
-use super::columns::{EVENT_HEAD, Names, RowError, SAMPLE_HEAD, read_happening};
+use super::columns::{EVENT_HEAD, Names, RowError, read_happening};
 use super::hash::{sha256_of, sha256_of_file};
 use super::types::{Happening, Manifest, RECORD_FORMAT, Sample};
 use crate::plan::{PLAN_FORMAT, Plan};
-use crate::quantity::Reading;
 
 /// Why a record can't be read. Each says the file, and the line where there is one.
 #[derive(Debug, thiserror::Error)]
@@ -104,10 +103,8 @@ impl Folder {
         }
         let plan = read_plan(&run.join("plan.json"))?;
         let names = Names::of(&plan);
-        let quantities = Reading::ALL.map(Reading::column);
-        let head: Vec<&str> = SAMPLE_HEAD.iter().chain(&quantities).copied().collect();
         let mut samples: Vec<Sample> = Vec::with_capacity(manifest.samples as usize);
-        read_rows(&run.join("samples.csv"), &head, |row| {
+        read_rows(&run.join("samples.csv"), &names.head(), |row| {
             let sample = names.read_sample(row)?;
             let expected = samples.len() as u64 + 1;
             in_order("seq", sample.seq, expected)?;

@@ -4,12 +4,12 @@ use std::io::{self, Write};
 
 use csv::ByteRecord;
 
-use super::columns::{EVENT_HEAD, Names, SAMPLE_HEAD, write_happening};
+use super::columns::{EVENT_HEAD, Names, write_happening};
 use super::hash::sha256_of;
 use super::store::{Store, StoreFile};
 use super::types::{Event, FileHash, Happening, Manifest, RECORD_FORMAT, RunOutcome, Sample};
 use crate::plan::Plan;
-use crate::quantity::{Moment, Reading};
+use crate::quantity::Moment;
 
 /// What a record is of, known before its first row.
 #[derive(Debug, Clone)]
@@ -83,9 +83,9 @@ impl Journal {
         }
         written.push(copy_whole(store.as_mut(), "plan.json", &plan_json)?);
         let mut samples = csv::Writer::from_writer(Hashing::new(store.create("samples.csv")?));
-        let quantities = Reading::ALL.map(Reading::column);
+        let names = Names::of(plan);
         samples
-            .write_record(SAMPLE_HEAD.iter().chain(&quantities))
+            .write_record(names.head())
             .map_err(io::Error::other)?;
         let mut events = csv::Writer::from_writer(Hashing::new(store.create("events.csv")?));
         events.write_record(EVENT_HEAD).map_err(io::Error::other)?;
@@ -93,7 +93,7 @@ impl Journal {
         let mut journal = Self {
             store,
             heading,
-            names: Names::of(plan),
+            names,
             samples,
             events,
             wire,

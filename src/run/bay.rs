@@ -7,6 +7,7 @@ use std::sync::{Arc, Mutex, MutexGuard, PoisonError};
 
 use tokio::sync::watch;
 
+use super::convert::{converted, raw_sensors};
 use super::ears::{Heard, Told};
 use super::goal::Goal;
 use super::guard::{Trip, Watchman};
@@ -16,6 +17,7 @@ use crate::clock::Clock;
 use crate::plan::{Plan, PlannedRole};
 use crate::quantity::{Moment, Reading, Readings, Seconds};
 use crate::record::{Event, Happening, Journal, Sample, Status, StepEnd};
+use crate::sensor::Sensor;
 use crate::settle::Watched;
 use crate::spec::sequence::RoleKind;
 
@@ -125,6 +127,8 @@ pub(super) struct Working {
     pub(super) energised_at: Option<Moment>,
     every: Vec<Option<Seconds>>,
     watched: Vec<Option<(Option<Watched>, Reading)>>,
+    /// By role; raw replies are converted by it.
+    sensors: Vec<Option<Sensor>>,
 }
 
 impl Working {
@@ -135,6 +139,7 @@ impl Working {
             watchman: Watchman::new(&plan),
             every: vec![None; plan.bay.roles.len()],
             watched: plan.bay.roles.iter().map(watched_by).collect(),
+            sensors: raw_sensors(&plan),
             plan,
             unit: bay.unit,
             clock: bay.clock,
@@ -297,7 +302,7 @@ impl Working {
     fn take(&mut self, polled: Polled, goal: Option<&mut Goal>) -> Result<(), Cut> {
         let role = (polled.tag / QUERIES) as usize;
         let (status, readings) = match &polled.result {
-            Ok(readings) => (Status::Ok, *readings),
+            Ok(readings) => converted(self.sensors[role], *readings),
             Err(error) => (status_of(&error.fault), Readings::NONE),
         };
         let mut sample = Sample {

@@ -4,6 +4,7 @@ use serde::{Deserialize, Serialize};
 
 use super::Located;
 use crate::quantity::{Amps, Reading};
+use crate::sensor::Sensor;
 
 /// A whole bench file.
 #[derive(Debug, Clone, PartialEq)]
@@ -117,4 +118,6 @@ pub struct RoleFilled {
     pub instrument: Located<String>,
     /// `channel:`
     pub channel: Option<Located<u32>>,
+    /// `sensor:` what hangs on the channel; needed where the driver delivers raw values.
+    pub sensor: Option<Located<Sensor>>,
 }

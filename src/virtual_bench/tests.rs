@@ -38,6 +38,7 @@ pub(super) fn staging_of(unit: VirtualUnit) -> Staging {
             role: role.role.value.clone(),
             kind: driver.fills[0],
             channel: role.channel.as_ref().map(|c| c.value),
+            sensor: role.sensor.as_ref().map(|s| s.value),
         }
     });
     Staging {

@@ -2,7 +2,7 @@
 
 use crate::quantity::{Reading, Seconds, Volts};
 use crate::spec::driver::{
-    Accuracy, Driver, Framing, IdentityQuery, ReadingQuery, Setting, Settings, Terminator,
+    Accuracy, Driver, Framing, IdentityQuery, ReadingQuery, Setting, Settings, Terminator, Thermal,
 };
 use crate::spec::fields::{Field, Fields, list, located, named, some};
 use crate::spec::scalars::{
@@ -173,9 +173,19 @@ fn suited(
                 Some("`settings: output: state`")
             }
             RoleKind::PowerMeter if !gives(Reading::Power) => Some("a reading of power"),
-            RoleKind::Temperature if !gives(Reading::Temperature) => {
-                Some("a reading of temperature")
-            }
+            RoleKind::Temperature => match Thermal::of(readings).as_slice() {
+                [] if gives(Reading::ThermocoupleVoltage)
+                    || gives(Reading::TerminalTemperature) =>
+                {
+                    Some("`thermocouple voltage` and `terminal temperature` in one reply")
+                }
+                [] => Some("a reading of temperature"),
+                [_] => None,
+                [one, other, ..] => {
+                    suited = which_counts(whole, kind, *one, *other);
+                    None
+                }
+            },
             RoleKind::PositionSwitch if settings.position.is_none() => Some("`settings: position`"),
             _ => None,
         };
@@ -188,6 +198,25 @@ fn suited(
         }
     }
     suited
+}
+
+/// A role polls every query of its driver: of two temperatures neither counts.
+fn which_counts(
+    whole: Field<'_>,
+    kind: &Located<RoleKind>,
+    one: Thermal,
+    other: Thermal,
+) -> Option<()> {
+    let word = |thermal: Thermal| thermal.readings()[0].word();
+    whole.notes.error(
+        &kind.place,
+        format!(
+            "it gives both {} and {}: which one is the role's temperature?",
+            word(one),
+            word(other)
+        ),
+        "take one of the two out; an instrument that does both needs a driver for each",
+    )
 }
 
 fn warn_of_unknown_accuracy(
@@ -455,6 +484,36 @@ mod tests {
                 "`300 V`",
             ),
         ]);
+        Kind::Driver("thermocouple-scanner").check(&[
+            wrong(
+                "gives: [thermocouple voltage, terminal temperature]",
+                "gives: [thermocouple voltage]",
+                "3:9",
+                "can't fill `temperature` without `thermocouple voltage` and `terminal temperature`",
+                "in one reply",
+            ),
+            wrong(
+                "gives: [thermocouple voltage, terminal temperature]",
+                "gives: [thermocouple voltage, terminal temperature, resistance]",
+                "3:9",
+                "both thermocouple voltage and resistance",
+                "a driver for each",
+            ),
+            wrong(
+                "floor: 3 uV",
+                "floor: 3 K",
+                "17:51",
+                "not a voltage",
+                "V",
+            ),
+        ]);
+        Kind::Driver("resistance-scanner").check(&[wrong(
+            "gives: [resistance]",
+            "gives: [resistance, temperature]",
+            "3:9",
+            "both temperature and resistance",
+            "take one of the two out",
+        )]);
         Kind::Driver("position-switch").check(&[wrong(
             "position:",
             "voltage:",
