@@ -340,6 +340,73 @@ mod tests {
     }
 
     #[test]
+    fn a_driver_with_two_temperatures_is_refused_whichever_they_are() {
+        for (driver, from, to) in [
+            (
+                "thermocouple-scanner",
+                "terminal temperature]",
+                "terminal temperature, resistance]",
+            ),
+            (
+                "resistance-scanner",
+                "[resistance]",
+                "[temperature, resistance]",
+            ),
+            (
+                "temperature-scanner",
+                "gives: [temperature]",
+                "gives: [temperature, thermocouple voltage, terminal temperature]",
+            ),
+        ] {
+            let text = Kind::Driver(driver).changed(&[(from, to)]);
+            let (value, problems) = Kind::Driver(driver).load(text.as_bytes());
+            assert!(!value, "{driver}");
+            let errors: Vec<_> = problems
+                .iter()
+                .filter(|p| p.weight == Weight::Error)
+                .collect();
+            let [error] = errors.as_slice() else {
+                panic!("{driver}: {problems:#?}");
+            };
+            assert_eq!(error.place.line_column(), (3, 9), "{driver}");
+            assert!(
+                error
+                    .message
+                    .contains("which one is the role's temperature"),
+                "{error:?}"
+            );
+            assert!(
+                error
+                    .hint
+                    .as_ref()
+                    .is_some_and(|h| h.contains("a driver for each"))
+            );
+        }
+    }
+
+    #[test]
+    fn microvolts_and_milliohms_are_read_in_base_units() {
+        let driver = |name| {
+            let text = Kind::Driver(name).changed(&[]);
+            load_driver("file", text.as_bytes())
+                .value
+                .expect("a driver")
+        };
+        let volts = driver("thermocouple-scanner");
+        let volts = volts
+            .accuracy_of(Reading::ThermocoupleVoltage)
+            .expect("stated");
+        assert_eq!(volts.floor, 3e-6);
+        // 0.1 over a million misses the literal by its last bit.
+        assert!((volts.resolution - 1e-7).abs() < 1e-21);
+        let ohms = driver("resistance-scanner");
+        assert_eq!(
+            ohms.accuracy_of(Reading::Resistance).expect("stated").floor,
+            0.01
+        );
+    }
+
+    #[test]
     fn each_wrong_value_of_a_driver_is_one_problem() {
         METER.check(&[
             wrong(
@@ -493,27 +560,13 @@ mod tests {
                 "in one reply",
             ),
             wrong(
-                "gives: [thermocouple voltage, terminal temperature]",
-                "gives: [thermocouple voltage, terminal temperature, resistance]",
-                "3:9",
-                "both thermocouple voltage and resistance",
-                "a driver for each",
-            ),
-            wrong(
                 "floor: 3 uV",
                 "floor: 3 K",
-                "17:51",
+                "17:53",
                 "not a voltage",
                 "V",
             ),
         ]);
-        Kind::Driver("resistance-scanner").check(&[wrong(
-            "gives: [resistance]",
-            "gives: [resistance, temperature]",
-            "3:9",
-            "both temperature and resistance",
-            "take one of the two out",
-        )]);
         Kind::Driver("position-switch").check(&[wrong(
             "position:",
             "voltage:",
