@@ -137,6 +137,7 @@ fn roles() -> Vec<PlannedRole> {
         channel,
         place: None,
         connection: Connection::default(),
+        sensor: None,
     };
     vec![
         role("supply", RoleKind::Supply, 0, None),

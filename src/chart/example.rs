@@ -75,6 +75,7 @@ fn role(name: &str, kind: RoleKind) -> PlannedRole {
         channel: None,
         place: None,
         connection: Connection::default(),
+        sensor: None,
     }
 }
 

@@ -13,6 +13,7 @@ mod reference;
 mod resolve;
 mod roles;
 mod rules;
+mod sensing;
 mod soaking;
 #[cfg(test)]
 mod tests;

@@ -4,6 +4,7 @@
 use serde::{Deserialize, Serialize};
 
 use crate::quantity::{Amps, Celsius, Hertz, Kelvins, Seconds, Volts, Watts};
+use crate::sensor::Sensor;
 use crate::spec::bench::{CalibrationPoint, Connection, Port};
 use crate::spec::driver::Driver;
 use crate::spec::sequence::{
@@ -142,6 +143,9 @@ pub struct PlannedRole {
     /// How it is connected.
     #[serde(default)]
     pub connection: Connection,
+    /// What hangs on the channel; plans from before it was known have none.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub sensor: Option<Sensor>,
 }
 
 /// A line.

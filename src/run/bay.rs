@@ -7,6 +7,7 @@ use std::sync::{Arc, Mutex, MutexGuard, PoisonError};
 
 use tokio::sync::watch;
 
+use super::convert::{converted, raw_sensors};
 use super::ears::{Heard, Told};
 use super::goal::Goal;
 use super::guard::{Trip, Watchman};
@@ -16,6 +17,7 @@ use crate::clock::Clock;
 use crate::plan::{Plan, PlannedRole};
 use crate::quantity::{Moment, Reading, Readings, Seconds};
 use crate::record::{Event, Happening, Journal, Sample, Status, StepEnd};
+use crate::sensor::Sensor;
 use crate::settle::watched_in;
 use crate::spec::sequence::RoleKind;
 
@@ -124,6 +126,8 @@ pub(super) struct Working {
     pub(super) cell: Option<usize>,
     pub(super) energised_at: Option<Moment>,
     every: Vec<Option<Seconds>>,
+    /// By role; raw replies are converted by it.
+    sensors: Vec<Option<Sensor>>,
 }
 
 impl Working {
@@ -133,6 +137,7 @@ impl Working {
             wiring: wiring_of(&plan),
             watchman: Watchman::new(&plan),
             every: vec![None; plan.bay.roles.len()],
+            sensors: raw_sensors(&plan),
             plan,
             unit: bay.unit,
             clock: bay.clock,
@@ -295,7 +300,7 @@ impl Working {
     fn take(&mut self, polled: Polled, goal: Option<&mut Goal>) -> Result<(), Cut> {
         let role = (polled.tag / QUERIES) as usize;
         let (status, readings) = match &polled.result {
-            Ok(readings) => (Status::Ok, *readings),
+            Ok(readings) => converted(self.sensors[role], *readings),
             Err(error) => (status_of(&error.fault), Readings::NONE),
         };
         let mut sample = Sample {

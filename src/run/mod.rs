@@ -1,6 +1,7 @@
 //! Walks a plan: one task per bay, guards, prompts, stop. Every way out de-energises.
 
 mod bay;
+mod convert;
 mod ears;
 mod goal;
 mod guard;

@@ -4,6 +4,7 @@ use serde::{Deserialize, Serialize};
 
 use super::Located;
 use crate::quantity::{Amps, Ohms, Ratio, Reading};
+use crate::sensor::Sensor;
 
 /// A whole bench file.
 #[derive(Debug, Clone, PartialEq)]
@@ -119,6 +120,8 @@ pub struct RoleFilled {
     pub channel: Option<Located<u32>>,
     /// How it is connected, as far as it changes what is read.
     pub connection: Connection,
+    /// `sensor:` what hangs on the channel; needed where the driver delivers raw values.
+    pub sensor: Option<Located<Sensor>>,
 }
 
 /// How a role's instrument is connected to the unit.

@@ -7,6 +7,7 @@ use serde::{Deserialize, Serialize};
 
 use super::sequence::RoleKind;
 use crate::quantity::{Reading, Seconds, Volts};
+use crate::sensor::Sensor;
 
 /// A whole driver file.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
@@ -90,6 +91,53 @@ pub struct ReadingQuery {
     pub gives: Vec<Reading>,
 }
 
+/// How a driver tells a temperature.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Thermal {
+    /// The instrument itself converts.
+    Converted,
+    /// A thermocouple's voltage and the temperature of its terminals, in one reply.
+    Thermocouple,
+    /// The resistance of a resistance thermometer.
+    Resistance,
+}
+
+impl Thermal {
+    /// The readings that it takes.
+    pub fn readings(self) -> &'static [Reading] {
+        match self {
+            Thermal::Converted => &[Reading::Temperature],
+            Thermal::Thermocouple => &[Reading::ThermocoupleVoltage, Reading::TerminalTemperature],
+            Thermal::Resistance => &[Reading::Resistance],
+        }
+    }
+
+    /// Whether a sensor of this kind says it.
+    pub fn suits(self, sensor: Sensor) -> bool {
+        match self {
+            Thermal::Converted => true,
+            Thermal::Thermocouple => matches!(sensor, Sensor::Thermocouple { .. }),
+            Thermal::Resistance => matches!(sensor, Sensor::Pt100 { .. }),
+        }
+    }
+
+    /// All the ways that queries tell a temperature in; a good driver has one.
+    pub fn of(queries: &[ReadingQuery]) -> Vec<Thermal> {
+        let all = [
+            Thermal::Converted,
+            Thermal::Thermocouple,
+            Thermal::Resistance,
+        ];
+        let tells = |thermal: &Thermal| {
+            let readings = thermal.readings();
+            queries
+                .iter()
+                .any(|query| readings.iter().all(|reading| query.gives.contains(reading)))
+        };
+        all.into_iter().filter(tells).collect()
+    }
+}
+
 /// Commands that change something; each absent where the instrument can't.
 #[derive(Debug, Clone, PartialEq, Default, Serialize, Deserialize)]
 pub struct Settings {
@@ -138,6 +186,11 @@ pub struct Accuracy {
 }
 
 impl Driver {
+    /// How it tells a temperature; nothing where it tells none.
+    pub fn thermal(&self) -> Option<Thermal> {
+        Thermal::of(&self.readings).first().copied()
+    }
+
     /// The accuracy of one reading, where the driver states one.
     pub fn accuracy_of(&self, reading: Reading) -> Option<&Accuracy> {
         self.accuracy.iter().find(|a| a.reading == reading)

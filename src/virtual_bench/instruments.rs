@@ -9,7 +9,8 @@ use super::Connection;
 use super::chance::Chance;
 use super::dialect::{Ask, Dialect, Display, Knob};
 use super::error_queue::{DeviceError, ErrorQueue};
-use super::faults::{Fault, Onset};
+use super::faults::Fault;
+use super::probe::{self, Probe};
 use super::unit::State;
 use crate::quantity::{Reading, shortest};
 use crate::spec::driver::{Accuracy, Driver};
@@ -21,15 +22,6 @@ const OVERLOAD: &[u8] = b"9.9E37";
 const NO_VALUE: &[u8] = b"9.91E37";
 /// Noise, as a share of the accuracy's half-width and of the resolution (house values).
 const NOISE: (f64, f64) = (0.03, 0.3);
-/// A surface sensor reads up to this share of its rise too low (house value).
-const CONTACT: f64 = 0.01;
-/// A sensor in the air beside the body still feels this share of its rise.
-const FALLEN_SHARE: f64 = 0.05;
-/// Time constant of a sensor that has just come off, s.
-const FALLEN_LAG: f64 = 15.0;
-/// A type K couple on an input set to type J (41 against 52 uV/K near room
-/// temperature, from memory).
-const WRONG_TYPE: f64 = 0.78;
 /// Voltages and frequencies that a simulated supply accepts.
 const VOLTS: std::ops::RangeInclusive<f64> = 0.0..=300.0;
 const HERTZ: std::ops::RangeInclusive<f64> = 40.0..=70.0;
@@ -110,42 +102,13 @@ pub struct Instrument {
 
 /// How one reading is shown.
 #[derive(Debug, Clone)]
-struct Dial {
-    reading: Reading,
+pub(super) struct Dial {
+    pub(super) reading: Reading,
     accuracy: Option<Accuracy>,
     display: Display,
     gain: f64,
     offset: f64,
     noise: Chance,
-}
-
-/// A temperature sensor on a channel.
-#[derive(Debug, Clone)]
-struct Probe {
-    channel: Option<u32>,
-    place: SensorPlace,
-    dial: Dial,
-    contact: f64,
-    troubles: Vec<(Trouble, f64)>,
-}
-
-/// Where a sensor sits.
-#[derive(Debug, Clone, Copy, PartialEq, Eq)]
-enum SensorPlace {
-    Block,
-    Link,
-    Enclosure,
-    Room,
-}
-
-/// What is wrong with a sensor.
-#[derive(Debug, Clone, Copy, PartialEq)]
-enum Trouble {
-    Fallen,
-    Elsewhere(SensorPlace),
-    Open,
-    Reversed,
-    WrongType,
 }
 
 impl Instrument {
@@ -161,13 +124,11 @@ impl Instrument {
         let driver = &first.driver;
         let dial =
             |reading: Reading, channel: Option<u32>| Dial::new(first, reading, channel, seed);
-        let electrical = Reading::ALL
-            .into_iter()
-            .filter(|r| *r != Reading::Temperature);
+        let of_its_own = Reading::ALL.into_iter().filter(|r| !probe::reads(*r));
         let probes = all
             .iter()
             .filter(|c| c.kind == RoleKind::Temperature)
-            .map(|c| Probe::new(c, dial(Reading::Temperature, c.channel), seed, faults))
+            .map(|c| Probe::new(c, seed, faults))
             .collect();
         Self {
             name: first.instrument.clone(),
@@ -179,7 +140,7 @@ impl Instrument {
             impostor: identity_reply("RATEPLATE,VIRTUAL-STRANGER", driver.identity.fields, speed),
             dialect: Dialect::of(driver),
             errors: ErrorQueue::default(),
-            dials: electrical.map(|reading| dial(reading, None)).collect(),
+            dials: of_its_own.map(|reading| dial(reading, None)).collect(),
             probes,
             setting: Display::of(0.001),
             driver: driver.clone(),
@@ -272,14 +233,15 @@ impl Instrument {
             if place > 0 {
                 out.push(shape.separator);
             }
-            if *reading == Reading::Temperature {
-                match self.probes.iter().find(|p| p.channel == channel) {
-                    Some(probe) => probe.write(&look, out),
-                    // An input without a sensor is open.
+            if probe::reads(*reading) {
+                let probe = self.probes.iter().find(|p| p.channel == channel);
+                // An input without a sensor is open.
+                match probe.and_then(|probe| probe.dial(*reading, &look)) {
+                    Some((dial, truth)) => dial.write(truth, look.tick, out),
                     None => out.extend_from_slice(NO_VALUE),
                 }
             } else if let Some(dial) = self.dials.iter().find(|d| d.reading == *reading) {
-                dial.write(electrical(*reading, &look), look.tick, out);
+                dial.write(seen(*reading, &look), look.tick, out);
             }
         }
     }
@@ -290,8 +252,8 @@ fn whole_number(digits: &[u8]) -> Option<u32> {
     std::str::from_utf8(digits).ok()?.trim().parse().ok()
 }
 
-/// The true value of an electrical reading; nothing where there is none.
-fn electrical(reading: Reading, look: &Look) -> Option<f64> {
+/// The true value of what is no sensor's; nothing where there is none.
+fn seen(reading: Reading, look: &Look) -> Option<f64> {
     let apparent = look.volts * look.state.amps;
     match reading {
         Reading::Voltage => Some(look.volts),
@@ -300,12 +262,19 @@ fn electrical(reading: Reading, look: &Look) -> Option<f64> {
         Reading::PowerFactor => (apparent > 0.0).then(|| look.state.watts / apparent),
         Reading::Frequency => Some(look.hertz),
         Reading::Energy => Some(look.watt_hours),
-        Reading::Temperature => None,
+        Reading::TerminalTemperature => Some(probe::terminals(look)),
+        Reading::Temperature | Reading::ThermocoupleVoltage | Reading::Resistance => None,
     }
 }
 
 impl Dial {
-    fn new(connection: &Connection, reading: Reading, channel: Option<u32>, seed: u64) -> Self {
+    /// The dial of an instrument for one reading on one channel.
+    pub(super) fn new(
+        connection: &Connection,
+        reading: Reading,
+        channel: Option<u32>,
+        seed: u64,
+    ) -> Self {
         let accuracy = connection.driver.accuracy_of(reading).cloned();
         let name = format!(
             "{} {} {}",
@@ -349,93 +318,6 @@ impl Dial {
         let noise = NOISE.0 * (share.abs() + constant) + NOISE.1 * accuracy.resolution;
         truth + self.gain * share + self.offset * constant + noise * self.noise.bell(tick)
     }
-}
-
-impl Probe {
-    fn new(connection: &Connection, dial: Dial, seed: u64, faults: &[Fault]) -> Self {
-        let name = format!("{} contact", connection.role);
-        let place = SensorPlace::of(&connection.role);
-        let contact = 0.5 * CONTACT * (1.0 + Chance::of(seed, &name).even(0));
-        let troubles = faults
-            .iter()
-            .filter_map(|fault| trouble(fault, &connection.role, place))
-            .collect();
-        Self {
-            channel: connection.channel,
-            place,
-            dial,
-            contact: if place == SensorPlace::Room {
-                0.0
-            } else {
-                contact
-            },
-            troubles,
-        }
-    }
-
-    fn write(&self, look: &Look, out: &mut Vec<u8>) {
-        let room = look.state.ambient;
-        let mut rise = (self.place.truth(&look.state) - room) * (1.0 - self.contact);
-        for (trouble, from) in &self.troubles {
-            let since = look.at - from;
-            if since < 0.0 {
-                continue;
-            }
-            match trouble {
-                Trouble::Fallen => {
-                    let left = libm::exp(-since / FALLEN_LAG);
-                    rise *= FALLEN_SHARE + (1.0 - FALLEN_SHARE) * left;
-                }
-                Trouble::Elsewhere(place) => rise = place.truth(&look.state) - room,
-                Trouble::Open => {
-                    out.extend_from_slice(NO_VALUE);
-                    return;
-                }
-                Trouble::Reversed => rise = -rise,
-                Trouble::WrongType => rise *= WRONG_TYPE,
-            }
-        }
-        self.dial.write(Some(room + rise), look.tick, out);
-    }
-}
-
-impl SensorPlace {
-    /// Where the sensor of a role sits: other names than the known ones count as enclosure.
-    fn of(role: &str) -> Self {
-        match role {
-            "body" => SensorPlace::Link,
-            "ambient" => SensorPlace::Room,
-            "block" => SensorPlace::Block,
-            _ => SensorPlace::Enclosure,
-        }
-    }
-
-    fn truth(self, state: &State) -> f64 {
-        match self {
-            SensorPlace::Block => state.block,
-            SensorPlace::Link => state.link,
-            SensorPlace::Enclosure => state.enclosure,
-            SensorPlace::Room => state.ambient,
-        }
-    }
-}
-
-/// What a fault does to the sensor of `role`, and from when on in seconds.
-fn trouble(fault: &Fault, role: &str, place: SensorPlace) -> Option<(Trouble, f64)> {
-    let hits = |onset: &Onset| onset.role.as_deref().unwrap_or("body") == role;
-    let trouble = match fault {
-        Fault::SensorFallenOff(onset) if hits(onset) => Trouble::Fallen,
-        Fault::SensorOpen(onset) if hits(onset) => Trouble::Open,
-        Fault::SensorReversed(onset) if hits(onset) => Trouble::Reversed,
-        Fault::SensorWrongType(onset) if hits(onset) => Trouble::WrongType,
-        Fault::SwappedChannels(_) => match place {
-            SensorPlace::Link => Trouble::Elsewhere(SensorPlace::Room),
-            SensorPlace::Room => Trouble::Elsewhere(SensorPlace::Link),
-            _ => return None,
-        },
-        _ => return None,
-    };
-    Some((trouble, fault.onset()?.from.as_secs_f64()))
 }
 
 /// The identity reply: what the bench file expects, completed to the driver's

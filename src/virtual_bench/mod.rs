@@ -14,6 +14,7 @@ mod hands;
 mod instruments;
 mod line;
 pub mod ode;
+mod probe;
 pub mod ptc;
 #[cfg(unix)]
 pub mod terminals;
@@ -28,6 +29,7 @@ use std::sync::{Arc, Mutex, MutexGuard, PoisonError};
 
 use crate::bench::FarSide;
 use crate::quantity::{Amps, Celsius, Moment, Watts};
+use crate::sensor::Sensor;
 use crate::spec::driver::Driver;
 use crate::spec::sequence::RoleKind;
 use crate::spec::virtual_unit::VirtualUnit;
@@ -57,6 +59,8 @@ pub struct Connection {
     pub kind: RoleKind,
     /// The channel, where the instrument has channels.
     pub channel: Option<u32>,
+    /// What hangs on it, where the bench file says so. This one deviates within its class.
+    pub sensor: Option<Sensor>,
 }
 
 /// What stands on the virtual bench.

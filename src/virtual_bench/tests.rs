@@ -1,7 +1,8 @@
 //! The room's tests over whole benches: messages in, replies out.
 
 use super::*;
-use crate::quantity::{Moment, Seconds};
+use crate::quantity::{Moment, Reading, Readings, Seconds};
+use crate::sensor::{Couple, CoupleClass, PlatinumClass, temperature_of, tolerance};
 use crate::spec::shipped::{DRIVERS, VIRTUAL_BENCH, VIRTUAL_UNITS};
 use crate::spec::{load_bench, load_driver, load_virtual_unit};
 
@@ -38,6 +39,7 @@ pub(super) fn staging_of(unit: VirtualUnit) -> Staging {
             role: role.role.value.clone(),
             kind: driver.fills[0],
             channel: role.channel.as_ref().map(|c| c.value),
+            sensor: role.sensor.as_ref().map(|s| s.value),
         }
     });
     Staging {
@@ -436,4 +438,137 @@ fn a_dead_line_forgets_what_was_on_its_way() {
     let mut out = Vec::new();
     far.deliver(at(2.0), &mut out);
     assert!(out.is_empty() && far.due().is_none());
+}
+
+/// The dryer with a scanner of another driver, and a sensor on each of its channels.
+fn raw_dryer(driver: &str, sensor: Sensor, faults: &[&str]) -> Staging {
+    let mut staging = dryer(faults);
+    let shipped = DRIVERS.iter().find(|s| s.path.contains(driver)).unwrap();
+    let driver = load_driver(shipped.path, shipped.text.as_bytes()).value;
+    let scanned = staging.connections.iter_mut();
+    for connection in scanned.filter(|c| c.kind == RoleKind::Temperature) {
+        connection.driver = driver.clone().unwrap();
+        connection.sensor = Some(sensor);
+    }
+    staging
+}
+
+const K: Sensor = Sensor::Thermocouple {
+    couple: Couple::K,
+    class: CoupleClass::One,
+};
+const PT: Sensor = Sensor::Pt100 {
+    class: PlatinumClass::B,
+};
+
+/// What the raw scanner says of a channel in the high position at 20 min.
+fn raw_reply(driver: &str, sensor: Sensor, faults: &[&str], channel: u32) -> String {
+    let bench = energised(raw_dryer(driver, sensor, faults), 2);
+    let line = match sensor {
+        Sensor::Thermocouple { .. } => format!("MEAS:VOLT:DC? (@{channel});:MEAS:TEMP:RJUN?"),
+        Sensor::Pt100 { .. } => format!("MEAS:FRES? (@{channel})"),
+    };
+    reply(&mut *bench.far_side("scanner line"), &line, at(1200.0))
+}
+
+fn degrees(sensor: Sensor, reply: &str) -> Option<f64> {
+    let mut raw = Readings::NONE;
+    let kinds = match sensor {
+        Sensor::Thermocouple { .. } => {
+            &[Reading::ThermocoupleVoltage, Reading::TerminalTemperature][..]
+        }
+        Sensor::Pt100 { .. } => &[Reading::Resistance],
+    };
+    for (kind, value) in kinds.iter().zip(fields(reply)) {
+        raw.set(*kind, value);
+    }
+    temperature_of(sensor, &raw).map(Celsius::get)
+}
+
+#[test]
+fn raw_scanners_say_volts_and_ohms_that_lead_back_to_the_truth() {
+    let truth = energised(dryer(&[]), 2).truth(at(1200.0));
+    for (driver, sensor) in [("thermocouple", K), ("resistance", PT)] {
+        for (channel, truth) in [(1, truth.link), (2, truth.ambient), (3, truth.enclosure)] {
+            let said = raw_reply(driver, sensor, &[], channel);
+            let found = degrees(sensor, &said).unwrap();
+            // The class's tolerance, 0.6 K for the scanner, 1 % of the rise for contact.
+            let contact = 0.01 * (truth.get() - 23.0).abs();
+            let wide = tolerance(sensor, truth).unwrap().get() + 0.6 + contact;
+            let off = found - truth.get();
+            assert!(off.abs() <= wide, "{said}: {found} for {truth}");
+            assert!(off != 0.0);
+        }
+    }
+    let couple = fields(&raw_reply("thermocouple", K, &[], 1));
+    assert!((0.001..0.003).contains(&couple[0]), "{couple:?}");
+    // Its own warmth, and half a kelvin of accuracy.
+    assert!((23.0..25.6).contains(&couple[1]), "{couple:?}");
+    assert!((115.0..130.0).contains(&fields(&raw_reply("resistance", PT, &[], 1))[0]));
+}
+
+#[test]
+fn every_channel_has_the_same_terminals_and_they_drift_slowly() {
+    let bench = VirtualBench::new(raw_dryer("thermocouple", K, &[])).unwrap();
+    let mut far = bench.far_side("scanner line");
+    let mut at_terminals = |channel: u32, now: f64| {
+        let line = format!("MEAS:VOLT:DC? (@{channel});:MEAS:TEMP:RJUN?");
+        fields(&reply(&mut *far, &line, at(now)))[1]
+    };
+    let first = at_terminals(1, 0.1);
+    assert_eq!(first, at_terminals(2, 0.2));
+    let later = at_terminals(1, 3600.0);
+    assert!((1.0..2.5).contains(&(later - first)), "{first} {later}");
+}
+
+#[test]
+fn faults_of_a_raw_sensor_act_on_what_reaches_the_terminals() {
+    let good = degrees(K, &raw_reply("thermocouple", K, &[], 1)).unwrap();
+    let reversed = raw_reply("thermocouple", K, &["sensor-reversed"], 1);
+    assert!(fields(&reversed)[0] < 0.0, "{reversed}");
+    // The same voltage the other way round, but for the scanner's noise and offset: so
+    // far below the terminals as it was above, or some more, since K weakens there.
+    let volts = fields(&raw_reply("thermocouple", K, &[], 1))[0];
+    assert!((fields(&reversed)[0] + volts).abs() < 1e-5, "{reversed}");
+    let shown = degrees(K, &reversed).unwrap();
+    assert!(
+        (shown - (2.0 * fields(&reversed)[1] - good)).abs() < 3.0,
+        "{shown}"
+    );
+    // Type J gives 5.269 mV at 100 degC where type K gives 4.096 (NIST SRD 60).
+    let other = degrees(K, &raw_reply("thermocouple", K, &["sensor-wrong-type"], 1)).unwrap();
+    assert!(
+        ((other - 23.0) / (good - 23.0) - 1.28).abs() < 0.05,
+        "{other}"
+    );
+    for (driver, sensor) in [("thermocouple", K), ("resistance", PT)] {
+        let open = raw_reply(driver, sensor, &["sensor-open"], 1);
+        assert!(open.starts_with("9.91E37"), "{open}");
+        assert!(!raw_reply(driver, sensor, &["sensor-open"], 2).starts_with("9.91"));
+    }
+    // A resistance has no sign; ten times too much of it is beyond any Pt100.
+    let good = raw_reply("resistance", PT, &[], 1);
+    assert_eq!(raw_reply("resistance", PT, &["sensor-reversed"], 1), good);
+    let other = raw_reply("resistance", PT, &["sensor-wrong-type"], 1);
+    assert_eq!(degrees(PT, &other), None, "{other}");
+}
+
+#[test]
+fn a_named_sensor_deviates_within_its_class_also_where_the_instrument_converts() {
+    let plain = shown(&energised(dryer(&[]), 2), 1200.0).0;
+    let mut seen = Vec::new();
+    for class in [CoupleClass::One, CoupleClass::Two] {
+        let mut staging = dryer(&[]);
+        staging.connections.iter_mut().for_each(|c| {
+            c.sensor = Some(Sensor::Thermocouple {
+                couple: Couple::K,
+                class,
+            });
+        });
+        let off = shown(&energised(staging, 2), 1200.0).0 - plain;
+        seen.push(off);
+    }
+    // The same specimen lies at the same place within either class: 1.5 and 2.5 K.
+    assert!(seen[0] != 0.0 && seen[0].abs() <= 1.52, "{seen:?}");
+    assert!((seen[1] / seen[0] - 2.5 / 1.5).abs() < 0.1, "{seen:?}");
 }

@@ -11,6 +11,7 @@ mod ratings;
 mod reading;
 mod roles;
 mod rules;
+mod sensing;
 mod steps;
 
 /// The demo bench.

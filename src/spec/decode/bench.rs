@@ -3,6 +3,7 @@
 use chrono::NaiveDate;
 
 use crate::quantity::{Amps, Dimension, Ohms, Reading};
+use crate::sensor::{Couple, CoupleClass, PlatinumClass, Sensor};
 use crate::spec::Located;
 use crate::spec::bench::{
     Bay, Bench, CalibrationPoint, Connection, Instrument, Line, Parity, Port, RoleFilled,
@@ -150,12 +151,15 @@ pub(super) const READINGS: &[(&str, Reading)] = &[
     ("frequency", Reading::Frequency),
     ("temperature", Reading::Temperature),
     ("energy", Reading::Energy),
+    ("thermocouple voltage", Reading::ThermocoupleVoltage),
+    ("terminal temperature", Reading::TerminalTemperature),
+    ("resistance", Reading::Resistance),
 ];
 
 /// What a difference between two readings measures: kelvins between temperatures.
 pub(super) fn difference(reading: Reading) -> Dimension {
     match reading {
-        Reading::Temperature => Dimension::TemperatureDifference,
+        Reading::Temperature | Reading::TerminalTemperature => Dimension::TemperatureDifference,
         other => other.dimension(),
     }
 }
@@ -179,6 +183,7 @@ fn role(role: Located<String>, field: Field<'_>) -> Option<RoleFilled> {
     let attachment = fields.optional("attachment", text);
     let contact_error = fields.optional("contact error", share);
     let lead_resistance = fields.optional("lead resistance", quantity::<Ohms>(Allowed::Positive));
+    let sensor = fields.optional("sensor", located(sensor));
     fields.finish()?;
     Some(RoleFilled {
         role,
@@ -189,7 +194,39 @@ fn role(role: Located<String>, field: Field<'_>) -> Option<RoleFilled> {
             contact_error: contact_error?,
             lead_resistance: lead_resistance?,
         },
+        sensor: sensor?,
     })
+}
+
+const SENSOR_TYPES: &[(&str, Option<Couple>)] = &[
+    ("K", Some(Couple::K)),
+    ("J", Some(Couple::J)),
+    ("T", Some(Couple::T)),
+    ("Pt100", None),
+];
+
+const COUPLE_CLASSES: &[(&str, CoupleClass)] = &[("1", CoupleClass::One), ("2", CoupleClass::Two)];
+
+const PLATINUM_CLASSES: &[(&str, PlatinumClass)] = &[
+    ("AA", PlatinumClass::AA),
+    ("A", PlatinumClass::A),
+    ("B", PlatinumClass::B),
+    ("C", PlatinumClass::C),
+];
+
+fn sensor(field: Field<'_>) -> Option<Sensor> {
+    let fields = field.fields()?;
+    // Without the type the classes can't be told right from wrong.
+    let sensor = match fields.required("type", choice(SENSOR_TYPES))? {
+        Some(couple) => fields
+            .required("class", choice(COUPLE_CLASSES))
+            .map(|class| Sensor::Thermocouple { couple, class }),
+        None => fields
+            .required("class", choice(PLATINUM_CLASSES))
+            .map(|class| Sensor::Pt100 { class }),
+    };
+    fields.finish()?;
+    sensor
 }
 
 #[cfg(test)]
@@ -313,6 +350,41 @@ mod tests {
                 "31:7",
                 "lacks `instrument`",
                 "add",
+            ),
+            wrong(
+                "channel: 1}",
+                "channel: 1, sensor: {type: K}}",
+                "33:47",
+                "lacks `class`",
+                "add",
+            ),
+            wrong(
+                "channel: 1}",
+                "channel: 1, sensor: {type: X, class: 1}}",
+                "33:62",
+                "can't be `X`",
+                "one of: K, J, T, Pt100",
+            ),
+            wrong(
+                "channel: 1}",
+                "channel: 1, sensor: {type: Pt100, class: 1}}",
+                "33:76",
+                "can't be `1`",
+                "one of: AA, A, B, C",
+            ),
+            wrong(
+                "channel: 1}",
+                "channel: 1, sensor: {type: T, class: A}}",
+                "33:72",
+                "can't be `A`",
+                "one of: 1, 2",
+            ),
+            wrong(
+                "channel: 1}",
+                "channel: 1, sensor: K}",
+                "33:55",
+                "must be a mapping",
+                "key: value",
             ),
         ]);
     }

@@ -2,7 +2,7 @@
 
 use crate::quantity::{Reading, Seconds, Volts};
 use crate::spec::driver::{
-    Accuracy, Driver, Framing, IdentityQuery, ReadingQuery, Setting, Settings, Terminator,
+    Accuracy, Driver, Framing, IdentityQuery, ReadingQuery, Setting, Settings, Terminator, Thermal,
 };
 use crate::spec::fields::{Field, Fields, list, located, named, some};
 use crate::spec::scalars::{
@@ -173,9 +173,19 @@ fn suited(
                 Some("`settings: output: state`")
             }
             RoleKind::PowerMeter if !gives(Reading::Power) => Some("a reading of power"),
-            RoleKind::Temperature if !gives(Reading::Temperature) => {
-                Some("a reading of temperature")
-            }
+            RoleKind::Temperature => match Thermal::of(readings).as_slice() {
+                [] if gives(Reading::ThermocoupleVoltage)
+                    || gives(Reading::TerminalTemperature) =>
+                {
+                    Some("`thermocouple voltage` and `terminal temperature` in one reply")
+                }
+                [] => Some("a reading of temperature"),
+                [_] => None,
+                [one, other, ..] => {
+                    suited = which_counts(whole, kind, *one, *other);
+                    None
+                }
+            },
             RoleKind::PositionSwitch if settings.position.is_none() => Some("`settings: position`"),
             _ => None,
         };
@@ -188,6 +198,25 @@ fn suited(
         }
     }
     suited
+}
+
+/// A role polls every query of its driver: of two temperatures neither counts.
+fn which_counts(
+    whole: Field<'_>,
+    kind: &Located<RoleKind>,
+    one: Thermal,
+    other: Thermal,
+) -> Option<()> {
+    let word = |thermal: Thermal| thermal.readings()[0].word();
+    whole.notes.error(
+        &kind.place,
+        format!(
+            "it gives both {} and {}: which one is the role's temperature?",
+            word(one),
+            word(other)
+        ),
+        "take one of the two out; an instrument that does both needs a driver for each",
+    )
 }
 
 fn warn_of_unknown_accuracy(
@@ -311,6 +340,73 @@ mod tests {
         assert_eq!(problem.weight, Weight::Warning);
         assert_eq!(problem.place.text(), "readings");
         assert!(problem.message.contains("frequency"), "{problem:?}");
+    }
+
+    #[test]
+    fn a_driver_with_two_temperatures_is_refused_whichever_they_are() {
+        for (driver, from, to) in [
+            (
+                "thermocouple-scanner",
+                "terminal temperature]",
+                "terminal temperature, resistance]",
+            ),
+            (
+                "resistance-scanner",
+                "[resistance]",
+                "[temperature, resistance]",
+            ),
+            (
+                "temperature-scanner",
+                "gives: [temperature]",
+                "gives: [temperature, thermocouple voltage, terminal temperature]",
+            ),
+        ] {
+            let text = Kind::Driver(driver).changed(&[(from, to)]);
+            let (value, problems) = Kind::Driver(driver).load(text.as_bytes());
+            assert!(!value, "{driver}");
+            let errors: Vec<_> = problems
+                .iter()
+                .filter(|p| p.weight == Weight::Error)
+                .collect();
+            let [error] = errors.as_slice() else {
+                panic!("{driver}: {problems:#?}");
+            };
+            assert_eq!(error.place.line_column(), (3, 9), "{driver}");
+            assert!(
+                error
+                    .message
+                    .contains("which one is the role's temperature"),
+                "{error:?}"
+            );
+            assert!(
+                error
+                    .hint
+                    .as_ref()
+                    .is_some_and(|h| h.contains("a driver for each"))
+            );
+        }
+    }
+
+    #[test]
+    fn microvolts_and_milliohms_are_read_in_base_units() {
+        let driver = |name| {
+            let text = Kind::Driver(name).changed(&[]);
+            load_driver("file", text.as_bytes())
+                .value
+                .expect("a driver")
+        };
+        let volts = driver("thermocouple-scanner");
+        let volts = volts
+            .accuracy_of(Reading::ThermocoupleVoltage)
+            .expect("stated");
+        assert_eq!(volts.floor, 3e-6);
+        // 0.1 over a million misses the literal by its last bit.
+        assert!((volts.resolution - 1e-7).abs() < 1e-21);
+        let ohms = driver("resistance-scanner");
+        assert_eq!(
+            ohms.accuracy_of(Reading::Resistance).expect("stated").floor,
+            0.01
+        );
     }
 
     #[test]
@@ -456,6 +552,22 @@ mod tests {
                 "13:12",
                 "has no unit",
                 "`300 V`",
+            ),
+        ]);
+        Kind::Driver("thermocouple-scanner").check(&[
+            wrong(
+                "gives: [thermocouple voltage, terminal temperature]",
+                "gives: [thermocouple voltage]",
+                "3:9",
+                "can't fill `temperature` without `thermocouple voltage` and `terminal temperature`",
+                "in one reply",
+            ),
+            wrong(
+                "floor: 3 uV",
+                "floor: 3 K",
+                "17:53",
+                "not a voltage",
+                "V",
             ),
         ]);
         Kind::Driver("position-switch").check(&[wrong(
