@@ -1,7 +1,7 @@
 //! The room's tests over whole benches: messages in, replies out.
 
 use super::*;
-use crate::quantity::{Moment, Seconds};
+use crate::quantity::{Moment, Reading, Seconds};
 use crate::spec::shipped::{DRIVERS, VIRTUAL_BENCH, VIRTUAL_UNITS};
 use crate::spec::{load_bench, load_driver, load_virtual_unit};
 
@@ -436,4 +436,35 @@ fn a_dead_line_forgets_what_was_on_its_way() {
     let mut out = Vec::new();
     far.deliver(at(2.0), &mut out);
     assert!(out.is_empty() && far.due().is_none());
+}
+
+// Settled at 9 W or so: an hour more counts as much as the power says.
+#[test]
+fn a_meter_with_an_energy_counter_counts_what_was_drawn() {
+    let mut staging = dryer(&[]);
+    for connection in &mut staging.connections {
+        if connection.kind == RoleKind::PowerMeter {
+            connection
+                .driver
+                .readings
+                .push(crate::spec::driver::ReadingQuery {
+                    ask: ":MEAS:ENER?".to_owned(),
+                    gives: vec![Reading::Energy],
+                });
+        }
+    }
+    let bench = energised(staging, 2);
+    let mut meter = bench.far_side("meter line");
+    let counted: Vec<f64> = [0.0, 3600.0, 7200.0, 9000.0]
+        .into_iter()
+        .map(|t| fields(&reply(&mut *meter, ":MEAS:ENER?", at(t)))[0])
+        .collect();
+    let watts = fields(&reply(&mut *meter, METER, at(9001.0)))[2];
+    assert_eq!(counted[0], 0.0);
+    let hour = counted[2] - counted[1];
+    assert!((hour - watts).abs() < 0.02 * watts, "{counted:?} {watts}");
+    let half = counted[3] - counted[2];
+    assert!((half - 0.5 * hour).abs() < 0.01 * hour, "{counted:?}");
+    // The first hour holds the inrush too.
+    assert!(counted[1] > hour, "{counted:?}");
 }
