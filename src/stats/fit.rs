@@ -5,7 +5,7 @@
 //! the start of Gauss-Newton steps on all points. Nothing is random, and the
 //! exponentials are `libm`'s, so the same points give the same digits everywhere.
 
-use super::autocorrelation::worth_of_residuals;
+use super::autocorrelation::Worth;
 use super::line_through;
 
 /// Fewer points than this say nothing about three parameters.
@@ -21,7 +21,10 @@ const SCANNED: usize = 64;
 const SCAN_BLOCKS: usize = 256;
 
 /// Blocks whose means are tested for a trend.
-const TREND_BLOCKS: usize = 12;
+const TREND_BLOCKS: usize = 24;
+
+/// Share of the points in which a fast phase would show.
+const FIRST_PART: usize = 12;
 
 /// A fitted curve y = end + amplitude exp(-(t - t_first) / tau).
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -41,8 +44,9 @@ pub struct FirstOrder {
     pub residual_sd: f64,
     /// Number of independent residuals that the n are worth.
     pub effective: f64,
-    /// Whether the residuals look like noise: the means of up to 12 blocks of
-    /// consecutive residuals don't follow each other.
+    /// Whether the residuals look like noise: the means of up to 24 blocks of
+    /// consecutive ones don't follow each other, and the first twelfth, where a
+    /// fast phase would show, is not rougher than the rest.
     pub trend_free: bool,
     /// Number of points.
     pub n: usize,
@@ -77,7 +81,7 @@ pub fn first_order(points: &[(f64, f64)]) -> Option<FirstOrder> {
     let effective = if exact {
         n as f64
     } else {
-        worth_of_residuals(&residuals).0
+        Worth::of(&residuals, 3).effective
     };
     let sd = (squares / (effective - 3.0).max(1.0)).sqrt();
     let tau = curve.tau();
@@ -284,19 +288,32 @@ fn refine(points: &[(f64, f64)], start: Curve) -> Option<Curve> {
     inside.contains(&curve.log_tau).then_some(curve)
 }
 
-/// Whether the means of consecutive blocks of residuals follow each other no more
-/// than noise would: their lag-1 autocorrelation stays below the level that white
+fn trend_free(residuals: &[f64]) -> bool {
+    !follow_each_other(residuals) && !rough_start(residuals)
+}
+
+/// Whether the means of consecutive blocks of residuals follow each other more
+/// than noise would: their lag-1 autocorrelation lies above the level that white
 /// noise passes in about 1 of 100 fits. Three fitted parameters shift it by -3/m
 /// and narrow it (computed by simulation for 6 to 36 blocks; no outside source).
 /// Means of blocks thin out noise that is correlated over much less than a block.
-fn trend_free(residuals: &[f64]) -> bool {
+fn follow_each_other(residuals: &[f64]) -> bool {
     let numbered: Vec<(f64, f64)> = residuals.iter().map(|r| (0.0, *r)).collect();
     let means = blocks(&numbered, TREND_BLOCKS);
     let m = means.len() as f64;
     let squares: f64 = means.iter().map(|(_, r)| r * r).sum();
     let products: f64 = means.windows(2).map(|pair| pair[0].1 * pair[1].1).sum();
     let limit = -3.0 / m + 2.33 * ((1.0 - 4.5 / m) / m).sqrt();
-    products <= limit * squares
+    products > limit * squares
+}
+
+/// Whether the residuals of the first twelfth of the points are rougher than the
+/// others: the limit on the ratio of mean squares lies above the 99 % point of F
+/// for white noise, and for noise of which ten values are worth one (simulated).
+fn rough_start(residuals: &[f64]) -> bool {
+    let (first, rest) = residuals.split_at((residuals.len() / FIRST_PART).max(1));
+    let mean = |part: &[f64]| part.iter().map(|r| r * r).sum::<f64>() / part.len() as f64;
+    mean(first) > (3.0 + 7.0 / first.len() as f64) * mean(rest)
 }
 
 #[cfg(test)]
@@ -316,8 +333,7 @@ mod tests {
             .collect()
     }
 
-    /// Noise without a pattern that is seen in a block: the fractional parts of
-    /// multiples of the golden ratio, times a large number.
+    /// Noise of standard deviation 1: the far digits of a sine.
     fn scatter(i: usize) -> f64 {
         let x = libm::sin(i as f64 * 12.9898) * 43_758.545_3;
         (x - x.floor() - 0.5) * 12f64.sqrt()
@@ -353,6 +369,15 @@ mod tests {
     fn a_second_time_constant_leaves_a_trend() {
         let points = rise(180, |i| {
             scatter(i) - 100.0 * libm::exp(-(i as f64) * 10.0 / 150.0)
+        });
+        let fit = first_order(&points).unwrap();
+        assert!(!fit.trend_free, "{fit:?}");
+    }
+
+    #[test]
+    fn a_fast_phase_is_noticed() {
+        let points = rise(180, |i| {
+            scatter(i) - 100.0 * libm::exp(-(i as f64) * 10.0 / 20.0)
         });
         let fit = first_order(&points).unwrap();
         assert!(!fit.trend_free, "{fit:?}");
