@@ -313,4 +313,47 @@ mod tests {
         assert_eq!(defused("a\tb"), "a b");
         assert_eq!(defused("low"), "low");
     }
+
+    fn names(readings: &[Reading]) -> Names {
+        Names {
+            bay: "bay 1".to_owned(),
+            roles: vec!["meter".to_owned()],
+            cells: Vec::new(),
+            quantities: readings.to_vec(),
+        }
+    }
+
+    fn sample(readings: Readings) -> Sample {
+        Sample {
+            seq: 1,
+            request: Moment::from_micros(10),
+            reply: Moment::from_micros(20),
+            step: 3,
+            cell: None,
+            role: 0,
+            energised: true,
+            status: Status::Ok,
+            readings,
+        }
+    }
+
+    // Records from before there were energy counters have no column for them.
+    #[test]
+    fn a_counter_has_a_column_only_where_one_is_read() {
+        let without = names(&Reading::ALL[..6]);
+        let head = without.head();
+        assert_eq!(head.last(), Some(&"temperature_degc"));
+        let with = names(&Reading::ALL);
+        assert_eq!(with.head().last(), Some(&"energy_wh"));
+        let mut readings = Readings::one(Reading::Power, 9.5);
+        readings.set(Reading::Energy, 0.125);
+        let mut row = ByteRecord::new();
+        with.write_sample(&sample(readings), &mut row);
+        assert_eq!(row.len(), with.head().len());
+        assert_eq!(with.read_sample(&row).unwrap(), sample(readings));
+        let old = Readings::one(Reading::Power, 9.5);
+        without.write_sample(&sample(old), &mut row);
+        assert_eq!(row.len(), head.len());
+        assert_eq!(without.read_sample(&row).unwrap(), sample(old));
+    }
 }

@@ -572,3 +572,34 @@ fn a_named_sensor_deviates_within_its_class_also_where_the_instrument_converts()
     assert!(seen[0] != 0.0 && seen[0].abs() <= 1.52, "{seen:?}");
     assert!((seen[1] / seen[0] - 2.5 / 1.5).abs() < 0.1, "{seen:?}");
 }
+
+// Settled at 9 W or so: an hour more counts as much as the power says.
+#[test]
+fn a_meter_with_an_energy_counter_counts_what_was_drawn() {
+    let mut staging = dryer(&[]);
+    for connection in &mut staging.connections {
+        if connection.kind == RoleKind::PowerMeter {
+            connection
+                .driver
+                .readings
+                .push(crate::spec::driver::ReadingQuery {
+                    ask: ":MEAS:ENER?".to_owned(),
+                    gives: vec![Reading::Energy],
+                });
+        }
+    }
+    let bench = energised(staging, 2);
+    let mut meter = bench.far_side("meter line");
+    let counted: Vec<f64> = [0.0, 3600.0, 7200.0, 9000.0]
+        .into_iter()
+        .map(|t| fields(&reply(&mut *meter, ":MEAS:ENER?", at(t)))[0])
+        .collect();
+    let watts = fields(&reply(&mut *meter, METER, at(9001.0)))[2];
+    assert_eq!(counted[0], 0.0);
+    let hour = counted[2] - counted[1];
+    assert!((hour - watts).abs() < 0.02 * watts, "{counted:?} {watts}");
+    let half = counted[3] - counted[2];
+    assert!((half - 0.5 * hour).abs() < 0.01 * hour, "{counted:?}");
+    // The first hour holds the inrush too.
+    assert!(counted[1] > hour, "{counted:?}");
+}

@@ -349,6 +349,20 @@ mod tests {
                 "K",
             ),
             wrong(
+                "- thermal link: holding",
+                "- thermal link: holding\n    cycling: on-state",
+                "71:14",
+                "only a rule of the power",
+                "take it out",
+            ),
+            wrong(
+                "- power: plate",
+                "- power: plate\n    cycling: sometimes",
+                "68:14",
+                "can't be `sometimes`",
+                "one of: on-state, representative period",
+            ),
+            wrong(
                 "weight: required",
                 "weight: heavy",
                 "69:13",

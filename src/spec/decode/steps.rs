@@ -504,6 +504,8 @@ fn each_block(field: Field<'_>, allowed: EachAllowed) -> Option<Each> {
 
 #[cfg(test)]
 mod tests {
+    use super::*;
+    use crate::spec::load_sequence;
     use crate::spec::wrong_files::{Kind, wrong};
 
     #[test]
@@ -639,6 +641,27 @@ mod tests {
                 "10 %",
             ),
             wrong(
+                "every: 2 s",
+                "early finish: perhaps\n            every: 2 s",
+                "61:27",
+                "neither yes nor no",
+                "`yes`",
+            ),
+            wrong(
+                "criterion: slope, window: 5 min, power change: 2 %, temperature change: 3 K",
+                "criterion: sampling method, power change: 2 %",
+                "62:63",
+                "brings its own limit",
+                "10 mW/h",
+            ),
+            wrong(
+                "power change: 2 %",
+                "power change: 0 mW",
+                "62:68",
+                "above zero",
+                "check",
+            ),
+            wrong(
                 "{if: no, class: major}",
                 "{if: maybe, class: major}",
                 "44:21",
@@ -695,5 +718,73 @@ mod tests {
                 "at least one",
             ),
         ]);
+    }
+
+    fn soak_of(changes: &[(&str, &str)]) -> (Option<Soak>, Vec<String>) {
+        let text = Kind::Sequence.changed(changes);
+        let loaded = load_sequence("file", text.as_bytes());
+        let messages = loaded.problems.iter().map(|p| p.message.clone()).collect();
+        let soak = loaded.value.and_then(|sequence| {
+            sequence
+                .steps
+                .into_iter()
+                .find_map(|step| match step.action {
+                    StepAction::Each(each) => each.steps.into_iter().find_map(|s| match s.action {
+                        StepAction::Soak(soak) => Some(soak),
+                        _ => None,
+                    }),
+                    _ => None,
+                })
+        });
+        (soak, messages)
+    }
+
+    #[test]
+    fn a_power_change_is_a_share_or_watts_and_an_early_finish_is_asked_for() {
+        let soak = soak_of(&[]).0.expect("a soak");
+        assert!(!soak.early_finish);
+        let share = PowerChange::Relative(Ratio::of(0.02));
+        assert_eq!(soak.until.power_change, Some(share));
+        let changes = [
+            ("power change: 2 %", "power change: 50 mW"),
+            (
+                "at most: 45 min",
+                "early finish: yes\n            at most: 45 min",
+            ),
+        ];
+        let soak = soak_of(&changes).0.expect("a soak");
+        assert!(soak.early_finish);
+        let watts = PowerChange::Absolute(Watts::of(0.05));
+        assert_eq!(soak.until.power_change, Some(watts));
+        // A plan stores it as it is written, and old plans hold shares.
+        for change in [share, watts] {
+            let text = serde_json::to_string(&change).unwrap();
+            assert_eq!(serde_json::from_str::<PowerChange>(&text).unwrap(), change);
+        }
+        assert_eq!(
+            serde_json::from_str::<PowerChange>("\"2 %\"").unwrap(),
+            share
+        );
+    }
+
+    #[test]
+    fn the_sampling_method_asks_for_a_second_and_a_quarter_of_an_hour() {
+        let slope = "criterion: slope, window: 5 min, power change: 2 %, temperature change: 3 K";
+        let sampling = (slope, "criterion: sampling method");
+        let (soak, problems) = soak_of(&[sampling]);
+        assert!(soak.is_none());
+        assert_eq!(problems.len(), 2, "{problems:?}");
+        assert!(problems[0].contains("at least 15 min") || problems[1].contains("at least 15 min"));
+        assert!(problems[0].contains("each second") || problems[1].contains("each second"));
+        let changes = [
+            sampling,
+            ("at least: 10 min", "at least: 15 min"),
+            ("every: 2 s", "every: 1 s"),
+        ];
+        let (soak, problems) = soak_of(&changes);
+        assert_eq!(problems, Vec::<String>::new());
+        let until = soak.expect("a soak").until;
+        assert_eq!(until.kind, CriterionKind::SamplingMethod);
+        assert_eq!(until.power_change, None);
     }
 }
