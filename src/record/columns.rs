@@ -5,6 +5,7 @@ use csv::ByteRecord;
 use super::types::{Event, Happening, Sample, Status};
 use crate::plan::{Cell, Plan};
 use crate::quantity::{Moment, Reading, Readings, shortest};
+use crate::sensor::is_raw;
 
 /// Columns of `samples.csv` before the quantities.
 pub const SAMPLE_HEAD: [&str; 11] = [
@@ -42,8 +43,7 @@ pub struct Names {
     bay: String,
     roles: Vec<String>,
     cells: Vec<[String; 3]>,
-    /// Quantities, in the order of their columns.
-    quantities: Vec<Reading>,
+    readings: Vec<Reading>,
 }
 
 impl Names {
@@ -58,13 +58,13 @@ impl Names {
                 .map(|role| defused(&role.name))
                 .collect(),
             cells: plan.cells.iter().map(cell_names).collect(),
-            quantities: quantities_of(plan),
+            readings: columns_of(plan),
         }
     }
 
     /// The columns of `samples.csv`.
     pub fn head(&self) -> Vec<&'static str> {
-        let quantities = self.quantities.iter().map(|kind| kind.column());
+        let quantities = self.readings.iter().map(|reading| reading.column());
         SAMPLE_HEAD.into_iter().chain(quantities).collect()
     }
 
@@ -86,11 +86,11 @@ impl Names {
         row.push_field(self.roles[sample.role].as_bytes());
         row.push_field(if sample.energised { b"1" } else { b"0" });
         row.push_field(sample.status.word().as_bytes());
-        for kind in self.quantities.iter().copied() {
+        for kind in &self.readings {
             row.push_field(
                 sample
                     .readings
-                    .get(kind)
+                    .get(*kind)
                     .map_or(&[][..], |value| number.decimal(value)),
             );
         }
@@ -104,7 +104,7 @@ impl Names {
         let status = text_at(row, 10);
         let status = Status::ALL.into_iter().find(|s| s.word() == status);
         let mut readings = Readings::NONE;
-        for (n, kind) in self.quantities.iter().copied().enumerate() {
+        for (n, kind) in self.readings.iter().copied().enumerate() {
             let column = SAMPLE_HEAD.len() + n;
             let text = text_at(row, column);
             if !text.is_empty() {
@@ -152,29 +152,19 @@ impl Names {
     }
 }
 
-/// Columns that every record has.
-const ALWAYS: [Reading; 6] = [
-    Reading::Voltage,
-    Reading::Current,
-    Reading::Power,
-    Reading::PowerFactor,
-    Reading::Frequency,
-    Reading::Temperature,
-];
-
-/// The quantities that a plan's rows have columns for: the usual ones, and the rarer
-/// ones that one of its drivers gives. So records from before these were known, and
-/// records that have no use for them, look the same.
-fn quantities_of(plan: &Plan) -> Vec<Reading> {
-    let gives = |kind: &Reading| {
-        plan.instruments.iter().any(|instrument| {
-            let mut queries = instrument.driver.readings.iter();
-            queries.any(|query| query.gives.contains(kind))
-        })
+/// Quantities that a plan's record has a column for. Raw readings of sensors are rare,
+/// so their columns are there only where a driver of the plan gives them: records
+/// without them keep the columns that they always had.
+fn columns_of(plan: &Plan) -> Vec<Reading> {
+    let given = |reading: Reading| {
+        plan.instruments
+            .iter()
+            .flat_map(|instrument| &instrument.driver.readings)
+            .any(|query| query.gives.contains(&reading))
     };
     Reading::ALL
         .into_iter()
-        .filter(|kind| ALWAYS.contains(kind) || gives(kind))
+        .filter(|reading| !is_raw(*reading) || given(*reading))
         .collect()
 }
 

@@ -103,8 +103,9 @@ impl Folder {
         }
         let plan = read_plan(&run.join("plan.json"))?;
         let names = Names::of(&plan);
+        let head = names.head();
         let mut samples: Vec<Sample> = Vec::with_capacity(manifest.samples as usize);
-        read_rows(&run.join("samples.csv"), &names.head(), |row| {
+        read_rows(&run.join("samples.csv"), &head, |row| {
             let sample = names.read_sample(row)?;
             let expected = samples.len() as u64 + 1;
             in_order("seq", sample.seq, expected)?;
