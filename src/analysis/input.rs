@@ -2,7 +2,7 @@
 //! another voltage or ambient.
 
 use crate::quantity::Reading;
-use crate::stats::effective_of;
+use crate::stats::{Effective, effective_of};
 
 use super::budget::Share;
 use super::cell::{CellView, mean};
@@ -42,7 +42,7 @@ pub(super) fn at_plug(
     let power_w = gauge(Reading::Power)?.estimate(indicated)?.moved(
         0.0,
         [
-            scatter(worth.scatter, worth.effective),
+            scatter(&worth),
             Share::rectangular("drift over the window", drift, "W"),
         ],
     );
@@ -82,12 +82,16 @@ fn without_leads(
     Ok((less(power_w, amps * drop_v, "W"), less(volts, drop_v, "V")))
 }
 
-/// Type A: the scatter about the trend over the root of the effective number. Less
-/// than two independent rows average nothing out.
-fn scatter(sd: f64, effective: f64) -> Share {
-    if effective < 2.0 {
-        return Share::from_data("scatter (less than two independent rows)", sd, "W", 1.0);
+/// Type A: the scatter about the trend over what the rows are worth. Too few
+/// independent rows average nothing out.
+fn scatter(worth: &Effective) -> Share {
+    match worth.of_mean() {
+        Some(mean) => Share::from_data("scatter of the mean", mean.standard, "W", mean.freedom),
+        None => Share::from_data(
+            "scatter (too few independent rows for a mean)",
+            worth.scatter,
+            "W",
+            1.0,
+        ),
     }
-    let freedom = effective - 1.0;
-    Share::from_data("scatter of the mean", sd / effective.sqrt(), "W", freedom)
 }

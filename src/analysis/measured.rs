@@ -72,7 +72,11 @@ impl<'a> Gauge<'a> {
             let mut queries = self.instrument.driver.readings.iter();
             queries.any(|query| query.gives.contains(reading))
         };
-        let (Reading::Temperature, Some(sensor)) = (self.reading, self.sensor) else {
+        // A driver that states the accuracy of the whole chain, sensor input and
+        // conversion, means that.
+        let whole_chain = self.accuracy().is_some();
+        let (Reading::Temperature, Some(sensor), false) = (self.reading, self.sensor, whole_chain)
+        else {
             return Vec::new();
         };
         let (Some(at), Some(terminals)) = (Celsius::new(indicated), Celsius::new(TERMINALS_DEGC))

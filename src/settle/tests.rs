@@ -95,7 +95,9 @@ fn slope_of_a_first_order_rise_meets_the_computed_moment() {
         let (at, state) = feed(&mut settle, 1.0, 120.0, first_order);
         assert!(matches!(state, Settling::Settled { .. }), "{state:?}");
         let earliest = 63.969;
-        let latest = 63.969 + 0.5 * window + 0.4 * window + 0.2;
+        // The bend of a curve without noise looks like correlated noise: few
+        // independent values, a wide bound.
+        let latest = 63.969 + 0.5 * window + 3.0;
         assert!((earliest..latest).contains(&at), "window {window}: {at}");
     }
 }

@@ -1,12 +1,12 @@
 //! Normal and Student's t.
 
-use statrs::distribution::{ContinuousCDF, StudentsT};
+use super::special::{beta, root};
 
 /// Share of a normal distribution within two standard deviations.
 const TWO_SIGMA: f64 = 0.954_499_736_103_641_6;
 
-/// Below this many degrees of freedom the library's t quantile is right to 1e-9;
-/// far above it is silently wrong or never returns (measured against SciPy).
+/// From this many degrees of freedom on, t is turned into a normal value by a
+/// series that is right to the last digits there.
 const SERIES_FROM: f64 = 1000.0;
 
 /// Probability that a standard normal value lies below `z`; not a number for one.
@@ -14,23 +14,129 @@ pub fn normal_cdf(z: f64) -> f64 {
     0.5 * libm::erfc(-z / std::f64::consts::SQRT_2)
 }
 
+/// The value that a standard normal one stays below with probability `p`.
+///
+/// Nothing where `p` is not strictly between 0 and 1. Digits near 1 are those that
+/// `p` itself has left there.
+pub fn normal_quantile(p: f64) -> Option<f64> {
+    if !(p > 0.0 && p < 1.0) {
+        return None;
+    }
+    if p > 0.5 {
+        // 1 - p is exact here.
+        return normal_quantile(1.0 - p).map(|z| -z);
+    }
+    // Abramowitz and Stegun 26.2.23, right to 4.5e-4, is the start of Halley's steps.
+    let t = (-2.0 * libm::log(p)).sqrt();
+    let above = (2.515_517 + t * (0.802_853 + t * 0.010_328))
+        / (1.0 + t * (1.432_788 + t * (0.189_269 + t * 0.001_308)));
+    let mut z = above - t;
+    for _ in 0..3 {
+        // (cdf - p) / density, relative to p, so that far tails don't underflow.
+        let log_density = -0.5 * z * z - 0.5 * libm::log(2.0 * std::f64::consts::PI);
+        let miss = (normal_cdf(z) / p - 1.0) * libm::exp(libm::log(p) - log_density);
+        z -= miss / (1.0 + 0.5 * z * miss);
+    }
+    Some(z)
+}
+
+/// Probability that Student's t with `nu` degrees of freedom lies below `t`;
+/// infinite `nu` is the normal distribution, fractional `nu` is allowed.
+///
+/// By the incomplete beta function (Abramowitz and Stegun 26.7.1) below 1000
+/// degrees of freedom, from there by Hill's normalising series (1970, algorithm
+/// 395 of the Communications of the ACM, from memory). Nothing where `nu` is below
+/// 1 or one of both is not a number.
+pub fn student_cdf(t: f64, nu: f64) -> Option<f64> {
+    if t.is_nan() || nu.is_nan() || nu < 1.0 {
+        return None;
+    }
+    Some(if t < 0.0 {
+        student_above(-t, nu)
+    } else if t < 0.5 {
+        0.5 + student_between(t, nu)
+    } else {
+        1.0 - student_above(t, nu)
+    })
+}
+
+/// Probability above `t`, for `t` of at least 0.
+fn student_above(t: f64, nu: f64) -> f64 {
+    if nu >= SERIES_FROM {
+        return normal_cdf(-normalised(t, nu));
+    }
+    let (x, y) = shares(t, nu);
+    0.5 * beta(0.5 * nu, 0.5, x, y)
+}
+
+/// Probability between 0 and `t`, for `t` of at least 0: keeps its digits near 0.
+fn student_between(t: f64, nu: f64) -> f64 {
+    if nu >= SERIES_FROM {
+        return 0.5 * libm::erf(normalised(t, nu) / std::f64::consts::SQRT_2);
+    }
+    let (x, y) = shares(t, nu);
+    0.5 * beta(0.5, 0.5 * nu, y, x)
+}
+
+/// nu / (nu + t^2) and t^2 / (nu + t^2), without overflow.
+fn shares(t: f64, nu: f64) -> (f64, f64) {
+    let ratio = t * (t / nu);
+    (1.0 / (1.0 + ratio), 1.0 / (1.0 + 1.0 / ratio))
+}
+
+/// The normal value with the same probability, for many degrees of freedom.
+fn normalised(t: f64, nu: f64) -> f64 {
+    if nu.is_infinite() {
+        return t;
+    }
+    let a = nu - 0.5;
+    let b = 48.0 * a * a;
+    let w = a * libm::log1p(t / nu * t);
+    let series = (((-0.4 * w - 3.3) * w - 24.0) * w - 85.5) / (0.8 * w * w + 100.0 + b);
+    ((series + w + 3.0) / b + 1.0) * w.sqrt()
+}
+
 /// The value that Student's t with `nu` degrees of freedom stays below with
-/// probability `p`; infinite `nu` is the normal distribution.
+/// probability `p`; infinite `nu` is the normal distribution, fractional `nu` is
+/// allowed. The root of [`student_cdf`]; near p = 0.5 it keeps the digits of p - 0.5.
 ///
 /// Nothing where `nu` is below 1 or not a number, or `p` lies outside
-/// [1e-6, 1 - 1e-6], where the library's digits are lost.
+/// [1e-6, 1 - 1e-6].
 pub fn student_quantile(p: f64, nu: f64) -> Option<f64> {
     if nu.is_nan() || nu < 1.0 || !(1e-6..=1.0 - 1e-6).contains(&p) {
         return None;
     }
-    if nu < SERIES_FROM {
-        return Some(StudentsT::new(0.0, 1.0, nu).ok()?.inverse_cdf(p));
-    }
-    let z = normal_quantile(p);
     if nu.is_infinite() {
-        return Some(z);
+        return normal_quantile(p);
     }
-    Some(cornish_fisher(z, nu))
+    let from_middle = p - 0.5;
+    if from_middle == 0.0 {
+        return Some(0.0);
+    }
+    let size = if nu >= SERIES_FROM {
+        many_degrees(normal_quantile(p)?.abs(), nu)
+    } else if from_middle.abs() <= 0.25 {
+        // No quartile of t lies beyond 1, that of one degree of freedom.
+        let misses = |t: f64| student_between(t, nu) - from_middle.abs();
+        root(misses, 0.0, 1.0 + 1e-9)
+    } else {
+        let tail = p.min(1.0 - p);
+        // One degree of freedom has the widest tails: cot(pi tail) < 1 / (pi tail).
+        let misses = |log_t: f64| libm::log(student_above(libm::exp(log_t), nu) / tail);
+        libm::exp(root(misses, -0.7, libm::log(0.32 / tail)))
+    };
+    Some(size.copysign(from_middle))
+}
+
+/// Three terms of the Cornish-Fisher series (Abramowitz and Stegun 26.7.5), then two
+/// Newton steps on Hill's series, whose slope is near z / t.
+fn many_degrees(z: f64, nu: f64) -> f64 {
+    let mut t = cornish_fisher(z, nu);
+    for _ in 0..2 {
+        let found = normalised(t, nu);
+        t += (z - found) * t / found;
+    }
+    t
 }
 
 /// Coverage factor k of an expanded uncertainty at 95.45 % from the effective
@@ -45,11 +151,6 @@ pub fn coverage_factor(nu_eff: f64) -> f64 {
     student_quantile(0.5 + 0.5 * TWO_SIGMA, whole).unwrap_or(2.0)
 }
 
-fn normal_quantile(p: f64) -> f64 {
-    -std::f64::consts::SQRT_2 * statrs::function::erf::erfc_inv(2.0 * p)
-}
-
-/// Three terms of the Cornish-Fisher series (Abramowitz and Stegun 26.7.5).
 fn cornish_fisher(z: f64, nu: f64) -> f64 {
     let z2 = z * z;
     let first = z * (z2 + 1.0) / 4.0;

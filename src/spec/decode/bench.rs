@@ -340,7 +340,7 @@ mod tests {
             wrong(
                 "channel: 1}",
                 "channel: 01}",
-                "33:44",
+                "33:85",
                 "whole number",
                 "plain digits",
             ),
