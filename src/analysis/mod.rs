@@ -12,6 +12,7 @@ mod table;
 mod temperature;
 mod types;
 mod voltage;
+pub mod waveform;
 
 pub use table::results_csv;
 pub use types::{
