@@ -220,6 +220,7 @@ pub(crate) fn plan(conditions: &[&str]) -> Plan {
         bay: PlannedBay {
             name: "bay 1".to_owned(),
             rated_current: Amps::of(10.0),
+            source: crate::spec::bench::Source::default(),
             roles: roles(),
         },
         lines: vec![PlannedLine {
@@ -275,6 +276,7 @@ fn steps(cells: &[Cell]) -> Vec<PlannedStep> {
     let timed = |length: f64, every: f64| Timed {
         length: Seconds::of(length),
         every: Seconds::of(every),
+        waveform: false,
     };
     let mut actions = vec![
         (None, Action::Ask(question)),
@@ -403,6 +405,7 @@ impl Played {
             plan: &self.plan,
             samples: &self.samples,
             happenings: &self.happenings,
+            waveforms: &[],
             outcome: &self.outcome,
         })
     }

@@ -3,6 +3,8 @@
 
 mod belief;
 mod cell;
+mod dc;
+mod fetched;
 #[cfg(test)]
 pub(crate) mod fixture;
 mod inrush;
@@ -16,13 +18,13 @@ pub mod waveform;
 
 pub use table::results_csv;
 pub use types::{
-    Analysis, CellResult, Drawn, Estimate, Figure, Inrush, Looked, Peak, Share, Steady,
+    Analysis, CellResult, Change, Drawn, Estimate, Figure, Harmonic, Inrush, Looked, Peak, Share,
+    Steady, Wave,
 };
 pub use voltage::{at_voltage, plate_point, plate_points};
 
 use crate::plan::Plan;
-use crate::record::{Event, Happening, RunOutcome, Sample};
-use crate::spec::sequence::HeatingElement;
+use crate::record::{Event, Happening, RunOutcome, Sample, StoredWaveform};
 
 use cell::{CellView, Switched};
 
@@ -35,6 +37,8 @@ pub struct Input<'a> {
     pub samples: &'a [Sample],
     /// Every event, in the order of the record.
     pub happenings: &'a [Happening],
+    /// Every waveform; none in records that were made before they were kept.
+    pub waveforms: &'a [StoredWaveform],
     /// How the run ended.
     pub outcome: &'a RunOutcome,
 }
@@ -42,15 +46,25 @@ pub struct Input<'a> {
 /// What the record says, cell by cell.
 pub fn analyse(input: &Input) -> Analysis {
     let switched = cell::switched(input.plan, input.happenings);
-    let cells: Vec<CellResult> = switched
+    let mut cells: Vec<CellResult> = switched
         .into_iter()
         .enumerate()
         .map(|(index, switched)| result(input, index, switched))
         .collect();
-    let notes = cells
-        .iter()
-        .filter_map(|cell| half_wave(input.plan, cell))
+    let lost: Vec<Option<String>> = (0..cells.len())
+        .map(|index| dc::lost(input.plan, &cells, index))
         .collect();
+    let mut notes = Vec::new();
+    for (cell, why) in cells.iter_mut().zip(lost) {
+        if let Some(why) = &why {
+            notes.push(format!(
+                "{why}; its current is not to be believed, its power is right under a sine voltage"
+            ));
+            doubt_current(cell, why);
+        }
+        cell.dc_lost = why;
+    }
+    notes.dedup();
     Analysis {
         cells,
         looked: looked(input.happenings),
@@ -65,6 +79,9 @@ fn result(input: &Input, index: usize, switched: Switched) -> CellResult {
     let steady = steady::steady(&view, &settled);
     let drawn = steady::drawn(&view);
     let peak = temperature::body_peak(&view);
+    let waveform = fetched::wave(input, &view);
+    let captured = inrush::inrush(&view, steady.known(), waveform.known());
+    let (inrush, switch_in_peak) = inrush::parted(captured, belief::cold(&view));
     let seconds = |moment: Option<crate::quantity::Moment>, otherwise: String| match moment {
         Some(moment) => Figure::Known(moment.as_secs_f64()),
         None => Figure::Absent(otherwise),
@@ -77,7 +94,10 @@ fn result(input: &Input, index: usize, switched: Switched) -> CellResult {
             Ok(()) => Figure::Known(()),
             Err(reason) => Figure::Absent(reason),
         },
-        inrush: inrush::inrush(&view, steady.known()),
+        inrush,
+        switch_in_peak,
+        waveform,
+        dc_lost: None,
         settled_s: steady::settled_after(&view, &settled),
         body_worst: temperature::body_worst(&view, &peak, &settled),
         body_peak: peak,
@@ -134,28 +154,16 @@ fn tripped(input: &Input) -> Option<String> {
     })
 }
 
-/// A half-wave load that is read by a meter which loses the DC part: a resistive one
-/// then shows a power factor of 0.917 instead of 0.707 (computed). Its power is right
-/// under a sine voltage all the same.
-fn half_wave(plan: &Plan, cell: &CellResult) -> Option<String> {
-    let resistive = plan.appliance.element == HeatingElement::Resistor && !plan.appliance.fan;
-    let position = &cell.cell.position;
-    if !resistive || !plan.appliance.diode_in.contains(position) {
-        return None;
+/// What rests on a current without its DC part is no result.
+fn doubt_current(cell: &mut CellResult, why: &str) {
+    if let Figure::Known(steady) = &mut cell.steady {
+        steady.current_a = None;
     }
-    let steady = cell.steady.known()?;
-    let factor = steady.power_w.value / (steady.voltage_v * steady.current_a?);
-    (factor > HALF_WAVE_MIDDLE).then(|| {
-        format!(
-            "position {position} is fed through a diode and shows a power factor of {factor:.3}, \
-             not 0.707: the meter loses the DC part and its current is not to be believed; \
-             its power is right under a sine voltage"
-        )
-    })
+    if cell.switch_in_peak.known().is_some() {
+        let doubt = format!("the meter's current is not to be believed: {why}");
+        cell.switch_in_peak = Figure::Absent(doubt);
+    }
 }
-
-/// Half-way between 1/sqrt(2) and 0.917.
-const HALF_WAVE_MIDDLE: f64 = 0.81;
 
 #[cfg(test)]
 mod tests;

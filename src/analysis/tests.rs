@@ -429,6 +429,7 @@ fn an_empty_record_is_analysed_without_a_panic() {
         plan: &plan,
         samples: &[],
         happenings: &[],
+        waveforms: &[],
         outcome: &RunOutcome::Interrupted,
     });
     assert_eq!(analysis.cells.len(), 2);

@@ -12,6 +12,7 @@ mod finding;
 mod rules;
 mod table;
 mod types;
+mod waveform;
 
 #[cfg(test)]
 mod tests;

@@ -17,6 +17,7 @@ mod rules;
 mod tests;
 mod text;
 mod types;
+mod waveform;
 mod wiring;
 mod words;
 

@@ -21,8 +21,13 @@ fn usual_source(kind: &RuleKind) -> &'static str {
         RuleKind::LinkHolding => "IEC 60691: holding temperature Th of the part's data sheet",
         RuleKind::LinkOpening => "IEC 60691: Tf - 10 K, earliest opening",
         RuleKind::PositionOrder => "the declared order of positions",
+        RuleKind::HarmonicsClassA => "IEC 61000-3-2 class A, on one switch-on: an indication",
+        RuleKind::VoltageChange { .. } => {
+            "IEC 61000-3-3 with 0.40 + j0.25 ohm (from memory, check against your copy), on one switch-on: an indication"
+        }
         RuleKind::PowerLimits { .. }
         | RuleKind::Inrush { .. }
+        | RuleKind::MomentaryInrush { .. }
         | RuleKind::TemperatureRise { .. } => "house limit",
     }
 }
@@ -38,6 +43,7 @@ pub(super) fn rules(
         cells: &expanded.cells,
         soaked: expanded.cells_with(|action| matches!(action, Action::Soak { .. })),
         inrush: expanded.cells_with(|action| matches!(action, Action::Inrush(_))),
+        waveform: expanded.cells_with(|action| matches!(action, Action::Inrush(t) if t.waveform)),
     };
     let planned: Vec<PlannedRule> = sequence.rules.iter().map(planned).collect();
     for (rule, written) in planned.iter().zip(&sequence.rules) {
@@ -97,6 +103,7 @@ struct Fed<'a> {
     cells: &'a [Cell],
     soaked: Vec<bool>,
     inrush: Vec<bool>,
+    waveform: Vec<bool>,
 }
 
 impl Fed<'_> {
@@ -143,6 +150,19 @@ impl Fed<'_> {
                     anywhere: "no step captures the inrush",
                     somewhere: "no step captures the inrush",
                     hint: "add an `inrush` step right after `energise`",
+                },
+                place,
+                notes,
+            ),
+            RuleKind::MomentaryInrush { .. }
+            | RuleKind::HarmonicsClassA
+            | RuleKind::VoltageChange { .. } => self.every_cell(
+                &self.waveform,
+                for_it,
+                Lack {
+                    anywhere: "no step takes a waveform",
+                    somewhere: "no step takes a waveform",
+                    hint: "write `waveform: yes` in the `inrush` step",
                 },
                 place,
                 notes,

@@ -276,6 +276,23 @@ impl Plan {
                 format!("link's body in {ambient} ambient at most Tf - 10 K, {from}")
             }
             RuleKind::Inrush { at_most } => format!("inrush at most {at_most}"),
+            RuleKind::MomentaryInrush { at_most } => {
+                format!("momentary inrush at most {at_most}")
+            }
+            RuleKind::HarmonicsClassA => "harmonics within class A".to_owned(),
+            RuleKind::VoltageChange {
+                dmax,
+                dc,
+                time_above,
+            } => {
+                let limits = [
+                    dmax.map(|limit| format!("dmax at most {limit}")),
+                    dc.map(|limit| format!("dc at most {limit}")),
+                    time_above.map(|limit| format!("above 3.3 % for at most {limit}")),
+                ];
+                let limits: Vec<String> = limits.into_iter().flatten().collect();
+                format!("voltage change: {}", limits.join(", "))
+            }
             RuleKind::PositionOrder => format!(
                 "input rises in the order {}",
                 self.appliance.positions.join(", ")

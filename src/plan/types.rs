@@ -4,7 +4,7 @@
 use serde::{Deserialize, Serialize};
 
 use crate::quantity::{Amps, Celsius, Hertz, Kelvins, Seconds, Volts, Watts};
-use crate::spec::bench::{CalibrationPoint, Port};
+use crate::spec::bench::{CalibrationPoint, Port, Source};
 use crate::spec::driver::Driver;
 use crate::spec::sequence::{
     ApplianceKind, Criterion, Decision, HeatingElement, MeasuredAt, ProtectionClass, Question,
@@ -111,6 +111,9 @@ pub struct PlannedBay {
     pub name: String,
     /// Rated current of its wiring.
     pub rated_current: Amps,
+    /// What feeds it; nothing is known of it in plans that were made before it was kept.
+    #[serde(default)]
+    pub source: Source,
     /// Roles, in the sequence's order.
     pub roles: Vec<PlannedRole>,
 }

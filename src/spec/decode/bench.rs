@@ -2,10 +2,11 @@
 
 use chrono::NaiveDate;
 
-use crate::quantity::{Amps, Dimension, Reading};
+use crate::quantity::{Amps, Dimension, Ohms, Reading};
 use crate::spec::Located;
 use crate::spec::bench::{
     Bay, Bench, CalibrationPoint, Instrument, Line, Parity, Port, RoleFilled, SerialSettings,
+    Source,
 };
 use crate::spec::fields::{Field, Fields, list, located, named, shown};
 use crate::spec::scalars::{
@@ -161,12 +162,25 @@ pub(super) fn difference(reading: Reading) -> Dimension {
 fn bay(name: Located<String>, field: Field<'_>) -> Option<Bay> {
     let fields = field.fields()?;
     let rated_current = fields.required("rated current", quantity::<Amps>(Allowed::Positive));
+    let source = fields.or("source", Source::default(), source);
     let roles = fields.required("roles", named(role));
     fields.finish()?;
     Some(Bay {
         name,
         rated_current: rated_current?,
+        source: source?,
         roles: roles?,
+    })
+}
+
+fn source(field: Field<'_>) -> Option<Source> {
+    let fields = field.fields()?;
+    let impedance = fields.optional("impedance", quantity::<Ohms>(Allowed::NotNegative));
+    let current_limit = fields.optional("current limit", quantity::<Amps>(Allowed::Positive));
+    fields.finish()?;
+    Some(Source {
+        impedance: impedance?,
+        current_limit: current_limit?,
     })
 }
 

@@ -3,7 +3,9 @@
 use crate::quantity::{Amps, Kelvins, Watts};
 use crate::spec::Located;
 use crate::spec::fields::{Field, Fields};
-use crate::spec::scalars::{Allowed, choice, located_name, name, number, quantity, text};
+use crate::spec::scalars::{
+    Allowed, choice, duration, located_name, name, number, quantity, share, text,
+};
 use crate::spec::sequence::{Decision, Rule, RuleKind, RuleWeight};
 use crate::spec::yaml::NodeKind;
 
@@ -18,6 +20,8 @@ const KINDS: &[Kind] = &[
     ("inrush", inrush),
     ("order of positions", order),
     ("temperature", temperature_rise),
+    ("harmonics", harmonics),
+    ("voltage change", voltage_change),
 ];
 
 const WEIGHTS: &[(&str, RuleWeight)] = &[
@@ -30,7 +34,7 @@ pub(super) fn rule(field: Field<'_>) -> Option<Rule> {
     let fields = field.fields()?;
     let kind = kind(&fields, field);
     let decision = fields.or("decision", Decision::FourOutcomes, decision);
-    let weight = fields.or("weight", RuleWeight::Required, choice(WEIGHTS));
+    let weight = fields.or("weight", usual_weight(kind.as_ref()), choice(WEIGHTS));
     let position = fields.optional("position", located_name);
     let condition = fields.optional("condition", located_name);
     let source = fields.optional("source", text);
@@ -43,6 +47,14 @@ pub(super) fn rule(field: Field<'_>) -> Option<Rule> {
         condition: condition?,
         source: source?,
     })
+}
+
+/// What rests on the waveform of one switch-on is an indication.
+fn usual_weight(kind: Option<&Located<RuleKind>>) -> RuleWeight {
+    match kind.map(|kind| &kind.value) {
+        Some(RuleKind::HarmonicsClassA | RuleKind::VoltageChange { .. }) => RuleWeight::Information,
+        _ => RuleWeight::Required,
+    }
 }
 
 /// The one key that says what the rule compares.
@@ -99,9 +111,38 @@ fn thermal_link(field: Field<'_>) -> Option<RuleKind> {
 
 fn inrush(field: Field<'_>) -> Option<RuleKind> {
     let fields = field.fields()?;
+    if fields.find("momentary at most").is_some() && fields.find("at most").is_none() {
+        let limit = fields.required("momentary at most", quantity::<Amps>(Allowed::Positive));
+        fields.finish()?;
+        return Some(RuleKind::MomentaryInrush { at_most: limit? });
+    }
     let at_most = fields.required("at most", quantity::<Amps>(Allowed::Positive));
     fields.finish()?;
     Some(RuleKind::Inrush { at_most: at_most? })
+}
+
+fn harmonics(field: Field<'_>) -> Option<RuleKind> {
+    choice(&[("class A", RuleKind::HarmonicsClassA)])(field)
+}
+
+fn voltage_change(field: Field<'_>) -> Option<RuleKind> {
+    let fields = field.fields()?;
+    let dmax = fields.optional("dmax", share);
+    let dc = fields.optional("dc", share);
+    let time_above = fields.optional("time above 3.3 %", duration);
+    fields.finish()?;
+    let (dmax, dc, time_above) = (dmax?, dc?, time_above?);
+    if dmax.is_none() && dc.is_none() && time_above.is_none() {
+        return field.wrong(
+            "no limit is stated",
+            "write for example `voltage change: {dmax: 4 %, dc: 3.3 %, time above 3.3 %: 500 ms}`",
+        );
+    }
+    Some(RuleKind::VoltageChange {
+        dmax,
+        dc,
+        time_above,
+    })
 }
 
 fn order(field: Field<'_>) -> Option<RuleKind> {
@@ -194,6 +235,27 @@ mod tests {
                 "72:25",
                 "can't be `falling`",
                 "one of: rising",
+            ),
+            wrong(
+                "- thermal link: holding",
+                "- harmonics: class B",
+                "70:16",
+                "can't be `class B`",
+                "class A",
+            ),
+            wrong(
+                "- thermal link: holding",
+                "- voltage change: {}",
+                "70:5",
+                "no limit is stated",
+                "dmax",
+            ),
+            wrong(
+                "- thermal link: holding",
+                "- voltage change: {dmax: 4}",
+                "70:29",
+                "",
+                "",
             ),
             wrong(
                 "decision: four outcomes",

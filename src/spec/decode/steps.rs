@@ -4,6 +4,7 @@ use crate::quantity::{Hertz, Kelvins, Ratio, Seconds, Volts};
 use crate::spec::fields::{Field, Fields, all_different, located, shown, some};
 use crate::spec::scalars::{
     Allowed, choice, duration, interval, located_name, name, number, quantity, temperature, text,
+    yes_no,
 };
 use crate::spec::sequence::{
     Abnormal, AnswerKind, Criterion, CriterionKind, Each, FindingClass, Question, QuestionFinding,
@@ -120,7 +121,7 @@ fn action(field: Field<'_>, each: EachAllowed) -> Option<StepAction> {
         "supply" => StepAction::Supply(located(supply_point)(field)?),
         "position" => StepAction::Position(located_name(field)?),
         "condition" => StepAction::Condition(located_name(field)?),
-        "inrush" => StepAction::Inrush(timed(field)?),
+        "inrush" => StepAction::Inrush(inrush(field)?),
         "soak" => StepAction::Soak(soak(field)?),
         "measure" => StepAction::Measure(timed(field)?),
         "rest" => StepAction::Rest(waiting(field)?),
@@ -287,14 +288,31 @@ fn waiting(field: Field<'_>) -> Option<Waiting> {
 
 fn timed(field: Field<'_>) -> Option<Timed> {
     let fields = field.fields()?;
+    let timed = stretch(&fields);
+    fields.finish()?;
+    timed
+}
+
+/// An inrush may ask for a waveform.
+fn inrush(field: Field<'_>) -> Option<Timed> {
+    let fields = field.fields()?;
+    let timed = stretch(&fields);
+    let waveform = fields.or("waveform", false, yes_no);
+    fields.finish()?;
+    Some(Timed {
+        waveform: waveform?,
+        ..timed?
+    })
+}
+
+fn stretch(fields: &Fields<'_>) -> Option<Timed> {
     let length = fields.required("for", duration);
     let every = fields.required("every", interval);
-    let fits = fitting(&fields, ("for", length), every);
-    fields.finish()?;
-    fits?;
+    fitting(fields, ("for", length), every)?;
     Some(Timed {
         length: length?,
         every: every?,
+        waveform: false,
     })
 }
 
