@@ -66,6 +66,8 @@ fn driver(
             fields: 4,
         },
         on_opening: Vec::new(),
+        waveform: None,
+        coupling: crate::spec::driver::Coupling::Dc,
         readings: vec![ReadingQuery {
             ask: "READ?".to_owned(),
             gives: gives.to_vec(),

@@ -467,7 +467,7 @@ fn a_driver_without_accuracy_leaves_nothing_to_judge() {
 
 fn diode_plan() -> Plan {
     let mut plan = plan(&["full"]);
-    plan.appliance.element = HeatingElement::Resistor;
+    plan.appliance.element = crate::spec::sequence::HeatingElement::Resistor;
     plan.appliance.diode_in = vec!["low".to_owned()];
     plan
 }

@@ -55,10 +55,10 @@ pub(super) fn waveforms(
             );
         }
         if shares {
-            notes.warning(
+            notes.error(
                 place,
                 "meter and supply share a line: while the waveform is fetched OFF can't be confirmed",
-                "put the supply on a line of its own",
+                "put the supply on a line of its own, or take `waveform: yes` out",
             );
         }
     }
