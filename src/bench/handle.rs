@@ -195,13 +195,18 @@ impl LineHandle {
     }
 
     /// Fetches the block of the acquisition that was armed, in front of the polls; it is
-    /// tried once.
+    /// tried once, and takes at most `at_most` of run time.
     ///
     /// # Errors
     /// [`Fault::Refused`] where the driver fetches none; [`Fault::NotConfirmed`] where the
     /// acquisition is not complete; else what the exchanges met.
-    pub async fn waveform(&self, instrument: usize) -> Result<Waveform, ExchangeError> {
-        self.ask(instrument, Act::Waveform).await
+    pub async fn waveform(
+        &self,
+        instrument: usize,
+        at_most: Seconds,
+    ) -> Result<Waveform, ExchangeError> {
+        self.ask(instrument, |asker| Act::Waveform(at_most, asker))
+            .await
     }
 
     /// Changes a setting, reads the error queue, and confirms by reading back.

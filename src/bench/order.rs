@@ -105,7 +105,7 @@ pub(super) enum Act {
         asker: oneshot::Sender<Polled>,
     },
     Arm(Asker<()>),
-    Waveform(Asker<Waveform>),
+    Waveform(Seconds, Asker<Waveform>),
     Change(Change, Asker<()>),
     Energise(Asker<Lease>),
     Off(String, Asker<OffConfirmed>),

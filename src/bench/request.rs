@@ -104,11 +104,12 @@ impl Request {
         self
     }
 
-    /// The same with another time for the whole reply, in run time at a factor of 1.
+    /// The same with another time for the whole reply: `span` of wall time, but no more
+    /// than `at_most` of run time.
     #[must_use]
-    pub fn within(mut self, span: Seconds) -> Self {
+    pub fn within(mut self, span: Seconds, at_most: Seconds) -> Self {
         let us = span.as_micros() as f64 * self.manner.factor;
-        self.within_us = (us as u64).max(1000);
+        self.within_us = (us as u64).min(at_most.as_micros()).max(1000);
         self
     }
 

@@ -13,7 +13,7 @@ use super::lease::{Lease, LeaseState, OffConfirmed};
 use super::order::{Asker, Change, Identity, Poll, Polled};
 use super::request::{Expect, Manner, Reply, Request};
 use super::setup::InstrumentSetup;
-use crate::quantity::{Moment, Waveform, near, shortest};
+use crate::quantity::{Moment, Seconds, Waveform, near, shortest};
 use crate::spec::driver::{ReadingQuery, SampleInterval, Setting, WaveformQuery};
 
 /// Entries read from an error queue at most, before it counts as one that never empties.
@@ -146,20 +146,23 @@ impl Member {
     }
 
     /// Whether it is ready, the interval, the block: the last two replies make a waveform.
-    pub(super) fn waveform_steps(&self) -> Result<VecDeque<Step>, Fault> {
+    /// Each is tried once, so that a failure costs little of the readings' time.
+    pub(super) fn waveform_steps(&self, at_most: Seconds) -> Result<VecDeque<Step>, Fault> {
         let query = self.waveform_query()?;
         let ready = query.ready.as_ref().map(|ask| Step::Confirm {
-            ask: self.plain(ask, Expect::Switch),
+            ask: self.plain(ask, Expect::Switch).once(),
             wanted: Wanted::On,
             left: self.tries(),
         });
         let interval = match &query.interval {
             SampleInterval::Fixed(_) => None,
-            SampleInterval::Asked(ask) => Some(Step::Exchange(self.plain(ask, Expect::Number))),
+            SampleInterval::Asked(ask) => {
+                Some(Step::Exchange(self.plain(ask, Expect::Number).once()))
+            }
         };
         let form = Arc::new(BlockForm::of(query));
         let block = self.plain(&query.ask, Expect::Block(form));
-        let block = Step::Exchange(block.within(query.reply_within).once());
+        let block = Step::Exchange(block.within(query.reply_within, at_most).once());
         Ok(ready.into_iter().chain(interval).chain([block]).collect())
     }
 

@@ -27,3 +27,4 @@ pub use types::{
     Action, Cell, Guards, PLAN_FORMAT, Plan, PlannedAppliance, PlannedBay, PlannedInstrument,
     PlannedLine, PlannedLink, PlannedPlate, PlannedRole, PlannedRule, PlannedStep,
 };
+pub use waveform::time_for_block;

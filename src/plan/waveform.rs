@@ -5,7 +5,7 @@ use super::resolve::written_steps;
 use super::wiring::Wired;
 use crate::quantity::Seconds;
 use crate::spec::bench::{Parity, Port};
-use crate::spec::driver::WaveformQuery;
+use crate::spec::driver::{Driver, WaveformQuery};
 use crate::spec::sequence::{RoleKind, Sequence, StepAction};
 
 /// Speed of a virtual line and of one whose speed is left alone, bits per second.
@@ -43,12 +43,12 @@ pub(super) fn waveforms(
             continue;
         };
         let takes = transfer(waveform, &wired.lines[meter.line].port);
-        let limit = timed.every.get() + silence[role].get();
+        let limit = time_for_block(silence[role], &meter.driver).get();
         if takes >= limit {
             notes.error(
                 place,
                 format!(
-                    "a waveform of {} bytes takes {takes:.1} s on the meter's line: the guard counts the meter as silent after {limit:.1} s",
+                    "a waveform of {} bytes takes {takes:.1} s on the meter's line: more than {limit:.1} s and the guard counts the meter as silent",
                     waveform.bytes()
                 ),
                 "set a higher baud rate, or fewer `points:` in the driver and the instrument",
@@ -62,6 +62,13 @@ pub(super) fn waveforms(
             );
         }
     }
+}
+
+/// How long a block may take, so that a reading comes before the guard counts the
+/// meter as silent: the silence limit less one reply time and a tenth of a second.
+pub fn time_for_block(silence: Seconds, driver: &Driver) -> Seconds {
+    let left = silence.get() - driver.framing.reply_within.get() - 0.1;
+    Seconds::of(left.max(0.1))
 }
 
 /// Seconds that the longest block takes on a line.

@@ -258,7 +258,7 @@ impl Line {
                 .reading(*query, *channel)
                 .map(|ask| [Step::Exchange(ask)].into()),
             Act::Arm(_) => member.arm_steps(),
-            Act::Waveform(_) => member.waveform_steps(),
+            Act::Waveform(at_most, _) => member.waveform_steps(*at_most),
             Act::Change(change, _) => member.change_steps(*change),
             Act::Energise(_) => member.energise_steps(),
             Act::Off(..) => member.output().map(|_| VecDeque::new()),
@@ -273,7 +273,7 @@ impl Line {
             Act::Prepare(asker) | Act::Arm(asker) | Act::Change(_, asker) => {
                 OrderAsker::Done(asker)
             }
-            Act::Waveform(asker) => OrderAsker::Waveform(asker),
+            Act::Waveform(_, asker) => OrderAsker::Waveform(asker),
             Act::Energise(asker) => OrderAsker::Lease(asker),
             Act::Off(cause, asker) => {
                 let mut off = Off::new(instrument, &cause);
@@ -297,7 +297,7 @@ impl Line {
             Act::Prepare(asker) | Act::Arm(asker) | Act::Change(_, asker) => {
                 drop(asker.send(Err(error)));
             }
-            Act::Waveform(asker) => drop(asker.send(Err(error))),
+            Act::Waveform(_, asker) => drop(asker.send(Err(error))),
             Act::Read { asker, .. } => drop(asker.send(failed_sample(0, now, error))),
             Act::Energise(asker) => drop(asker.send(Err(error))),
             Act::Off(_, asker) => drop(asker.send(Err(error))),

@@ -37,7 +37,7 @@ fn cut(bytes: &[u8], size: usize, apart: f64) -> Vec<(f64, Vec<u8>)> {
 fn fetched(far: Scripted) -> Result<Waveform, ExchangeError> {
     let (sender, result) = std::sync::mpsc::channel();
     on_a_line(far, |bench| async move {
-        let wave = bench.line.waveform(0).await;
+        let wave = bench.line.waveform(0, Seconds::of(60.0)).await;
         for _ in 0..5 {
             let polled = bench.line.read(0, 0, None).await;
             let count = bench.far.lock().count as f64;
@@ -131,6 +131,18 @@ fn an_acquisition_is_waited_for_and_given_up() {
 }
 
 #[test]
+fn a_block_takes_no_more_time_than_the_guard_leaves() {
+    let far = Scripted::default();
+    far.lock().pieces = vec![(0.0, block()[..20].to_vec())];
+    on_a_line(far, |bench| async move {
+        let before = bench.clock.now();
+        let at_most = Seconds::of(1.4);
+        assert!(bench.line.waveform(0, at_most).await.is_err());
+        assert!(bench.clock.now().since(before).get() < 1.45);
+    });
+}
+
+#[test]
 fn arming_reports_what_the_instrument_says_of_it() {
     on_a_line(Scripted::default(), |bench| async move {
         bench.line.arm(0).await.unwrap();
@@ -159,7 +171,7 @@ fn off_is_sent_into_the_midst_of_a_block() {
             every: Seconds::of(0.5),
         }]);
         let line = bench.line.clone();
-        let fetching = tokio::spawn(async move { line.waveform(0).await });
+        let fetching = tokio::spawn(async move { line.waveform(0, Seconds::of(60.0)).await });
         tokio::time::sleep(std::time::Duration::from_millis(900)).await;
         lease.renew();
         let before = bench.clock.now();
