@@ -26,17 +26,25 @@ pub(super) fn lost(plan: &Plan, cells: &[CellResult], index: usize) -> Option<St
     if !behind_diode(position) || cell.energised_s.known().is_none() {
         return None;
     }
-    let why = by_driver(plan)
-        .or_else(|| by_waveform(cell))
-        .or_else(|| resistive(plan).then(|| by_factor(cell)).flatten())
-        .or_else(|| {
-            let whole = cells.iter().filter(|other| {
-                !behind_diode(&other.cell.position)
-                    && other.cell.supply == cell.cell.supply
-                    && other.cell.condition == cell.cell.condition
-            });
-            resistive(plan).then(|| by_current(cell, whole)).flatten()
-        })?;
+    let whole = cells.iter().filter(|other| {
+        !behind_diode(&other.cell.position)
+            && other.cell.supply == cell.cell.supply
+            && other.cell.condition == cell.cell.condition
+    });
+    let resistive = resistive(plan);
+    let reasons: Vec<String> = [
+        by_driver(plan),
+        by_waveform(cell),
+        resistive.then(|| by_factor(cell)).flatten(),
+        resistive.then(|| by_current(cell, whole)).flatten(),
+    ]
+    .into_iter()
+    .flatten()
+    .collect();
+    if reasons.is_empty() {
+        return None;
+    }
+    let why = reasons.join("; ");
     Some(format!(
         "position {position} is fed through a diode and the meter loses the DC part: {why}"
     ))

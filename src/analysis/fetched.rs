@@ -5,19 +5,20 @@ use crate::record::Event;
 
 use super::Input;
 use super::cell::CellView;
-use super::measured::{Gauge, Line, estimate};
-use super::types::{Change, Estimate, Figure, Harmonic, Wave};
-use super::waveform::{HalfPeriod, Reference, Shape, relative_change, shape};
+use super::change;
+use super::measured::{Gauge, estimate};
+use super::types::{Estimate, Figure, Harmonic, Steady, Wave};
+use super::waveform::{HalfPeriod, Shape, shape};
 
 /// What the waveform of a cell says, or why there is none.
-pub(super) fn wave(input: &Input, view: &CellView) -> Figure<Wave> {
-    match fetched(input, view) {
+pub(super) fn wave(input: &Input, view: &CellView, steady: Option<&Steady>) -> Figure<Wave> {
+    match fetched(input, view, steady) {
         Ok(wave) => Figure::Known(wave),
         Err(reason) => Figure::Absent(reason),
     }
 }
 
-fn fetched(input: &Input, view: &CellView) -> Result<Wave, String> {
+fn fetched(input: &Input, view: &CellView, steady: Option<&Steady>) -> Result<Wave, String> {
     let stored = input.waveforms.iter().find(|w| w.cell == view.index);
     let Some(stored) = stored else {
         return Err(why_none(view));
@@ -44,7 +45,7 @@ fn fetched(input: &Input, view: &CellView) -> Result<Wave, String> {
             compared: found.compared,
         })
     });
-    let change = change(&shape, &gauge, view.cell.supply.voltage.get());
+    let change = change::change(view, &shape, &gauge, steady);
     Ok(Wave {
         momentary_peak_a: of(shape.peak_a)?,
         peak_rms_a: of(peak_rms)?,
@@ -56,7 +57,8 @@ fn fetched(input: &Input, view: &CellView) -> Result<Wave, String> {
     })
 }
 
-fn figure<T>(result: Result<T, String>) -> Figure<T> {
+/// Known, or absent with its reason.
+pub(super) fn figure<T>(result: Result<T, String>) -> Figure<T> {
     match result {
         Ok(value) => Figure::Known(value),
         Err(reason) => Figure::Absent(reason),
@@ -84,39 +86,4 @@ fn highest_period(shape: &Shape) -> Option<(f64, f64)> {
     let periods = shape.half_periods.windows(2);
     let all = periods.map(|pair| (rms(pair), (pair[0].from_s - shape.t0_s).max(0.0)));
     all.reduce(|top, next| if next.0 > top.0 { next } else { top })
-}
-
-/// The voltage change on the reference impedance; its relative uncertainty is that of
-/// the current that causes it.
-fn change(shape: &Shape, gauge: &Gauge, volts: f64) -> Result<Change, String> {
-    let reference = Reference::at(volts)?;
-    let found = shape.voltage_change(reference)?;
-    let of = |d: f64| -> Result<Estimate, String> {
-        // A current that alone would make this change.
-        let per_amp = relative_change(1.0, 0.0, reference);
-        let lines = gauge.lines(d / per_amp)?;
-        Ok(estimate(
-            d,
-            lines.into_iter().map(|l| l.times(per_amp)).collect(),
-        ))
-    };
-    let half_s = 0.5 / shape.frequency_hz;
-    let dc = match &found.dc {
-        Figure::Known(dc) => figure(of(*dc)),
-        Figure::Absent(reason) => Figure::Absent(reason.clone()),
-    };
-    Ok(Change {
-        dmax: of(found.dmax)?,
-        dmax_after_s: found.dmax_after_s,
-        // Counted in half-periods, so at each end half of one is unknown.
-        over_s: estimate(
-            found.over_s,
-            vec![Line::stated(
-                "whole half-periods only",
-                half_s / libm::sqrt(6.0),
-            )],
-        ),
-        still_over: found.still_over,
-        dc,
-    })
 }

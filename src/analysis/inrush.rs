@@ -91,8 +91,12 @@ fn captured(
     let after = power_after(view, top.0);
     let interval_s = timed.every.get().max(gauge.update_s());
     let sampled = estimate(gauge.corrected(top.1), gauge.lines(top.1)?);
-    // The higher of the two: both are lower bounds of what flowed.
-    let higher = wave.filter(|wave| wave.peak_rms_a.value >= sampled.value);
+    // The waveform's, unless the rows show that the current rose on behind it.
+    let higher = wave.filter(|wave| {
+        let peak = &wave.peak_rms_a;
+        let apart = libm::hypot(peak.expanded, sampled.expanded);
+        sampled.value <= peak.value + apart
+    });
     let source = view.plan.bay.source;
     let limit = source.current_limit.map(|amps| amps.get());
     let peak_a = higher.map_or(sampled, |wave| wave.peak_rms_a.clone());

@@ -3,6 +3,7 @@
 
 mod belief;
 mod cell;
+mod change;
 mod dc;
 mod fetched;
 #[cfg(test)]
@@ -79,7 +80,7 @@ fn result(input: &Input, index: usize, switched: Switched) -> CellResult {
     let steady = steady::steady(&view, &settled);
     let drawn = steady::drawn(&view);
     let peak = temperature::body_peak(&view);
-    let waveform = fetched::wave(input, &view);
+    let waveform = fetched::wave(input, &view, steady.known());
     let captured = inrush::inrush(&view, steady.known(), waveform.known());
     let (inrush, switch_in_peak) = inrush::parted(captured, belief::cold(&view));
     let seconds = |moment: Option<crate::quantity::Moment>, otherwise: String| match moment {

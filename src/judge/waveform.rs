@@ -47,7 +47,7 @@ pub(super) fn findings(ask: &Ask, draft: &Draft, kind: &RuleKind) -> Vec<Finding
                         let change = known(&wave.change)?;
                         let longer = change
                             .still_over
-                            .then_some("it was still above 3.3 % when the waveform ended");
+                            .then_some("it was still above 3.3 % when the readings ended");
                         Ok((change.over_s.clone(), longer))
                     },
                 ),
@@ -109,10 +109,12 @@ fn momentary(draft: &Draft, result: &CellResult) -> Finding {
         Ok(wave) => wave,
         Err(reason) => return draft.not_judged(Some(&result.cell), &reason),
     };
-    let late = wave
-        .shape
-        .begins_late
-        .then_some("the waveform begins with current already flowing");
+    let rises_on = result.inrush.known().is_some_and(|i| !i.from_waveform);
+    let late = if wave.shape.begins_late {
+        Some("the waveform begins with current already flowing")
+    } else {
+        rises_on.then_some("the current rose on when the waveform had ended")
+    };
     decided(draft, result, &wave.momentary_peak_a, late)
 }
 

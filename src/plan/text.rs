@@ -372,7 +372,12 @@ fn detail(action: &Action) -> String {
         }
         Action::Energise | Action::Deenergise => String::new(),
         Action::Inrush(timed) | Action::Measure(timed) | Action::RunIn(timed) => {
-            format!("for {}, every {}", timed.length, timed.every)
+            let waveform = if timed.waveform {
+                ", with a waveform"
+            } else {
+                ""
+            };
+            format!("for {}, every {}{waveform}", timed.length, timed.every)
         }
         Action::Soak {
             at_least,

@@ -13,4 +13,5 @@ mod rehearsal;
 mod serial;
 mod shipped;
 mod tidy;
+mod waveforms;
 mod ways_out;

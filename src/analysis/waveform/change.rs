@@ -7,7 +7,7 @@ use crate::analysis::Figure;
 use crate::quantity::at_most;
 
 /// A change above this share counts towards the time that IEC 61000-3-3 limits.
-const COUNTED: f64 = 0.033;
+pub const COUNTED: f64 = 0.033;
 /// So much steady time a steady change needs, s (IEC 61000-3-3, from memory).
 const STEADY_S: f64 = 1.0;
 

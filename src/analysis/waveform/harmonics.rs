@@ -82,7 +82,7 @@ pub fn class_a_limit(harmonic: usize) -> Option<f64> {
         11 => Some(0.33),
         13 => Some(0.21),
         15..=39 if harmonic % 2 == 1 => Some(0.15 * 15.0 / n),
-        8..=40 if harmonic % 2 == 0 => Some(0.23 * 8.0 / n),
+        8..=40 if harmonic.is_multiple_of(2) => Some(0.23 * 8.0 / n),
         _ => None,
     }
 }

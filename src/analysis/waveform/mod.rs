@@ -17,7 +17,7 @@ use serde::{Deserialize, Serialize};
 
 use crate::quantity::Waveform;
 
-pub use change::{Reference, VoltageChange, relative_change};
+pub use change::{COUNTED, Reference, VoltageChange, relative_change};
 pub use harmonics::{ClassA, HalfWave, MOST_HARMONICS, class_a_limit};
 
 use super::types::Figure;

@@ -1,3 +1,5 @@
+//! Waveforms of known shape against computed values and an independent transform.
+
 use std::f64::consts::{FRAC_1_SQRT_2, PI, SQRT_2};
 
 use super::*;
@@ -51,7 +53,7 @@ fn a_half_wave_load_has_the_computed_values() {
     close(tail.dc_a, 1.0 / PI, 1e-6);
     close(tail.rms_a, 0.5, 1e-9);
     close(tail.crest_factor.unwrap(), 2.0, 1e-6);
-    close(tail.power_factor.unwrap(), 0.707107, 5e-7);
+    close(tail.power_factor.unwrap(), FRAC_1_SQRT_2, 5e-7);
     close(SQRT_2 * tail.harmonics_a[0], 0.5, 1e-6);
     close(SQRT_2 * tail.harmonics_a[1], 0.212207, 1e-6);
     close(SQRT_2 * tail.harmonics_a[3], 0.0424413, 1e-6);

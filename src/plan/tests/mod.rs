@@ -12,6 +12,7 @@ mod reading;
 mod roles;
 mod rules;
 mod steps;
+mod waveforms;
 
 /// The demo bench.
 const BENCH: &str = shipped::VIRTUAL_BENCH.text;

@@ -246,14 +246,14 @@ mod tests {
             wrong(
                 "- thermal link: holding",
                 "- voltage change: {}",
-                "70:5",
+                "70:21",
                 "no limit is stated",
                 "dmax",
             ),
             wrong(
                 "- thermal link: holding",
                 "- voltage change: {dmax: 4}",
-                "70:29",
+                "70:28",
                 "",
                 "",
             ),

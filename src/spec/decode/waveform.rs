@@ -128,7 +128,7 @@ mod tests {
             ("interval: \":WAV:INT?\"", "interval: 0.2 ms"),
             (
                 "format: float32 little",
-                "format: int16 big, scale: {voltage: 20 mV, current: 1 mA}",
+                "format: int16 big\n  scale: {voltage: 20 mV, current: 1 mA}",
             ),
         ]);
         let driver = load_driver("file", text.as_bytes()).value.unwrap();
