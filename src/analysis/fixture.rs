@@ -67,6 +67,8 @@ fn driver(
             fields: 4,
         },
         on_opening: Vec::new(),
+        waveform: None,
+        coupling: crate::spec::driver::Coupling::Dc,
         readings: vec![ReadingQuery {
             ask: "READ?".to_owned(),
             gives: gives.to_vec(),
@@ -227,6 +229,7 @@ pub(crate) fn plan(conditions: &[&str]) -> Plan {
         bay: PlannedBay {
             name: "bay 1".to_owned(),
             rated_current: Amps::of(10.0),
+            source: crate::spec::bench::Source::default(),
             roles: roles(),
         },
         lines: vec![PlannedLine {
@@ -284,6 +287,7 @@ fn steps(cells: &[Cell]) -> Vec<PlannedStep> {
     let timed = |length: f64, every: f64| Timed {
         length: Seconds::of(length),
         every: Seconds::of(every),
+        waveform: false,
     };
     let mut actions = vec![
         (None, Action::Ask(question)),
@@ -413,6 +417,7 @@ impl Played {
             plan: &self.plan,
             samples: &self.samples,
             happenings: &self.happenings,
+            waveforms: &[],
             outcome: &self.outcome,
         })
     }

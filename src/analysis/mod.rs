@@ -5,7 +5,10 @@ mod belief;
 mod budget;
 mod budget_table;
 mod cell;
+mod change;
 mod cycling;
+mod dc;
+mod fetched;
 #[cfg(test)]
 pub(crate) mod fixture;
 mod input;
@@ -18,6 +21,7 @@ mod steady;
 mod table;
 mod temperature;
 mod types;
+pub mod waveform;
 
 pub use budget::{Distribution, Share, SharedError};
 pub use budget_table::{budgets_csv, budgets_text};
@@ -25,12 +29,12 @@ pub use plate::{plate_point, plate_points, points_in_reach};
 pub use referral::at_voltage;
 pub use table::results_csv;
 pub use types::{
-    Analysis, CellResult, Drawn, Estimate, Exponent, Figure, Inrush, Looked, Opening, Peak, Steady,
+    Analysis, CellResult, Change, Drawn, Estimate, Exponent, Figure, Harmonic, Inrush, Looked,
+    Opening, Peak, Steady, Wave,
 };
 
 use crate::plan::{Action, Plan};
-use crate::record::{Event, Happening, RunOutcome, Sample};
-use crate::spec::sequence::HeatingElement;
+use crate::record::{Event, Happening, RunOutcome, Sample, StoredWaveform};
 
 use cell::{CellView, Switched};
 
@@ -43,6 +47,8 @@ pub struct Input<'a> {
     pub samples: &'a [Sample],
     /// Every event, in the order of the record.
     pub happenings: &'a [Happening],
+    /// Every waveform; none in records that were made before they were kept.
+    pub waveforms: &'a [StoredWaveform],
     /// How the run ended.
     pub outcome: &'a RunOutcome,
 }
@@ -57,10 +63,20 @@ pub fn analyse(input: &Input) -> Analysis {
         .collect();
     let mut cells: Vec<CellResult> = views.iter().map(|view| result(input, view)).collect();
     referral::refer(input.plan, &mut cells);
-    let notes = cells
-        .iter()
-        .filter_map(|cell| half_wave(input.plan, cell))
+    let lost: Vec<Option<String>> = (0..cells.len())
+        .map(|index| dc::lost(input.plan, &cells, index))
         .collect();
+    let mut notes = Vec::new();
+    for (cell, why) in cells.iter_mut().zip(lost) {
+        if let Some(why) = &why {
+            notes.push(format!(
+                "{why}; its current is not to be believed, its power is right under a sine voltage"
+            ));
+            doubt_current(cell, why);
+        }
+        cell.dc_lost = why;
+    }
+    notes.dedup();
     Analysis {
         cells,
         openings: views.iter().flat_map(opening::openings).collect(),
@@ -76,6 +92,9 @@ fn result(input: &Input, view: &CellView) -> CellResult {
     let steady = steady::steady(view, &settled);
     let drawn = steady::drawn(view);
     let peak = temperature::body_peak(view);
+    let waveform = fetched::wave(input, view, steady.known());
+    let captured = inrush::inrush(view, steady.known(), waveform.known());
+    let (inrush, switch_in_peak) = inrush::parted(captured, belief::cold(view));
     let seconds = |moment: Option<crate::quantity::Moment>, otherwise: String| match moment {
         Some(moment) => Figure::Known(moment.as_secs_f64()),
         None => Figure::Absent(otherwise),
@@ -88,7 +107,10 @@ fn result(input: &Input, view: &CellView) -> CellResult {
             Ok(()) => Figure::Known(()),
             Err(reason) => Figure::Absent(reason),
         },
-        inrush: inrush::inrush(view, steady.known()),
+        inrush,
+        switch_in_peak,
+        waveform,
+        dc_lost: None,
         settled_s: steady::settled_after(view, &settled),
         body_worst: temperature::body_worst(view, &peak, &settled, steady.known()),
         body_peak: peak,
@@ -167,28 +189,16 @@ fn tripped(input: &Input) -> Option<String> {
     })
 }
 
-/// A half-wave load that is read by a meter which loses the DC part: a resistive one
-/// then shows a power factor of 0.917 instead of 0.707 (computed). Its power is right
-/// under a sine voltage all the same.
-fn half_wave(plan: &Plan, cell: &CellResult) -> Option<String> {
-    let resistive = plan.appliance.element == HeatingElement::Resistor && !plan.appliance.fan;
-    let position = &cell.cell.position;
-    if !resistive || !plan.appliance.diode_in.contains(position) {
-        return None;
+/// What rests on a current without its DC part is no result.
+fn doubt_current(cell: &mut CellResult, why: &str) {
+    if let Figure::Known(steady) = &mut cell.steady {
+        steady.current_a = None;
     }
-    let steady = cell.steady.known()?;
-    let factor = steady.power_w.value / (steady.voltage_v * steady.current_a?);
-    (factor > HALF_WAVE_MIDDLE).then(|| {
-        format!(
-            "position {position} is fed through a diode and shows a power factor of {factor:.3}, \
-             not 0.707: the meter loses the DC part and its current is not to be believed; \
-             its power is right under a sine voltage"
-        )
-    })
+    if cell.switch_in_peak.known().is_some() {
+        let doubt = format!("the meter's current is not to be believed: {why}");
+        cell.switch_in_peak = Figure::Absent(doubt);
+    }
 }
-
-/// Half-way between 1/sqrt(2) and 0.917.
-const HALF_WAVE_MIDDLE: f64 = 0.81;
 
 #[cfg(test)]
 mod tests;

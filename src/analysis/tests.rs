@@ -446,6 +446,7 @@ fn an_empty_record_is_analysed_without_a_panic() {
         plan: &plan,
         samples: &[],
         happenings: &[],
+        waveforms: &[],
         outcome: &RunOutcome::Interrupted,
     });
     assert_eq!(analysis.cells.len(), 2);
@@ -483,7 +484,7 @@ fn a_driver_without_accuracy_leaves_nothing_to_judge() {
 
 fn diode_plan() -> Plan {
     let mut plan = plan(&["full"]);
-    plan.appliance.element = HeatingElement::Resistor;
+    plan.appliance.element = crate::spec::sequence::HeatingElement::Resistor;
     plan.appliance.diode_in = vec!["low".to_owned()];
     plan
 }
@@ -497,7 +498,8 @@ fn a_meter_that_loses_the_dc_part_is_noted() {
         let volts_rms = 230.0;
         // P = V I / sqrt(2) with the true RMS current of the half wave.
         changed(played, METER, |row| {
-            if let Some(watts) = row.readings.get(Reading::Power) {
+            let watts = row.readings.get(Reading::Power);
+            if let (Some(0), Some(watts)) = (row.cell, watts) {
                 let true_amps = watts * std::f64::consts::SQRT_2 / volts_rms;
                 row.readings
                     .set(Reading::Current, true_amps * amps_for_full / 0.5);
@@ -510,6 +512,180 @@ fn a_meter_that_loses_the_dc_part_is_noted() {
     let notes = with(0.385_59);
     assert_eq!(notes.len(), 1);
     assert!(notes[0].contains("0.917"), "{}", notes[0]);
+}
+
+#[test]
+fn a_meter_that_loses_the_dc_part_leaves_no_current() {
+    let mut plan = diode_plan();
+    plan.instruments[1].driver.coupling = crate::spec::driver::Coupling::Ac;
+    let cells = play(plan, good).analysis().cells;
+    let why = cells[0].dc_lost.as_deref().unwrap();
+    assert!(why.contains("says that it is AC-coupled"), "{why}");
+    let steady = cells[0].steady.known().unwrap();
+    assert_eq!(steady.current_a, None);
+    near(steady.power_w.value, 4.3, 0.05);
+    // The other position is fed whole.
+    assert_eq!(cells[1].dc_lost, None);
+    assert!(cells[1].steady.known().unwrap().current_a.is_some());
+}
+
+/// The good unit with half of the power in `low`, as a diode makes it of the same
+/// resistor, and the current that a meter shows of it as a share of the whole one.
+fn half_power(current_share: f64) -> Analysis {
+    let played = play(diode_plan(), good);
+    changed(played, METER, |row| {
+        let low = row.cell == Some(0);
+        if let (true, Some(watts)) = (low, row.readings.get(Reading::Power)) {
+            let whole = 2.0 * watts / 230.0;
+            row.readings.set(Reading::Current, current_share * whole);
+        }
+    })
+    .analysis()
+}
+
+#[test]
+fn a_current_of_0_545_of_the_full_wave_one_has_lost_its_dc_part() {
+    // 0.70711 with and 0.38559 / 0.70711 without the DC part (computed).
+    let share = std::f64::consts::FRAC_1_SQRT_2;
+    assert_eq!(half_power(share).cells[0].dc_lost, None);
+    let why = half_power(0.545).cells[0].dc_lost.clone().unwrap();
+    assert!(
+        why.contains("0.545 of the current of position high"),
+        "{why}"
+    );
+    assert!(why.contains("a power factor of 0.917"), "{why}");
+    // Another resistor, which takes a third of the power, says nothing by its current.
+    let played = play(diode_plan(), good);
+    let other = changed(played, METER, |row| {
+        if row.cell == Some(0) && row.energised {
+            for (reading, share) in [(Reading::Power, 0.66), (Reading::Current, 0.66)] {
+                if let Some(value) = row.readings.get(reading) {
+                    row.readings.set(reading, share * value);
+                }
+            }
+        }
+    });
+    let why = other.analysis().cells[0].dc_lost.clone().unwrap();
+    assert!(!why.contains("of the current of"), "{why}");
+}
+
+#[test]
+fn a_switch_on_that_is_none_from_cold_is_another_quantity() {
+    let played = play(plan(&["full"]), |now| {
+        let mut seen = good(now);
+        if now.cell.is_none() {
+            seen.body += 8.0;
+        }
+        seen
+    });
+    let warm = first(&played);
+    assert!(warm.inrush.reason().unwrap().contains("no cold start"));
+    // 4 x 4.3 W at 230 V (computed).
+    near(
+        warm.switch_in_peak.known().unwrap().value,
+        4.0 * 4.3 / 230.0,
+        0.002,
+    );
+    let cold = first(&play(plan(&["full"]), good));
+    assert!(cold.inrush.known().is_some());
+    assert_eq!(cold.switch_in_peak.reason(), Some("it was a cold start"));
+}
+
+#[test]
+fn a_current_at_the_sources_limit_is_supply_limited() {
+    let mut plan = plan(&["full"]);
+    plan.bay.source.current_limit = Some(crate::quantity::Amps::of(0.075));
+    plan.bay.source.impedance = Some(crate::quantity::Ohms::of(0.4));
+    let inrush = first(&play(plan, good)).inrush.known().cloned().unwrap();
+    let why = inrush.supply_limited.unwrap();
+    assert!(why.contains("the source gives at most"), "{why}");
+    assert_eq!(inrush.source_ohm, Some(0.4));
+    assert_eq!(inrush.switching_angle_deg, None);
+}
+
+/// A waveform of a resistor under 230 V, switched on at a rising zero after 10 ms, in
+/// the first cell.
+fn with_wave(played: &Played, amps: impl Fn(f64) -> f64) -> CellResult {
+    let (volts, amps) = (0..1500)
+        .map(|n| {
+            let since = f64::from(n) * 2e-4 - 0.01;
+            let sine = libm::sin(std::f64::consts::TAU * 50.0 * since);
+            let root2 = std::f64::consts::SQRT_2;
+            let on = since >= 0.0;
+            let pair = (230.0 * root2 * sine, amps(since) * root2 * sine);
+            if on { pair } else { (0.0, 0.0) }
+        })
+        .unzip();
+    let wave = crate::quantity::Waveform::new(200.0, volts, amps).unwrap();
+    let analysis = analyse(&Input {
+        plan: &played.plan,
+        samples: &played.samples,
+        happenings: &played.happenings,
+        waveforms: &[crate::record::StoredWaveform { cell: 0, wave }],
+        outcome: &played.outcome,
+    });
+    analysis.cells.into_iter().next().unwrap()
+}
+
+#[test]
+fn a_waveform_gives_the_peak_that_rows_are_too_slow_for() {
+    // A spike of 30 ms that one row meets half-way: by rows alone a lower bound.
+    let played = play(plan(&["full"]), |now| {
+        let mut seen = good(now);
+        if now.on.is_some_and(|on| on < 0.15) {
+            seen.watts = 60.0;
+        }
+        seen
+    });
+    let rows = first(&played).inrush.known().cloned().unwrap();
+    assert!(!rows.lower_bound.is_empty() && !rows.from_waveform);
+    let cell = with_wave(&played, |since| if since < 0.03 { 0.9 } else { 0.08 });
+    let inrush = cell.inrush.known().unwrap();
+    assert!(inrush.from_waveform);
+    assert_eq!(inrush.lower_bound, Vec::<String>::new());
+    near(inrush.peak_a.value, 0.9, 0.01);
+    assert!(inrush.peak_a.expanded > 0.0 && inrush.peak_a.expanded < 0.02);
+    let wave = cell.waveform.known().unwrap();
+    near(
+        wave.momentary_peak_a.value,
+        0.9 * std::f64::consts::SQRT_2,
+        0.005,
+    );
+    near(inrush.switching_angle_deg.unwrap(), 0.0, 5.0);
+    let change = wave.change.known().unwrap();
+    near(change.dmax.value, 0.9 * 0.4 / 230.0, 1e-5);
+    // The settled 4.3 W at 230 V (computed).
+    near(
+        change.dc.known().unwrap().value,
+        4.3 / 230.0 * 0.4 / 230.0,
+        1e-6,
+    );
+}
+
+#[test]
+fn a_current_that_rises_on_after_the_waveform_is_taken_from_rows() {
+    let played = play(plan(&["full"]), |now| {
+        let mut seen = good(now);
+        if let Some(on) = now.on {
+            seen.watts = 4.3 + 40.0 * (on / 3.0) * libm::exp(1.0 - on / 3.0);
+        }
+        seen
+    });
+    let cell = with_wave(&played, |_| 0.04);
+    let inrush = cell.inrush.known().unwrap();
+    assert!(!inrush.from_waveform);
+    near(inrush.peak_a.value, 44.3 / 230.0, 0.002);
+    assert_eq!(inrush.lower_bound, Vec::<String>::new());
+    let change = cell
+        .waveform
+        .known()
+        .unwrap()
+        .change
+        .known()
+        .cloned()
+        .unwrap();
+    near(change.dmax.value, 44.3 / 230.0 * 0.4 / 230.0, 2e-6);
+    near(change.dmax_after_s, 3.0, 0.5);
 }
 
 #[test]

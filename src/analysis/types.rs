@@ -3,6 +3,7 @@
 use serde::{Deserialize, Serialize};
 
 use super::budget::Share;
+use super::waveform::Shape;
 use crate::plan::Cell;
 use crate::spec::sequence::CyclingRule;
 
@@ -60,8 +61,14 @@ pub struct CellResult {
     pub off_s: Figure<f64>,
     /// Whether the body was near ambient before it; the reason says why not.
     pub cold_start: Figure<()>,
-    /// Switch-on.
+    /// Switch-on from cold.
     pub inrush: Figure<Inrush>,
+    /// Highest RMS current of a switch-on that was none from cold: another quantity.
+    pub switch_in_peak: Figure<Estimate>,
+    /// What the waveform of the switch-on says.
+    pub waveform: Figure<Wave>,
+    /// Why current and power factor are not to be believed: the meter loses the DC part.
+    pub dc_lost: Option<String>,
     /// What it drew, settled or not: whether it works at all.
     pub drawn: Figure<Drawn>,
     /// When the soak settled, seconds after energising.
@@ -107,13 +114,15 @@ pub struct Drawn {
     pub vanished_s: Option<f64>,
 }
 
-/// Switch-on, from samples: a lower bound of what really happened.
+/// Switch-on, from samples and, where there is one, from the waveform.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct Inrush {
     /// First current, seconds since the record's start.
     pub t0_s: f64,
-    /// Highest current sampled.
+    /// Highest RMS current: over one period of the waveform, or sampled.
     pub peak_a: Estimate,
+    /// Whether it comes from the waveform.
+    pub from_waveform: bool,
     /// Highest power sampled.
     pub peak_w: f64,
     /// When, seconds after t0.
@@ -128,6 +137,57 @@ pub struct Inrush {
     pub lower_bound: Vec<String>,
     /// Why the supply limited it; absent where it did not.
     pub supply_limited: Option<String>,
+    /// Impedance of the source, ohm; absent where it is unknown.
+    pub source_ohm: Option<f64>,
+    /// Phase of the voltage at the first current, degrees; absent where it is unknown.
+    pub switching_angle_deg: Option<f64>,
+}
+
+/// What the waveform of a switch-on says, with uncertainty.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Wave {
+    /// Everything that is computed from the block itself.
+    pub shape: Shape,
+    /// Length of the block, s.
+    pub length_s: f64,
+    /// Highest momentary current.
+    pub momentary_peak_a: Estimate,
+    /// Highest RMS over one period.
+    pub peak_rms_a: Estimate,
+    /// When that period began, seconds after the first current.
+    pub peak_rms_after_s: f64,
+    /// The harmonic nearest to its limit of IEC 61000-3-2 class A.
+    pub harmonic: Figure<Harmonic>,
+    /// The voltage change on the reference impedance of IEC 61000-3-3.
+    pub change: Figure<Change>,
+}
+
+/// A harmonic and its limit.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Harmonic {
+    /// Its number; 1 is the fundamental.
+    pub number: usize,
+    /// Its RMS.
+    pub rms_a: Estimate,
+    /// Its limit, A.
+    pub limit_a: f64,
+    /// How many were compared, from the second on.
+    pub compared: usize,
+}
+
+/// Relative voltage change of one switch-on: an indication.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Change {
+    /// Largest, as a fraction.
+    pub dmax: Estimate,
+    /// When it began, seconds after the first current.
+    pub dmax_after_s: f64,
+    /// How long it stayed above 3.3 %, s.
+    pub over_s: Estimate,
+    /// Whether it still did at the block's end: the true time is longer.
+    pub still_over: bool,
+    /// Steady change, as a fraction.
+    pub dc: Figure<Estimate>,
 }
 
 /// How an input depends on the voltage: d ln P / d ln V.

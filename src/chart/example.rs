@@ -155,6 +155,7 @@ pub fn plan(model: &str, cells: &[(Option<&str>, &str, f64)]) -> Plan {
         bay: PlannedBay {
             name: "bay 1".to_owned(),
             rated_current: Amps::of(10.0),
+            source: crate::spec::bench::Source::default(),
             roles: vec![
                 role("supply", RoleKind::Supply),
                 role("meter", RoleKind::PowerMeter),
@@ -200,6 +201,7 @@ fn steps(cells: usize) -> Vec<PlannedStep> {
             Action::Inrush(Timed {
                 length: Seconds::of(60.0),
                 every: Seconds::of(0.1),
+                waveform: false,
             }),
             Action::Soak {
                 at_least: Seconds::of(600.0),
@@ -346,7 +348,13 @@ pub fn result(cell: &Cell, start: f64, unit: Behaviour) -> CellResult {
             above_steady_wh: Some(0.05),
             lower_bound: vec!["the meter updates every 100 ms".to_owned()],
             supply_limited: None,
+            from_waveform: false,
+            source_ohm: None,
+            switching_angle_deg: None,
         }),
+        switch_in_peak: Figure::Absent("it was a cold start".to_owned()),
+        waveform: Figure::Absent("no waveform was taken".to_owned()),
+        dc_lost: None,
         drawn: Figure::Known(Drawn {
             power_w: unit.settled,
             floor_w: 0.002,

@@ -55,6 +55,7 @@ pub fn judge_record(path: &Path) -> Result<Judged, JudgingError> {
         plan: &folder.plan,
         samples: &folder.samples,
         happenings: &folder.happenings,
+        waveforms: &folder.waveforms,
         outcome: &folder.manifest.outcome,
     });
     let judgement = judge::judge(&folder.plan, &folder.manifest.outcome, &analysis);

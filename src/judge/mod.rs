@@ -13,6 +13,7 @@ mod marks;
 mod rules;
 mod table;
 mod types;
+mod waveform;
 
 #[cfg(test)]
 mod tests;

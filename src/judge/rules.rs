@@ -66,6 +66,9 @@ pub(super) fn findings(plan: &Plan, analysis: &Analysis, rule: &PlannedRule) -> 
                 inrush,
             )
         }
+        RuleKind::MomentaryInrush { .. }
+        | RuleKind::HarmonicsClassA
+        | RuleKind::VoltageChange { .. } => super::waveform::findings(&ask, &draft, &rule.kind),
         RuleKind::PositionOrder => ask.order(draft),
         RuleKind::TemperatureRise { role, at_most } => {
             let means = format!("{role} rises too far over ambient");
@@ -86,12 +89,15 @@ fn words(kind: &RuleKind) -> String {
         }
         RuleKind::LinkMaximum => "thermal link, after opening".to_owned(),
         RuleKind::Inrush { .. } => "inrush".to_owned(),
+        RuleKind::MomentaryInrush { .. } => "momentary inrush".to_owned(),
+        RuleKind::HarmonicsClassA => "harmonics, class A".to_owned(),
+        RuleKind::VoltageChange { .. } => "voltage change".to_owned(),
         RuleKind::PositionOrder => "order of positions".to_owned(),
         RuleKind::TemperatureRise { role, .. } => format!("temperature rise, {role}"),
     }
 }
 
-fn upper(limit: f64) -> Limits {
+pub(super) fn upper(limit: f64) -> Limits {
     Limits {
         at_least: None,
         at_most: Some(limit),
@@ -99,7 +105,7 @@ fn upper(limit: f64) -> Limits {
 }
 
 impl Draft {
-    fn compares(self, limits: Limits, unit: &'static str, fail_means: &str) -> Self {
+    pub(super) fn compares(self, limits: Limits, unit: &'static str, fail_means: &str) -> Self {
         Draft {
             limits,
             unit,
@@ -110,7 +116,7 @@ impl Draft {
 }
 
 /// One rule asked of a record.
-struct Ask<'a> {
+pub(super) struct Ask<'a> {
     plan: &'a Plan,
     analysis: &'a Analysis,
     rule: &'a PlannedRule,
@@ -128,7 +134,11 @@ impl Ask<'_> {
     }
 
     /// One finding for each position and supply that the rule is for.
-    fn each(&self, draft: &Draft, one: impl Fn(&Draft, &CellResult) -> Finding) -> Vec<Finding> {
+    pub(super) fn each(
+        &self,
+        draft: &Draft,
+        one: impl Fn(&Draft, &CellResult) -> Finding,
+    ) -> Vec<Finding> {
         let findings: Vec<Finding> =
             by_position_and_supply(self.analysis, |cell| self.is_for(cell))
                 .into_iter()
@@ -513,7 +523,7 @@ fn body(draft: &Draft, result: &CellResult) -> Finding {
 }
 
 /// Above the limit by more than the uncertainty, whatever the rule's own decision.
-fn certainly_above(value: &Estimate, limits: Limits) -> bool {
+pub(super) fn certainly_above(value: &Estimate, limits: Limits) -> bool {
     decide(value, limits, Decision::FourOutcomes).outcome == Outcome::Fail
 }
 
@@ -521,6 +531,9 @@ fn certainly_above(value: &Estimate, limits: Limits) -> bool {
 fn inrush(draft: &Draft, result: &CellResult) -> Finding {
     let cell = Some(&result.cell);
     if let Figure::Absent(reason) = &result.energised_s {
+        return draft.not_judged(cell, reason);
+    }
+    if let Some(reason) = &result.dc_lost {
         return draft.not_judged(cell, reason);
     }
     let inrush = match &result.inrush {

@@ -19,6 +19,7 @@ mod soaking;
 mod tests;
 mod text;
 mod types;
+mod waveform;
 mod wiring;
 mod words;
 
@@ -27,3 +28,4 @@ pub use types::{
     Action, Cell, Guards, PLAN_FORMAT, Plan, PlannedAppliance, PlannedBay, PlannedInstrument,
     PlannedLine, PlannedLink, PlannedPlate, PlannedRole, PlannedRule, PlannedStep,
 };
+pub use waveform::time_for_block;

@@ -12,6 +12,7 @@ use super::ratings::ratings;
 use super::roles::must_have;
 use super::rules::{every_rating_is_run, rules};
 use super::types::{PLAN_FORMAT, Plan, PlannedAppliance, PlannedLink, PlannedPlate};
+use super::waveform::waveforms;
 use super::wiring::{Files, choose_bay, wire};
 use crate::quantity::Celsius;
 use crate::spec::bench::{Bay, Bench};
@@ -74,6 +75,7 @@ fn cross(files: Files, bay: &Bay, notes: &mut Notes) -> Plan {
         &expanded.cells,
         &rules,
     );
+    waveforms(sequence, &wired, &guards.silence, notes);
     Plan {
         format: PLAN_FORMAT,
         title: sequence.title.value.clone(),

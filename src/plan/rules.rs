@@ -24,8 +24,13 @@ fn usual_source(kind: &RuleKind) -> &'static str {
         RuleKind::LinkHouse { .. } => "house limit: the lower of Th and Tf less a distance",
         RuleKind::LinkMaximum => "IEC 60691: maximum limit Tm of the part's data sheet",
         RuleKind::PositionOrder => "the declared order of positions",
+        RuleKind::HarmonicsClassA => "IEC 61000-3-2 class A, on one switch-on: an indication",
+        RuleKind::VoltageChange { .. } => {
+            "IEC 61000-3-3 with 0.40 + j0.25 ohm (from memory, check against your copy), on one switch-on: an indication"
+        }
         RuleKind::PowerLimits { .. }
         | RuleKind::Inrush { .. }
+        | RuleKind::MomentaryInrush { .. }
         | RuleKind::TemperatureRise { .. } => "house limit",
     }
 }
@@ -42,6 +47,7 @@ pub(super) fn rules(
         soaked: expanded.cells_with(|action| matches!(action, Action::Soak { .. })),
         inrush: expanded.cells_with(|action| matches!(action, Action::Inrush(_))),
         abnormal: expanded.cells_with(|action| matches!(action, Action::Abnormal { .. })),
+        waveform: expanded.cells_with(|action| matches!(action, Action::Inrush(t) if t.waveform)),
     };
     let planned: Vec<PlannedRule> = sequence.rules.iter().map(planned).collect();
     for (rule, written) in planned.iter().zip(&sequence.rules) {
@@ -129,6 +135,7 @@ struct Fed<'a> {
     soaked: Vec<bool>,
     inrush: Vec<bool>,
     abnormal: Vec<bool>,
+    waveform: Vec<bool>,
 }
 
 impl Fed<'_> {
@@ -186,6 +193,19 @@ impl Fed<'_> {
                 place,
                 "no step runs the unit with a fault until its link opens: this rule will be not judged",
                 "add an `abnormal` step, or take this rule out",
+            ),
+            RuleKind::MomentaryInrush { .. }
+            | RuleKind::HarmonicsClassA
+            | RuleKind::VoltageChange { .. } => self.every_cell(
+                &self.waveform,
+                for_it,
+                Lack {
+                    anywhere: "no step takes a waveform",
+                    somewhere: "no step takes a waveform",
+                    hint: "write `waveform: yes` in the `inrush` step",
+                },
+                place,
+                notes,
             ),
             RuleKind::LinkMaximum | RuleKind::TemperatureRise { .. } => {}
         }

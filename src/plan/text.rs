@@ -290,6 +290,23 @@ impl Plan {
                 format!("link's body at most Tm, {tm}, for 10 min after it opened")
             }
             RuleKind::Inrush { at_most } => format!("inrush at most {at_most}"),
+            RuleKind::MomentaryInrush { at_most } => {
+                format!("momentary inrush at most {at_most}")
+            }
+            RuleKind::HarmonicsClassA => "harmonics within class A".to_owned(),
+            RuleKind::VoltageChange {
+                dmax,
+                dc,
+                time_above,
+            } => {
+                let limits = [
+                    dmax.map(|limit| format!("dmax at most {limit}")),
+                    dc.map(|limit| format!("dc at most {limit}")),
+                    time_above.map(|limit| format!("above 3.3 % for at most {limit}")),
+                ];
+                let limits: Vec<String> = limits.into_iter().flatten().collect();
+                format!("voltage change: {}", limits.join(", "))
+            }
             RuleKind::PositionOrder => format!(
                 "input rises in the order {}",
                 self.appliance.positions.join(", ")
@@ -341,7 +358,10 @@ impl Plan {
 fn unit_of(kind: &RuleKind) -> &'static str {
     match kind {
         RuleKind::PlatePower | RuleKind::PowerLimits { .. } | RuleKind::PositionOrder => "W",
-        RuleKind::Inrush { .. } => "A",
+        RuleKind::Inrush { .. } | RuleKind::MomentaryInrush { .. } | RuleKind::HarmonicsClassA => {
+            "A"
+        }
+        RuleKind::VoltageChange { .. } => "",
         RuleKind::LinkHolding
         | RuleKind::LinkOpening
         | RuleKind::LinkHouse { .. }
@@ -382,7 +402,12 @@ fn detail(action: &Action) -> String {
         }
         Action::Energise | Action::Deenergise => String::new(),
         Action::Inrush(timed) | Action::Measure(timed) | Action::RunIn(timed) => {
-            format!("for {}, every {}", timed.length, timed.every)
+            let waveform = if timed.waveform {
+                ", with a waveform"
+            } else {
+                ""
+            };
+            format!("for {}, every {}{waveform}", timed.length, timed.every)
         }
         Action::Soak {
             at_least,

@@ -5,7 +5,7 @@ use serde::{Deserialize, Serialize};
 
 use crate::quantity::{Amps, Celsius, Hertz, Kelvins, Seconds, Volts, Watts};
 use crate::sensor::Sensor;
-use crate::spec::bench::{CalibrationPoint, Connection, Port};
+use crate::spec::bench::{CalibrationPoint, Connection, Port, Source};
 use crate::spec::driver::Driver;
 use crate::spec::sequence::{
     AmbientEffect, ApplianceKind, Criterion, CyclingRule, Decision, HeatingElement, MeasuredAt,
@@ -122,6 +122,9 @@ pub struct PlannedBay {
     pub name: String,
     /// Rated current of its wiring.
     pub rated_current: Amps,
+    /// What feeds it; nothing is known of it in plans that were made before it was kept.
+    #[serde(default)]
+    pub source: Source,
     /// Roles, in the sequence's order.
     pub roles: Vec<PlannedRole>,
 }

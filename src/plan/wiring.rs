@@ -59,6 +59,7 @@ pub(super) fn wire(files: Files, bay: &Bay, notes: &mut Notes) -> Wired {
         bay: PlannedBay {
             name: bay.name.value.clone(),
             rated_current: bay.rated_current,
+            source: bay.source,
             roles: Vec::new(),
         },
         instruments: Vec::new(),

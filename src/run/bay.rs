@@ -15,7 +15,7 @@ use super::operator::{Operator, Prompt, Reply};
 use crate::bench::{ExchangeError, Fault, Lease, LineHandle, OffConfirmed, Poll, Polled};
 use crate::clock::Clock;
 use crate::plan::{Plan, PlannedRole};
-use crate::quantity::{Moment, Reading, Readings, Seconds};
+use crate::quantity::{Moment, Reading, Readings, Seconds, Waveform};
 use crate::record::{Event, Happening, Journal, Sample, Status, StepEnd};
 use crate::sensor::Sensor;
 use crate::settle::watched_in;
@@ -125,6 +125,8 @@ pub(super) struct Working {
     pub(super) step: u32,
     pub(super) cell: Option<usize>,
     pub(super) energised_at: Option<Moment>,
+    /// Whether the meter waits for the first current, or has a waveform of it.
+    pub(super) armed: bool,
     every: Vec<Option<Seconds>>,
     /// By role; raw replies are converted by it.
     sensors: Vec<Option<Sensor>>,
@@ -153,6 +155,7 @@ impl Working {
             step: 0,
             cell: None,
             energised_at: None,
+            armed: false,
         }
     }
 
@@ -169,6 +172,13 @@ impl Working {
         let happening = lock(&self.journal).announce(self.clock.now(), event)?;
         self.observer.happened(&self.plan, &happening);
         Ok(happening.at)
+    }
+
+    /// Stores a waveform of the cell and shows it.
+    pub(super) fn store(&mut self, cell: usize, wave: &Waveform) -> Result<(), Cut> {
+        let happening = lock(&self.journal).waveform(self.clock.now(), cell, wave)?;
+        self.observer.happened(&self.plan, &happening);
+        Ok(())
     }
 
     pub(super) fn mark_virtual(&self) {
@@ -385,7 +395,7 @@ impl Working {
     }
 
     /// Awaits something that is not a sample, with guards and lease kept alive.
-    async fn attend_to<T>(&mut self, wanted: impl Future<Output = T>) -> Result<T, Cut> {
+    pub(super) async fn attend_to<T>(&mut self, wanted: impl Future<Output = T>) -> Result<T, Cut> {
         tokio::pin!(wanted);
         let mut nothing = Goal::Until(Moment::from_micros(u64::MAX / 2));
         loop {

@@ -8,6 +8,7 @@ mod guard;
 mod operator;
 mod preflight;
 mod walk;
+mod waveform;
 
 pub use bay::{Bay, Observer, SharedJournal, lock};
 pub use ears::{Heard, Mouth, Told, hearing};

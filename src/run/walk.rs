@@ -10,6 +10,7 @@ use super::bay::{Bay, Cut, Working, lock};
 use super::goal::{Cooling, Goal};
 use super::operator::{Prompt, Want, understand};
 use super::preflight::{Cleared, Permissions, clear};
+use super::waveform;
 use crate::bench::Change;
 use crate::plan::{Action, PlannedStep};
 use crate::quantity::{Moment, Seconds};
@@ -127,7 +128,12 @@ async fn take_step(
         } => set_position(bay, position, *number, *by_switch).await,
         Action::Energise => energise(bay, cleared, later).await,
         Action::Deenergise => deenergise(bay).await,
-        Action::Inrush(timed) | Action::Measure(timed) | Action::RunIn(timed) => {
+        Action::Inrush(timed) => {
+            let end = stay(bay, &step.action, timed.length, timed.every).await?;
+            waveform::fetch(bay).await?;
+            Ok(end)
+        }
+        Action::Measure(timed) | Action::RunIn(timed) => {
             stay(bay, &step.action, timed.length, timed.every).await
         }
         Action::Soak { at_most, every, .. } => soak(bay, &step.action, *at_most, *every).await,
@@ -251,6 +257,9 @@ async fn energise(
         return Err(Cut::Failed(format!(
             "not every sensor gave a reading within {FIRST_READINGS}: the unit is not energised"
         )));
+    }
+    if matches!(later.first(), Some(step) if waveform::is_wanted(&step.action)) {
+        waveform::arm(bay).await?;
     }
     let plan = bay.plan.clone();
     let Some((_, role)) = plan.role_of_kind(RoleKind::Supply) else {

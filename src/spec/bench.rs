@@ -105,8 +105,19 @@ pub struct Bay {
     pub name: Located<String>,
     /// `rated current:` of its wiring and socket; the current trip.
     pub rated_current: Amps,
+    /// `source:` what feeds the bay, as far as it is known.
+    pub source: Source,
     /// `roles:`
     pub roles: Vec<RoleFilled>,
+}
+
+/// What feeds a bay.
+#[derive(Debug, Clone, Copy, PartialEq, Default, Serialize, Deserialize)]
+pub struct Source {
+    /// `impedance:` at the unit's plug; a source that regulates there has none.
+    pub impedance: Option<Ohms>,
+    /// `current limit:` above which it gives no more, RMS.
+    pub current_limit: Option<Amps>,
 }
 
 /// Which instrument fills a role in a bay.

@@ -359,6 +359,9 @@ pub struct Timed {
     pub length: Seconds,
     /// `every:` polling interval.
     pub every: Seconds,
+    /// `waveform: yes` of an `inrush`: a block of voltage and current is taken too.
+    #[serde(default, skip_serializing_if = "std::ops::Not::not")]
+    pub waveform: bool,
 }
 
 /// Running with a named fault.
@@ -465,10 +468,28 @@ pub enum RuleKind {
     },
     /// `thermal link: after opening` body after the link opened, against Tm.
     LinkMaximum,
-    /// `inrush: {at most}` peak current from a cold start.
+    /// `inrush: {at most}` highest RMS current from a cold start.
     Inrush {
         /// Upper limit.
         at_most: Amps,
+    },
+    /// `inrush: {momentary at most}` highest momentary current from a cold start, of a
+    /// waveform.
+    MomentaryInrush {
+        /// Upper limit.
+        at_most: Amps,
+    },
+    /// `harmonics: class A` of IEC 61000-3-2, of a waveform.
+    HarmonicsClassA,
+    /// `voltage change: {dmax, dc, time above 3.3 %}` on the reference impedance of
+    /// IEC 61000-3-3, of a waveform; at least one is there.
+    VoltageChange {
+        /// Largest relative change.
+        dmax: Option<Ratio>,
+        /// Steady relative change.
+        dc: Option<Ratio>,
+        /// Longest time above 3.3 %.
+        time_above: Option<Seconds>,
     },
     /// `order of positions: rising` the input rises in the declared order.
     PositionOrder,

@@ -6,22 +6,17 @@
 //! seed, channel and update tick.
 
 use super::Connection;
-use super::chance::Chance;
+use super::dial::{Dial, NO_VALUE};
 use super::dialect::{Ask, Dialect, Display, Knob};
 use super::error_queue::{DeviceError, ErrorQueue};
-use super::faults::Fault;
+use super::faults::{Fault, Onset};
 use super::probe::{self, Probe};
+use super::scope::{Scope, interval_s, write_block};
 use super::unit::State;
 use crate::quantity::{Reading, shortest};
-use crate::spec::driver::{Accuracy, Driver};
+use crate::spec::driver::{Coupling, Driver};
 use crate::spec::sequence::RoleKind;
 
-/// What SCPI-1999 sends for "infinity": the value is above the highest range.
-const OVERLOAD: &[u8] = b"9.9E37";
-/// What SCPI-1999 sends for "not a number".
-const NO_VALUE: &[u8] = b"9.91E37";
-/// Noise, as a share of the accuracy's half-width and of the resolution (house values).
-const NOISE: (f64, f64) = (0.03, 0.3);
 /// Voltages and frequencies that a simulated supply accepts.
 const VOLTS: std::ops::RangeInclusive<f64> = 0.0..=300.0;
 const HERTZ: std::ops::RangeInclusive<f64> = 40.0..=70.0;
@@ -91,6 +86,8 @@ pub struct Instrument {
     pub interval: u64,
     /// The latest look.
     pub look: Option<Look>,
+    /// What it takes a waveform with.
+    pub scope: Scope,
     identity: Vec<u8>,
     impostor: Vec<u8>,
     dialect: Dialect,
@@ -98,17 +95,8 @@ pub struct Instrument {
     dials: Vec<Dial>,
     probes: Vec<Probe>,
     setting: Display,
-}
-
-/// How one reading is shown.
-#[derive(Debug, Clone)]
-pub(super) struct Dial {
-    pub(super) reading: Reading,
-    accuracy: Option<Accuracy>,
-    display: Display,
-    gain: f64,
-    offset: f64,
-    noise: Chance,
+    /// From when on its current input loses the DC part, seconds of the run.
+    loses_dc_from: f64,
 }
 
 impl Instrument {
@@ -136,6 +124,11 @@ impl Instrument {
             roles: all.iter().map(|c| (c.role.clone(), c.kind)).collect(),
             interval: driver.update_interval.as_micros().max(1000),
             look: None,
+            scope: Scope::default(),
+            loses_dc_from: match driver.coupling {
+                Coupling::Ac => 0.0,
+                Coupling::Dc => loses_dc_from(faults, all),
+            },
             identity: identity_reply(&first.identity, driver.identity.fields, speed),
             impostor: identity_reply("RATEPLATE,VIRTUAL-STRANGER", driver.identity.fields, speed),
             dialect: Dialect::of(driver),
@@ -168,7 +161,7 @@ impl Instrument {
         &mut self,
         ask: Ask,
         hole: Option<&[u8]>,
-        wiring: &Wiring,
+        (wiring, now): (&Wiring, f64),
         out: &mut Vec<u8>,
     ) -> Effect {
         match ask {
@@ -184,6 +177,15 @@ impl Instrument {
             Ask::On => return Effect::Output(Toggle::On),
             Ask::Off => return Effect::Output(Toggle::Off),
             Ask::OutputState => out.push(if wiring.on { b'1' } else { b'0' }),
+            Ask::Arm => self.scope.arm(),
+            Ask::WaveformReady => {
+                let ready = self.scope.is_ready(&self.driver, now);
+                out.push(if ready { b'1' } else { b'0' });
+            }
+            Ask::WaveformInterval => {
+                out.extend_from_slice(shortest(interval_s(&self.driver)).as_bytes());
+            }
+            Ask::Waveform => self.waveform(out),
         }
         Effect::Nothing
     }
@@ -215,6 +217,26 @@ impl Instrument {
         }
     }
 
+    /// The block, or an error where none was taken.
+    fn waveform(&mut self, out: &mut Vec<u8>) {
+        let truth = self.scope.samples(&self.driver);
+        let (Some(query), Some(mut truth)) = (&self.driver.waveform, truth) else {
+            self.errors.push(DeviceError::Specific);
+            out.extend_from_slice(NO_VALUE);
+            return;
+        };
+        if self.scope.taken_at() >= self.loses_dc_from {
+            truth.lose_dc();
+        }
+        let shown = |reading: Reading, truth: &[f64]| {
+            let dial = self.dials.iter().find(|d| d.reading == reading);
+            dial.map_or_else(|| truth.to_vec(), |dial| dial.block(truth))
+        };
+        let volts = shown(Reading::Voltage, &truth.volts);
+        let amps = shown(Reading::Current, &truth.amps);
+        write_block(query, &volts, &amps, out);
+    }
+
     fn read(&mut self, number: usize, hole: Option<&[u8]>, out: &mut Vec<u8>) {
         let Some(shape) = self.dialect.reply(number) else {
             return;
@@ -241,7 +263,11 @@ impl Instrument {
                     None => out.extend_from_slice(NO_VALUE),
                 }
             } else if let Some(dial) = self.dials.iter().find(|d| d.reading == *reading) {
-                dial.write(seen(*reading, &look), look.tick, out);
+                let mut truth = seen(*reading, &look);
+                if look.at >= self.loses_dc_from {
+                    truth = without_dc(*reading, &look).or(truth);
+                }
+                dial.write(truth, look.tick, out);
             }
         }
     }
@@ -267,57 +293,37 @@ fn seen(reading: Reading, look: &Look) -> Option<f64> {
     }
 }
 
-impl Dial {
-    /// The dial of an instrument for one reading on one channel.
-    pub(super) fn new(
-        connection: &Connection,
-        reading: Reading,
-        channel: Option<u32>,
-        seed: u64,
-    ) -> Self {
-        let accuracy = connection.driver.accuracy_of(reading).cloned();
-        let name = format!(
-            "{} {} {}",
-            connection.instrument,
-            reading.word(),
-            channel.unwrap_or(0)
-        );
-        let errors = Chance::of(seed, &name);
-        Self {
-            reading,
-            display: Display::of(accuracy.as_ref().map_or(0.0, |a| a.resolution)),
-            accuracy,
-            gain: errors.even(0),
-            offset: errors.even(1),
-            noise: Chance::of(seed, &format!("{name} noise")),
+/// What an AC-coupled current input makes of current and power factor; its power is
+/// right under a sine voltage, and so is everything else.
+fn without_dc(reading: Reading, look: &Look) -> Option<f64> {
+    let State { amps, dc_amps, .. } = look.state;
+    let amps = libm::sqrt((amps * amps - dc_amps * dc_amps).max(0.0));
+    match reading {
+        Reading::Current => Some(amps),
+        Reading::PowerFactor => {
+            let apparent = look.volts * amps;
+            (apparent > 0.0).then(|| look.state.watts / apparent)
         }
+        _ => None,
     }
+}
 
-    fn write(&self, truth: Option<f64>, tick: u64, out: &mut Vec<u8>) {
-        let Some(truth) = truth.filter(|t| t.is_finite()) else {
-            out.extend_from_slice(NO_VALUE);
-            return;
-        };
-        let shown = self.shown(truth, tick);
-        let top = self.accuracy.as_ref().and_then(|a| a.ranges.last());
-        if top.is_some_and(|top| shown.abs() > *top) {
-            out.extend_from_slice(OVERLOAD);
-        } else {
-            self.display.write(shown, out);
-        }
-    }
-
-    /// What is shown of a true value: within the stated accuracy, plus noise.
-    fn shown(&self, truth: f64, tick: u64) -> f64 {
-        let Some(accuracy) = &self.accuracy else {
-            return truth;
-        };
-        let range = accuracy.range_for(truth).unwrap_or(0.0);
-        let share = accuracy.of_reading * truth;
-        let constant = accuracy.of_range * range + accuracy.floor;
-        let noise = NOISE.0 * (share.abs() + constant) + NOISE.1 * accuracy.resolution;
-        truth + self.gain * share + self.offset * constant + noise * self.noise.bell(tick)
-    }
+/// From when on the instrument of these connections loses the DC part, seconds; never
+/// is infinity.
+fn loses_dc_from(faults: &[Fault], all: &[&Connection]) -> f64 {
+    let from = faults.iter().filter_map(|fault| match fault {
+        Fault::MeterLosesDc(onset) => Some(onset),
+        _ => None,
+    });
+    let hits = |onset: &&Onset| {
+        all.iter().any(|c| match &onset.role {
+            Some(role) => c.role == *role,
+            None => c.kind == RoleKind::PowerMeter,
+        })
+    };
+    from.filter(hits)
+        .map(|onset| onset.from.as_secs_f64())
+        .fold(f64::INFINITY, f64::min)
 }
 
 /// The identity reply: what the bench file expects, completed to the driver's

@@ -7,6 +7,7 @@
 
 mod bay;
 mod chance;
+mod dial;
 mod dialect;
 mod error_queue;
 mod faults;
@@ -16,6 +17,7 @@ mod line;
 pub mod ode;
 mod probe;
 pub mod ptc;
+mod scope;
 #[cfg(unix)]
 pub mod terminals;
 mod unit;
@@ -35,6 +37,7 @@ use crate::spec::sequence::RoleKind;
 use crate::spec::virtual_unit::VirtualUnit;
 
 use bay::Bay;
+use chance::Chance;
 pub use faults::{Fault, Onset, ParseFaultError};
 pub use hands::Hands;
 use instruments::{Instrument, Wiring};
@@ -173,6 +176,8 @@ impl VirtualBench {
             instruments,
             specimen,
             loss_factor: 1.0,
+            switching: Chance::of(staging.seed, "switching"),
+            switched_on: 0,
             offs: 0,
             now: 0,
         };

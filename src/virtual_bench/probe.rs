@@ -3,8 +3,9 @@
 
 use super::Connection;
 use super::chance::Chance;
+use super::dial::Dial;
 use super::faults::{Fault, Onset};
-use super::instruments::{Dial, Look};
+use super::instruments::Look;
 use super::unit::State;
 use crate::quantity::{Celsius, Reading};
 use crate::sensor::{Couple, Sensor, class_range, raw_of, tolerance};

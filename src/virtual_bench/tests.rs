@@ -603,3 +603,122 @@ fn a_meter_with_an_energy_counter_counts_what_was_drawn() {
     // The first hour holds the inrush too.
     assert!(counted[1] > hour, "{counted:?}");
 }
+
+// ---- waveforms ----
+
+const BOOTS: usize = 1;
+
+/// The boot warmer, whose low position is fed through a diode.
+fn boots(faults: &[&str]) -> Staging {
+    let shipped = VIRTUAL_UNITS
+        .iter()
+        .find(|file| file.path.contains("boot-warmer"))
+        .unwrap();
+    let unit = load_virtual_unit(shipped.path, shipped.text.as_bytes());
+    let mut staging = staging_of(unit.value.unwrap());
+    staging.faults = faults.iter().map(|f| f.parse().unwrap()).collect();
+    staging
+}
+
+/// Bytes of the reply to a message.
+fn block(far: &mut dyn FarSide, line: &str, now: Moment) -> Vec<u8> {
+    far.receive(format!("{line}\n").as_bytes(), now);
+    let mut out = Vec::new();
+    far.deliver(now + Seconds::of(20.0), &mut out);
+    out
+}
+
+/// Volts and amperes of a switching on in a position, at a seed, fetched 2 s later.
+fn taken(mut staging: Staging, position: usize, seed: u64) -> (Vec<f64>, Vec<f64>) {
+    staging.seed = seed;
+    let bench = VirtualBench::new(staging).unwrap();
+    let mut supply = bench.far_side("supply line");
+    let mut switch = bench.far_side("switch line");
+    let mut meter = bench.far_side("meter line");
+    switch.receive(format!("ROUT:POS {position}\n").as_bytes(), Moment::START);
+    supply.receive(b"SOUR:VOLT 230\n", Moment::START);
+    meter.receive(b":WAV:ARM\n", Moment::START);
+    assert_eq!(block(&mut *meter, ":WAV:READY?", at(0.5)), b"0\n");
+    supply.receive(b"OUTP ON\n", at(1.0));
+    assert_eq!(block(&mut *meter, ":WAV:READY?", at(1.2)), b"0\n");
+    assert_eq!(block(&mut *meter, ":WAV:READY?", at(2.0)), b"1\n");
+    assert_eq!(block(&mut *meter, ":WAV:INT?", at(2.0)), b"0.0002\n");
+    let bytes = block(&mut *meter, ":WAV:DATA?", at(3.0));
+    assert_eq!(&bytes[..7], b"#512000");
+    assert_eq!(bytes.len(), 7 + 12_000 + 1);
+    let numbers: Vec<f64> = bytes[7..12_007]
+        .chunks_exact(4)
+        .map(|b| f64::from(f32::from_le_bytes(b.try_into().unwrap())))
+        .collect();
+    let of = |n: usize| numbers.iter().skip(n).step_by(2).copied().collect();
+    (of(0), of(1))
+}
+
+fn mean(values: &[f64]) -> f64 {
+    values.iter().sum::<f64>() / values.len() as f64
+}
+
+#[test]
+fn the_meter_delivers_the_first_moments_of_a_switching_on() {
+    // Ten periods of 50 Hz behind the 10 ms before the first current.
+    let periods = 50..1050;
+    let (volts, amps) = taken(boots(&[]), 2, 1);
+    assert!(volts[..50].iter().all(|v| v.abs() < 0.5));
+    let rms = mean(
+        &volts[periods.clone()]
+            .iter()
+            .map(|v| v * v)
+            .collect::<Vec<_>>(),
+    )
+    .sqrt();
+    assert!((rms - 230.0).abs() < 0.5, "{rms}");
+    let products = volts[periods.clone()].iter().zip(&amps[periods.clone()]);
+    let watts = mean(&products.map(|(v, i)| v * i).collect::<Vec<_>>());
+    // 230 V at 588 ohm within 1 % of spread: 90.0 W (computed).
+    assert!((watts - 90.0).abs() < 3.0, "{watts}");
+    // Behind the diode: no current the other way, DC the peak over pi (computed).
+    let (_, half) = taken(boots(&[]), 1, 1);
+    let peak = half.iter().copied().fold(0.0, f64::max);
+    assert!(half.iter().all(|i| *i > -0.01));
+    let dc = mean(&half[periods.clone()]);
+    assert!(
+        (dc - peak / std::f64::consts::PI).abs() < 0.01,
+        "{dc} {peak}"
+    );
+}
+
+#[test]
+fn each_seed_switches_at_another_phase() {
+    let first = |seed| taken(boots(&[]), 2, seed).0[50];
+    let all: Vec<f64> = (1..=6).map(first).collect();
+    assert_eq!(first(3), all[2]);
+    for (n, volts) in all.iter().enumerate() {
+        assert!(all[n + 1..].iter().all(|other| (other - volts).abs() > 0.5));
+    }
+}
+
+#[test]
+fn a_meter_that_loses_the_dc_part_loses_it_everywhere() {
+    let (_, half) = taken(boots(&["meter-loses-dc"]), 1, 1);
+    assert!(mean(&half[50..1050]).abs() < 0.01);
+    let factor = |faults: &[&str]| {
+        let bench = energised(boots(faults), BOOTS as u32);
+        let mut meter = bench.far_side("meter line");
+        let [volts, amps, watts] = fields(&reply(&mut *meter, METER, at(10.0)))[..] else {
+            panic!("three fields");
+        };
+        watts / (volts * amps)
+    };
+    // 0.707 and 0.917 (computed).
+    assert!((factor(&[]) - 0.707).abs() < 0.005);
+    assert!((factor(&["meter-loses-dc"]) - 0.917).abs() < 0.005);
+    assert!((factor(&["meter-loses-dc@60s"]) - 0.707).abs() < 0.005);
+}
+
+#[test]
+fn a_waveform_that_was_not_taken_is_no_value() {
+    let bench = energised(boots(&[]), 2);
+    let mut meter = bench.far_side("meter line");
+    assert_eq!(block(&mut *meter, ":WAV:DATA?", at(5.0)), b"9.91E37\n");
+    assert_ne!(reply(&mut *meter, ERRORS, at(30.0)), "0,\"No error\"");
+}

@@ -62,6 +62,8 @@ pub struct State {
     pub watts: f64,
     /// Current, RMS with its DC part, A.
     pub amps: f64,
+    /// DC part of the current, A.
+    pub dc_amps: f64,
 }
 
 /// One specimen: the model with its own spread and faults, and its course.
@@ -273,6 +275,7 @@ impl Specimen {
             ambient: self.room.at(t),
             watts,
             amps,
+            dc_amps: self.circuit.dc(y[BLOCK]),
         }
     }
 
@@ -288,6 +291,13 @@ impl Specimen {
         };
         let outer = watts(-GAUSS.0) + watts(GAUSS.0);
         self.joules + half * (GAUSS.1 * outer + GAUSS.2 * watts(0.0))
+    }
+
+    /// Voltage in V and current in A at a moment, at a phase of the mains in turns after
+    /// its rising zero; `t` lies within what was advanced last. The fan draws what it
+    /// draws when it runs: its own switching on is left out.
+    pub fn momentary(&self, t: f64, turns: f64) -> (f64, f64) {
+        self.circuit.momentary(self.solver.at(t)[BLOCK], turns)
     }
 
     /// Cuts the present step at an event within it.
@@ -469,6 +479,30 @@ impl Circuit {
         let reactive = FAN_REACTIVE * fan;
         let amps = libm::sqrt(in_phase + reactive * reactive);
         (self.square * conductance + self.fan_watts, amps)
+    }
+}
+
+impl Circuit {
+    /// DC part of the current, A: behind a diode the peak over pi (computed).
+    fn dc(&self, block: f64) -> f64 {
+        if !self.diode || self.volts <= 0.0 {
+            return 0.0;
+        }
+        std::f64::consts::SQRT_2 * self.volts * self.conductance(block) / std::f64::consts::PI
+    }
+
+    /// Voltage and current at a phase of the mains, in turns.
+    fn momentary(&self, block: f64, turns: f64) -> (f64, f64) {
+        if self.volts <= 0.0 {
+            return (0.0, 0.0);
+        }
+        let angle = std::f64::consts::TAU * turns;
+        let (sine, cosine) = (libm::sin(angle), libm::cos(angle));
+        let volts = std::f64::consts::SQRT_2 * self.volts * sine;
+        let fed = if self.diode { volts.max(0.0) } else { volts };
+        let fan = std::f64::consts::SQRT_2 * self.fan_watts / self.volts;
+        let amps = fed * self.conductance(block) + fan * (sine - FAN_REACTIVE * cosine);
+        (volts, amps)
     }
 }
 

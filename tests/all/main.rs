@@ -15,4 +15,5 @@ mod serial;
 mod settling;
 mod shipped;
 mod tidy;
+mod waveforms;
 mod ways_out;

@@ -32,6 +32,7 @@ fn soaks(folder: &Folder) -> Vec<(StepEnd, bool, Option<f64>, f64)> {
     let found = analysis::analyse(&Input {
         plan: &folder.plan,
         samples: &folder.samples,
+        waveforms: &folder.waveforms,
         happenings: &folder.happenings,
         outcome: &folder.manifest.outcome,
     });

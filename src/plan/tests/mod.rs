@@ -13,6 +13,7 @@ mod roles;
 mod rules;
 mod sensing;
 mod steps;
+mod waveforms;
 
 /// The demo bench.
 const BENCH: &str = shipped::VIRTUAL_BENCH.text;

@@ -7,7 +7,7 @@ use crate::sensor::{Couple, CoupleClass, PlatinumClass, Sensor};
 use crate::spec::Located;
 use crate::spec::bench::{
     Bay, Bench, CalibrationPoint, Connection, Instrument, Line, Parity, Port, RoleFilled,
-    SerialSettings,
+    SerialSettings, Source,
 };
 use crate::spec::fields::{Field, Fields, list, located, named, shown};
 use crate::spec::scalars::{
@@ -167,12 +167,25 @@ pub(super) fn difference(reading: Reading) -> Dimension {
 fn bay(name: Located<String>, field: Field<'_>) -> Option<Bay> {
     let fields = field.fields()?;
     let rated_current = fields.required("rated current", quantity::<Amps>(Allowed::Positive));
+    let source = fields.or("source", Source::default(), source);
     let roles = fields.required("roles", named(role));
     fields.finish()?;
     Some(Bay {
         name,
         rated_current: rated_current?,
+        source: source?,
         roles: roles?,
+    })
+}
+
+fn source(field: Field<'_>) -> Option<Source> {
+    let fields = field.fields()?;
+    let impedance = fields.optional("impedance", quantity::<Ohms>(Allowed::NotNegative));
+    let current_limit = fields.optional("current limit", quantity::<Amps>(Allowed::Positive));
+    fields.finish()?;
+    Some(Source {
+        impedance: impedance?,
+        current_limit: current_limit?,
     })
 }
 
@@ -354,35 +367,35 @@ mod tests {
             wrong(
                 "channel: 1}",
                 "channel: 1, sensor: {type: K}}",
-                "33:47",
+                "33:88",
                 "lacks `class`",
                 "add",
             ),
             wrong(
                 "channel: 1}",
                 "channel: 1, sensor: {type: X, class: 1}}",
-                "33:62",
+                "33:103",
                 "can't be `X`",
                 "one of: K, J, T, Pt100",
             ),
             wrong(
                 "channel: 1}",
                 "channel: 1, sensor: {type: Pt100, class: 1}}",
-                "33:76",
+                "33:117",
                 "can't be `1`",
                 "one of: AA, A, B, C",
             ),
             wrong(
                 "channel: 1}",
                 "channel: 1, sensor: {type: T, class: A}}",
-                "33:72",
+                "33:113",
                 "can't be `A`",
                 "one of: 1, 2",
             ),
             wrong(
                 "channel: 1}",
                 "channel: 1, sensor: K}",
-                "33:55",
+                "33:96",
                 "must be a mapping",
                 "key: value",
             ),

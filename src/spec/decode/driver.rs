@@ -2,7 +2,8 @@
 
 use crate::quantity::{Reading, Seconds, Volts};
 use crate::spec::driver::{
-    Accuracy, Driver, Framing, IdentityQuery, ReadingQuery, Setting, Settings, Terminator, Thermal,
+    Accuracy, Coupling, Driver, Framing, IdentityQuery, ReadingQuery, Setting, Settings,
+    Terminator, Thermal,
 };
 use crate::spec::fields::{Field, Fields, list, located, named, some};
 use crate::spec::scalars::{
@@ -12,6 +13,7 @@ use crate::spec::sequence::RoleKind;
 use crate::spec::{Located, Problem};
 
 use super::bench::{READINGS, difference};
+use super::waveform::waveform;
 
 /// The words for kinds of role, in YAML files.
 pub(super) const ROLE_KINDS: &[(&str, RoleKind)] = &[
@@ -27,6 +29,8 @@ const TERMINATORS: &[(&str, Terminator)] = &[
     ("CR", Terminator::Cr),
 ];
 
+const COUPLINGS: &[(&str, Coupling)] = &[("dc", Coupling::Dc), ("ac", Coupling::Ac)];
+
 /// A whole driver file.
 pub(in crate::spec) fn driver(field: Field<'_>) -> Option<Driver> {
     let fields = field.fields()?;
@@ -37,11 +41,13 @@ pub(in crate::spec) fn driver(field: Field<'_>) -> Option<Driver> {
     let on_opening = fields.or("on opening", Vec::new(), list(command(&[])));
     let channels = fields.or("channels", 0, whole(0, 9_999));
     let readings = fields.or("readings", Vec::new(), list(reading_query(channels)));
+    let waveform = fields.optional("waveform", waveform);
     let settings = fields.or("settings", Settings::default(), settings);
     let errors = fields.optional("errors", command(&[]));
     let accuracy = fields.or("accuracy", Vec::new(), named(accuracy));
     let update_interval = fields.required("update interval", duration);
     let isolation = fields.optional("isolation", quantity::<Volts>(Allowed::NotNegative));
+    let coupling = fields.or("coupling", Coupling::Dc, choice(COUPLINGS));
     let suited = match (&fills, &readings, &settings) {
         (Some(fills), Some(readings), Some(settings)) => suited(field, fills, readings, settings),
         _ => None,
@@ -58,12 +64,14 @@ pub(in crate::spec) fn driver(field: Field<'_>) -> Option<Driver> {
         identity: identity?,
         on_opening: on_opening?,
         readings: readings?,
+        waveform: waveform?,
         settings: settings?,
         errors: errors?,
         accuracy: accuracy?,
         update_interval: update_interval?,
         channels: channels?,
         isolation: isolation?,
+        coupling: coupling?,
     })
 }
 

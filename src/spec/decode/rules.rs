@@ -3,7 +3,9 @@
 use crate::quantity::{Amps, Dimension, Kelvins, Watts};
 use crate::spec::Located;
 use crate::spec::fields::{Field, Fields};
-use crate::spec::scalars::{Allowed, choice, located_name, name, number, quantity, text, value_of};
+use crate::spec::scalars::{
+    Allowed, choice, duration, located_name, name, number, quantity, share, text, value_of,
+};
 use crate::spec::sequence::{CyclingRule, Decision, ProcessSpread, Rule, RuleKind, RuleWeight};
 use crate::spec::yaml::NodeKind;
 
@@ -18,6 +20,8 @@ const KINDS: &[Kind] = &[
     ("inrush", inrush),
     ("order of positions", order),
     ("temperature", temperature_rise),
+    ("harmonics", harmonics),
+    ("voltage change", voltage_change),
 ];
 
 const WEIGHTS: &[(&str, RuleWeight)] = &[
@@ -39,7 +43,7 @@ pub(super) fn rule(field: Field<'_>) -> Option<Rule> {
         Written::Decided(Decision::FourOutcomes),
         decision,
     );
-    let weight = fields.or("weight", RuleWeight::Required, choice(WEIGHTS));
+    let weight = fields.or("weight", usual_weight(kind.as_ref()), choice(WEIGHTS));
     let position = fields.optional("position", located_name);
     let condition = fields.optional("condition", located_name);
     let source = fields.optional("source", text);
@@ -71,6 +75,14 @@ pub(super) fn rule(field: Field<'_>) -> Option<Rule> {
 
 fn compares_power(kind: &RuleKind) -> bool {
     matches!(kind, RuleKind::PlatePower | RuleKind::PowerLimits { .. })
+}
+
+/// What rests on the waveform of one switch-on is an indication.
+fn usual_weight(kind: Option<&Located<RuleKind>>) -> RuleWeight {
+    match kind.map(|kind| &kind.value) {
+        Some(RuleKind::HarmonicsClassA | RuleKind::VoltageChange { .. }) => RuleWeight::Information,
+        _ => RuleWeight::Required,
+    }
 }
 
 /// The one key that says what the rule compares.
@@ -136,9 +148,38 @@ fn thermal_link(field: Field<'_>) -> Option<RuleKind> {
 
 fn inrush(field: Field<'_>) -> Option<RuleKind> {
     let fields = field.fields()?;
+    if fields.find("momentary at most").is_some() && fields.find("at most").is_none() {
+        let limit = fields.required("momentary at most", quantity::<Amps>(Allowed::Positive));
+        fields.finish()?;
+        return Some(RuleKind::MomentaryInrush { at_most: limit? });
+    }
     let at_most = fields.required("at most", quantity::<Amps>(Allowed::Positive));
     fields.finish()?;
     Some(RuleKind::Inrush { at_most: at_most? })
+}
+
+fn harmonics(field: Field<'_>) -> Option<RuleKind> {
+    choice(&[("class A", RuleKind::HarmonicsClassA)])(field)
+}
+
+fn voltage_change(field: Field<'_>) -> Option<RuleKind> {
+    let fields = field.fields()?;
+    let dmax = fields.optional("dmax", share);
+    let dc = fields.optional("dc", share);
+    let time_above = fields.optional("time above 3.3 %", duration);
+    fields.finish()?;
+    let (dmax, dc, time_above) = (dmax?, dc?, time_above?);
+    if dmax.is_none() && dc.is_none() && time_above.is_none() {
+        return field.wrong(
+            "no limit is stated",
+            "write for example `voltage change: {dmax: 4 %, dc: 3.3 %, time above 3.3 %: 500 ms}`",
+        );
+    }
+    Some(RuleKind::VoltageChange {
+        dmax,
+        dc,
+        time_above,
+    })
 }
 
 fn order(field: Field<'_>) -> Option<RuleKind> {
@@ -189,7 +230,7 @@ fn decision(field: Field<'_>) -> Option<Written<'_>> {
     Some(Written::Decided(Decision::Guarded { ratio: ratio? }))
 }
 
-/// What a rule compares, as a dimension; absent where no uncertain value is compared.
+/// What a rule compares, as a dimension; absent where there is more than one.
 fn unit_of(kind: &RuleKind) -> Option<Dimension> {
     match kind {
         RuleKind::PlatePower | RuleKind::PowerLimits { .. } | RuleKind::PositionOrder => {
@@ -200,7 +241,11 @@ fn unit_of(kind: &RuleKind) -> Option<Dimension> {
         | RuleKind::LinkHouse { .. }
         | RuleKind::LinkMaximum
         | RuleKind::TemperatureRise { .. } => Some(Dimension::TemperatureDifference),
-        RuleKind::Inrush { .. } => Some(Dimension::Current),
+        RuleKind::Inrush { .. } | RuleKind::MomentaryInrush { .. } | RuleKind::HarmonicsClassA => {
+            Some(Dimension::Current)
+        }
+        // Several quantities in one rule.
+        RuleKind::VoltageChange { .. } => None,
     }
 }
 
@@ -215,7 +260,7 @@ fn decided(rule: &Fields<'_>, written: Written<'_>, unit: Option<Dimension>) -> 
         }
         (Written::UpTo(_), None) => rule.wrong(
             "decision",
-            "this rule compares nothing that has an uncertainty",
+            "this rule compares more than one quantity, and no single U is good for all",
             "take the decision out",
         ),
     }
@@ -224,7 +269,7 @@ fn decided(rule: &Fields<'_>, written: Written<'_>, unit: Option<Dimension>) -> 
 fn process(field: Field<'_>, unit: Option<Dimension>) -> Option<ProcessSpread> {
     let Some(unit) = unit else {
         return field.wrong(
-            "this rule compares nothing that spreads",
+            "this rule compares more than one quantity, and no single spread describes them",
             "take `process` out",
         );
     };
@@ -305,6 +350,27 @@ mod tests {
                 "72:25",
                 "can't be `falling`",
                 "one of: rising",
+            ),
+            wrong(
+                "- thermal link: holding",
+                "- harmonics: class B",
+                "70:16",
+                "can't be `class B`",
+                "class A",
+            ),
+            wrong(
+                "- thermal link: holding",
+                "- voltage change: {}",
+                "70:21",
+                "no limit is stated",
+                "dmax",
+            ),
+            wrong(
+                "- thermal link: holding",
+                "- voltage change: {dmax: 4}",
+                "70:28",
+                "",
+                "",
             ),
             wrong(
                 "decision: four outcomes",

@@ -126,7 +126,7 @@ fn action(field: Field<'_>, each: EachAllowed) -> Option<StepAction> {
         "supply" => StepAction::Supply(located(supply_point)(field)?),
         "position" => StepAction::Position(located_name(field)?),
         "condition" => StepAction::Condition(located_name(field)?),
-        "inrush" => StepAction::Inrush(timed(field)?),
+        "inrush" => StepAction::Inrush(inrush(field)?),
         "soak" => StepAction::Soak(soak(field)?),
         "measure" => StepAction::Measure(timed(field)?),
         "rest" => StepAction::Rest(waiting(field)?),
@@ -293,14 +293,31 @@ fn waiting(field: Field<'_>) -> Option<Waiting> {
 
 fn timed(field: Field<'_>) -> Option<Timed> {
     let fields = field.fields()?;
+    let timed = stretch(&fields);
+    fields.finish()?;
+    timed
+}
+
+/// An inrush may ask for a waveform.
+fn inrush(field: Field<'_>) -> Option<Timed> {
+    let fields = field.fields()?;
+    let timed = stretch(&fields);
+    let waveform = fields.or("waveform", false, yes_no);
+    fields.finish()?;
+    Some(Timed {
+        waveform: waveform?,
+        ..timed?
+    })
+}
+
+fn stretch(fields: &Fields<'_>) -> Option<Timed> {
     let length = fields.required("for", duration);
     let every = fields.required("every", interval);
-    let fits = fitting(&fields, ("for", length), every);
-    fields.finish()?;
-    fits?;
+    fitting(fields, ("for", length), every)?;
     Some(Timed {
         length: length?,
         every: every?,
+        waveform: false,
     })
 }
 
