@@ -49,7 +49,7 @@ pub(super) struct Extrapolated {
     pub(super) power_w: f64,
     /// Its standard uncertainty from the prediction alone.
     pub(super) power_standard: f64,
-    /// Rise that was still to come; 0 where the rise had settled or is not watched.
+    /// Rise that was still to come; 0 where no fit of it holds.
     pub(super) rise_still_to_come_k: f64,
     /// Its standard uncertainty.
     pub(super) rise_standard: f64,
@@ -139,11 +139,14 @@ fn ended_early(
     let from_s = (window.to_s - LAST_MINUTE_S).max(window.from_s);
     let track = view.energised(view.meter, Reading::Power);
     let last = mean(within(&track, from_s, window.to_s)).unwrap_or(0.0);
+    // A rise that meets the criterion by itself still has its remaining error.
+    let rise = rise.map(|p| (p.still_to_come, p.end_standard));
+    let (to_come, rise_standard) = rise.or(window.rise_to_come_k).unwrap_or_default();
     let extrapolated = Extrapolated {
         power_w: power.map_or(last, |p| p.end),
         power_standard: power.map_or(0.0, |p| p.end_standard),
-        rise_still_to_come_k: rise.map_or(0.0, |p| p.still_to_come),
-        rise_standard: rise.map_or(0.0, |p| p.end_standard),
+        rise_still_to_come_k: to_come,
+        rise_standard,
     };
     Window {
         from_s,

@@ -2,12 +2,13 @@
 
 use std::collections::VecDeque;
 
+use super::bound::slope_bound;
 use super::drift::Drift;
 use super::limits::{Quantity, round, watched};
 use super::points::{Lines, Point};
 use crate::quantity::{Seconds, at_most};
 use crate::spec::sequence::{CriterionKind, Soaking};
-use crate::stats::{Line, effective_of, student_quantile};
+use crate::stats::Line;
 
 /// Three readings lie at least this far apart, seconds (UL 1278 39.1.8).
 const READINGS_APART_S: f64 = 300.0;
@@ -232,15 +233,18 @@ fn slope(view: &View, name: &str, bound: Bound) -> Answer {
         let enough = running.len() >= FEWEST_CELLS
             && running.len() as f64 >= FILLED * view.cells.len() as f64;
         let line = running.line().filter(|_| enough);
-        let values = || view.cells.iter().filter_map(|p| quantity.of(p)).collect();
-        slope_within(quantity, line, values, bound)
+        let track = || {
+            let value = |p: &Point| Some((p.middle(), quantity.of(p)?));
+            view.cells.iter().filter_map(value).collect()
+        };
+        slope_within(quantity, line, track, bound)
     })
 }
 
 pub(super) fn slope_within(
     quantity: Quantity,
     line: Option<Line>,
-    values: impl Fn() -> Vec<f64>,
+    track: impl Fn() -> Vec<(f64, f64)>,
     bound: Bound,
 ) -> Result<String, String> {
     let word = quantity.word();
@@ -260,11 +264,8 @@ pub(super) fn slope_within(
     if bound == Bound::Without {
         return Ok(format!("{word} {change:+.2} {unit}/h {limit_text}"));
     }
-    let effective = effective_of(&values()).map_or(0.0, |e| e.effective);
-    let (error, freedom) = line.slope_error_with(effective);
-    let t = student_quantile(0.975, freedom).unwrap_or(f64::INFINITY);
-    let bound = if error == 0.0 { 0.0 } else { t * error };
-    let bound = per_hour(bound).map_or(f64::INFINITY, |written| written.change);
+    let bound =
+        per_hour(slope_bound(&track(), &line)).map_or(f64::INFINITY, |written| written.change);
     let text = format!("{word} {change:+.2} ± {bound:.2} {unit}/h");
     if at_most(change.abs() + bound, slope.limit) {
         Ok(format!("{text} {limit_text}"))

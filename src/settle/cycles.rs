@@ -127,12 +127,7 @@ fn slope(soaking: &Soaking, cycles: &[Point], bound: Bound) -> Answer {
             .filter_map(|c| Some((c.middle(), quantity.of(c)?)))
             .collect();
         let line = line_through(track.iter().copied());
-        slope_within(
-            quantity,
-            line,
-            || track.iter().map(|p| p.1).collect(),
-            bound,
-        )
+        slope_within(quantity, line, || track.clone(), bound)
     })
 }
 

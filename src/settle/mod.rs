@@ -33,6 +33,7 @@
 //! that has not switched off yet is asked on the grid. Power that vanishes means
 //! nothing there, and nothing is predicted.
 
+mod bound;
 mod criteria;
 mod cycles;
 mod drift;
