@@ -78,11 +78,12 @@ pub fn combine(parts: &[Part]) -> Combined {
 /// 1. parts with r = +-1 are added, signs and all, to one part, with the fewest
 ///    degrees of freedom among them;
 /// 2. parts that are joined by other correlations become one group with its
-///    variance, covariances included. Where all come from the same paired
-///    observations this variance has exactly their degrees of freedom (JCGM 100
-///    H.2, n - 1). Where not, it is the variance of independent estimates:
-///    u^4 / sum((u_i c_i)^2 / nu_i) with c_i = u_i + sum r_ij u_j. Which one it is
-///    can't be seen here, so the fewer of both are taken: conservative.
+///    variance, covariances included. Where all of them have the same number of
+///    degrees of freedom they come from paired observations, and the variance of
+///    any sum of these has exactly this number (JCGM 100 H.2, n - 1). Where not, the
+///    fewer of two numbers are taken, which is conservative: the fewest among them,
+///    and that for the variance of independent estimates, u^4 / sum((u_i c_i)^2 / nu_i)
+///    with c_i = u_i + sum r_ij u_j, which is low for small differences.
 ///
 /// A correlation with an absent part, or of a part with itself, says nothing; of two
 /// for the same pair the later one counts; beyond +-1 it is +-1, and one that is
@@ -213,7 +214,15 @@ impl Shared {
             .map(|i| group.iter().map(|j| covariance(*i, *j)).sum())
             .collect();
         let variance = rows.iter().sum::<f64>().max(0.0);
-        let as_one = variance * variance / fewest(&self.parts, group.iter().copied());
+        let fewest = fewest(&self.parts, group.iter().copied());
+        let as_one = variance * variance / fewest;
+        let paired = group
+            .iter()
+            .map(|i| &self.parts[*i])
+            .all(|part| part.standard == 0.0 || part.freedom.max(1.0) == fewest);
+        if paired {
+            return Some((variance, as_one));
+        }
         let apart: f64 = group
             .iter()
             .zip(&rows)
@@ -367,7 +376,7 @@ mod tests {
         assert!((sum.standard - 37f64.sqrt()).abs() < 1e-12);
         assert!((sum.freedom - 4.0).abs() < 1e-9);
         // A small difference of two large independent estimates is known worse.
-        let apart = [part(3.0, 4.0), part(-4.0, 4.0)];
+        let apart = [part(3.0, 4.0), part(-4.0, 9.0)];
         let difference = combine_correlated(&apart, &[joined(0, 1, 0.99)]);
         assert!(difference.freedom < 4.0, "{difference:?}");
     }

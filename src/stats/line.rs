@@ -1,5 +1,6 @@
 //! Straight lines through points: all at once, or over running sums that can
-//! drop old points. Sums are kept about the mean, so that nothing cancels.
+//! drop old points. Sums are kept about the mean, and points about the first one, so
+//! that nothing cancels where offsets are large.
 
 /// A line through points, with how well it is known.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -44,6 +45,13 @@ impl Line {
         self.residual_sd() / self.spread_x.sqrt()
     }
 
+    /// Standard error of the line's own value at `x` for independent residuals
+    /// (JCGM 100, H.3.4), n - 2 degrees of freedom.
+    pub fn error_at(&self, x: f64) -> f64 {
+        let off = x - self.mean_x;
+        self.residual_sd() * (1.0 / self.n as f64 + off * off / self.spread_x).sqrt()
+    }
+
     /// Standard error of the slope and its degrees of freedom where the residuals
     /// are worth only `effective` independent ones: n is replaced by it in n - 2,
     /// never below 1 (adjusted standard error of Santer and others, 2000, from memory).
@@ -63,7 +71,13 @@ pub fn line_through(points: impl IntoIterator<IntoIter: Clone, Item = (f64, f64)
         running.add(x, y);
     }
     let line = running.line()?;
-    let residual_squares = points.map(|(x, y)| (y - line.at(x)).powi(2)).sum();
+    let residual_squares = points
+        .map(|(x, y)| {
+            // About the first point, which no large offset rounds.
+            let (x, y) = running.about_origin(x, y);
+            (y - running.mean_y - line.slope * (x - running.mean_x)).powi(2)
+        })
+        .sum();
     Some(Line {
         residual_squares: line.without_rounding(residual_squares),
         ..line
@@ -71,10 +85,11 @@ pub fn line_through(points: impl IntoIterator<IntoIter: Clone, Item = (f64, f64)
 }
 
 /// Running sums of a least-squares line, kept about the mean (Welford's update
-/// and its inverse).
+/// and its inverse), which itself is kept about the first point.
 #[derive(Debug, Clone, Copy, PartialEq, Default)]
 pub struct RunningLine {
     n: usize,
+    origin: (f64, f64),
     mean_x: f64,
     mean_y: f64,
     xx: f64,
@@ -93,8 +108,16 @@ impl RunningLine {
         self.n == 0
     }
 
+    fn about_origin(&self, x: f64, y: f64) -> (f64, f64) {
+        (x - self.origin.0, y - self.origin.1)
+    }
+
     /// Takes a point in.
     pub fn add(&mut self, x: f64, y: f64) {
+        if self.n == 0 {
+            self.origin = (x, y);
+        }
+        let (x, y) = self.about_origin(x, y);
         self.n += 1;
         let n = self.n as f64;
         let (dx, dy) = (x - self.mean_x, y - self.mean_y);
@@ -111,6 +134,7 @@ impl RunningLine {
             *self = Self::default();
             return;
         }
+        let (x, y) = self.about_origin(x, y);
         self.n -= 1;
         let n = self.n as f64;
         let (dx, dy) = (x - self.mean_x, y - self.mean_y);
@@ -131,8 +155,8 @@ impl RunningLine {
         let residual_squares = (self.yy - slope * self.xy).max(0.0);
         let line = Line {
             n: self.n,
-            mean_x: self.mean_x,
-            mean_y: self.mean_y,
+            mean_x: self.origin.0 + self.mean_x,
+            mean_y: self.origin.1 + self.mean_y,
             slope,
             residual_squares: if residual_squares <= 1e-14 * self.yy.abs() {
                 0.0

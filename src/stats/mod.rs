@@ -13,6 +13,11 @@ mod paired;
 mod risk;
 mod special;
 
+#[cfg(test)]
+mod oracle;
+#[cfg(test)]
+mod published;
+
 pub use autocorrelation::{Effective, effective_of, effective_with};
 pub use binomial::{binomial_cdf, clopper_pearson};
 pub use budget::{Combined, Correlation, Part, combine, combine_correlated};

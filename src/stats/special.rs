@@ -18,18 +18,18 @@ pub(super) fn stirling_error(a: f64) -> f64 {
     (1.0 / 12.0 - b * (1.0 / 360.0 - b * (1.0 / 1260.0 - b * (1.0 / 1680.0 - b / 1188.0)))) / a
 }
 
-/// a ln(a / m) + m - a without cancellation where m is near a (the deviance of
-/// Loader 2000, "Fast and accurate computation of binomial probabilities").
-pub(super) fn deviance(a: f64, m: f64) -> f64 {
+/// a ln(a / m) + m - a, without cancellation where `off` = m - a is small (the deviance
+/// of Loader 2000, "Fast and accurate computation of binomial probabilities").
+fn deviance(a: f64, m: f64, off: f64) -> f64 {
     if m <= 0.0 {
         return f64::INFINITY;
     }
-    let v = (a - m) / (a + m);
+    let v = -off / (a + m);
     if v.abs() >= 0.1 {
-        return a * libm::log(a / m) + m - a;
+        return a * libm::log(a / m) + off;
     }
-    // ln(a / m) = 2 artanh v; its first term makes (a - m) v with m - a.
-    let mut sum = (a - m) * v;
+    // ln(a / m) = 2 artanh v; its first term makes -off v with off.
+    let mut sum = -off * v;
     let mut power = 2.0 * a * v;
     for odd in (3..).step_by(2) {
         power *= v * v;
@@ -63,7 +63,10 @@ fn beta_fraction(a: f64, b: f64, x: f64, y: f64) -> f64 {
     // x^a y^b / B(a, b)
     let spread = (a / n * b / (2.0 * std::f64::consts::PI)).sqrt();
     let corrections = stirling_error(n) - stirling_error(a) - stirling_error(b);
-    let front = spread * libm::exp(corrections - deviance(a, n * x) - deviance(b, n * y));
+    // n x - a, from the smaller one of x and y: the other one is rounded too coarsely.
+    let off = if x < y { n * x - a } else { b - n * y };
+    let front =
+        spread * libm::exp(corrections - deviance(a, n * x, off) - deviance(b, n * y, -off));
     let keep = |value: f64| if value.abs() < TINY { TINY } else { value };
     let mut c = 1.0;
     let mut d = 1.0 / keep(1.0 - n * x / (a + 1.0));
@@ -94,8 +97,8 @@ pub(super) fn gamma(a: f64, x: f64) -> (f64, f64) {
         return (1.0, 0.0);
     }
     // x^a e^-x / Gamma(a)
-    let front =
-        (a / (2.0 * std::f64::consts::PI)).sqrt() * libm::exp(-deviance(a, x) - stirling_error(a));
+    let front = (a / (2.0 * std::f64::consts::PI)).sqrt()
+        * libm::exp(-deviance(a, x, x - a) - stirling_error(a));
     if x < a + 1.0 {
         let below = (front * gamma_series(a, x)).min(1.0);
         (below, 1.0 - below)
