@@ -1,14 +1,14 @@
 //! Simulated instruments: what they see of the truth, how well, and how they say it.
 //!
 //! Each instrument looks once per update interval and shows that value until the
-//! next. Its gain, offset and contact errors are drawn once for a bench and seed,
-//! evenly within the accuracy that its driver states; its noise is a function of
-//! seed, channel and update tick.
+//! next. Its gain, offset and contact errors are drawn once for a bench and seed, as
+//! [`Errors`] says; its noise is a function of seed, channel and update tick.
 
-use super::Connection;
+use super::{Connection, Staging};
 use super::chance::Chance;
 use super::dialect::{Ask, Dialect, Display, Knob};
 use super::error_queue::{DeviceError, ErrorQueue};
+use super::errors::{Errors, Flaw};
 use super::faults::{Fault, Onset};
 use super::unit::State;
 use crate::quantity::{Reading, shortest};
@@ -21,8 +21,6 @@ const OVERLOAD: &[u8] = b"9.9E37";
 const NO_VALUE: &[u8] = b"9.91E37";
 /// Noise, as a share of the accuracy's half-width and of the resolution (house values).
 const NOISE: (f64, f64) = (0.03, 0.3);
-/// A surface sensor reads up to this share of its rise too low (house value).
-const CONTACT: f64 = 0.01;
 /// A sensor in the air beside the body still feels this share of its rise.
 const FALLEN_SHARE: f64 = 0.05;
 /// Time constant of a sensor that has just come off, s.
@@ -112,8 +110,7 @@ struct Dial {
     reading: Reading,
     accuracy: Option<Accuracy>,
     display: Display,
-    gain: f64,
-    offset: f64,
+    flaw: Flaw,
     noise: Chance,
 }
 
@@ -152,20 +149,21 @@ impl Instrument {
     pub fn new(
         first: &Connection,
         all: &[&Connection],
-        seed: u64,
-        speed: f64,
-        faults: &[Fault],
+        staging: &Staging,
+        errors: &Errors,
     ) -> Self {
+        let (seed, speed) = (staging.seed, staging.speed);
         let driver = &first.driver;
-        let dial =
-            |reading: Reading, channel: Option<u32>| Dial::new(first, reading, channel, seed);
+        let dial = |reading: Reading, channel: Option<u32>| {
+            Dial::new(first, reading, channel, seed, errors)
+        };
         let electrical = Reading::ALL
             .into_iter()
             .filter(|r| *r != Reading::Temperature);
         let probes = all
             .iter()
             .filter(|c| c.kind == RoleKind::Temperature)
-            .map(|c| Probe::new(c, dial(Reading::Temperature, c.channel), seed, faults))
+            .map(|c| Probe::new(c, dial(Reading::Temperature, c.channel), staging, errors))
             .collect();
         Self {
             name: first.instrument.clone(),
@@ -296,7 +294,13 @@ fn electrical(reading: Reading, look: &Look) -> Option<f64> {
 }
 
 impl Dial {
-    fn new(connection: &Connection, reading: Reading, channel: Option<u32>, seed: u64) -> Self {
+    fn new(
+        connection: &Connection,
+        reading: Reading,
+        channel: Option<u32>,
+        seed: u64,
+        errors: &Errors,
+    ) -> Self {
         let accuracy = connection.driver.accuracy_of(reading).cloned();
         let name = format!(
             "{} {} {}",
@@ -304,13 +308,12 @@ impl Dial {
             reading.word(),
             channel.unwrap_or(0)
         );
-        let errors = Chance::of(seed, &name);
+        let chance = Chance::of(seed, &name);
         Self {
             reading,
             display: Display::of(accuracy.as_ref().map_or(0.0, |a| a.resolution)),
             accuracy,
-            gain: errors.even(0),
-            offset: errors.even(1),
+            flaw: errors.flaw(chance, &connection.instrument, reading, channel),
             noise: Chance::of(seed, &format!("{name} noise")),
         }
     }
@@ -338,16 +341,17 @@ impl Dial {
         let share = accuracy.of_reading * truth;
         let constant = accuracy.of_range * range + accuracy.floor;
         let noise = NOISE.0 * (share.abs() + constant) + NOISE.1 * accuracy.resolution;
-        truth + self.gain * share + self.offset * constant + noise * self.noise.bell(tick)
+        truth + self.flaw.of(truth, share, constant) + noise * self.noise.bell(tick)
     }
 }
 
 impl Probe {
-    fn new(connection: &Connection, dial: Dial, seed: u64, faults: &[Fault]) -> Self {
+    fn new(connection: &Connection, dial: Dial, staging: &Staging, errors: &Errors) -> Self {
         let name = format!("{} contact", connection.role);
         let place = SensorPlace::of(&connection.role);
-        let contact = 0.5 * CONTACT * (1.0 + Chance::of(seed, &name).even(0));
-        let troubles = faults
+        let contact = errors.contact(Chance::of(staging.seed, &name));
+        let troubles = staging
+            .faults
             .iter()
             .filter_map(|fault| trouble(fault, &connection.role, place))
             .collect();
