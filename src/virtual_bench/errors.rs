@@ -163,10 +163,7 @@ mod tests {
         let as_stated = errors(Drawn::AsStated);
         let (mean, deviation, largest) = mean_and_deviation(flaws(&as_stated, Reading::Power));
         assert!(mean.abs() < 0.012, "{mean}");
-        assert!(
-            (deviation - 0.3 / RECTANGULAR).abs() < 0.005,
-            "{deviation}"
-        );
+        assert!((deviation - 0.3 / RECTANGULAR).abs() < 0.005, "{deviation}");
         assert!(largest <= 0.3 && largest > 0.299, "{largest}");
         let normal = errors(Drawn::Normal);
         let (mean, deviation, largest) = mean_and_deviation(flaws(&normal, Reading::Power));

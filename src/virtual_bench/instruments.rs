@@ -4,13 +4,13 @@
 //! next. Its gain, offset and contact errors are drawn once for a bench and seed, as
 //! [`Errors`] says; its noise is a function of seed, channel and update tick.
 
-use super::{Connection, Staging};
 use super::chance::Chance;
 use super::dialect::{Ask, Dialect, Display, Knob};
 use super::error_queue::{DeviceError, ErrorQueue};
 use super::errors::{Errors, Flaw};
 use super::faults::{Fault, Onset};
 use super::unit::State;
+use super::{Connection, Staging};
 use crate::quantity::{Reading, shortest};
 use crate::spec::driver::{Accuracy, Driver};
 use crate::spec::sequence::RoleKind;

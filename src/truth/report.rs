@@ -1,0 +1,162 @@
+//! What a campaign found, and whether its goals are met.
+
+use super::coverage::Coverage;
+use super::limit::AtLimit;
+use super::outcomes::{FaultRow, Outcomes, Place};
+use super::proportion::Proportion;
+
+/// Least share of values whose U covers the truth.
+pub const LEAST_COVERAGE: f64 = 0.945;
+/// Coverage of a normal distribution by k = 2, and how far the control may lie off.
+pub const CONTROL: (f64, f64) = (0.954_5, 0.01);
+/// From so many values on the control is precise enough to be held to its goal.
+pub const CONTROL_FROM: u64 = 2000;
+/// Aim of an early finish: this share of the soak time saved.
+pub const TIME_SAVED: f64 = 0.5;
+
+/// What can be measured.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord)]
+pub enum Part {
+    /// Good units and units around the limits, errors as the budget states them.
+    Good,
+    /// The same with all inputs normal.
+    Control,
+    /// Draws on the limit.
+    Limit,
+    /// Every fault of unit and sensor.
+    Faults,
+    /// The same units with and without an early finish.
+    EarlyFinish,
+}
+
+impl Part {
+    /// All.
+    pub const ALL: [Part; 5] = [
+        Part::Good,
+        Part::Control,
+        Part::Limit,
+        Part::Faults,
+        Part::EarlyFinish,
+    ];
+
+    /// Its name, as it is asked for.
+    pub fn name(self) -> &'static str {
+        match self {
+            Part::Good => "good",
+            Part::Control => "control",
+            Part::Limit => "limit",
+            Part::Faults => "faults",
+            Part::EarlyFinish => "early-finish",
+        }
+    }
+}
+
+/// With an early finish beside without.
+#[derive(Debug, Clone, Copy, PartialEq, Default)]
+pub struct Early {
+    /// Units that ran both ways.
+    pub units: u64,
+    /// Time energised without, seconds.
+    pub usual_s: f64,
+    /// Time energised with, seconds.
+    pub early_s: f64,
+    /// Units whose verdict changed.
+    pub changed: u64,
+    /// Of those, from a fail (conditional or not) to a pass (conditional or not).
+    pub to_pass: u64,
+    /// Values of the worst case whose U covers the truth, with an early finish.
+    pub covered: Proportion,
+}
+
+impl Early {
+    /// Share of the time that is saved.
+    pub fn saved(&self) -> f64 {
+        if self.usual_s > 0.0 {
+            1.0 - self.early_s / self.usual_s
+        } else {
+            0.0
+        }
+    }
+}
+
+/// What a campaign found.
+#[derive(Debug, Clone, PartialEq, Default)]
+pub struct Report {
+    /// Units of each population.
+    pub units: u64,
+    /// The seed.
+    pub seed: u64,
+    /// Runs in all.
+    pub runs: u64,
+    /// Coverage as stated.
+    pub good: Vec<Coverage>,
+    /// Coverage with all inputs normal.
+    pub control: Vec<Coverage>,
+    /// How units were judged, by where their truth lies.
+    pub places: Vec<(Place, Outcomes)>,
+    /// False passes on the limit.
+    pub limit: Vec<AtLimit>,
+    /// Faults.
+    pub faults: Vec<FaultRow>,
+    /// Early finish; absent where it was not asked for.
+    pub early: Option<Early>,
+}
+
+/// One goal and whether it is met.
+#[derive(Debug, Clone, PartialEq, Eq)]
+pub struct Goal {
+    /// What was wanted.
+    pub what: String,
+    /// Whether it is so.
+    pub met: bool,
+}
+
+impl Report {
+    /// The goals of what was measured. An early finish is an aim, but a fail that it
+    /// turns into a pass counts.
+    pub fn goals(&self) -> Vec<Goal> {
+        let mut goals = Vec::new();
+        for row in self.good.iter().filter(|row| row.covered.of > 0) {
+            let share = row.covered.share().unwrap_or(0.0);
+            goals.push(Goal {
+                what: format!("coverage at least 94.5 %: {}", named(row)),
+                met: share >= LEAST_COVERAGE,
+            });
+        }
+        let precise = |row: &&Coverage| row.covered.of >= CONTROL_FROM;
+        for row in self.control.iter().filter(precise) {
+            let share = row.covered.share().unwrap_or(0.0);
+            goals.push(Goal {
+                what: format!("control 95.45 +-1 %: {}", named(row)),
+                met: (share - CONTROL.0).abs() <= CONTROL.1,
+            });
+        }
+        for row in &self.limit {
+            goals.push(Goal {
+                what: format!(
+                    "false passes at most 2.275 % and three standard errors: {}",
+                    row.of
+                ),
+                met: row.passes.share().is_some_and(|share| share <= row.goal()),
+            });
+        }
+        for row in &self.faults {
+            goals.push(Goal {
+                what: format!("never passed: {}, {}", row.fault, row.kind.words()),
+                met: row.outcomes.passed() == 0,
+            });
+        }
+        if let Some(early) = &self.early {
+            goals.push(Goal {
+                what: "early finish turns no fail into a pass".to_owned(),
+                met: early.to_pass == 0,
+            });
+        }
+        goals
+    }
+}
+
+/// Quantity and appliance of a row.
+pub fn named(row: &Coverage) -> String {
+    format!("{}, {}", row.quantity.words(), row.kind.words())
+}
