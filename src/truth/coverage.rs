@@ -63,8 +63,8 @@ impl Quantity {
 pub struct Coverage {
     /// Of what.
     pub quantity: Quantity,
-    /// In which appliance.
-    pub kind: Kind,
+    /// In which appliance; absent: in both together.
+    pub kind: Option<Kind>,
     /// Values whose U covers the truth, of all values.
     pub covered: Proportion,
     /// Units that left no value.
@@ -76,7 +76,7 @@ pub struct Coverage {
 }
 
 impl Coverage {
-    fn new(quantity: Quantity, kind: Kind) -> Self {
+    fn new(quantity: Quantity, kind: Option<Kind>) -> Self {
         Coverage {
             quantity,
             kind,
@@ -125,9 +125,10 @@ impl Coverage {
     }
 }
 
-/// A row for each quantity of each appliance, both kinds' first.
+/// A row for each quantity of both appliances together, and of each.
 pub(super) fn rows() -> Vec<Coverage> {
-    let of = |quantity| Kind::ALL.map(|kind| Coverage::new(quantity, kind));
+    let kinds = [None, Some(Kind::Plain), Some(Kind::Fan)];
+    let of = |quantity| kinds.map(|kind| Coverage::new(quantity, kind));
     Quantity::ALL.into_iter().flat_map(of).collect()
 }
 
@@ -147,7 +148,8 @@ pub(super) fn count(
     let judged = cells.iter().position(|cell| cell.position == position);
     let truth = judged.and_then(|cell| truths.get(cell));
     let result = played.cell(position);
-    for row in rows.iter_mut().filter(|row| row.kind == setting.kind) {
+    let is_for = |row: &&mut Coverage| row.kind.is_none_or(|kind| kind == setting.kind);
+    for row in rows.iter_mut().filter(is_for) {
         let estimate = result.and_then(|result| row.quantity.of(result));
         match (estimate, truth) {
             (Some(estimate), Some(truth)) => row.add(estimate, row.quantity.truth(truth)),
@@ -163,7 +165,7 @@ mod tests {
 
     #[test]
     fn a_row_counts_what_u_covers_and_the_pull() {
-        let mut row = Coverage::new(Quantity::Power, Kind::Plain);
+        let mut row = Coverage::new(Quantity::Power, None);
         for (value, expanded) in [(10.0, 1.0), (11.0, 1.0), (11.1, 1.0), (9.0, 2.0)] {
             let estimate = Estimate {
                 value,

@@ -3,10 +3,11 @@
 //!
 //! - **Power**: active power at exactly the voltage that the cell is run at, settled, in
 //!   the unit's own room; mean over a whole wander of the room.
-//! - **Highest temperature of the body**: the settled temperature of the link's body in
-//!   the unit's own room, and what it still climbs after OFF.
-//! - **Worst case**: that as a rise over the room, at the highest ambient (1 K/K, which is
-//!   how the rule defines it).
+//! - **Worst case**: the settled rise of the link's body over the room, and what it still
+//!   climbs after OFF, at that voltage and at the highest ambient (1 K/K, which is how
+//!   the rule defines it).
+//! - **Highest temperature of the body**: the same in the unit's own room, at the voltage
+//!   that its supply really gave: it is what was there to be seen.
 
 use super::TruthError;
 use super::setting::Setting;
@@ -28,11 +29,10 @@ const STEP_S: f64 = 60.0;
 pub(super) struct Settled {
     /// Settled power, W.
     pub(super) power_w: f64,
-    /// The link's body over the room, after-heat included, K.
-    pub(super) rise_k: f64,
-    /// Highest temperature of the link's body, degC.
+    /// Highest temperature of the link's body in its own room and at its own supply,
+    /// degC.
     pub(super) body_degc: f64,
-    /// The same at the highest ambient, degC.
+    /// The same at the highest ambient and the wanted voltage, degC.
     pub(super) worst_degc: f64,
 }
 
@@ -51,7 +51,33 @@ pub(super) fn staging(setting: &Setting, unit: &Unit) -> Staging {
 
 /// The truth of a unit in a cell.
 pub(super) fn settled(setting: &Setting, unit: &Unit, cell: &Cell) -> Result<Settled, TruthError> {
-    let bench = VirtualBench::with_errors(staging(setting, unit), &Errors::default())?;
+    let (power_w, rise_k) = followed(setting, unit, cell, 0.0)?;
+    let seen_k = match unit.supply {
+        0.0 => rise_k,
+        off => followed(setting, unit, cell, off)?.1,
+    };
+    let room = unit.room.get();
+    let hottest = setting.plan.appliance.highest_ambient.get();
+    Ok(Settled {
+        power_w,
+        body_degc: room + seen_k,
+        worst_degc: room.max(hottest) + rise_k,
+    })
+}
+
+/// Settled power in W and rise of the link's body in K, after-heat included, with the
+/// supply's voltage off by a share.
+fn followed(
+    setting: &Setting,
+    unit: &Unit,
+    cell: &Cell,
+    supply: f64,
+) -> Result<(f64, f64), TruthError> {
+    let errors = Errors {
+        supply,
+        ..Errors::default()
+    };
+    let bench = VirtualBench::with_errors(staging(setting, unit), &errors)?;
     bench.hands().turn(&cell.position, Moment::START);
     let supply = Supply::of(setting, &bench, cell)?;
     supply.say(&supply.on, Moment::START);
@@ -73,15 +99,7 @@ pub(super) fn settled(setting: &Setting, unit: &Unit, cell: &Cell) -> Result<Set
         climbed = climbed.max(bench.truth(at(s + after)).link.get() - last);
         after += 1.0;
     }
-    let rise_k = rise / steps + climbed;
-    let room = unit.room.get();
-    let hottest = setting.plan.appliance.highest_ambient.get();
-    Ok(Settled {
-        power_w: power / steps,
-        rise_k,
-        body_degc: room + rise_k,
-        worst_degc: room.max(hottest) + rise_k,
-    })
+    Ok((power / steps, rise / steps + climbed))
 }
 
 /// The supply, spoken to in its own dialect.

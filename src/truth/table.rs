@@ -4,8 +4,7 @@ use std::fmt::Write;
 
 use super::coverage::Coverage;
 use super::outcomes::Outcomes;
-use super::report::{Report, TIME_SAVED, named};
-use crate::virtual_bench::Drawn;
+use super::report::{Report, TIME_SAVED, drawn_words, named};
 
 /// The whole report. It holds nothing that differs between two machines.
 pub fn text(report: &Report) -> String {
@@ -72,14 +71,6 @@ fn coverage(out: &mut String, about: &str, rows: &[Coverage]) {
         out,
         "pull: mean of (value - truth) / u; sd: its standard deviation"
     );
-}
-
-fn drawn_words(drawn: Drawn) -> &'static str {
-    match drawn {
-        Drawn::House => "as in rehearsals",
-        Drawn::AsStated => "as stated",
-        Drawn::Normal => "all normal",
-    }
 }
 
 fn limit(out: &mut String, report: &Report) {
@@ -167,10 +158,11 @@ fn early(out: &mut String, report: &Report) {
 }
 
 fn goals(out: &mut String, report: &Report) {
-    title(out, "goals");
-    for goal in report.goals() {
-        let word = if goal.met { "met     " } else { "NOT MET " };
-        let _ = writeln!(out, "{word} {}", goal.what);
+    let goals = report.goals();
+    let met = goals.iter().filter(|goal| goal.met).count();
+    title(out, &format!("goals: {met} of {} met", goals.len()));
+    for goal in goals.iter().filter(|goal| !goal.met) {
+        let _ = writeln!(out, "NOT MET  {}", goal.what);
     }
 }
 

@@ -14,10 +14,10 @@ const SUPPLY: f64 = 0.005;
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 pub(super) enum Spread {
     /// As a production around its plate: power with a standard deviation of 2 %,
-    /// the link's body of 1.2 K, both normal.
+    /// the link's body of 0.8 K, both normal.
     Production,
     /// Evenly across the limits: power to beyond both ends of its band, the link's
-    /// body from 7 K below to 7 K above Th.
+    /// body from 2 K below to 8 K above what the file says, which is 4 K below Th.
     Limits,
 }
 
@@ -46,8 +46,8 @@ impl Unit {
     ) -> Self {
         let chance = Chance::of(seed, &format!("{name}, {}, {number}", setting.kind.words()));
         let (power, warmth) = match spread {
-            Spread::Production => (0.02 * chance.normal(0), 1.2 * chance.normal(1)),
-            Spread::Limits => (chance.even(0), 7.0 * chance.even(1)),
+            Spread::Production => (0.02 * chance.normal(0), 0.8 * chance.normal(1)),
+            Spread::Limits => (chance.even(0), 3.0 + 5.0 * chance.even(1)),
         };
         let power = match (spread, setting.kind) {
             (Spread::Production, _) => power,
