@@ -6,7 +6,7 @@ use crate::spec::virtual_unit::{Resistance, VirtualUnit};
 use crate::virtual_bench::{Chance, Fault};
 
 /// The room, degC: even between these.
-const ROOM: (f64, f64) = (20.0, 26.0);
+const ROOM: (f64, f64) = (22.0, 24.0);
 /// The supply's true voltage lies off by up to this share, evenly.
 const SUPPLY: f64 = 0.005;
 
@@ -14,10 +14,10 @@ const SUPPLY: f64 = 0.005;
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 pub(super) enum Spread {
     /// As a production around its plate: power with a standard deviation of 2 %,
-    /// the link's body of 0.8 K, both normal.
+    /// the link's body of 0.6 K, both normal.
     Production,
     /// Evenly across the limits: power to beyond both ends of its band, the link's
-    /// body from 2 K below to 8 K above what the file says, which is 4 K below Th.
+    /// body up to 8 K above what the file says, which is 4 K below Th.
     Limits,
 }
 
@@ -46,8 +46,8 @@ impl Unit {
     ) -> Self {
         let chance = Chance::of(seed, &format!("{name}, {}, {number}", setting.kind.words()));
         let (power, warmth) = match spread {
-            Spread::Production => (0.02 * chance.normal(0), 0.8 * chance.normal(1)),
-            Spread::Limits => (chance.even(0), 3.0 + 5.0 * chance.even(1)),
+            Spread::Production => (0.02 * chance.normal(0), 0.6 * chance.normal(1)),
+            Spread::Limits => (chance.even(0), 4.0 + 4.0 * chance.even(1)),
         };
         let power = match (spread, setting.kind) {
             (Spread::Production, _) => power,

@@ -50,9 +50,11 @@ fn a_sequence_says_what_its_good_units_rise_by() {
     assert_eq!(plan.guards.least_rise.get(), 25.0);
     assert_eq!(plan.guards.rise_within.get(), 480.0);
     let told = "the body rises by 25 K within 8 min (the sequence's)";
-    assert!(plan.to_string().contains(told), "{plan}");
+    let text = plan.lines_of_text().join("\n");
+    assert!(text.contains(told), "{text}");
     let usual = "the body rises by 10 K within 5 min (house default)";
-    assert!(planned(dryer()).to_string().contains(usual));
+    let text = planned(dryer()).lines_of_text().join("\n");
+    assert!(text.contains(usual), "{text}");
 }
 
 #[test]
