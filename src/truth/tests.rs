@@ -76,3 +76,27 @@ fn false_passes_on_the_limit_are_as_few_as_the_guard_band_promises() {
         assert!(row.passes.share().unwrap() > 0.019, "{}", text(&report));
     }
 }
+
+#[test]
+fn one_unit_with_each_fault_is_never_passed() {
+    let report = measured(&campaign(1, &[Part::Faults]));
+    assert_eq!(unmet(&report), Vec::<String>::new(), "{}", text(&report));
+    let all: u64 = report.faults.iter().map(|row| row.outcomes.all()).sum();
+    assert_eq!(all, 24, "{}", text(&report));
+}
+
+/// The committed table was not written by another campaign than its head says, and
+/// what it says of its goals is so.
+#[test]
+fn the_committed_table_is_of_four_thousand_units() {
+    let table = include_str!("../../tests/data/known-truth.txt");
+    assert!(table.starts_with("known truth: 4000 units in each population, seed 1,"));
+    let unmet = table
+        .lines()
+        .filter(|line| line.starts_with("NOT MET"))
+        .count();
+    let goals = table.lines().find_map(|line| line.strip_prefix("goals: "));
+    let words: Vec<&str> = goals.unwrap().split(' ').collect();
+    let [met, all]: [usize; 2] = [words[0], words[2]].map(|n| n.parse().unwrap());
+    assert_eq!(all - met, unmet, "{table}");
+}
