@@ -13,6 +13,7 @@ use super::report::{Early, Part, Report};
 use super::setting::{Kind, Setting, Variant};
 use super::unit::{Spread, Unit};
 use crate::analysis::Estimate;
+use crate::plan::{Action, PlannedStep};
 use crate::quantity::{Moment, Seconds};
 use crate::virtual_bench::{Chance, Drawn, Fault, Onset};
 
@@ -231,11 +232,11 @@ impl Work<'_> {
     }
 
     /// Nothing where the sequence's language knows no early finish.
-    fn early(&mut self) -> Result<Option<Early>, TruthError> {
+    fn early(&mut self) -> Result<Vec<Early>, TruthError> {
         let Ok(early_settings) = settings(self.campaign, true) else {
-            return Ok(None);
+            return Ok(Vec::new());
         };
-        let mut early = Early::default();
+        let mut found: Vec<Early> = Kind::ALL.map(Early::new).to_vec();
         let mut coverage = rows();
         for number in 0..self.campaign.units.div_ceil(PER_EARLY) {
             let (which, spread) = turn(number);
@@ -245,22 +246,37 @@ impl Work<'_> {
             let setting = &early_settings[which];
             let short = self.play(Part::EarlyFinish, setting, &unit, Drawn::AsStated)?;
             count(&mut coverage, setting, &unit, &short)?;
-            early.units += 1;
-            early.usual_s += long.energised_s();
-            early.early_s += short.energised_s();
-            let (was, is) = (long.judgement.verdict, short.judgement.verdict);
-            early.changed += u64::from(was != is);
-            early.to_pass += u64::from(fails(was) && passes(is));
+            let soaked = [soaked_s(&usual, &long), soaked_s(setting, &short)];
+            let verdicts = [long, short].map(|played| played.judgement.verdict);
+            let of_kind = found.iter_mut().filter(|early| early.kind == usual.kind);
+            of_kind.for_each(|early| early.add(soaked, verdicts));
         }
-        for row in coverage
-            .iter()
-            .filter(|row| row.quantity == Quantity::Worst)
-        {
-            early.covered.count += row.covered.count;
-            early.covered.of += row.covered.of;
+        for early in &mut found {
+            let is_its = |row: &&Coverage| row.kind == Some(early.kind);
+            for row in coverage.iter().filter(is_its) {
+                match row.quantity {
+                    Quantity::Power => early.power = row.covered,
+                    Quantity::Worst => early.worst = row.covered,
+                    Quantity::Body => {}
+                }
+            }
         }
-        Ok(Some(early))
+        Ok(found)
     }
+}
+
+/// How long a unit soaked in all cells, seconds: energised, without the steps `measure`
+/// that take the same time whatever the soak does.
+fn soaked_s(setting: &Setting, played: &Played) -> f64 {
+    let measured = |step: &PlannedStep| match (&step.action, step.cell) {
+        (Action::Measure(timed), Some(cell)) => {
+            let result = played.analysis.cells.get(cell)?;
+            result.steady.known().map(|_| timed.length.get())
+        }
+        _ => None,
+    };
+    let measuring: f64 = setting.plan.steps.iter().filter_map(measured).sum();
+    played.energised_s() - measuring
 }
 
 fn with_onset(name: &str, from: Moment) -> Result<Fault, TruthError> {
@@ -273,14 +289,4 @@ fn with_onset(name: &str, from: Moment) -> Result<Fault, TruthError> {
             .map_err(|e: crate::virtual_bench::ParseFaultError| TruthError::Files(e.to_string()))?,
     };
     Ok(fault)
-}
-
-fn fails(outcome: crate::judge::Outcome) -> bool {
-    use crate::judge::Outcome::{ConditionalFail, Fail};
-    matches!(outcome, Fail | ConditionalFail)
-}
-
-fn passes(outcome: crate::judge::Outcome) -> bool {
-    use crate::judge::Outcome::{ConditionalPass, Pass};
-    matches!(outcome, Pass | ConditionalPass)
 }

@@ -4,6 +4,8 @@ use super::coverage::Coverage;
 use super::limit::AtLimit;
 use super::outcomes::{FaultRow, Outcomes, Place};
 use super::proportion::Proportion;
+use super::setting::Kind;
+use crate::judge::Outcome;
 use crate::virtual_bench::Drawn;
 
 /// Least share of values whose U covers the truth.
@@ -55,23 +57,56 @@ impl Part {
 }
 
 /// With an early finish beside without.
-#[derive(Debug, Clone, Copy, PartialEq, Default)]
+#[derive(Debug, Clone, Copy, PartialEq)]
 pub struct Early {
+    /// The appliance.
+    pub kind: Kind,
     /// Units that ran both ways.
     pub units: u64,
-    /// Time energised without, seconds.
+    /// Soak time without, seconds.
     pub usual_s: f64,
-    /// Time energised with, seconds.
+    /// Soak time with, seconds.
     pub early_s: f64,
     /// Units whose verdict changed.
     pub changed: u64,
-    /// Of those, from a fail (conditional or not) to a pass (conditional or not).
+    /// Of those, from any failing outcome to any passing one, conditional ones included:
+    /// near a limit the noise of another minute does that too.
+    pub across: u64,
+    /// Of those, from a fail to a pass.
     pub to_pass: u64,
-    /// Values of the worst case whose U covers the truth, with an early finish.
-    pub covered: Proportion,
+    /// Settled powers whose U covers the truth, with an early finish.
+    pub power: Proportion,
+    /// The same of worst cases.
+    pub worst: Proportion,
 }
 
 impl Early {
+    pub(super) fn new(kind: Kind) -> Self {
+        Early {
+            kind,
+            units: 0,
+            usual_s: 0.0,
+            early_s: 0.0,
+            changed: 0,
+            across: 0,
+            to_pass: 0,
+            power: Proportion::default(),
+            worst: Proportion::default(),
+        }
+    }
+
+    pub(super) fn add(&mut self, soaked: [f64; 2], verdicts: [Outcome; 2]) {
+        use Outcome::{ConditionalFail, ConditionalPass, Fail, Pass};
+        let [was, is] = verdicts;
+        self.units += 1;
+        self.usual_s += soaked[0];
+        self.early_s += soaked[1];
+        self.changed += u64::from(was != is);
+        let failed = matches!(was, Fail | ConditionalFail);
+        self.across += u64::from(failed && matches!(is, Pass | ConditionalPass));
+        self.to_pass += u64::from(was == Fail && is == Pass);
+    }
+
     /// Share of the time that is saved.
     pub fn saved(&self) -> f64 {
         if self.usual_s > 0.0 {
@@ -101,8 +136,8 @@ pub struct Report {
     pub limit: Vec<AtLimit>,
     /// Faults.
     pub faults: Vec<FaultRow>,
-    /// Early finish; absent where it was not asked for.
-    pub early: Option<Early>,
+    /// Early finish; empty where it was not asked for, or where sequences know none.
+    pub early: Vec<Early>,
 }
 
 /// One goal and whether it is met.
@@ -145,9 +180,9 @@ impl Report {
                 met: row.outcomes.passed() == 0,
             });
         }
-        if let Some(early) = &self.early {
+        for early in &self.early {
             goals.push(Goal {
-                what: "early finish turns no fail into a pass".to_owned(),
+                what: format!("no fail becomes a pass, {}", early.kind.words()),
                 met: early.to_pass == 0,
             });
         }
@@ -168,7 +203,7 @@ fn covers(row: &Coverage) -> bool {
 
 /// Quantity and appliance of a row.
 pub fn named(row: &Coverage) -> String {
-    let kind = row.kind.map_or("both", super::setting::Kind::words);
+    let kind = row.kind.map_or("both", Kind::words);
     format!("{}, {kind}", row.quantity.words())
 }
 
@@ -178,5 +213,27 @@ pub fn drawn_words(drawn: Drawn) -> &'static str {
         Drawn::House => "as in rehearsals",
         Drawn::AsStated => "as stated",
         Drawn::Normal => "all normal",
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn an_early_finish_counts_time_and_verdicts() {
+        use Outcome::{ConditionalFail, ConditionalPass, Fail, Pass};
+        let mut early = Early::new(Kind::Plain);
+        early.add([600.0, 300.0], [Pass, Pass]);
+        early.add([600.0, 300.0], [ConditionalFail, ConditionalPass]);
+        assert_eq!((early.changed, early.across, early.to_pass), (1, 1, 0));
+        assert!((early.saved() - 0.5).abs() < 1e-12);
+        early.add([600.0, 600.0], [Fail, Pass]);
+        assert_eq!((early.changed, early.across, early.to_pass), (2, 2, 1));
+        let report = Report {
+            early: vec![early],
+            ..Report::default()
+        };
+        assert!(report.goals().iter().any(|goal| !goal.met));
     }
 }
