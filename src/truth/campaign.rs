@@ -53,6 +53,9 @@ impl Campaign {
     }
 }
 
+/// Outcomes by where the truth lies.
+type Places = Vec<(Place, Outcomes)>;
+
 /// What a campaign works with.
 struct Work<'a> {
     campaign: &'a Campaign,
@@ -131,9 +134,9 @@ impl Work<'_> {
         Ok(played)
     }
 
-    fn good(&mut self) -> Result<(Vec<Coverage>, Vec<(Place, Outcomes)>), TruthError> {
+    fn good(&mut self) -> Result<(Vec<Coverage>, Places), TruthError> {
         let mut coverage = rows();
-        let mut places: Vec<(Place, Outcomes)> = Place::ALL
+        let mut places: Places = Place::ALL
             .map(|place| (place, Outcomes::default()))
             .to_vec();
         for number in 0..self.campaign.units {
