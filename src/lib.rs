@@ -37,6 +37,8 @@ pub mod analysis;
 
 pub mod judge;
 
+pub mod truth;
+
 pub mod chart;
 
 pub mod cli;

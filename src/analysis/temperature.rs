@@ -179,9 +179,12 @@ fn at_highest_ambient(
     Ok(seen.moved(per_kelvin * to_go, lines))
 }
 
+/// The input of a plain resistor goes with the voltage to a power within this interval.
+const EXPONENTS: (f64, f64) = (1.95, 2.0);
+
 /// Moves a temperature to the highest voltage of the supply range, for plain resistors
-/// without a fan only: their rise goes with their power, which goes with the voltage
-/// to the power of 1.95 to 2. The middle is added, the interval enters U.
+/// without a fan only: their rise goes with their power. The middle of the exponent's
+/// interval is taken, its width and the voltage's own uncertainty enter U.
 fn at_highest_supply(
     view: &CellView,
     at_room: Estimate,
@@ -195,18 +198,28 @@ fn at_highest_supply(
     let highest = appliance.supply_ends(&view.cell.position).1.get();
     let volts = steady.map_or(view.cell.supply.voltage.get(), |s| s.plug_v.value);
     let ratio = libm::log(highest / volts);
-    if !ratio.is_finite() || ratio <= 0.0 {
-        return Ok(at_room);
+    if !ratio.is_finite() {
+        return Err("the voltage at the plug is not known".to_owned());
     }
     let rise = peak.temperature_degc.value - peak.ambient_degc;
     let more = |exponent: f64| rise * (libm::exp(exponent * ratio) - 1.0);
-    let (low, high) = (more(1.95), more(2.0));
-    let line = Share::rectangular(
-        format!("rise at {} V, exponent 1.95 to 2", shortest(highest)),
-        0.5 * (high - low),
+    let (low, high) = (more(EXPONENTS.0), more(EXPONENTS.1));
+    let mut lines = vec![Share::rectangular(
+        format!(
+            "rise referred from {volts:.2} V to {} V, exponent {} to {}",
+            shortest(highest),
+            EXPONENTS.0,
+            EXPONENTS.1
+        ),
+        0.5 * (high - low).abs(),
         "K",
-    );
-    Ok(at_room.moved(0.5 * (low + high), [line]))
+    )];
+    if let Some(steady) = steady {
+        let per_volt = -EXPONENTS.1 * rise / volts;
+        let of_voltage = steady.plug_v.budget.iter().cloned();
+        lines.extend(of_voltage.map(|line| line.times(per_volt)));
+    }
+    Ok(at_room.moved(0.5 * (low + high), lines))
 }
 
 /// From the place that is measured to the link: nothing on its own body; elsewhere

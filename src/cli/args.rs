@@ -26,6 +26,8 @@ pub enum Verb {
     Judge(Judge),
     /// Put the virtual bench's instruments on pseudo-terminals (Unix)
     Stage(Stage),
+    /// Measure the judging against units of the virtual bench whose truth is known
+    KnownTruth(KnownTruth),
     /// Show the cautions
     Cautions,
 }
@@ -156,4 +158,21 @@ pub struct Stage {
     /// The bench file to write, which names the pseudo-terminals
     #[arg(long, value_name = "FILE", default_value = "staged-bench.yaml")]
     pub write: PathBuf,
+}
+
+/// `known-truth`
+#[derive(Debug, Args)]
+pub struct KnownTruth {
+    /// Units of each population; each fault takes a twentieth of it, early finish a quarter
+    #[arg(long, default_value_t = 4000, value_parser = clap::value_parser!(u64).range(1..=1_000_000))]
+    pub units: u64,
+    /// Chooses every unit, error and noise
+    #[arg(long, default_value_t = 1)]
+    pub seed: u64,
+    /// Only this part: good, control, limit, faults or early-finish; may be given again
+    #[arg(long, value_name = "PART", value_parser = super::known_truth::part)]
+    pub only: Vec<crate::truth::Part>,
+    /// Write the table to this file too, and its numbers beside it as .csv
+    #[arg(long, value_name = "FILE")]
+    pub table: Option<PathBuf>,
 }

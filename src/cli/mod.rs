@@ -9,6 +9,7 @@ mod files;
 mod finish;
 mod hands;
 mod judging;
+mod known_truth;
 mod live;
 mod progress;
 mod record_new;
@@ -50,6 +51,7 @@ fn obey(verb: &Verb) -> Exit {
         Verb::Run(args) => live::run(args),
         Verb::Judge(args) => judging::judge_again(&args.record),
         Verb::Stage(args) => stage(args),
+        Verb::KnownTruth(args) => known_truth::known_truth(args),
         Verb::Cautions => cautions::show(),
     }
 }

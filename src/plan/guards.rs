@@ -24,6 +24,11 @@ const LEAST_RISE: f64 = 10.0;
 /// ... within this time.
 const RISE_WITHIN: Seconds = Seconds::whole(300);
 
+/// Whether the least rise and its time are the house defaults.
+pub(super) fn rise_is_usual(guards: &Guards) -> bool {
+    guards.least_rise.get() == LEAST_RISE && guards.rise_within == RISE_WITHIN
+}
+
 /// Every guard of a plan.
 pub(super) fn guards(
     stated: &GuardLimits,
@@ -49,8 +54,8 @@ pub(super) fn guards(
         input_after: stated.input_after.unwrap_or(INPUT_AFTER),
         input: input.collect(),
         silence: silence.collect(),
-        least_rise: Kelvins::of(LEAST_RISE),
-        rise_within: RISE_WITHIN,
+        least_rise: stated.least_rise.unwrap_or(Kelvins::of(LEAST_RISE)),
+        rise_within: stated.rise_within.unwrap_or(RISE_WITHIN),
     }
 }
 

@@ -6,6 +6,7 @@ use crate::quantity::{Volts, Watts, shortest};
 use crate::spec::plate;
 use crate::spec::sequence::{Decision, RuleKind, RuleWeight};
 
+use super::guards::rise_is_usual;
 use super::reference::rated_points;
 
 /// Widest line.
@@ -184,10 +185,15 @@ impl Plan {
             ));
         }
         lines.extend(self.silence_lines());
+        let whose = if rise_is_usual(guards) {
+            "house default"
+        } else {
+            "the sequence's"
+        };
         lines.extend(named(
             "sensor",
             &format!(
-                "the body rises by {} within {} (house default)",
+                "the body rises by {} within {} ({whose})",
                 guards.least_rise, guards.rise_within
             ),
         ));

@@ -306,7 +306,7 @@ pub struct Guards {
     /// polling interval: the larger of 2 s and three update intervals.
     pub silence: Vec<Seconds>,
     /// A body that has not risen by this much within `rise_within` of energising is
-    /// not believed (house default 10 K within 5 min).
+    /// not believed (house default 10 K within 5 min, else the sequence's).
     pub least_rise: Kelvins,
     /// See `least_rise`.
     pub rise_within: Seconds,

@@ -1,13 +1,13 @@
 //! Reading a record back, and refusing what is not whole.
 
 use std::fs;
-use std::io;
+use std::io::{self, Read};
 use std::path::{Path, PathBuf};
 
 use csv::ByteRecord;
 
 use super::columns::{EVENT_HEAD, Names, RowError, read_happening};
-use super::hash::{sha256_of, sha256_of_file};
+use super::hash::{sha256_of, sha256_of_all};
 use super::types::{Event, Happening, Manifest, RECORD_FORMAT, Sample, StoredWaveform};
 use super::waveform::{WAVEFORM_HEAD, WaveformColumns};
 use crate::plan::{PLAN_FORMAT, Plan};
@@ -73,6 +73,24 @@ pub enum RecordError {
     },
 }
 
+/// Where the files of a run are read from: a folder, or memory.
+pub trait RunFiles {
+    /// Opens a file by its plain name.
+    ///
+    /// # Errors
+    /// Where it can't be opened; `NotFound` where it is not there.
+    fn open(&self, name: &str) -> io::Result<Box<dyn Read + '_>>;
+}
+
+/// The files of a run in a folder.
+struct OnDisk(PathBuf);
+
+impl RunFiles for OnDisk {
+    fn open(&self, name: &str) -> io::Result<Box<dyn Read + '_>> {
+        Ok(Box::new(fs::File::open(self.0.join(name))?))
+    }
+}
+
 /// A closed record.
 #[derive(Debug)]
 pub struct Folder {
@@ -95,20 +113,34 @@ impl Folder {
     /// # Errors
     /// [`RecordError`]: not closed, changed, torn, or not a record.
     pub fn open(path: &Path) -> Result<Self, RecordError> {
-        let run = path.join("run");
+        Self::from_files(path, &OnDisk(path.join("run")))
+    }
+
+    /// Reads a closed record whose run's files lie elsewhere than in a folder; `path`
+    /// is what messages call it.
+    ///
+    /// # Errors
+    /// As [`Folder::open`].
+    pub fn from_files(path: &Path, files: &dyn RunFiles) -> Result<Self, RecordError> {
+        let run = Run {
+            at: path.join("run"),
+            files,
+        };
         let manifest = read_manifest(path, &run)?;
         for file in &manifest.files {
-            let at = run.join(safe_name(&run, &file.name)?);
-            let found = sha256_of_file(&at).map_err(|e| unreadable(&at, e))?;
+            let name = safe_name(&run.at, &file.name)?;
+            let found = run.opened(name).and_then(sha256_of_all);
+            let found = found.map_err(|e| unreadable(&run.at.join(name), e))?;
             if found != file.sha256 {
-                return Err(RecordError::Changed { file: at });
+                let file = run.at.join(name);
+                return Err(RecordError::Changed { file });
             }
         }
-        let plan = read_plan(&run.join("plan.json"))?;
+        let plan = read_plan(&run)?;
         let names = Names::of(&plan);
         let head = names.head();
         let mut samples: Vec<Sample> = Vec::with_capacity(manifest.samples as usize);
-        read_rows(&run.join("samples.csv"), &head, |row| {
+        read_rows(&run, "samples.csv", &head, |row| {
             let sample = names.read_sample(row)?;
             let expected = samples.len() as u64 + 1;
             in_order("seq", sample.seq, expected)?;
@@ -116,7 +148,7 @@ impl Folder {
             Ok(())
         })?;
         let mut happenings: Vec<Happening> = Vec::new();
-        read_rows(&run.join("events.csv"), &EVENT_HEAD, |row| {
+        read_rows(&run, "events.csv", &EVENT_HEAD, |row| {
             let happening = read_happening(row)?;
             in_order("seq", happening.seq, happenings.len() as u64 + 1)?;
             happenings.push(happening);
@@ -151,7 +183,7 @@ impl Folder {
 
 /// Every waveform that the events tell of.
 fn read_waveforms(
-    run: &Path,
+    run: &Run,
     manifest: &Manifest,
     plan: &Plan,
     happenings: &[Happening],
@@ -167,7 +199,7 @@ fn read_waveforms(
             continue;
         };
         let meaning = |what: &str| RecordError::Meaning {
-            file: run.join("events.csv"),
+            file: run.at.join("events.csv"),
             what: format!("event {}: {what}", happening.seq),
         };
         if *cell >= plan.cells.len() {
@@ -177,13 +209,13 @@ fn read_waveforms(
         if !manifest.files.iter().any(|known| known.name == *file) {
             return Err(meaning("its waveform is no file of the manifest"));
         }
-        let at = run.join(safe_name(run, file)?);
+        let name = safe_name(&run.at, file)?;
         let mut columns = WaveformColumns::default();
-        read_rows(&at, &WAVEFORM_HEAD, |row| columns.take(row))?;
+        read_rows(run, name, &WAVEFORM_HEAD, |row| columns.take(row))?;
         let wave = columns
             .finish(*samples)
             .map_err(|what| RecordError::Meaning {
-                file: at.clone(),
+                file: run.at.join(name),
                 what,
             })?;
         waveforms.push(StoredWaveform { cell: *cell, wave });
@@ -191,11 +223,29 @@ fn read_waveforms(
     Ok(waveforms)
 }
 
-fn read_manifest(path: &Path, run: &Path) -> Result<Manifest, RecordError> {
-    let file = run.join("manifest.json");
-    let bytes = match fs::read(&file) {
+/// The files of a run, and where messages say that they are.
+struct Run<'a> {
+    at: PathBuf,
+    files: &'a dyn RunFiles,
+}
+
+impl<'a> Run<'a> {
+    fn opened(&self, name: &str) -> io::Result<Box<dyn Read + 'a>> {
+        self.files.open(name)
+    }
+
+    fn bytes(&self, name: &str) -> io::Result<Vec<u8>> {
+        let mut bytes = Vec::new();
+        self.opened(name)?.read_to_end(&mut bytes)?;
+        Ok(bytes)
+    }
+}
+
+fn read_manifest(path: &Path, run: &Run) -> Result<Manifest, RecordError> {
+    let file = run.at.join("manifest.json");
+    let bytes = match run.bytes("manifest.json") {
         Ok(bytes) => bytes,
-        Err(e) if e.kind() == io::ErrorKind::NotFound && run.is_dir() => {
+        Err(e) if e.kind() == io::ErrorKind::NotFound && run.at.is_dir() => {
             return Err(RecordError::NotClosed {
                 folder: path.to_owned(),
             });
@@ -216,8 +266,9 @@ fn read_manifest(path: &Path, run: &Path) -> Result<Manifest, RecordError> {
     }
 }
 
-fn read_plan(file: &Path) -> Result<Plan, RecordError> {
-    let bytes = fs::read(file).map_err(|e| unreadable(file, e))?;
+fn read_plan(run: &Run) -> Result<Plan, RecordError> {
+    let file = &run.at.join("plan.json");
+    let bytes = run.bytes("plan.json").map_err(|e| unreadable(file, e))?;
     let plan: Plan = serde_json::from_slice(&bytes).map_err(|e| RecordError::Meaning {
         file: file.to_owned(),
         what: format!("not a plan: {e}"),
@@ -249,11 +300,13 @@ fn safe_name<'a>(run: &Path, name: &'a str) -> Result<&'a str, RecordError> {
 }
 
 fn read_rows(
-    file: &Path,
+    run: &Run,
+    name: &str,
     head: &[&str],
     mut take: impl FnMut(&ByteRecord) -> Result<(), RowError>,
 ) -> Result<(), RecordError> {
-    let bytes = fs::read(file).map_err(|e| unreadable(file, e))?;
+    let file = &run.at.join(name);
+    let bytes = run.bytes(name).map_err(|e| unreadable(file, e))?;
     let lines = bytes.iter().filter(|b| **b == b'\n').count() as u64;
     if bytes.last().is_some_and(|b| *b != b'\n') {
         return Err(RecordError::Torn {

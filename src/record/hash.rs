@@ -16,7 +16,14 @@ pub fn sha256_of(bytes: &[u8]) -> String {
 /// # Errors
 /// Where the file can't be opened or read.
 pub fn sha256_of_file(path: &Path) -> io::Result<String> {
-    let mut file = File::open(path)?;
+    sha256_of_all(File::open(path)?)
+}
+
+/// SHA-256 of all that `file` still holds, read in pieces.
+///
+/// # Errors
+/// Where it can't be read.
+pub fn sha256_of_all(mut file: impl Read) -> io::Result<String> {
     let mut state = Sha256::new();
     let mut piece = vec![0; 64 * 1024];
     loop {

@@ -20,7 +20,7 @@ mod waveform;
 
 pub use annex::{AnnexManifest, newest_judgement, write_judgement};
 pub use columns::{RowError, defused, supply_words};
-pub use folder::{Folder, RecordError};
+pub use folder::{Folder, RecordError, RunFiles};
 pub use hash::{sha256_of, sha256_of_file};
 pub use journal::{Flushing, Heading, Journal, Way};
 pub use store::{FolderStore, Store, StoreFile, put_whole};

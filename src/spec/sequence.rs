@@ -238,6 +238,11 @@ pub struct GuardLimits {
     pub body: Option<Located<Celsius>>,
     /// `input after:` from when on after energising the input is guarded.
     pub input_after: Option<Seconds>,
+    /// `least rise:` of a body that is believed; what good units show finds a sensor of
+    /// another type, which reads a part of the rise.
+    pub least_rise: Option<Kelvins>,
+    /// `rise within:` this time after energising.
+    pub rise_within: Option<Seconds>,
 }
 
 /// Voltage and frequency to supply.

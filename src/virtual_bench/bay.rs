@@ -20,6 +20,8 @@ pub struct Bay {
     /// Chooses the phase of the mains at each switching on.
     pub(super) switching: Chance,
     pub(super) switched_on: u64,
+    /// True voltage over the one that the supply is set to.
+    pub(super) supply_gain: f64,
     pub(super) offs: usize,
     /// How far the bay has been followed, microseconds.
     pub(super) now: u64,
@@ -51,7 +53,7 @@ impl Bay {
     }
 
     fn take_look(&mut self, number: usize, at: u64) {
-        let seconds = at as f64 * 1e-6;
+        let (seconds, volts) = (at as f64 * 1e-6, self.plug_volts());
         self.specimen.advance(seconds);
         let instrument = &mut self.instruments[number];
         let joules = match instrument.counts_energy() {
@@ -62,11 +64,7 @@ impl Bay {
             tick: at / instrument.interval,
             at: seconds,
             state: self.specimen.state(seconds),
-            volts: if self.wiring.on {
-                self.wiring.volts
-            } else {
-                0.0
-            },
+            volts,
             hertz: if self.wiring.on {
                 self.wiring.hertz
             } else {
@@ -139,18 +137,23 @@ impl Bay {
 
     /// Tells the specimen what the wiring and the condition are now.
     pub fn redrive(&mut self) {
-        let seconds = self.now as f64 * 1e-6;
+        let (seconds, volts) = (self.now as f64 * 1e-6, self.plug_volts());
         self.specimen.advance(seconds);
         let drive = Drive {
-            volts: if self.wiring.on {
-                self.wiring.volts
-            } else {
-                0.0
-            },
+            volts,
             position: self.wiring.position,
             loss_factor: self.loss_factor,
         };
         self.specimen.set_drive(seconds, drive);
+    }
+
+    /// True voltage at the unit's plug, V.
+    fn plug_volts(&self) -> f64 {
+        if self.wiring.on {
+            self.wiring.volts * self.supply_gain
+        } else {
+            0.0
+        }
     }
 
     /// The truth at the moment to which the bay has been followed.

@@ -3,6 +3,7 @@
 use super::Connection;
 use super::chance::Chance;
 use super::dialect::Display;
+use super::errors::{Errors, Flaw};
 use crate::quantity::Reading;
 use crate::spec::driver::Accuracy;
 
@@ -20,14 +21,19 @@ pub struct Dial {
     pub reading: Reading,
     accuracy: Option<Accuracy>,
     display: Display,
-    gain: f64,
-    offset: f64,
+    flaw: Flaw,
     noise: Chance,
 }
 
 impl Dial {
     /// The dial of one reading; its errors are drawn once.
-    pub fn new(connection: &Connection, reading: Reading, channel: Option<u32>, seed: u64) -> Self {
+    pub(super) fn new(
+        connection: &Connection,
+        reading: Reading,
+        channel: Option<u32>,
+        seed: u64,
+        errors: &Errors,
+    ) -> Self {
         let accuracy = connection.driver.accuracy_of(reading).cloned();
         let name = format!(
             "{} {} {}",
@@ -35,13 +41,12 @@ impl Dial {
             reading.word(),
             channel.unwrap_or(0)
         );
-        let errors = Chance::of(seed, &name);
+        let chance = Chance::of(seed, &name);
         Self {
             reading,
             display: Display::of(accuracy.as_ref().map_or(0.0, |a| a.resolution)),
             accuracy,
-            gain: errors.even(0),
-            offset: errors.even(1),
+            flaw: errors.flaw(chance, &connection.instrument, reading, channel),
             noise: Chance::of(seed, &format!("{name} noise")),
         }
     }
@@ -87,6 +92,6 @@ impl Dial {
         let share = accuracy.of_reading * truth;
         let constant = accuracy.of_range * range + accuracy.floor;
         let noise = NOISE.0 * (share.abs() + constant) + NOISE.1 * accuracy.resolution;
-        truth + self.gain * share + self.offset * constant + noise * self.noise.bell(tick)
+        truth + self.flaw.of(truth, share, constant) + noise * self.noise.bell(tick)
     }
 }

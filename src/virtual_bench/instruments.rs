@@ -1,18 +1,18 @@
 //! Simulated instruments: what they see of the truth, how well, and how they say it.
 //!
 //! Each instrument looks once per update interval and shows that value until the
-//! next. Its gain, offset and contact errors are drawn once for a bench and seed,
-//! evenly within the accuracy that its driver states; its noise is a function of
-//! seed, channel and update tick.
+//! next. Its gain, offset and contact errors are drawn once for a bench and seed, as
+//! [`Errors`] says; its noise is a function of seed, channel and update tick.
 
-use super::Connection;
 use super::dial::{Dial, NO_VALUE};
 use super::dialect::{Ask, Dialect, Display, Knob};
 use super::error_queue::{DeviceError, ErrorQueue};
+use super::errors::Errors;
 use super::faults::{Fault, Onset};
 use super::probe::{self, Probe};
 use super::scope::{Scope, interval_s, write_block};
 use super::unit::State;
+use super::{Connection, Staging};
 use crate::quantity::{Reading, shortest};
 use crate::spec::driver::{Coupling, Driver};
 use crate::spec::sequence::RoleKind;
@@ -105,18 +105,19 @@ impl Instrument {
     pub fn new(
         first: &Connection,
         all: &[&Connection],
-        seed: u64,
-        speed: f64,
-        faults: &[Fault],
+        staging: &Staging,
+        errors: &Errors,
     ) -> Self {
+        let (seed, speed) = (staging.seed, staging.speed);
         let driver = &first.driver;
-        let dial =
-            |reading: Reading, channel: Option<u32>| Dial::new(first, reading, channel, seed);
+        let dial = |reading: Reading, channel: Option<u32>| {
+            Dial::new(first, reading, channel, seed, errors)
+        };
         let of_its_own = Reading::ALL.into_iter().filter(|r| !probe::reads(*r));
         let probes = all
             .iter()
             .filter(|c| c.kind == RoleKind::Temperature)
-            .map(|c| Probe::new(c, seed, faults))
+            .map(|c| Probe::new(c, staging, errors))
             .collect();
         Self {
             name: first.instrument.clone(),
@@ -127,7 +128,7 @@ impl Instrument {
             scope: Scope::default(),
             loses_dc_from: match driver.coupling {
                 Coupling::Ac => 0.0,
-                Coupling::Dc => loses_dc_from(faults, all),
+                Coupling::Dc => loses_dc_from(&staging.faults, all),
             },
             identity: identity_reply(&first.identity, driver.identity.fields, speed),
             impostor: identity_reply("RATEPLATE,VIRTUAL-STRANGER", driver.identity.fields, speed),

@@ -10,6 +10,7 @@ mod chance;
 mod dial;
 mod dialect;
 mod error_queue;
+mod errors;
 mod faults;
 mod hands;
 mod instruments;
@@ -37,7 +38,8 @@ use crate::spec::sequence::RoleKind;
 use crate::spec::virtual_unit::VirtualUnit;
 
 use bay::Bay;
-use chance::Chance;
+pub use chance::Chance;
+pub use errors::{Drawn, Errors};
 pub use faults::{Fault, Onset, ParseFaultError};
 pub use hands::Hands;
 use instruments::{Instrument, Wiring};
@@ -144,9 +146,17 @@ impl VirtualBench {
     /// # Errors
     /// Where two instruments share a line, or the unit lacks a position or element.
     pub fn new(staging: Staging) -> Result<Self, StagingError> {
+        Self::with_errors(staging, &Errors::default())
+    }
+
+    /// Stages a bench whose instruments err as `errors` says.
+    ///
+    /// # Errors
+    /// As [`VirtualBench::new`].
+    pub fn with_errors(staging: Staging, errors: &Errors) -> Result<Self, StagingError> {
         check_elements(&staging.unit)?;
         let positions = switch_order(&staging)?;
-        let instruments = instruments(&staging)?;
+        let instruments = instruments(&staging, errors)?;
         let ambient = staging.ambient.get();
         let specimen = Specimen::new(
             &staging.unit,
@@ -178,6 +188,7 @@ impl VirtualBench {
             loss_factor: 1.0,
             switching: Chance::of(staging.seed, "switching"),
             switched_on: 0,
+            supply_gain: 1.0 + errors.supply,
             offs: 0,
             now: 0,
         };
@@ -235,7 +246,7 @@ impl VirtualBench {
 }
 
 /// The instruments of the connections, in the order in which they come.
-fn instruments(staging: &Staging) -> Result<Vec<Instrument>, StagingError> {
+fn instruments(staging: &Staging, errors: &Errors) -> Result<Vec<Instrument>, StagingError> {
     let all = &staging.connections;
     let mut instruments: Vec<Instrument> = Vec::new();
     for first in all {
@@ -253,8 +264,7 @@ fn instruments(staging: &Staging) -> Result<Vec<Instrument>, StagingError> {
             .iter()
             .filter(|c| c.instrument == first.instrument)
             .collect();
-        let (seed, speed) = (staging.seed, staging.speed);
-        instruments.push(Instrument::new(first, &of_it, seed, speed, &staging.faults));
+        instruments.push(Instrument::new(first, &of_it, staging, errors));
     }
     Ok(instruments)
 }

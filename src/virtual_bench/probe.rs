@@ -1,17 +1,16 @@
 //! Temperature sensors: where each sits, what is wrong with it, and what it gives the
 //! instrument, as a temperature or raw.
 
-use super::Connection;
 use super::chance::Chance;
 use super::dial::Dial;
+use super::errors::Errors;
 use super::faults::{Fault, Onset};
 use super::instruments::Look;
 use super::unit::State;
+use super::{Connection, Staging};
 use crate::quantity::{Celsius, Reading};
 use crate::sensor::{Couple, Sensor, class_range, raw_of, tolerance};
 
-/// A surface sensor reads up to this share of its rise too low (house value).
-const CONTACT: f64 = 0.01;
 /// A sensor in the air beside the body still feels this share of its rise.
 const FALLEN_SHARE: f64 = 0.05;
 /// Time constant of a sensor that has just come off, s.
@@ -83,7 +82,8 @@ pub fn terminals(look: &Look) -> f64 {
 
 impl Probe {
     /// The sensor of a role, with what is wrong with it.
-    pub fn new(connection: &Connection, seed: u64, faults: &[Fault]) -> Self {
+    pub fn new(connection: &Connection, staging: &Staging, errors: &Errors) -> Self {
+        let (seed, faults) = (staging.seed, &staging.faults);
         let role = &connection.role;
         let place = SensorPlace::of(role);
         let contact = Chance::of(seed, &format!("{role} contact"));
@@ -92,13 +92,13 @@ impl Probe {
             channel: connection.channel,
             place,
             sensor: connection.sensor,
-            deviation: Chance::of(seed, &format!("{role} sensor")).even(0),
+            deviation: errors.deviation(Chance::of(seed, &format!("{role} sensor"))),
             dials: dials
-                .map(|reading| Dial::new(connection, reading, connection.channel, seed))
+                .map(|reading| Dial::new(connection, reading, connection.channel, seed, errors))
                 .collect(),
             contact: match place {
                 SensorPlace::Room => 0.0,
-                _ => 0.5 * CONTACT * (1.0 + contact.even(0)),
+                _ => errors.contact(contact),
             },
             troubles: faults
                 .iter()

@@ -44,6 +44,20 @@ fn the_other_guards_are_the_bays_rating_and_the_house_defaults() {
 }
 
 #[test]
+fn a_sequence_says_what_its_good_units_rise_by() {
+    let stated = "body: 115 °C\n  least rise: 25 K\n  rise within: 8 min";
+    let plan = planned(&changed(dryer(), "body: 115 °C", stated));
+    assert_eq!(plan.guards.least_rise.get(), 25.0);
+    assert_eq!(plan.guards.rise_within.get(), 480.0);
+    let told = "the body rises by 25 K within 8 min (the sequence's)";
+    let text = plan.lines_of_text().join("\n");
+    assert!(text.contains(told), "{text}");
+    let usual = "the body rises by 10 K within 5 min (house default)";
+    let text = planned(dryer()).lines_of_text().join("\n");
+    assert!(text.contains(usual), "{text}");
+}
+
+#[test]
 fn silence_is_two_seconds_or_three_updates_of_each_roles_instrument() {
     let slow = Crossing::of(dryer(), BENCH).driver("scpi-temperature-scanner", |driver| {
         driver.update_interval = crate::quantity::Seconds::of(0.7);

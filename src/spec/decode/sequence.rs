@@ -278,10 +278,14 @@ fn guards(field: Field<'_>) -> Option<GuardLimits> {
     let fields = field.fields()?;
     let body = fields.optional("body", located(temperature));
     let input_after = fields.optional("input after", duration);
+    let least_rise = fields.optional("least rise", quantity::<Kelvins>(Allowed::Positive));
+    let rise_within = fields.optional("rise within", duration);
     fields.finish()?;
     Some(GuardLimits {
         body: body?,
         input_after: input_after?,
+        least_rise: least_rise?,
+        rise_within: rise_within?,
     })
 }
 
