@@ -77,6 +77,7 @@ fn virtual_bench(plan: &Plan) -> VirtualBench {
             role: role.name.clone(),
             kind: role.kind,
             channel: role.channel,
+            sensor: role.sensor,
         }
     };
     let staging = Staging {

@@ -18,6 +18,7 @@
 pub mod quantity;
 
 pub mod clock;
+pub mod sensor;
 pub mod stats;
 
 pub mod settle;

@@ -9,15 +9,15 @@ use crate::quantity::{
     Amps, Celsius, Hertz, Kelvins, Moment, Ratio, Reading, Readings, Seconds, Volts, Watts,
 };
 use crate::record::{Event, Happening, RunOutcome, Sample, Status, StepEnd};
-use crate::settle::{Settle, Settling, Watched};
-use crate::spec::bench::{CalibrationPoint, Port};
+use crate::settle::{Settle, Settling, watched_in};
+use crate::spec::bench::{CalibrationPoint, Connection, Port};
 use crate::spec::driver::{
     Accuracy, Driver, Framing, IdentityQuery, ReadingQuery, Settings, Terminator,
 };
 use crate::spec::sequence::{
-    AnswerKind, ApplianceKind, Criterion, CriterionKind, Decision, FindingClass, HeatingElement,
-    MeasuredAt, ProtectionClass, Question, QuestionFinding, RoleKind, RuleKind, RuleWeight, Span,
-    SupplyPoint, Timed, Waiting,
+    AnswerKind, ApplianceKind, Criterion, CriterionKind, CyclingRule, Decision, FindingClass,
+    HeatingElement, MeasuredAt, PowerChange, ProtectionClass, Question, QuestionFinding, RoleKind,
+    RuleKind, RuleWeight, Span, SupplyPoint, Timed, Waiting,
 };
 
 use super::{Analysis, Input, analyse};
@@ -41,6 +41,7 @@ fn accuracy(
         floor,
         resolution,
         ranges: ranges.to_vec(),
+        correlation: 0.0,
     }
 }
 
@@ -66,6 +67,8 @@ fn driver(
             fields: 4,
         },
         on_opening: Vec::new(),
+        waveform: None,
+        coupling: crate::spec::driver::Coupling::Dc,
         readings: vec![ReadingQuery {
             ask: "READ?".to_owned(),
             gives: gives.to_vec(),
@@ -134,6 +137,9 @@ fn roles() -> Vec<PlannedRole> {
         kind,
         instrument,
         channel,
+        place: None,
+        connection: Connection::default(),
+        sensor: None,
     };
     vec![
         role("supply", RoleKind::Supply, 0, None),
@@ -166,6 +172,8 @@ fn appliance() -> PlannedAppliance {
         kind: ApplianceKind::Combined,
         protection_class: ProtectionClass::II,
         highest_ambient: Celsius::of(35.0),
+        reference_ambient: Some(Celsius::of(23.0)),
+        supply_range: None,
         positions: vec!["low".to_owned(), "high".to_owned()],
         plate: vec![plate("low", 4.5), plate("high", 9.0)],
         link: Some(PlannedLink {
@@ -175,6 +183,7 @@ fn appliance() -> PlannedAppliance {
             tm: None,
             sits: "on the block".to_owned(),
             measured_at: MeasuredAt::LinkBody,
+            ambient_effect: None,
         }),
         element: HeatingElement::Ptc,
         fan: false,
@@ -220,6 +229,7 @@ pub(crate) fn plan(conditions: &[&str]) -> Plan {
         bay: PlannedBay {
             name: "bay 1".to_owned(),
             rated_current: Amps::of(10.0),
+            source: crate::spec::bench::Source::default(),
             roles: roles(),
         },
         lines: vec![PlannedLine {
@@ -255,6 +265,8 @@ pub(crate) fn rule(kind: RuleKind) -> PlannedRule {
         position: None,
         condition: None,
         source: "test".to_owned(),
+        process: None,
+        cycling: CyclingRule::OnState,
     }
 }
 
@@ -275,6 +287,7 @@ fn steps(cells: &[Cell]) -> Vec<PlannedStep> {
     let timed = |length: f64, every: f64| Timed {
         length: Seconds::of(length),
         every: Seconds::of(every),
+        waveform: false,
     };
     let mut actions = vec![
         (None, Action::Ask(question)),
@@ -289,9 +302,10 @@ fn steps(cells: &[Cell]) -> Vec<PlannedStep> {
                 kind: CriterionKind::Slope {
                     window: Seconds::of(300.0),
                 },
-                power_change: Some(Ratio::of(0.02)),
+                power_change: Some(PowerChange::Relative(Ratio::of(0.02))),
                 temperature_change: Some(Kelvins::of(3.0)),
             },
+            early_finish: false,
         };
         for action in [
             Action::SetSupply(cell.supply),
@@ -403,6 +417,7 @@ impl Played {
             plan: &self.plan,
             samples: &self.samples,
             happenings: &self.happenings,
+            waveforms: &[],
             outcome: &self.outcome,
         })
     }
@@ -514,37 +529,26 @@ impl<U: Fn(Now) -> Seen, E: Fn(&PlannedStep, f64) -> Option<RunOutcome>> Player<
                 let rounds = polled(timed.length, timed.every);
                 ended = self.poll(plan, step, rounds, timed.every, |_, _| false);
             }
-            Action::Soak {
-                at_least,
-                at_most,
-                every,
-                until,
-            } => {
+            Action::Soak { at_most, every, .. } => {
                 let rounds = polled(*at_most, *every);
-                let energised = self.energised();
-                let cycling = plan.appliance.thermostat;
-                let mut settle = Settle::new(until, *at_least, *every, cycling, energised);
-                let mut settled = false;
+                let soaking = plan.soaking(&step.action).expect("a soak");
+                let mut settle = Settle::new(soaking, self.energised());
+                end = StepEnd::TimeLimit;
                 ended = self.poll(plan, step, rounds, *every, |_, rows| {
                     for row in rows {
-                        for (reading, value) in row.readings.iter() {
-                            let watched = match (row.role, reading) {
-                                (METER, Reading::Power) => Watched::Power,
-                                (BODY, _) => Watched::Body,
-                                (AMBIENT, _) => Watched::Ambient,
-                                _ => continue,
-                            };
+                        let role = &plan.bay.roles[row.role];
+                        for (watched, value) in watched_in(role.kind, &role.name, &row.readings) {
                             settle.take(row.reply, watched, value);
                         }
                     }
-                    settled = matches!(settle.state(), Settling::Settled { .. });
-                    settled
+                    end = match settle.state() {
+                        Settling::Settled { .. } => StepEnd::Settled,
+                        Settling::Extrapolated { .. } => StepEnd::Extrapolated,
+                        Settling::WentOpen => StepEnd::WentOpen,
+                        Settling::TooEarly | Settling::NotYet(_) => StepEnd::TimeLimit,
+                    };
+                    end != StepEnd::TimeLimit
                 });
-                end = if settled {
-                    StepEnd::Settled
-                } else {
-                    StepEnd::TimeLimit
-                };
             }
             _ => {}
         }

@@ -6,8 +6,9 @@ use crate::record::{Sample, Status};
 use crate::spec::sequence::Timed;
 
 use super::cell::{CellView, Track, highest, mean, time, within};
-use super::measured::{Gauge, estimate};
-use super::types::{Figure, Inrush, Steady};
+use super::measured::Gauge;
+use super::types::{Estimate, Figure, Inrush, Steady, Wave};
+use super::waveform::Shape;
 
 /// First current: above this share of the highest, and above twice the floor.
 const FIRST_CURRENT: f64 = 0.01;
@@ -20,8 +21,34 @@ const STANDS_OUT: f64 = 1.1;
 /// The supply limits where its voltage sags by more than this share.
 const SAG: f64 = 0.03;
 
-/// The inrush of a cell; `steady` where its settled input is known.
-pub(super) fn inrush(view: &CellView, steady: Option<&Steady>) -> Figure<Inrush> {
+/// The current is at the source's limit from this share of it on.
+const AT_LIMIT: f64 = 0.97;
+
+/// From cold it is an inrush; else it is a quantity of its own, of which the peak is kept.
+pub(super) fn parted(
+    captured: Figure<Inrush>,
+    cold: Result<(), String>,
+) -> (Figure<Inrush>, Figure<Estimate>) {
+    match (captured, cold) {
+        (captured @ Figure::Known(_), Ok(())) => {
+            let why = "it was a cold start".to_owned();
+            (captured, Figure::Absent(why))
+        }
+        (Figure::Known(captured), Err(reason)) => {
+            let why = format!("it was no cold start: {reason}");
+            (Figure::Absent(why), Figure::Known(captured.peak_a))
+        }
+        (Figure::Absent(reason), _) => (Figure::Absent(reason.clone()), Figure::Absent(reason)),
+    }
+}
+
+/// The switch-on of a cell; `steady` where its settled input is known, `wave` where a
+/// waveform was taken.
+pub(super) fn inrush(
+    view: &CellView,
+    steady: Option<&Steady>,
+    wave: Option<&Wave>,
+) -> Figure<Inrush> {
     if view.switched.energised.is_none() {
         return Figure::Absent("it was not energised".to_owned());
     }
@@ -29,7 +56,7 @@ pub(super) fn inrush(view: &CellView, steady: Option<&Steady>) -> Figure<Inrush>
     let Some((step, Action::Inrush(timed))) = step.map(|s| (s, &s.action)) else {
         return Figure::Absent("the sequence captures no inrush here".to_owned());
     };
-    match captured(view, step, timed, steady) {
+    match captured(view, step, timed, steady, wave) {
         Ok(inrush) => Figure::Known(inrush),
         Err(reason) => Figure::Absent(reason),
     }
@@ -40,6 +67,7 @@ fn captured(
     step: &PlannedStep,
     timed: &Timed,
     steady: Option<&Steady>,
+    wave: Option<&Wave>,
 ) -> Result<Inrush, String> {
     let track = |reading| {
         view.track(view.meter, reading, |row| {
@@ -62,17 +90,36 @@ fn captured(
     let steady_w = steady.map(|s| s.power_w.value).filter(|watts| *watts > 0.0);
     let after = power_after(view, top.0);
     let interval_s = timed.every.get().max(gauge.update_s());
+    let sampled = gauge.estimate(top.1)?;
+    // The waveform's, unless the rows show that the current rose on behind it.
+    let higher = wave.filter(|wave| {
+        let peak = &wave.peak_rms_a;
+        let apart = libm::hypot(peak.expanded, sampled.expanded);
+        sampled.value <= peak.value + apart
+    });
+    let source = view.plan.bay.source;
+    let limit = source.current_limit.map(|amps| amps.get());
+    let peak_a = higher.map_or(sampled, |wave| wave.peak_rms_a.clone());
+    let at_limit = limit.and_then(|limit| at_limit(peak_a.value, limit));
     Ok(Inrush {
         t0_s,
-        peak_a: estimate(gauge.corrected(top.1), gauge.lines(top.1)?),
+        from_waveform: higher.is_some(),
         peak_w,
-        peak_after_s: top.0 - t0_s,
+        peak_after_s: higher.map_or(top.0 - t0_s, |wave| wave.peak_rms_after_s),
+        source_ohm: source.impedance.map(|ohms| ohms.get()),
+        switching_angle_deg: wave.and_then(|w| w.shape.switching_angle_deg.known().copied()),
         ratio: steady_w.map(|watts| peak_w / watts),
         half_way_s: steady_w.and_then(|watts| half_way(&after, peak_w, watts, top.0)),
         above_steady_wh: steady_w
             .map(|watts| above(&view.energised(view.meter, Reading::Power), watts)),
-        lower_bound: lower_bound(view, step, &current, interval_s),
-        supply_limited: supply_limited(&track(Reading::Voltage), &current, t0_s + interval_s),
+        lower_bound: match wave {
+            Some(wave) => lower_bound_beside(wave, view, step, &current, (t0_s, interval_s)),
+            None => lower_bound(view, step, &current, interval_s, f64::NEG_INFINITY),
+        },
+        supply_limited: at_limit
+            .or_else(|| wave.and_then(|wave| sagged(&wave.shape)))
+            .or_else(|| supply_limited(&track(Reading::Voltage), &current, t0_s + interval_s)),
+        peak_a,
     })
 }
 
@@ -113,12 +160,60 @@ fn above(power: &[(f64, f64)], steady_w: f64) -> f64 {
     joules / 3600.0
 }
 
-/// Why the highest sample may lie below the true peak.
+/// The same beside a waveform: it sees the first moments whole, so only rows behind it
+/// that hold no value, and a short peak among them, may hide more.
+fn lower_bound_beside(
+    wave: &Wave,
+    view: &CellView,
+    step: &PlannedStep,
+    current: &[(f64, f64)],
+    (t0_s, interval_s): (f64, f64),
+) -> Vec<String> {
+    let covered_until = t0_s - interval_s + wave.length_s - wave.shape.t0_s;
+    let behind: Vec<(f64, f64)> = within(current, covered_until, f64::INFINITY).to_vec();
+    let higher = highest(&behind).filter(|top| top.1 > wave.peak_rms_a.value);
+    let seen = if higher.is_some() { current } else { &[] };
+    let mut reasons = lower_bound(view, step, seen, interval_s, covered_until);
+    if wave.shape.begins_late {
+        reasons.push("the waveform begins with current already flowing".to_owned());
+    }
+    reasons
+}
+
+/// The current is as high as the source gives.
+fn at_limit(peak_a: f64, limit_a: f64) -> Option<String> {
+    (peak_a >= AT_LIMIT * limit_a).then(|| {
+        format!("the current came to {peak_a:.2} A, the source gives at most {limit_a:.2} A")
+    })
+}
+
+/// Whether the voltage of the waveform sags while the current is high. The first
+/// half-period is left out: the switch lies within it.
+fn sagged(shape: &Shape) -> Option<String> {
+    let halves = shape.half_periods.get(1..)?;
+    let top = halves.iter().map(|half| half.rms_a).reduce(f64::max)?;
+    let full = halves.iter().map(|half| half.rms_v).reduce(f64::max)?;
+    let lowest = halves
+        .iter()
+        .filter(|half| half.rms_a >= 0.5 * top)
+        .map(|half| half.rms_v)
+        .reduce(f64::min)?;
+    let sag = 1.0 - lowest / full;
+    (sag > SAG).then(|| {
+        format!(
+            "the voltage sagged to {lowest:.1} V in a half-period, {:.1} % below {full:.1} V",
+            100.0 * sag
+        )
+    })
+}
+
+/// Why the highest sample may lie below the true peak; rows before `from` don't matter.
 fn lower_bound(
     view: &CellView,
     step: &PlannedStep,
     current: &[(f64, f64)],
     interval_s: f64,
+    from: f64,
 ) -> Vec<String> {
     let mut reasons = Vec::new();
     if let Some(seconds) = peak_length(current).filter(|s| *s < INTERVALS * interval_s) {
@@ -130,7 +225,7 @@ fn lower_bound(
         .rows
         .iter()
         .filter(|row| is_of(step, row) && Some(row.role) == view.meter)
-        .filter(|row| row.status != Status::Ok)
+        .filter(|row| row.status != Status::Ok && time(row) > from)
         .collect::<Vec<_>>();
     if let Some(first) = lost.first() {
         reasons.push(format!(

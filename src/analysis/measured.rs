@@ -2,60 +2,12 @@
 //! resolution, and their combination.
 
 use crate::plan::{Plan, PlannedInstrument};
-use crate::quantity::Reading;
+use crate::quantity::{Celsius, Reading};
+use crate::sensor::{self, Sensor};
 use crate::spec::bench::CalibrationPoint;
-use crate::stats::{Part, RECTANGULAR, RESOLUTION, combine};
 
-use super::types::{Estimate, Share};
-
-/// One named line of a budget, before it is combined.
-#[derive(Debug, Clone, PartialEq)]
-pub(super) struct Line {
-    pub(super) from: String,
-    pub(super) part: Part,
-}
-
-impl Line {
-    /// A line that is no estimate from data.
-    pub(super) fn stated(from: impl Into<String>, standard: f64) -> Self {
-        Line::of(from, standard, f64::INFINITY)
-    }
-
-    /// A line with its degrees of freedom.
-    pub(super) fn of(from: impl Into<String>, standard: f64, freedom: f64) -> Self {
-        Line {
-            from: from.into(),
-            part: Part { standard, freedom },
-        }
-    }
-
-    /// The same line times a sensitivity.
-    pub(super) fn times(mut self, sensitivity: f64) -> Self {
-        self.part.standard *= sensitivity.abs();
-        self
-    }
-}
-
-/// Combines a budget into an estimate; shares of nothing are left out.
-pub(super) fn estimate(value: f64, lines: Vec<Line>) -> Estimate {
-    let parts: Vec<Part> = lines.iter().map(|line| line.part).collect();
-    let combined = combine(&parts);
-    let mut budget: Vec<Share> = lines
-        .into_iter()
-        .filter(|line| line.part.standard > 0.0)
-        .map(|line| Share {
-            from: line.from,
-            standard: line.part.standard,
-        })
-        .collect();
-    budget.sort_by(|a, b| b.standard.total_cmp(&a.standard));
-    Estimate {
-        value,
-        expanded: combined.expanded,
-        coverage: combined.coverage,
-        budget,
-    }
-}
+use super::budget::Share;
+use super::types::Estimate;
 
 /// One reading of the instrument that fills a role.
 pub(super) struct Gauge<'a> {
@@ -63,7 +15,12 @@ pub(super) struct Gauge<'a> {
     channel: Option<u32>,
     reading: Reading,
     role: &'a str,
+    sensor: Option<Sensor>,
 }
+
+/// Terminals are taken to be at this temperature where a budget asks how an error of
+/// theirs shows: the sensitivity hardly depends on it.
+const TERMINALS_DEGC: f64 = 25.0;
 
 impl<'a> Gauge<'a> {
     /// The gauge behind role `role`.
@@ -74,6 +31,7 @@ impl<'a> Gauge<'a> {
             channel: planned.channel,
             reading,
             role: &planned.name,
+            sensor: planned.sensor,
         })
     }
 
@@ -96,16 +54,107 @@ impl<'a> Gauge<'a> {
         self.instrument.driver.accuracy_of(self.reading)
     }
 
-    /// The indicated value with its calibration's correction.
+    /// The indicated value with its calibration's correction; of a raw sensor with those
+    /// of the raw readings too.
     pub(super) fn corrected(&self, indicated: f64) -> f64 {
-        indicated + self.calibration(indicated).0
+        let raw: f64 = self
+            .raw(indicated)
+            .iter()
+            .map(|(gauge, value, sensitivity)| sensitivity * gauge.calibration(*value).0)
+            .sum();
+        indicated + raw + self.calibration(indicated).0
     }
 
-    /// Shares of accuracy on the range in force, resolution and calibration.
+    /// The raw readings behind a temperature, each with its value and the kelvins per
+    /// unit of it; empty where the instrument itself converts.
+    fn raw(&self, indicated: f64) -> Vec<(Gauge<'a>, f64, f64)> {
+        let gives = |reading: &Reading| {
+            let mut queries = self.instrument.driver.readings.iter();
+            queries.any(|query| query.gives.contains(reading))
+        };
+        // A driver that states the accuracy of the whole chain, sensor input and
+        // conversion, means that.
+        let whole_chain = self.accuracy().is_some();
+        let (Reading::Temperature, Some(sensor), false) = (self.reading, self.sensor, whole_chain)
+        else {
+            return Vec::new();
+        };
+        let (Some(at), Some(terminals)) = (Celsius::new(indicated), Celsius::new(TERMINALS_DEGC))
+        else {
+            return Vec::new();
+        };
+        let Some(values) = sensor::raw_of(sensor, at, terminals) else {
+            return Vec::new();
+        };
+        sensor::RAW
+            .into_iter()
+            .filter(gives)
+            .filter_map(|reading| {
+                let gauge = Gauge { reading, ..*self };
+                let sensitivity = sensor::sensitivity(sensor, reading, at, terminals)?;
+                Some((gauge, values.get(reading)?, sensitivity))
+            })
+            .collect()
+    }
+
+    /// The indicated value corrected by its calibration, with its budget.
     ///
     /// # Errors
-    /// Where the driver states no accuracy: then nothing can be said of U.
-    pub(super) fn lines(&self, indicated: f64) -> Result<Vec<Line>, String> {
+    /// See [`Gauge::lines`].
+    pub(super) fn estimate(&self, indicated: f64) -> Result<Estimate, String> {
+        let lines = self.lines(indicated)?;
+        Ok(Estimate::combined(self.corrected(indicated), lines))
+    }
+
+    /// Shares of accuracy on the range in force, resolution, calibration and, of a
+    /// temperature, of the sensor's own class.
+    ///
+    /// # Errors
+    /// Where the driver states no accuracy, or the class is not stated that far: then
+    /// nothing can be said of U.
+    pub(super) fn lines(&self, indicated: f64) -> Result<Vec<Share>, String> {
+        let mut lines: Vec<Share> = self.class(indicated)?.into_iter().collect();
+        let raw = self.raw(indicated);
+        if raw.is_empty() {
+            lines.extend(self.own_lines(indicated)?);
+        }
+        for (gauge, value, sensitivity) in raw {
+            let of_raw = gauge.own_lines(value)?;
+            lines.extend(of_raw.into_iter().map(|line| line.times(sensitivity)));
+        }
+        Ok(lines)
+    }
+
+    /// The tolerance of the sensor's class; nothing where a certificate covers the
+    /// channel with its sensor, and for what is no temperature.
+    fn class(&self, indicated: f64) -> Result<Option<Share>, String> {
+        let Some(sensor) = self.sensor.filter(|_| self.reading == Reading::Temperature) else {
+            return Ok(None);
+        };
+        let covered = |p: &CalibrationPoint| {
+            p.reading == Reading::Temperature && p.channel == self.channel && p.channel.is_some()
+        };
+        if self.instrument.calibration.iter().any(covered) {
+            return Ok(None);
+        }
+        let tolerance = Celsius::new(indicated).and_then(|at| sensor::tolerance(sensor, at));
+        let tolerance = tolerance.ok_or_else(|| {
+            format!(
+                "{} states no tolerance of its class at {indicated:.0} °C ({})",
+                sensor.words(),
+                sensor.standard()
+            )
+        })?;
+        let from = format!(
+            "sensor of {}, {} ({})",
+            self.role,
+            sensor.words(),
+            sensor.standard()
+        );
+        Ok(Some(Share::rectangular(from, tolerance.get(), "K")))
+    }
+
+    fn own_lines(&self, indicated: f64) -> Result<Vec<Share>, String> {
         let word = self.reading.word();
         let Some(accuracy) = self.accuracy() else {
             return Err(format!(
@@ -114,15 +163,27 @@ impl<'a> Gauge<'a> {
             ));
         };
         let of = |what: &str| format!("{what}, {word} of {}", self.role);
-        let mut lines = vec![
-            Line::stated(of("accuracy"), accuracy.half_width(indicated) / RECTANGULAR),
-            Line::stated(of("resolution"), accuracy.resolution / RESOLUTION),
-        ];
-        let calibration = self.calibration(indicated).1;
-        if calibration > 0.0 {
-            lines.push(Line::stated(of("calibration"), calibration));
+        let error = format!("accuracy, {word} of instrument {}", self.instrument.name);
+        let unit = self.unit();
+        // One block of terminals serves every channel: its error is one and the same.
+        let correlation = match self.reading {
+            Reading::TerminalTemperature => 1.0,
+            _ => accuracy.correlation,
+        };
+        Ok(vec![
+            Share::rectangular(of("accuracy"), accuracy.half_width(indicated), unit)
+                .shared_by(error, correlation),
+            Share::resolution(of("resolution"), accuracy.resolution, unit),
+            Share::normal(of("calibration"), self.calibration(indicated).1, unit),
+        ])
+    }
+
+    /// Unit of its errors: those of a temperature are in kelvins.
+    fn unit(&self) -> &'static str {
+        match self.reading {
+            Reading::Temperature | Reading::TerminalTemperature => "K",
+            other => other.unit(),
         }
-        Ok(lines)
     }
 
     /// Correction and standard uncertainty at an indicated value: interpolated

@@ -2,26 +2,39 @@
 //! record alone. Cannot fail: absent values carry a reason.
 
 mod belief;
+mod budget;
+mod budget_table;
 mod cell;
+mod change;
+mod cycling;
+mod dc;
+mod fetched;
 #[cfg(test)]
 pub(crate) mod fixture;
+mod input;
 mod inrush;
 mod measured;
+mod opening;
+mod plate;
+mod referral;
 mod steady;
 mod table;
 mod temperature;
 mod types;
-mod voltage;
+pub mod waveform;
 
+pub use budget::{Distribution, Share, SharedError};
+pub use budget_table::{budgets_csv, budgets_text};
+pub use plate::{plate_point, plate_points, points_in_reach};
+pub use referral::at_voltage;
 pub use table::results_csv;
 pub use types::{
-    Analysis, CellResult, Drawn, Estimate, Figure, Inrush, Looked, Peak, Share, Steady,
+    Analysis, CellResult, Change, Drawn, Estimate, Exponent, Figure, Harmonic, Inrush, Looked,
+    Opening, Peak, Steady, Wave,
 };
-pub use voltage::{at_voltage, plate_point, plate_points};
 
-use crate::plan::Plan;
-use crate::record::{Event, Happening, RunOutcome, Sample};
-use crate::spec::sequence::HeatingElement;
+use crate::plan::{Action, Plan};
+use crate::record::{Event, Happening, RunOutcome, Sample, StoredWaveform};
 
 use cell::{CellView, Switched};
 
@@ -34,6 +47,8 @@ pub struct Input<'a> {
     pub samples: &'a [Sample],
     /// Every event, in the order of the record.
     pub happenings: &'a [Happening],
+    /// Every waveform; none in records that were made before they were kept.
+    pub waveforms: &'a [StoredWaveform],
     /// How the run ended.
     pub outcome: &'a RunOutcome,
 }
@@ -41,29 +56,45 @@ pub struct Input<'a> {
 /// What the record says, cell by cell.
 pub fn analyse(input: &Input) -> Analysis {
     let switched = cell::switched(input.plan, input.happenings);
-    let cells: Vec<CellResult> = switched
+    let views: Vec<CellView> = switched
         .into_iter()
         .enumerate()
-        .map(|(index, switched)| result(input, index, switched))
+        .map(|(index, switched)| CellView::new(input, index, switched))
         .collect();
-    let notes = cells
-        .iter()
-        .filter_map(|cell| half_wave(input.plan, cell))
+    let mut cells: Vec<CellResult> = views.iter().map(|view| result(input, view)).collect();
+    referral::refer(input.plan, &mut cells);
+    let lost: Vec<Option<String>> = (0..cells.len())
+        .map(|index| dc::lost(input.plan, &cells, index))
         .collect();
+    let mut notes = Vec::new();
+    for (cell, why) in cells.iter_mut().zip(lost) {
+        if let Some(why) = &why {
+            notes.push(format!(
+                "{why}; its current is not to be believed, its power is right under a sine voltage"
+            ));
+            doubt_current(cell, why);
+        }
+        cell.dc_lost = why;
+    }
+    notes.dedup();
     Analysis {
         cells,
+        openings: views.iter().flat_map(opening::openings).collect(),
         looked: looked(input.happenings),
         tripped: tripped(input),
         notes,
     }
 }
 
-fn result(input: &Input, index: usize, switched: Switched) -> CellResult {
-    let view = CellView::new(input, index, switched);
-    let settled = steady::settled(&view);
-    let steady = steady::steady(&view, &settled);
-    let drawn = steady::drawn(&view);
-    let peak = temperature::body_peak(&view);
+fn result(input: &Input, view: &CellView) -> CellResult {
+    let switched = view.switched;
+    let settled = steady::settled(view);
+    let steady = steady::steady(view, &settled);
+    let drawn = steady::drawn(view);
+    let peak = temperature::body_peak(view);
+    let waveform = fetched::wave(input, view, steady.known());
+    let captured = inrush::inrush(view, steady.known(), waveform.known());
+    let (inrush, switch_in_peak) = inrush::parted(captured, belief::cold(view));
     let seconds = |moment: Option<crate::quantity::Moment>, otherwise: String| match moment {
         Some(moment) => Figure::Known(moment.as_secs_f64()),
         None => Figure::Absent(otherwise),
@@ -72,19 +103,44 @@ fn result(input: &Input, index: usize, switched: Switched) -> CellResult {
         cell: view.cell.clone(),
         energised_s: seconds(switched.energised, not_run(input.outcome, &switched)),
         off_s: seconds(switched.off, "no OFF is recorded after it".to_owned()),
-        cold_start: match belief::cold(&view) {
+        cold_start: match belief::cold(view) {
             Ok(()) => Figure::Known(()),
             Err(reason) => Figure::Absent(reason),
         },
-        inrush: inrush::inrush(&view, steady.known()),
-        settled_s: steady::settled_after(&view, &settled),
-        body_worst: temperature::body_worst(&view, &peak, &settled),
+        inrush,
+        switch_in_peak,
+        waveform,
+        dc_lost: None,
+        settled_s: steady::settled_after(view, &settled),
+        body_worst: temperature::body_worst(view, &peak, &settled, steady.known()),
         body_peak: peak,
-        rises: temperature::rises(&view),
-        disbelief: belief::disbelief(&view, drawn.known()),
+        rises: followed(temperature::rises(view), &settled),
+        disbelief: belief::disbelief(view, drawn.known()),
+        abnormal: view
+            .step(|action| matches!(action, Action::Abnormal { .. }))
+            .is_some(),
         drawn,
         steady,
     }
+}
+
+/// A soak that was ended early followed the body alone: no other temperature is known
+/// to have come to its end.
+fn followed(
+    rises: Vec<(String, Figure<Estimate>)>,
+    settled: &Figure<steady::Window>,
+) -> Vec<(String, Figure<Estimate>)> {
+    let early = settled.known().is_some_and(|w| w.extrapolated.is_some());
+    let cut = |rise: Figure<Estimate>| match rise {
+        Figure::Known(_) if early => Figure::Absent(
+            "the soak was ended early, and this temperature was not followed to its end".to_owned(),
+        ),
+        rise => rise,
+    };
+    rises
+        .into_iter()
+        .map(|(name, rise)| (name, cut(rise)))
+        .collect()
 }
 
 /// Why a cell was never energised.
@@ -133,28 +189,16 @@ fn tripped(input: &Input) -> Option<String> {
     })
 }
 
-/// A half-wave load that is read by a meter which loses the DC part: a resistive one
-/// then shows a power factor of 0.917 instead of 0.707 (computed). Its power is right
-/// under a sine voltage all the same.
-fn half_wave(plan: &Plan, cell: &CellResult) -> Option<String> {
-    let resistive = plan.appliance.element == HeatingElement::Resistor && !plan.appliance.fan;
-    let position = &cell.cell.position;
-    if !resistive || !plan.appliance.diode_in.contains(position) {
-        return None;
+/// What rests on a current without its DC part is no result.
+fn doubt_current(cell: &mut CellResult, why: &str) {
+    if let Figure::Known(steady) = &mut cell.steady {
+        steady.current_a = None;
     }
-    let steady = cell.steady.known()?;
-    let factor = steady.power_w.value / (steady.voltage_v * steady.current_a?);
-    (factor > HALF_WAVE_MIDDLE).then(|| {
-        format!(
-            "position {position} is fed through a diode and shows a power factor of {factor:.3}, \
-             not 0.707: the meter loses the DC part and its current is not to be believed; \
-             its power is right under a sine voltage"
-        )
-    })
+    if cell.switch_in_peak.known().is_some() {
+        let doubt = format!("the meter's current is not to be believed: {why}");
+        cell.switch_in_peak = Figure::Absent(doubt);
+    }
 }
-
-/// Half-way between 1/sqrt(2) and 0.917.
-const HALF_WAVE_MIDDLE: f64 = 0.81;
 
 #[cfg(test)]
 mod tests;

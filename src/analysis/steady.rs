@@ -4,16 +4,19 @@
 use crate::plan::Action;
 use crate::quantity::{Moment, Reading};
 use crate::record::{Status, StepEnd};
-use crate::settle::{Settle, Settling, Watched};
-use crate::stats::{RECTANGULAR, effective_of};
+use crate::settle::{Prediction, Settle, Settling, watched_in};
+use crate::spec::sequence::CriterionKind;
 
+use super::budget::Share;
 use super::cell::{CellView, Track, highest, mean, within};
-use super::measured::{Gauge, Line, estimate};
+use super::cycling::{ON, on_times};
+use super::input::at_plug;
+use super::measured::Gauge;
+use super::referral::usual_exponent;
 use super::types::{Drawn, Estimate, Figure, Steady};
-use super::voltage::referral;
 
-/// A load is on above this share of its highest power.
-const ON: f64 = 0.5;
+/// Rows behind a prediction that give voltage and current, seconds.
+const LAST_MINUTE_S: f64 = 60.0;
 /// Power below this share of its highest has vanished, if it does so for a time.
 const VANISHED: f64 = 0.01;
 const VANISHED_FOR_S: f64 = 10.0;
@@ -25,11 +28,31 @@ const OFF_FOR_GOOD: f64 = 3.0;
 const FEWEST_ROWS: usize = 5;
 
 /// A window, and why its input is settled.
-#[derive(Debug, Clone, PartialEq)]
+#[derive(Debug, Clone, PartialEq, Default)]
 pub(super) struct Window {
     pub(super) from_s: f64,
     pub(super) to_s: f64,
     pub(super) criterion: String,
+    /// Power still to come at the end of the soak (slope times tau) and its standard
+    /// uncertainty, W; absent where no fit holds.
+    pub(super) power_to_come_w: Option<(f64, f64)>,
+    /// The same of the body's rise, K.
+    pub(super) rise_to_come_k: Option<(f64, f64)>,
+    /// Where the soak was ended early.
+    pub(super) extrapolated: Option<Extrapolated>,
+}
+
+/// A soak that predictions ended.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub(super) struct Extrapolated {
+    /// Predicted end of the indicated power; its last mean where the power had settled.
+    pub(super) power_w: f64,
+    /// Its standard uncertainty from the prediction alone.
+    pub(super) power_standard: f64,
+    /// Rise that was still to come; 0 where no fit of it holds.
+    pub(super) rise_still_to_come_k: f64,
+    /// Its standard uncertainty.
+    pub(super) rise_standard: f64,
 }
 
 /// Asks `settle` again with the recorded rows of the cell's soak.
@@ -37,48 +60,41 @@ pub(super) fn settled(view: &CellView) -> Figure<Window> {
     let Some(energised) = view.switched.energised else {
         return Figure::Absent("it was not energised".to_owned());
     };
-    let soak = view.step(|action| matches!(action, Action::Soak { .. }));
-    let Some((
-        number,
-        Action::Soak {
-            at_least,
-            every,
-            until,
-            ..
-        },
-    )) = soak.map(|step| (step.number, &step.action))
-    else {
+    let soak = view
+        .step(|action| matches!(action, Action::Soak { .. }))
+        .and_then(|step| Some((step.number, view.plan.soaking(&step.action)?)));
+    let Some((number, soaking)) = soak else {
         return Figure::Absent("it has no soak, so nothing says that it is settled".to_owned());
     };
-    let cycling = view.plan.appliance.thermostat;
-    let mut settle = Settle::new(until, *at_least, *every, cycling, energised);
+    let at_least = soaking.soak.at_least;
+    let mut settle = Settle::new(soaking, energised);
     for row in view.rows.iter().filter(|row| row.step == number) {
-        if row.status != Status::Ok {
+        let role = view.plan.bay.roles.get(row.role);
+        let Some(role) = role.filter(|_| row.status == Status::Ok) else {
             continue;
-        }
-        let watched = [
-            (view.meter, Reading::Power, Watched::Power),
-            (view.body, Reading::Temperature, Watched::Body),
-            (view.ambient, Reading::Temperature, Watched::Ambient),
-        ];
-        for (role, reading, what) in watched {
-            if let (true, Some(value)) = (role == Some(row.role), row.readings.get(reading)) {
-                settle.take(row.reply, what, value);
-            }
+        };
+        for (what, value) in watched_in(role.kind, &role.name, &row.readings) {
+            settle.take(row.reply, what, value);
         }
     }
     let said = view.end_of(number);
-    match settle.state() {
+    match settle.state().clone() {
         Settling::Settled {
             from,
             to,
             criterion,
-        } => Figure::Known(Window {
-            from_s: from.as_secs_f64(),
-            to_s: to.as_secs_f64(),
-            criterion: criterion.clone(),
-        }),
-        _ if said == Some(StepEnd::Settled) => Figure::Absent(
+        } => Figure::Known(window(&mut settle, from, to, criterion)),
+        Settling::Extrapolated {
+            from,
+            to,
+            power,
+            rise,
+            criterion,
+        } => {
+            let window = window(&mut settle, from, to, criterion);
+            Figure::Known(ended_early(view, window, power, rise))
+        }
+        _ if matches!(said, Some(StepEnd::Settled | StepEnd::Extrapolated)) => Figure::Absent(
             "the run called it settled, but the recorded rows do not show it".to_owned(),
         ),
         Settling::WentOpen => Figure::Absent("the power vanished during the soak".to_owned()),
@@ -90,7 +106,56 @@ pub(super) fn settled(view: &CellView) -> Figure<Window> {
     }
 }
 
-/// The settled input of a cell, referred to the voltage that the cell is run at.
+/// The window with what was still to come at its end.
+fn window(settle: &mut Settle, from: Moment, to: Moment, criterion: String) -> Window {
+    let told = settle.prediction();
+    let to_come = |p: Option<Prediction>| p.map(|p| (p.still_to_come, p.end_standard));
+    let (power, rise) = (to_come(told.power), to_come(told.rise));
+    let words = [(power, "W of power"), (rise, "K of rise")]
+        .into_iter()
+        .filter_map(|(to_come, unit)| to_come.map(|(value, _)| format!("{value:+.3} {unit}")))
+        .collect::<Vec<_>>();
+    let still = match words.as_slice() {
+        [] => String::new(),
+        words => format!("; still to come (slope x tau): {}", words.join(", ")),
+    };
+    Window {
+        from_s: from.as_secs_f64(),
+        to_s: to.as_secs_f64(),
+        criterion: format!("{criterion}{still}"),
+        power_to_come_w: power,
+        rise_to_come_k: rise,
+        extrapolated: None,
+    }
+}
+
+/// The last minute of a soak that predictions ended, and where it would have gone.
+fn ended_early(
+    view: &CellView,
+    window: Window,
+    power: Option<Prediction>,
+    rise: Option<Prediction>,
+) -> Window {
+    let from_s = (window.to_s - LAST_MINUTE_S).max(window.from_s);
+    let track = view.energised(view.meter, Reading::Power);
+    let last = mean(within(&track, from_s, window.to_s)).unwrap_or(0.0);
+    // A rise that meets the criterion by itself still has its remaining error.
+    let rise = rise.map(|p| (p.still_to_come, p.end_standard));
+    let (to_come, rise_standard) = rise.or(window.rise_to_come_k).unwrap_or_default();
+    let extrapolated = Extrapolated {
+        power_w: power.map_or(last, |p| p.end),
+        power_standard: power.map_or(0.0, |p| p.end_standard),
+        rise_still_to_come_k: to_come,
+        rise_standard,
+    };
+    Window {
+        from_s,
+        extrapolated: Some(extrapolated),
+        ..window
+    }
+}
+
+/// The settled input of a cell, as it was measured at the plug.
 pub(super) fn steady(view: &CellView, settled: &Figure<Window>) -> Figure<Steady> {
     let window = match settled {
         Figure::Known(window) => measured_window(view, window),
@@ -103,14 +168,20 @@ pub(super) fn steady(view: &CellView, settled: &Figure<Window>) -> Figure<Steady
 }
 
 /// The window of the step `measure` behind a settled soak, else the criterion's. A
-/// thermostat needs whole cycles: its window begins with the criterion's.
+/// thermostat needs whole cycles: its window begins with the criterion's. The sampling
+/// method's result is the mean over its own window.
 fn measured_window(view: &CellView, settled: &Window) -> Window {
-    let measure = view.step(|action| matches!(action, Action::Measure(_)));
-    let rows: Track = measure.map_or_else(Track::new, |step| {
-        view.track(view.meter, Reading::Power, |row| {
-            row.step == step.number && row.energised
-        })
+    let sampled = view.steps().any(|step| {
+        matches!(&step.action, Action::Soak { until, .. } if until.kind == CriterionKind::SamplingMethod)
     });
+    let measure = view.step(|action| matches!(action, Action::Measure(_)));
+    let rows: Track = measure
+        .filter(|_| !sampled)
+        .map_or_else(Track::new, |step| {
+            view.track(view.meter, Reading::Power, |row| {
+                row.step == step.number && row.energised
+            })
+        });
     let (Some(first), Some(last)) = (rows.first(), rows.last()) else {
         return settled.clone();
     };
@@ -121,7 +192,7 @@ fn measured_window(view: &CellView, settled: &Window) -> Window {
     Window {
         from_s: if cycling { settled.from_s } else { first.0 },
         to_s: last.0,
-        criterion: settled.criterion.clone(),
+        ..settled.clone()
     }
 }
 
@@ -134,7 +205,8 @@ fn over(view: &CellView, window: Window) -> Result<Steady, String> {
     if power.len() < FEWEST_ROWS {
         return Err("too few power readings in the settled window".to_owned());
     }
-    let on = on_times(view, &power)?;
+    let thermostat = view.plan.appliance.thermostat;
+    let on = on_times(thermostat, &power, &inside(Reading::Energy))?;
     let kept = |track: &[(f64, f64)]| -> Track {
         let is_on = |t: f64| {
             on.stretches
@@ -150,127 +222,54 @@ fn over(view: &CellView, window: Window) -> Result<Steady, String> {
     let voltage = mean(&kept(&inside(Reading::Voltage)))
         .ok_or("the power meter gave no voltage in the settled window")?;
     let current = mean(&kept(&inside(Reading::Current)));
-    let mean_w = mean(within(&power, on.from_s, on.to_s)).unwrap_or(0.0);
-    let (estimate, effective) = power_estimate(view, &on_power, voltage)?;
+    let plug = at_plug(view, &on_power, voltage, current)?;
+    let power_w = match &window.extrapolated {
+        Some(early) => to_the_end(&plug.power_w, mean(&on_power).unwrap_or(0.0), early),
+        None => plug.power_w,
+    };
+    let (representative_w, representative_how) = on.representative.unzip();
     Ok(Steady {
-        power_w: estimate,
-        mean_w,
+        power_w: power_w.clone(),
+        at_plug_w: power_w,
+        exponent: usual_exponent(&view.plan.appliance),
+        ambient_degc: temperature_in(view, view.ambient, &window),
+        body_degc: temperature_in(view, view.body, &window).map(|body| body.value),
+        mean_w: on.mean_w,
+        mean_from: on.mean_from,
+        representative_w,
+        representative_how,
         duty: on.duty,
-        voltage_v: voltage,
+        voltage_v: plug.volts.value,
+        plug_v: plug.volts,
         current_a: current,
         from_s: window.from_s,
         to_s: window.to_s,
         samples: on_power.len(),
-        effective,
+        effective: plug.effective,
         criterion: window.criterion,
+        extrapolated: window.extrapolated.is_some(),
     })
 }
 
-/// When a load is on in a window.
-struct OnTimes {
-    /// Stretches with power, their first and last rows left out where it cycles.
-    stretches: Vec<(f64, f64)>,
-    /// Share of whole cycles in which it is on.
-    duty: f64,
-    /// What the mean is over: whole cycles, or the window.
-    from_s: f64,
-    to_s: f64,
+/// Mean of a temperature in a window, where it was read and its accuracy is stated.
+fn temperature_in(view: &CellView, role: Option<usize>, window: &Window) -> Option<Estimate> {
+    let track = view.track(role, Reading::Temperature, |_| true);
+    let indicated = mean(within(&track, window.from_s, window.to_s))?;
+    Gauge::of(view.plan, role?, Reading::Temperature)?
+        .estimate(indicated)
+        .ok()
 }
 
-fn on_times(view: &CellView, power: &[(f64, f64)]) -> Result<OnTimes, String> {
-    let (from_s, to_s) = (power[0].0, power[power.len() - 1].0);
-    let always = OnTimes {
-        stretches: vec![(from_s, to_s)],
-        duty: 1.0,
-        from_s,
-        to_s,
-    };
-    let threshold = ON * highest(power).map_or(0.0, |(_, p)| p);
-    let is_on = |p: &(f64, f64)| p.1 > threshold;
-    if !view.plan.appliance.thermostat || power.iter().all(is_on) {
-        return Ok(always);
+/// An input measured at an indicated mean, moved to the predicted end, with the
+/// prediction's share.
+fn to_the_end(measured: &Estimate, indicated: f64, early: &Extrapolated) -> Estimate {
+    if indicated <= 0.0 {
+        return measured.clone();
     }
-    let begins: Vec<usize> = (1..power.len())
-        .filter(|i| is_on(&power[*i]) && !is_on(&power[i - 1]))
-        .collect();
-    let (Some(first), Some(last)) = (begins.first(), begins.last()) else {
-        return Err("its thermostat shows no cycle in the settled window".to_owned());
-    };
-    if first == last {
-        return Err("its thermostat shows no whole cycle in the settled window".to_owned());
-    }
-    let whole = &power[*first..*last];
-    let on_rows = whole.iter().filter(|p| is_on(p)).count();
-    // A row that straddles the switching holds a part of both states.
-    let stretches = power
-        .chunk_by(|a, b| is_on(a) == is_on(b))
-        .filter(|chunk| is_on(&chunk[0]))
-        .filter_map(|chunk| match chunk {
-            [_, inner @ .., _] if !inner.is_empty() => Some((inner[0].0, inner[inner.len() - 1].0)),
-            _ => None,
-        })
-        .collect();
-    Ok(OnTimes {
-        stretches,
-        duty: on_rows as f64 / whole.len() as f64,
-        from_s: whole[0].0,
-        to_s: whole[whole.len() - 1].0,
-    })
-}
-
-/// Mean power with its uncertainty, referred to the voltage of the cell's supply;
-/// and the effective number of rows.
-fn power_estimate(
-    view: &CellView,
-    power: &[(f64, f64)],
-    voltage_v: f64,
-) -> Result<(Estimate, f64), String> {
-    let gauge = |reading| {
-        view.meter
-            .and_then(|role| Gauge::of(view.plan, role, reading))
-            .ok_or("there is no power meter")
-    };
-    let values: Vec<f64> = power.iter().map(|(_, value)| *value).collect();
-    let worth = effective_of(&values).ok_or("too few power readings")?;
-    let indicated = mean(power).unwrap_or(0.0);
-    let watts = gauge(Reading::Power)?;
-    let mut lines = watts.lines(indicated)?;
-    lines.push(scatter(worth.scatter, worth.effective));
-    let drift = 0.5 * worth.trend.abs() * (worth.n as f64 - 1.0);
-    lines.push(Line::stated("drift over the window", drift / RECTANGULAR));
-    let volts = gauge(Reading::Voltage)?;
-    let true_volts = volts.corrected(voltage_v);
-    let wanted = view.cell.supply.voltage.get();
-    let referral = referral(&view.plan.appliance, true_volts, wanted)?;
-    let value = watts.corrected(indicated) * referral.factor;
-    let (low, high) = super::voltage::exponents(&view.plan.appliance);
-    let per_volt = 0.5 * (low + high) * value / true_volts;
-    let mut lines: Vec<Line> = lines
-        .into_iter()
-        .map(|l| l.times(referral.factor))
-        .collect();
-    lines.extend(
-        volts
-            .lines(voltage_v)?
-            .into_iter()
-            .map(|l| l.times(per_volt)),
-    );
-    let by_voltage = format!("input referred from {true_volts:.2} V to {wanted} V");
-    lines.push(Line::stated(by_voltage, referral.relative * value.abs()));
-    Ok((estimate(value, lines), worth.effective))
-}
-
-/// Type A: the scatter about the trend over the root of the effective number. Less
-/// than two independent rows average nothing out.
-fn scatter(sd: f64, effective: f64) -> Line {
-    if effective < 2.0 {
-        return Line::of("scatter (less than two independent rows)", sd, 1.0);
-    }
-    Line::of(
-        "scatter of the mean",
-        sd / effective.sqrt(),
-        effective - 1.0,
-    )
+    let share = measured.value / indicated * early.power_standard;
+    measured
+        .scaled(early.power_w / indicated)
+        .moved(0.0, [Share::normal("extrapolation", share, "W")])
 }
 
 /// What a unit drew, settled or not.

@@ -1,11 +1,12 @@
 //! `results.csv`: a row per cell, a column per quantity with its unit.
 
 use super::types::{Analysis, CellResult, Figure};
+use super::waveform::HalfWave;
 use crate::quantity::shortest;
 use crate::record::defused;
 
 /// Columns before the rises of the other temperature roles.
-const HEAD: [&str; 27] = [
+const HEAD: [&str; 47] = [
     "condition",
     "position",
     "supply_voltage_v",
@@ -19,11 +20,31 @@ const HEAD: [&str; 27] = [
     "inrush_peak_after_s",
     "inrush_ratio",
     "inrush_lower_bound",
+    "inrush_momentary_a",
+    "inrush_momentary_u_a",
+    "switch_in_peak_a",
+    "switch_in_peak_u_a",
+    "source_impedance_ohm",
+    "switching_angle_deg",
+    "i2t_a2s",
+    "wave_rms_a",
+    "wave_dc_a",
+    "wave_crest_factor",
+    "wave_power_factor",
+    "wave_half_wave",
+    "worst_harmonic",
+    "worst_harmonic_a",
+    "worst_harmonic_limit_a",
+    "voltage_change_dmax_percent",
+    "voltage_change_dc_percent",
+    "voltage_change_above_3_3_percent_s",
     "settled_after_s",
     "steady_power_w",
     "steady_power_u_w",
     "mean_power_w",
     "duty",
+    "representative_power_w",
+    "extrapolated",
     "voltage_v",
     "samples",
     "effective_samples",
@@ -62,7 +83,15 @@ fn row(cell: &CellResult) -> Vec<String> {
             .map_or("", |set| if set { "1" } else { "0" })
             .to_owned()
     };
-    let inrush = cell.inrush.known();
+    let inrush = cell.inrush.known().filter(|_| cell.dc_lost.is_none());
+    // What rests on a current without its DC part is no result.
+    let wave = cell.waveform.known().filter(|_| cell.dc_lost.is_none());
+    let harmonic = wave.and_then(|w| w.harmonic.known());
+    let change = wave.and_then(|w| w.change.known());
+    let or_unknown = |value: Option<Option<f64>>| match value {
+        Some(value) => value.map_or_else(|| "unknown".to_owned(), shortest),
+        None => String::new(),
+    };
     let steady = cell.steady.known();
     let peak = cell.body_peak.known();
     let worst = cell.body_worst.known();
@@ -80,11 +109,31 @@ fn row(cell: &CellResult) -> Vec<String> {
         number(inrush.map(|i| i.peak_after_s)),
         number(inrush.and_then(|i| i.ratio)),
         flag(inrush.map(|i| !i.lower_bound.is_empty())),
+        number(wave.map(|w| w.momentary_peak_a.value)),
+        number(wave.map(|w| w.momentary_peak_a.expanded)),
+        number(cell.switch_in_peak.known().map(|e| e.value)),
+        number(cell.switch_in_peak.known().map(|e| e.expanded)),
+        or_unknown(inrush.map(|i| i.source_ohm)),
+        or_unknown(inrush.map(|i| i.switching_angle_deg)),
+        number(wave.map(|w| w.shape.i2t_a2s)),
+        number(wave.map(|w| w.shape.tail.rms_a)),
+        number(wave.map(|w| w.shape.tail.dc_a)),
+        number(wave.and_then(|w| w.shape.tail.crest_factor)),
+        number(wave.and_then(|w| w.shape.tail.power_factor)),
+        flag(wave.map(|w| w.shape.half_wave != HalfWave::None)),
+        harmonic.map_or_else(String::new, |h| h.number.to_string()),
+        number(harmonic.map(|h| h.rms_a.value)),
+        number(harmonic.map(|h| h.limit_a)),
+        number(change.map(|c| 100.0 * c.dmax.value)),
+        number(change.and_then(|c| c.dc.known().map(|dc| 100.0 * dc.value))),
+        number(change.map(|c| c.over_s.value)),
         number(cell.settled_s.known().copied()),
         number(steady.map(|s| s.power_w.value)),
         number(steady.map(|s| s.power_w.expanded)),
         number(steady.map(|s| s.mean_w)),
         number(steady.map(|s| s.duty)),
+        number(steady.and_then(|s| s.representative_w)),
+        flag(steady.map(|s| s.extrapolated)),
         number(steady.map(|s| s.voltage_v)),
         steady.map_or_else(String::new, |s| s.samples.to_string()),
         number(steady.map(|s| s.effective)),
@@ -114,6 +163,14 @@ fn reasons(cell: &CellResult) -> Vec<String> {
     add("energised", cell.energised_s.reason());
     add("cold start", cell.cold_start.reason());
     add("inrush", cell.inrush.reason());
+    if cell.waveform.reason() != Some("no waveform was taken") {
+        add("waveform", cell.waveform.reason());
+    }
+    if let Some(wave) = cell.waveform.known() {
+        add("harmonics", wave.harmonic.reason());
+        add("voltage change", wave.change.reason());
+    }
+    add("current and power factor", cell.dc_lost.as_deref());
     add("settled", cell.settled_s.reason());
     add("steady power", cell.steady.reason());
     add("body", cell.body_peak.reason());

@@ -1,12 +1,13 @@
 //! Highest temperatures, after-heat included, and the worst case from them.
 
-use crate::quantity::Reading;
-use crate::spec::sequence::{MeasuredAt, RoleKind};
+use crate::quantity::{Reading, shortest};
+use crate::spec::sequence::{HeatingElement, MeasuredAt, RoleKind};
 
+use super::budget::Share;
 use super::cell::{CellView, highest, time};
-use super::measured::{Gauge, estimate};
+use super::measured::Gauge;
 use super::steady::Window;
-use super::types::{Estimate, Figure, Peak};
+use super::types::{Estimate, Figure, Peak, Steady};
 
 /// The body must be seen falling for so long after OFF.
 const FALLING_FOR_S: f64 = 120.0;
@@ -28,30 +29,75 @@ fn peak(view: &CellView) -> Result<Peak, String> {
         time(row) >= energised
     });
     let (at_s, indicated) = highest(&track).ok_or("no temperature of the body was read")?;
-    let gauge = Gauge::of(view.plan, body, Reading::Temperature).ok_or("no sensor on the body")?;
-    let ambient = view
-        .ambient_at(at_s)
-        .ok_or("ambient was not read near the highest temperature")?;
+    let ambient = ambient_near(view, at_s)?;
     let off = view.switched.off.map(|off| off.as_secs_f64());
     Ok(Peak {
-        temperature_degc: estimate(gauge.corrected(indicated), gauge.lines(indicated)?),
+        temperature_degc: estimate_of(view, body, indicated, ambient.value)?,
         at_s,
-        ambient_degc: ambient_corrected(view, ambient),
+        ambient_degc: ambient.value,
         after_heat: off.is_some_and(|off| at_s > off),
     })
 }
 
-fn ambient_gauge<'a>(view: &CellView<'a>) -> Option<Gauge<'a>> {
-    Gauge::of(view.plan, view.ambient?, Reading::Temperature)
+/// A reading of the body with its budget, at a moment in seconds since the start.
+pub(super) fn body_estimate(
+    view: &CellView,
+    indicated: f64,
+    at_s: f64,
+) -> Result<Estimate, String> {
+    let body = view.body.ok_or("the bay has no role body")?;
+    let ambient = ambient_near(view, at_s)?;
+    estimate_of(view, body, indicated, ambient.value)
 }
 
-fn ambient_corrected(view: &CellView, indicated: f64) -> f64 {
-    ambient_gauge(view).map_or(indicated, |gauge| gauge.corrected(indicated))
+fn estimate_of(
+    view: &CellView,
+    role: usize,
+    indicated: f64,
+    ambient_degc: f64,
+) -> Result<Estimate, String> {
+    let read = Gauge::of(view.plan, role, Reading::Temperature)
+        .ok_or("it has no sensor")?
+        .estimate(indicated)?;
+    Ok(in_contact(view, role, read, ambient_degc))
 }
 
-/// The worst case that is judged against the link: the peak moved to the highest
-/// ambient by 1 K/K (never down: a test in a hotter room is not credited), and the
-/// placement allowance.
+fn ambient_near(view: &CellView, at_s: f64) -> Result<Estimate, String> {
+    let indicated = view
+        .ambient_at(at_s)
+        .ok_or("ambient was not read near the highest temperature")?;
+    ambient_estimate(view, indicated)
+}
+
+/// The bay's ambient with its budget.
+fn ambient_estimate(view: &CellView, indicated: f64) -> Result<Estimate, String> {
+    view.ambient
+        .and_then(|role| Gauge::of(view.plan, role, Reading::Temperature))
+        .ok_or("the bay has no role ambient")?
+        .estimate(indicated)
+}
+
+/// A sensor on a surface reads too low by up to a share of the rise over ambient: the
+/// error lies on one side, so that half of it is added and each value between nothing
+/// and the whole is alike likely (JCGM 100, 4.3.7 and F.2.4.5 in their sense).
+fn in_contact(view: &CellView, role: usize, read: Estimate, ambient_degc: f64) -> Estimate {
+    let planned = view.plan.bay.roles.get(role);
+    let Some(share) = planned.and_then(|role| role.connection.contact_error) else {
+        return read;
+    };
+    let most = share.get() * (read.value - ambient_degc).max(0.0);
+    let line = Share::rectangular(
+        format!("contact of the sensor, reads up to {share} of the rise too low, one-sided"),
+        0.5 * most,
+        "K",
+    );
+    read.moved(0.5 * most, [line])
+}
+
+/// The worst case that is judged against the link: the peak with the rise still to
+/// come, moved to the highest ambient (never down: a test in a hotter room is not
+/// credited) and for plain resistors to the highest supply voltage, with what the link
+/// may be hotter by than the place that is measured.
 ///
 /// Absent where the soak had not settled (the rise still to come is unknown), where
 /// the body was not followed until it had fallen for two minutes after OFF, and where
@@ -60,8 +106,9 @@ pub(super) fn body_worst(
     view: &CellView,
     peak: &Figure<Peak>,
     settled: &Figure<Window>,
+    steady: Option<&Steady>,
 ) -> Figure<Estimate> {
-    match worst(view, peak, settled) {
+    match worst(view, peak, settled, steady) {
         Ok(worst) => Figure::Known(worst),
         Err(reason) => Figure::Absent(reason),
     }
@@ -71,30 +118,127 @@ fn worst(
     view: &CellView,
     peak: &Figure<Peak>,
     settled: &Figure<Window>,
+    steady: Option<&Steady>,
 ) -> Result<Estimate, String> {
     let peak = match peak {
         Figure::Known(peak) => peak,
         Figure::Absent(reason) => return Err(reason.clone()),
     };
-    if let Some(reason) = settled.reason() {
-        return Err(format!("the rise still to come is unknown: {reason}"));
-    }
+    let window = match settled {
+        Figure::Known(window) => window,
+        Figure::Absent(reason) => {
+            return Err(format!("the rise still to come is unknown: {reason}"));
+        }
+    };
     followed(view, peak)?;
-    let allowance = allowance(view)?;
-    let hottest = view.plan.appliance.highest_ambient.get();
-    let moved = (hottest - peak.ambient_degc).max(0.0);
-    let body = view
-        .body
-        .and_then(|role| Gauge::of(view.plan, role, Reading::Temperature));
-    let mut lines = body
-        .ok_or("no sensor on the body")?
-        .lines(peak.temperature_degc.value)?;
-    if moved > 0.0 {
-        let ambient = ambient_gauge(view).ok_or("the bay has no role ambient")?;
-        lines.extend(ambient.lines(peak.ambient_degc)?);
+    let (to_come, standard) = match window.extrapolated {
+        Some(early) => (early.rise_still_to_come_k, early.rise_standard),
+        None => window.rise_to_come_k.unwrap_or((0.0, 0.0)),
+    };
+    let seen = peak.temperature_degc.moved(
+        to_come.max(0.0),
+        [Share::normal(
+            "rise still to come, predicted",
+            standard,
+            "K",
+        )],
+    );
+    let at_room = at_highest_ambient(view, seen, peak.ambient_degc)?;
+    let at_supply = at_highest_supply(view, at_room, peak, steady)?;
+    at_the_link(view, at_supply, steady)
+}
+
+/// Moves a temperature to the highest ambient: 1 K per K, unless the sequence states
+/// what was measured.
+fn at_highest_ambient(
+    view: &CellView,
+    seen: Estimate,
+    ambient_degc: f64,
+) -> Result<Estimate, String> {
+    let appliance = &view.plan.appliance;
+    let to_go = appliance.highest_ambient.get() - ambient_degc;
+    if to_go <= 0.0 {
+        return Ok(seen);
     }
-    let value = peak.temperature_degc.value + moved + allowance;
-    Ok(estimate(value, lines))
+    let effect = appliance
+        .link
+        .as_ref()
+        .and_then(|link| link.ambient_effect.as_ref());
+    let per_kelvin = effect.map_or(1.0, |effect| effect.value.get());
+    let ambient = ambient_estimate(view, ambient_degc)?;
+    let mut lines: Vec<Share> = ambient
+        .budget
+        .into_iter()
+        .map(|line| line.times(-per_kelvin))
+        .collect();
+    if let Some(effect) = effect {
+        let from = format!("effect of the room on the link ({})", effect.source);
+        let standard = 0.5 * effect.expanded.get();
+        lines.push(Share::normal(from, standard, "K/K").times(to_go));
+    }
+    Ok(seen.moved(per_kelvin * to_go, lines))
+}
+
+/// Moves a temperature to the highest voltage of the supply range, for plain resistors
+/// without a fan only: their rise goes with their power, which goes with the voltage
+/// to the power of 1.95 to 2. The middle is added, the interval enters U.
+fn at_highest_supply(
+    view: &CellView,
+    at_room: Estimate,
+    peak: &Peak,
+    steady: Option<&Steady>,
+) -> Result<Estimate, String> {
+    let appliance = &view.plan.appliance;
+    if appliance.element != HeatingElement::Resistor || appliance.fan {
+        return Ok(at_room);
+    }
+    let highest = appliance.supply_ends(&view.cell.position).1.get();
+    let volts = steady.map_or(view.cell.supply.voltage.get(), |s| s.plug_v.value);
+    let ratio = libm::log(highest / volts);
+    if !ratio.is_finite() || ratio <= 0.0 {
+        return Ok(at_room);
+    }
+    let rise = peak.temperature_degc.value - peak.ambient_degc;
+    let more = |exponent: f64| rise * (libm::exp(exponent * ratio) - 1.0);
+    let (low, high) = (more(1.95), more(2.0));
+    let line = Share::rectangular(
+        format!("rise at {} V, exponent 1.95 to 2", shortest(highest)),
+        0.5 * (high - low),
+        "K",
+    );
+    Ok(at_room.moved(0.5 * (low + high), [line]))
+}
+
+/// From the place that is measured to the link: nothing on its own body; elsewhere
+/// the allowance and the link's heating by its own current, I2 Rth.
+fn at_the_link(
+    view: &CellView,
+    place: Estimate,
+    steady: Option<&Steady>,
+) -> Result<Estimate, String> {
+    let Some(link) = &view.plan.appliance.link else {
+        return Ok(place);
+    };
+    let MeasuredAt::Elsewhere {
+        place: name,
+        allowance,
+        self_heating,
+        ..
+    } = &link.measured_at
+    else {
+        return Ok(place);
+    };
+    let allowance = allowance.ok_or_else(|| {
+        format!("measured at {name}, off the link's body, and no allowance for it is stated")
+    })?;
+    let heating = self_heating.ok_or_else(|| {
+        format!("measured at {name}, off the link's body, and its self-heating is not stated")
+    })?;
+    let amps = steady
+        .and_then(|steady| steady.current_a)
+        .ok_or("the link's self-heating needs the settled current, and none was read")?;
+    let times = amps / heating.at.get();
+    Ok(place.moved(allowance.get() + heating.rise.get() * times * times, []))
 }
 
 /// Whether the body was seen to fall for two minutes after OFF and after its peak.
@@ -110,24 +254,6 @@ fn followed(view: &CellView, peak: &Peak) -> Result<(), String> {
         return Ok(());
     }
     Err(never())
-}
-
-/// How much hotter than the measured place the link may be; nothing to allow on its
-/// own body, or where there is no link.
-fn allowance(view: &CellView) -> Result<f64, String> {
-    let Some(link) = &view.plan.appliance.link else {
-        return Ok(0.0);
-    };
-    match &link.measured_at {
-        MeasuredAt::LinkBody => Ok(0.0),
-        MeasuredAt::Elsewhere {
-            allowance: Some(kelvins),
-            ..
-        } => Ok(kelvins.get()),
-        MeasuredAt::Elsewhere { place, .. } => Err(format!(
-            "measured at {place}, off the link's body, and no allowance for it is stated"
-        )),
-    }
 }
 
 /// Highest rise over ambient of every temperature role beside body and ambient.
@@ -156,16 +282,6 @@ fn rise(view: &CellView, role: usize) -> Result<Estimate, String> {
         time(row) >= energised
     });
     let (at_s, indicated) = highest(&track).ok_or("no temperature was read")?;
-    let gauge = Gauge::of(view.plan, role, Reading::Temperature).ok_or("no sensor")?;
-    let ambient = view
-        .ambient_at(at_s)
-        .ok_or("ambient was not read near the highest temperature")?;
-    let mut lines = gauge.lines(indicated)?;
-    if let Some(gauge) = ambient_gauge(view) {
-        lines.extend(gauge.lines(ambient)?);
-    }
-    Ok(estimate(
-        gauge.corrected(indicated) - ambient_corrected(view, ambient),
-        lines,
-    ))
+    let ambient = ambient_near(view, at_s)?;
+    Ok(estimate_of(view, role, indicated, ambient.value)?.minus(&ambient))
 }

@@ -110,14 +110,18 @@ pub fn number(field: &[u8]) -> Result<Number, Fault> {
         return Err(garbled());
     }
     let text = std::str::from_utf8(field).map_err(|_| garbled())?;
-    let value: f64 = text.parse().map_err(|_| garbled())?;
-    Ok(if NOT_A_NUMBER.contains(&value) {
+    text.parse().map(told).map_err(|_| garbled())
+}
+
+/// A value, or what it says as a sentinel.
+pub fn told(value: f64) -> Number {
+    if NOT_A_NUMBER.contains(&value) {
         Number::NoValue
     } else if value.abs() >= SENTINEL {
         Number::Overload
     } else {
         Number::Value(value)
-    })
+    }
 }
 
 /// `[+-] digits [. digits] [E [+-] digits]`, at least one digit before the E:

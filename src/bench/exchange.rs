@@ -7,6 +7,8 @@
 //! its identity is asked for, and every line up to its identity reply is stale and
 //! dropped. Bytes that come while nothing is asked have the same effect.
 
+mod blocks;
+
 use std::sync::Arc;
 
 use super::codec;
@@ -181,7 +183,7 @@ impl Exchange {
         let (State::Writing { identity }, Some(request)) = (self.state, &self.request) else {
             return Next::Wait;
         };
-        let manner = request.manner.clone();
+        let (manner, within_us) = (request.manner.clone(), request.within_us);
         self.torn = !whole;
         self.first_sent.get_or_insert(self.writing_at);
         if !whole {
@@ -200,6 +202,7 @@ impl Exchange {
             self.last_command = Some(request.bytes.clone());
             return self.over(Ok(Reply::Done), now);
         }
+        let deadline = now.plus_micros(within_us);
         self.state = State::Asking { deadline };
         Next::Wait
     }
@@ -230,7 +233,7 @@ impl Exchange {
             }
             State::Syncing { .. } | State::Asking { .. } => {
                 self.inbox.extend_from_slice(bytes);
-                self.read_lines(now)
+                self.read_block(now).unwrap_or_else(|| self.read_lines(now))
             }
         }
     }
@@ -262,7 +265,7 @@ impl Exchange {
         match self.passed_over.take() {
             Some(fault) => fault,
             None if codec::is_blank(&self.inbox) => Fault::NoReply,
-            None => Fault::Garbled("the reply has no line end".to_owned()),
+            None => self.broken_off(),
         }
     }
 
@@ -336,7 +339,7 @@ impl Exchange {
         self.inbox = inbox;
         self.inbox.drain(..start);
         self.scanned = self.inbox.len();
-        if self.inbox.len() > REPLY_LIMIT {
+        if self.inbox.len() > self.limit() {
             return self.too_long(now);
         }
         next
@@ -347,7 +350,7 @@ impl Exchange {
         self.clear_inbox();
         self.skipping = true;
         if asking {
-            let why = format!("more than {REPLY_LIMIT} bytes without a line end");
+            let why = format!("more than {} bytes without a line end", self.limit());
             return self.failed_try(Fault::Garbled(why), now);
         }
         Next::Wait

@@ -14,7 +14,7 @@ use super::lease::{Lease, OffConfirmed};
 use super::order::{Act, Asker, Change, Identity, Message, Poll, Polled};
 use super::setup::LineSetup;
 use crate::clock::Clock;
-use crate::quantity::Seconds;
+use crate::quantity::{Seconds, Waveform};
 
 /// How long the end of a line's thread is waited for, in wall time.
 const JOIN_WITHIN: Duration = Duration::from_secs(2);
@@ -183,6 +183,30 @@ impl LineHandle {
             reply: self.clock.now(),
             result: Err(self.facts.ended(instrument)),
         })
+    }
+
+    /// Arms the driver's single acquisition and reads the error queue.
+    ///
+    /// # Errors
+    /// [`Fault::Refused`] where the driver fetches no waveform; [`Fault::Reported`];
+    /// else what the exchanges met.
+    pub async fn arm(&self, instrument: usize) -> Result<(), ExchangeError> {
+        self.ask(instrument, Act::Arm).await
+    }
+
+    /// Fetches the block of the acquisition that was armed, in front of the polls; it is
+    /// tried once, and takes at most `at_most` of run time.
+    ///
+    /// # Errors
+    /// [`Fault::Refused`] where the driver fetches none; [`Fault::NotConfirmed`] where the
+    /// acquisition is not complete; else what the exchanges met.
+    pub async fn waveform(
+        &self,
+        instrument: usize,
+        at_most: Seconds,
+    ) -> Result<Waveform, ExchangeError> {
+        self.ask(instrument, |asker| Act::Waveform(at_most, asker))
+            .await
     }
 
     /// Changes a setting, reads the error queue, and confirms by reading back.

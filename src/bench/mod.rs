@@ -11,6 +11,7 @@
 //! The room knows no record: what passes on the wire goes to a [`Tap`], each OFF
 //! to a [`Witness`], each polled sample into a channel ([`Ears`]).
 
+mod block;
 mod codec;
 mod error;
 mod exchange;

@@ -4,7 +4,7 @@ use tokio::sync::oneshot;
 
 use super::error::ExchangeError;
 use super::lease::{Lease, OffConfirmed};
-use crate::quantity::{Hertz, Moment, Readings, Seconds, Volts};
+use crate::quantity::{Hertz, Moment, Readings, Seconds, Volts, Waveform};
 
 /// A query that is repeated on an absolute schedule.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -104,6 +104,8 @@ pub(super) enum Act {
         channel: Option<u32>,
         asker: oneshot::Sender<Polled>,
     },
+    Arm(Asker<()>),
+    Waveform(Seconds, Asker<Waveform>),
     Change(Change, Asker<()>),
     Energise(Asker<Lease>),
     Off(String, Asker<OffConfirmed>),

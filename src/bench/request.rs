@@ -2,6 +2,7 @@
 
 use std::sync::Arc;
 
+use super::block::{BlockForm, Pairs};
 use super::codec::{self, ErrorEntry, Number};
 use super::error::Fault;
 use crate::quantity::{Moment, Reading, Readings, Seconds};
@@ -22,6 +23,7 @@ pub struct Manner {
     /// The start of its reply.
     identity: String,
     identity_fields: usize,
+    factor: f64,
 }
 
 impl Manner {
@@ -42,6 +44,7 @@ impl Manner {
             identity_query,
             identity: identity.to_owned(),
             identity_fields: driver.identity.fields,
+            factor,
         }
     }
 
@@ -67,6 +70,8 @@ pub enum Expect {
     Switch,
     /// An error queue's entry.
     ErrorEntry,
+    /// A block of voltage and current.
+    Block(Arc<BlockForm>),
 }
 
 /// What is sent and what must come back; cheap to clone.
@@ -76,6 +81,8 @@ pub struct Request {
     pub(super) bytes: Arc<[u8]>,
     pub(super) expect: Expect,
     pub(super) tries: u32,
+    /// Time for the reply, where it is not the driver's usual one.
+    pub(super) within_us: u64,
 }
 
 impl Request {
@@ -86,6 +93,7 @@ impl Request {
             bytes: bytes.into(),
             expect,
             tries: manner.tries,
+            within_us: manner.reply_within_us,
         }
     }
 
@@ -93,6 +101,15 @@ impl Request {
     #[must_use]
     pub fn once(mut self) -> Self {
         self.tries = 1;
+        self
+    }
+
+    /// The same with another time for the whole reply: `span` of wall time, but no more
+    /// than `at_most` of run time.
+    #[must_use]
+    pub fn within(mut self, span: Seconds, at_most: Seconds) -> Self {
+        let us = span.as_micros() as f64 * self.manner.factor;
+        self.within_us = (us as u64).min(at_most.as_micros()).max(1000);
         self
     }
 
@@ -111,6 +128,7 @@ pub enum Reply {
     Number(f64),
     Switch(bool),
     ErrorEntry(ErrorEntry),
+    Block(Pairs),
 }
 
 /// An exchange that is over.
@@ -153,5 +171,13 @@ pub fn read(line: &[u8], expect: &Expect, manner: &Manner) -> Result<Reply, Faul
         Expect::Number => Reply::Number(codec::number(line).and_then(Number::value)?),
         Expect::Switch => Reply::Switch(codec::switch(line)?),
         Expect::ErrorEntry => Reply::ErrorEntry(codec::error_entry(line)?),
+        Expect::Block(form) if form.is_text() => Reply::Block(form.read(line)?),
+        // A line where a block was asked for: a sentinel at the best.
+        Expect::Block(_) => {
+            codec::number(line).and_then(Number::value)?;
+            return Err(Fault::Garbled(
+                "a number where a block was asked for".to_owned(),
+            ));
+        }
     })
 }

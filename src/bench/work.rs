@@ -6,14 +6,15 @@ use std::sync::Arc;
 
 use tokio::sync::oneshot;
 
+use super::block::{BlockForm, Pairs};
 use super::codec::frame;
 use super::error::{ExchangeError, Fault};
 use super::lease::{Lease, LeaseState, OffConfirmed};
 use super::order::{Asker, Change, Identity, Poll, Polled};
 use super::request::{Expect, Manner, Reply, Request};
 use super::setup::InstrumentSetup;
-use crate::quantity::{Moment, near, shortest};
-use crate::spec::driver::{ReadingQuery, Setting};
+use crate::quantity::{Moment, Seconds, Waveform, near, shortest};
+use crate::spec::driver::{ReadingQuery, SampleInterval, Setting, WaveformQuery};
 
 /// Entries read from an error queue at most, before it counts as one that never empties.
 const QUEUE_LIMIT: u32 = 32;
@@ -131,6 +132,52 @@ impl Member {
         commands.chain(self.error_step()).collect()
     }
 
+    fn waveform_query(&self) -> Result<&WaveformQuery, Fault> {
+        self.setup.driver.waveform.as_ref().ok_or_else(|| {
+            let driver = &self.setup.driver.name;
+            Fault::Refused(format!("driver {driver} fetches no waveform"))
+        })
+    }
+
+    pub(super) fn arm_steps(&self) -> Result<VecDeque<Step>, Fault> {
+        let commands = self.waveform_query()?.arm.iter();
+        let commands = commands.map(|text| Step::Exchange(self.plain(text, Expect::Nothing)));
+        Ok(commands.chain(self.error_step()).collect())
+    }
+
+    /// Whether it is ready, the interval, the block: the last two replies make a waveform.
+    /// Each is tried once, so that a failure costs little of the readings' time.
+    pub(super) fn waveform_steps(&self, at_most: Seconds) -> Result<VecDeque<Step>, Fault> {
+        let query = self.waveform_query()?;
+        let ready = query.ready.as_ref().map(|ask| Step::Confirm {
+            ask: self.plain(ask, Expect::Switch).once(),
+            wanted: Wanted::On,
+            left: self.tries(),
+        });
+        let interval = match &query.interval {
+            SampleInterval::Fixed(_) => None,
+            SampleInterval::Asked(ask) => {
+                Some(Step::Exchange(self.plain(ask, Expect::Number).once()))
+            }
+        };
+        let form = Arc::new(BlockForm::of(query));
+        let block = self.plain(&query.ask, Expect::Block(form));
+        let block = Step::Exchange(block.within(query.reply_within, at_most).once());
+        Ok(ready.into_iter().chain(interval).chain([block]).collect())
+    }
+
+    /// The waveform of a block, with the interval that was asked for, or the fixed one.
+    pub(super) fn waveform(&self, pairs: Pairs, asked: Option<f64>) -> Result<Waveform, Fault> {
+        let seconds = match (&self.waveform_query()?.interval, asked) {
+            (SampleInterval::Fixed(span), _) => span.get(),
+            (SampleInterval::Asked(_), asked) => asked.unwrap_or(f64::NAN),
+        };
+        // Whole nanoseconds: 0.0002 s is 200 us, not 199.99999999999997.
+        let interval_us = libm::round(seconds * 1e9) / 1e3;
+        Waveform::new(interval_us, pairs.volts, pairs.amps)
+            .map_err(|error| Fault::Garbled(error.to_string()))
+    }
+
     pub(super) fn change_steps(&self, change: Change) -> Result<VecDeque<Step>, Fault> {
         let settings = &self.setup.driver.settings;
         let (word, setting, value, exact) = match change {
@@ -242,6 +289,8 @@ pub(super) struct Order {
     pub steps: VecDeque<Step>,
     /// The first entry that the error queue held.
     pub reported: Option<Fault>,
+    /// The last number that was answered, for an order that needs two replies.
+    pub number: Option<f64>,
     pub asker: OrderAsker,
 }
 
@@ -251,6 +300,7 @@ pub(super) enum OrderAsker {
     Polled(oneshot::Sender<Polled>),
     Done(Asker<()>),
     Lease(Asker<Lease>),
+    Waveform(Asker<Waveform>),
 }
 
 /// An energising that failed: answered when the output is off again.

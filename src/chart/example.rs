@@ -1,7 +1,10 @@
 //! Believable and degenerate scenes for this room's tests; appliances invented.
 
 use super::Scene;
-use crate::analysis::{Analysis, CellResult, Drawn, Estimate, Figure, Inrush, Peak, Steady};
+use crate::analysis::{
+    Analysis, CellResult, Distribution, Drawn, Estimate, Exponent, Figure, Inrush, Peak, Share,
+    Steady,
+};
 use crate::judge::{Finding, Judgement, Outcome, judge};
 use crate::plan::{
     Action, Cell, Guards, PLAN_FORMAT, Plan, PlannedAppliance, PlannedBay, PlannedLink,
@@ -11,10 +14,11 @@ use crate::quantity::{
     Amps, Celsius, Hertz, Kelvins, Moment, Reading, Readings, Seconds, Volts, Watts,
 };
 use crate::record::{RunOutcome, Sample, Status};
+use crate::spec::bench::Connection;
 use crate::spec::plate;
 use crate::spec::sequence::{
-    ApplianceKind, Criterion, CriterionKind, Decision, HeatingElement, MeasuredAt, ProtectionClass,
-    RoleKind, RuleKind, RuleWeight, Span, SupplyPoint, Timed, Waiting,
+    ApplianceKind, Criterion, CriterionKind, CyclingRule, Decision, HeatingElement, MeasuredAt,
+    ProtectionClass, RoleKind, RuleKind, RuleWeight, Span, SupplyPoint, Timed, Waiting,
 };
 
 /// How a unit of the example behaves in one cell.
@@ -69,6 +73,9 @@ fn role(name: &str, kind: RoleKind) -> PlannedRole {
         kind,
         instrument: 0,
         channel: None,
+        place: None,
+        connection: Connection::default(),
+        sensor: None,
     }
 }
 
@@ -80,6 +87,8 @@ fn rule(kind: RuleKind, source: &str) -> PlannedRule {
         position: None,
         condition: None,
         source: source.to_owned(),
+        process: None,
+        cycling: CyclingRule::OnState,
     }
 }
 
@@ -125,6 +134,8 @@ pub fn plan(model: &str, cells: &[(Option<&str>, &str, f64)]) -> Plan {
             kind: ApplianceKind::Combined,
             protection_class: ProtectionClass::II,
             highest_ambient: Celsius::of(35.0),
+            reference_ambient: None,
+            supply_range: None,
             positions,
             plate: entries,
             link: Some(PlannedLink {
@@ -134,6 +145,7 @@ pub fn plan(model: &str, cells: &[(Option<&str>, &str, f64)]) -> Plan {
                 tm: Some(Celsius::of(175.0)),
                 sits: "on the heater block".to_owned(),
                 measured_at: MeasuredAt::LinkBody,
+                ambient_effect: None,
             }),
             element: HeatingElement::Ptc,
             fan: true,
@@ -143,6 +155,7 @@ pub fn plan(model: &str, cells: &[(Option<&str>, &str, f64)]) -> Plan {
         bay: PlannedBay {
             name: "bay 1".to_owned(),
             rated_current: Amps::of(10.0),
+            source: crate::spec::bench::Source::default(),
             roles: vec![
                 role("supply", RoleKind::Supply),
                 role("meter", RoleKind::PowerMeter),
@@ -188,6 +201,7 @@ fn steps(cells: usize) -> Vec<PlannedStep> {
             Action::Inrush(Timed {
                 length: Seconds::of(60.0),
                 every: Seconds::of(0.1),
+                waveform: false,
             }),
             Action::Soak {
                 at_least: Seconds::of(600.0),
@@ -198,6 +212,7 @@ fn steps(cells: usize) -> Vec<PlannedStep> {
                     power_change: None,
                     temperature_change: None,
                 },
+                early_finish: false,
             },
             Action::Rest(Waiting {
                 within: Kelvins::of(3.0),
@@ -312,12 +327,7 @@ pub fn samples(cell: usize, start: f64, unit: Behaviour) -> Vec<Sample> {
 }
 
 pub fn estimate(value: f64, expanded: f64) -> Estimate {
-    Estimate {
-        value,
-        expanded,
-        coverage: 2.0,
-        budget: Vec::new(),
-    }
+    Estimate::combined(value, vec![Share::normal("stated", 0.5 * expanded, "")])
 }
 
 /// What analysis would say of such a cell.
@@ -338,7 +348,13 @@ pub fn result(cell: &Cell, start: f64, unit: Behaviour) -> CellResult {
             above_steady_wh: Some(0.05),
             lower_bound: vec!["the meter updates every 100 ms".to_owned()],
             supply_limited: None,
+            from_waveform: false,
+            source_ohm: None,
+            switching_angle_deg: None,
         }),
+        switch_in_peak: Figure::Absent("it was a cold start".to_owned()),
+        waveform: Figure::Absent("no waveform was taken".to_owned()),
+        dc_lost: None,
         drawn: Figure::Known(Drawn {
             power_w: unit.settled,
             floor_w: 0.002,
@@ -347,10 +363,23 @@ pub fn result(cell: &Cell, start: f64, unit: Behaviour) -> CellResult {
         settled_s: Figure::Known(960.0),
         steady: Figure::Known(Steady {
             power_w: estimate(unit.settled * 1.002, 0.004 * unit.settled + 0.02),
+            at_plug_w: estimate(unit.settled * 1.002, 0.004 * unit.settled + 0.02),
+            plug_v: estimate(230.04, 0.4),
+            exponent: Exponent {
+                value: 0.15,
+                standard: 0.09,
+                distribution: Distribution::Rectangular,
+                source: "house default".to_owned(),
+            },
+            ambient_degc: Some(estimate(AMBIENT, 1.0)),
+            body_degc: Some(AMBIENT + unit.rise),
             mean_w: match unit.cycle {
                 Some((on, off)) => unit.settled * on / (on + off),
                 None => unit.settled * 1.002,
             },
+            mean_from: "rows weighted by time".to_owned(),
+            representative_w: None,
+            representative_how: None,
             duty: unit.cycle.map_or(1.0, |(on, off)| on / (on + off)),
             voltage_v: 230.04,
             current_a: Some(unit.settled / 230.0),
@@ -359,6 +388,7 @@ pub fn result(cell: &Cell, start: f64, unit: Behaviour) -> CellResult {
             samples: 151,
             effective: 42.3,
             criterion: "slope over 5 min within 2 %/h and 3 K/h".to_owned(),
+            extrapolated: false,
         }),
         body_peak: Figure::Known(Peak {
             temperature_degc: estimate(hottest, 1.6),
@@ -369,6 +399,7 @@ pub fn result(cell: &Cell, start: f64, unit: Behaviour) -> CellResult {
         body_worst: Figure::Known(estimate(hottest + 12.5, 1.9)),
         rises: vec![("enclosure".to_owned(), Figure::Known(estimate(31.0, 1.5)))],
         disbelief: Vec::new(),
+        abnormal: false,
     }
 }
 
@@ -379,9 +410,12 @@ pub fn finding(rule: &str, cell: Option<&Cell>, outcome: Outcome) -> Finding {
         position: cell.map(|cell| cell.position.clone()),
         supply: cell.map(|_| "230 V, 50 Hz".to_owned()),
         weight: RuleWeight::Required,
+        decision: None,
         outcome,
         value: None,
         expanded: None,
+        coverage: None,
+        budget: Vec::new(),
         unit: String::new(),
         at_least: None,
         at_most: None,
@@ -408,6 +442,7 @@ pub fn stage(model: &str, cells: &[(Option<&str>, &str, f64, Behaviour)]) -> Sta
     }
     let analysis = Analysis {
         cells: results,
+        openings: Vec::new(),
         looked: Vec::new(),
         tripped: None,
         notes: Vec::new(),

@@ -144,7 +144,9 @@ fn settled(input: &Input) -> KeyFigure {
     let Some(steady) = input.steady() else {
         return KeyFigure::absent("settled input", input.why_not_steady());
     };
-    let name = if steady.duty < 0.999 {
+    let name = if steady.extrapolated {
+        "extrapolated input"
+    } else if steady.duty < 0.999 {
         "settled input, while on"
     } else {
         "settled input"
@@ -209,7 +211,12 @@ fn switch_on(inrush: &Inrush) -> KeyFigure {
 }
 
 fn time_to_settle(input: &Input) -> KeyFigure {
-    let name = "settled after";
+    let early = input.steady().is_some_and(|steady| steady.extrapolated);
+    let name = if early {
+        "ended early after"
+    } else {
+        "settled after"
+    };
     match input.result.map(|result| &result.settled_s) {
         Some(Figure::Known(s)) => {
             let criterion = input.steady().map(|steady| clean(&steady.criterion));

@@ -156,7 +156,13 @@ fn lines_behind(sheet: &mut Sheet, panel: &Panel, input: &Input, windowed: bool)
     if windowed && let Some(steady) = input.steady() {
         let minutes = |t: f64| (t - input.span.energised) / 60.0;
         let window = (minutes(steady.from_s), minutes(steady.to_s));
-        panel.window(sheet, window, "settled window")?;
+        let early = input.steady().is_some_and(|steady| steady.extrapolated);
+        let word = if early {
+            "not settled"
+        } else {
+            "settled window"
+        };
+        panel.window(sheet, window, word)?;
     }
     for limit in [limits.at_least, limits.at_most].into_iter().flatten() {
         level(sheet, panel, limit, AT_LIMIT)?;
@@ -310,7 +316,12 @@ fn line_labels(panel: &Panel, input: &Input, column: Frame, whole: bool) -> Vec<
     if let Some(steady) = input.steady() {
         let power = &steady.power_w;
         let (value, expanded) = with_uncertainty(power.value, power.expanded);
-        let word = if steady.duty < 0.999 { "on" } else { "settled" };
+        let word = match steady.extrapolated {
+            true if whole => "extrapolated",
+            true => "extrap.",
+            false if steady.duty < 0.999 => "on",
+            false => "settled",
+        };
         let mut lines = vec![(format!("{word} {value} W"), Face::bold(TEXT.em, LEVEL))];
         if whole {
             lines.push((format!("± {expanded} W"), TEXT.in_ink(LEVEL)));

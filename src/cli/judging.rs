@@ -55,6 +55,7 @@ pub fn judge_record(path: &Path) -> Result<Judged, JudgingError> {
         plan: &folder.plan,
         samples: &folder.samples,
         happenings: &folder.happenings,
+        waveforms: &folder.waveforms,
         outcome: &folder.manifest.outcome,
     });
     let judgement = judge::judge(&folder.plan, &folder.manifest.outcome, &analysis);
@@ -109,6 +110,14 @@ fn write_annex(
     files.push((
         "results.csv".to_owned(),
         csv(analysis::results_csv(analysis))?,
+    ));
+    files.push((
+        "budgets.csv".to_owned(),
+        csv(analysis::budgets_csv(analysis))?,
+    ));
+    files.push((
+        "budgets.txt".to_owned(),
+        analysis::budgets_text(analysis).into_bytes(),
     ));
     files.push((
         "findings.csv".to_owned(),

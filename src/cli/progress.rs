@@ -61,6 +61,10 @@ fn told(plan: &Plan, event: &Event) -> Option<Told> {
         }),
         Event::PositionSet { position, by } => course(format!("position {position}, by the {by}")),
         Event::SupplySet { what } => course(format!("supply {what}")),
+        Event::WaveformStored { file, samples, .. } => {
+            course(format!("waveform of {samples} samples in {file}"))
+        }
+        Event::WaveformFailed { reason, .. } => trouble(format!("no waveform: {reason}")),
         Event::Tripped { reason } => trouble(format!("TRIP: {reason}")),
         Event::Lost { detail, .. } => trouble(detail.clone()),
         Event::Stopped => trouble("stopped by the operator".to_owned()),
@@ -90,6 +94,7 @@ fn step_ended(plan: &Plan, number: u32, end: &StepEnd) -> Option<String> {
     let how = match end {
         StepEnd::Done => "done",
         StepEnd::Settled => "settled",
+        StepEnd::Extrapolated => "ended early: its end is extrapolated",
         StepEnd::TimeLimit => "ended by its time limit",
         StepEnd::WentOpen => "ended: the current vanished",
         StepEnd::Cut => "cut short",

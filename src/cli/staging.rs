@@ -104,6 +104,7 @@ fn connections(plan: &Plan) -> Vec<Connection> {
             role: role.name.clone(),
             kind: role.kind,
             channel: role.channel,
+            sensor: role.sensor,
         }
     };
     plan.bay.roles.iter().map(connect).collect()

@@ -24,6 +24,16 @@ pub fn verdict_table(folder: &Folder, analysis: &Analysis, judgement: &Judgement
     lines.push(String::new());
     lines.extend(findings(&judgement.findings));
     lines.push(String::new());
+    lines.extend(wrapped("limits     ", &judgement.convention));
+    if let Some(other) = &judgement.other_rules {
+        lines.extend(wrapped("RULES      ", other));
+    }
+    for mark in &judgement.marks {
+        lines.extend(wrapped(
+            "UNIT       ",
+            &format!("{}: {}", mark.word().to_uppercase(), mark.by()),
+        ));
+    }
     if let Some(ended) = ended(&folder.manifest.outcome) {
         lines.push(ended);
     }
@@ -50,7 +60,32 @@ fn results(plan: &Plan, analysis: &Analysis) -> Vec<String> {
     let rows = analysis.cells.iter().map(result_row).collect::<Vec<_>>();
     let mut lines = aligned(&head, &rows);
     lines.extend(plate_line(plan));
+    lines.extend(analysis.cells.iter().flat_map(remarks));
     lines
+}
+
+/// What a cell's settled input must not be read without.
+fn remarks(cell: &CellResult) -> Vec<String> {
+    let Some(steady) = cell.steady.known() else {
+        return Vec::new();
+    };
+    let mut remarks = Vec::new();
+    if steady.extrapolated {
+        remarks.push(steady.criterion.clone());
+    }
+    if steady.duty < 0.999 {
+        remarks.push(format!(
+            "on for {} % of the time, mean {} W ({})",
+            digits(100.0 * steady.duty, 3),
+            digits(steady.mean_w, 4),
+            steady.mean_from
+        ));
+    }
+    let label = format!("{}: ", cell_words(&cell.cell));
+    remarks
+        .iter()
+        .flat_map(|remark| wrapped("  ", &format!("{label}{remark}")))
+        .collect()
 }
 
 fn plate_line(plan: &Plan) -> Option<String> {
@@ -96,8 +131,15 @@ fn shown<T>(figure: &Figure<T>, text: impl Fn(&T) -> String) -> String {
 }
 
 fn findings(findings: &[Finding]) -> Vec<String> {
-    let head = ["finding", "value", "limits", "margin", "outcome"];
-    let rows: Vec<Vec<String>> = findings.iter().map(finding_row).collect();
+    let head = [
+        "finding", "value", "limits", "margin", "conforms", "decision", "outcome",
+    ];
+    let supplies: Vec<&String> = findings.iter().filter_map(|f| f.supply.as_ref()).collect();
+    let several = supplies.windows(2).any(|pair| pair[0] != pair[1]);
+    let rows: Vec<Vec<String>> = findings
+        .iter()
+        .map(|finding| finding_row(finding, several))
+        .collect();
     let mut lines = aligned(&head, &rows);
     for finding in findings {
         if finding.outcome != Outcome::Pass && !finding.reason.is_empty() {
@@ -110,12 +152,20 @@ fn findings(findings: &[Finding]) -> Vec<String> {
     lines
 }
 
-fn finding_row(finding: &Finding) -> Vec<String> {
+/// A finding's row; `several` where the supplies have to be told apart.
+fn finding_row(finding: &Finding, several: bool) -> Vec<String> {
     let unit = &finding.unit;
     let with_unit = |value: f64| format!("{} {unit}", digits(value, 4)).trim_end().to_owned();
     let mut rule = finding.rule.clone();
-    if let Some(condition) = &finding.condition {
-        rule = format!("{rule} ({condition})");
+    let supply = finding.supply.as_ref().filter(|_| several);
+    let place: Vec<&str> = finding
+        .condition
+        .iter()
+        .chain(supply)
+        .map(String::as_str)
+        .collect();
+    if !place.is_empty() {
+        rule = format!("{rule} ({})", place.join(", "));
     }
     if finding.weight == RuleWeight::Information {
         rule = format!("{rule} [information]");
@@ -140,8 +190,22 @@ fn finding_row(finding: &Finding) -> Vec<String> {
         value,
         limits,
         margin,
+        finding.probability.map_or_else(|| "-".to_owned(), likely),
+        finding.decision.clone().map_or_else(
+            || "-".to_owned(),
+            |decision| decision.split(" (").next().unwrap_or_default().to_owned(),
+        ),
         finding.outcome.word().to_owned(),
     ]
+}
+
+/// A probability of conformity for people: never a plain 100 %.
+fn likely(probability: f64) -> String {
+    match 100.0 * probability {
+        p if p > 99.99 => ">99.99 %".to_owned(),
+        p if p < 0.01 => "<0.01 %".to_owned(),
+        p => format!("{p:.2} %"),
+    }
 }
 
 /// Columns as wide as their widest cell, two blanks between.

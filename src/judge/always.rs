@@ -100,12 +100,7 @@ fn works(plan: &Plan, result: &CellResult) -> Finding {
     }
     let steady = result.steady.known().map(|steady| steady.power_w.clone());
     // What is drawn before OFF is compared alone: it has no uncertainty of its own.
-    let unsettled = Estimate {
-        value: drawn.power_w,
-        expanded: 0.0,
-        coverage: 2.0,
-        budget: Vec::new(),
-    };
+    let unsettled = Estimate::combined(drawn.power_w, Vec::new());
     let finding = draft.decided(Some(cell), steady.as_ref().unwrap_or(&unsettled));
     match result.steady.reason() {
         Some(reason) if finding.outcome == Outcome::Pass => {

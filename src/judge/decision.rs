@@ -1,7 +1,7 @@
 //! One value against its limits: the decision rules and their boundaries.
 
 use crate::analysis::Estimate;
-use crate::quantity::{at_least, at_most};
+use crate::quantity::{at_least, at_most, shortest};
 use crate::spec::sequence::Decision;
 use crate::stats::normal_cdf;
 
@@ -14,6 +14,21 @@ pub struct Limits {
     pub at_least: Option<f64>,
     /// Upper limit, inclusive.
     pub at_most: Option<f64>,
+}
+
+/// To which side a value on its limit belongs, as it is printed with every judgement.
+pub const CONVENTION: &str = "a value on a limit, or on the edge of a guard band, belongs to the better side; compared after rounding to 1e-9 of the limit";
+
+/// A decision rule in words, with its guard band w.
+pub fn in_words(decision: Decision, unit: &str) -> String {
+    match decision {
+        Decision::Simple => "simple, w = 0".to_owned(),
+        Decision::SimpleUpTo { largest } => {
+            format!("simple, w = 0, U at most {} {unit}", shortest(largest))
+        }
+        Decision::Guarded { ratio } => format!("guarded, w = {} U", shortest(ratio)),
+        Decision::FourOutcomes => "four outcomes, w = U (ILAC-G8:09/2019, 4.2.3)".to_owned(),
+    }
 }
 
 /// What a decision rule says of a value.
@@ -37,11 +52,12 @@ pub struct Decided {
 /// side after rounding to 1e-9.
 ///
 /// Where w exceeds half of the tolerance width no acceptance zone is left: not
-/// judged, unless the value fails in any case.
+/// judged, unless the value fails in any case. A simple decision that is stated up to
+/// a largest U judges nothing beyond it.
 pub fn decide(value: &Estimate, limits: Limits, decision: Decision) -> Decided {
     let margin = margin(value.value, limits);
     let band = match decision {
-        Decision::Simple => 0.0,
+        Decision::Simple | Decision::SimpleUpTo { .. } => 0.0,
         Decision::Guarded { ratio } => ratio * value.expanded,
         Decision::FourOutcomes => value.expanded,
     };
@@ -69,6 +85,20 @@ pub fn decide(value: &Estimate, limits: Limits, decision: Decision) -> Decided {
         (.., true) if four => Outcome::ConditionalFail,
         _ => Outcome::Fail,
     };
+    if let Decision::SimpleUpTo { largest } = decision
+        && !at_most(value.expanded, largest)
+    {
+        return Decided {
+            outcome: Outcome::NotJudged,
+            margin,
+            probability: probability(value, limits),
+            reason: format!(
+                "U is {}, and the simple decision is stated for U up to {} only",
+                shortest(value.expanded),
+                shortest(largest)
+            ),
+        };
+    }
     // A guarded rule rejects inside the guard band too; it is only certain beyond it.
     let certain = outcome == Outcome::Fail && !within(-band);
     if no_zone(band, limits) && !certain {
@@ -137,6 +167,7 @@ mod tests {
             value,
             expanded,
             coverage: 2.0,
+            freedom: None,
             budget: Vec::new(),
         }
     }

@@ -2,9 +2,10 @@
 
 use crate::analysis::{Analysis, CellResult, Estimate};
 use crate::plan::Cell;
-use crate::spec::sequence::{Decision, RuleWeight, SupplyPoint};
+use crate::quantity::{at_most, shortest};
+use crate::spec::sequence::{CyclingRule, Decision, RuleWeight, SupplyPoint};
 
-use super::decision::{Limits, decide};
+use super::decision::{Decided, Limits, decide, in_words};
 use super::types::{Finding, Outcome};
 
 /// What is common to the findings of one rule.
@@ -15,6 +16,10 @@ pub(super) struct Draft {
     pub(super) decision: Decision,
     pub(super) limits: Limits,
     pub(super) unit: &'static str,
+    /// What the plate says, where the tolerance is meant around it.
+    pub(super) nominal: Option<f64>,
+    /// Which input of a cycling load is compared.
+    pub(super) cycling: CyclingRule,
     pub(super) source: String,
     /// What a fail means, in words.
     pub(super) fail_means: String,
@@ -34,6 +39,8 @@ impl Draft {
             decision: Decision::Simple,
             limits: Limits::default(),
             unit: "",
+            nominal: None,
+            cycling: CyclingRule::OnState,
             source: "house rule".to_owned(),
             fail_means: fail_means.into(),
         }
@@ -47,9 +54,12 @@ impl Draft {
             position: cell.map(|cell| cell.position.clone()),
             supply: cell.map(|cell| supply_words(&cell.supply)),
             weight: self.weight,
+            decision: None,
             outcome,
             value: None,
             expanded: None,
+            coverage: None,
+            budget: Vec::new(),
             unit: self.unit.to_owned(),
             at_least: self.limits.at_least.and_then(twelve_digits),
             at_most: self.limits.at_most.and_then(twelve_digits),
@@ -87,9 +97,42 @@ impl Draft {
         self.plainly(cell, Outcome::NotJudged, reason)
     }
 
+    /// Takes back a decision for which the measurement is too coarse: U larger than the
+    /// distance from the plate's value to the limit (with two limits: half of their
+    /// distance). What exceeds a limit by more than U fails all the same.
+    fn fit(&self, value: &Estimate, decided: Decided) -> Decided {
+        let Some(room) = self.room() else {
+            return decided;
+        };
+        let certain = decide(value, self.limits, Decision::FourOutcomes).outcome == Outcome::Fail;
+        if certain || decided.outcome == Outcome::NotJudged || at_most(value.expanded, room) {
+            return decided;
+        }
+        Decided {
+            outcome: Outcome::NotJudged,
+            reason: format!(
+                "U is {} {unit}, larger than the {} {unit} that the limit leaves",
+                short(value.expanded),
+                short(room),
+                unit = self.unit
+            ),
+            ..decided
+        }
+    }
+
+    /// How much the limits leave around the plate's value.
+    pub(super) fn room(&self) -> Option<f64> {
+        let nominal = self.nominal?;
+        match (self.limits.at_least, self.limits.at_most) {
+            (Some(low), Some(high)) => Some(0.5 * (high - low)),
+            (Some(limit), None) | (None, Some(limit)) => Some((limit - nominal).abs()),
+            (None, None) => None,
+        }
+    }
+
     /// Decided by the rule.
     pub(super) fn decided(&self, cell: Option<&Cell>, value: &Estimate) -> Finding {
-        let decided = decide(value, self.limits, self.decision);
+        let decided = self.fit(value, decide(value, self.limits, self.decision));
         let reason = match decided.outcome {
             Outcome::Pass => "within its limits".to_owned(),
             Outcome::ConditionalPass => {
@@ -102,8 +145,11 @@ impl Draft {
             Outcome::NotJudged => decided.reason,
         };
         Finding {
+            decision: Some(in_words(self.decision, self.unit)),
             value: twelve_digits(value.value),
             expanded: twelve_digits(value.expanded),
+            coverage: twelve_digits(value.coverage),
+            budget: value.budget.clone(),
             margin: decided.margin.and_then(twelve_digits),
             probability: decided.probability.and_then(twelve_digits),
             ..self.plainly(cell, decided.outcome, &reason)
@@ -150,6 +196,13 @@ impl Finding {
     }
 }
 
+/// Three digits for a sentence.
+fn short(value: f64) -> String {
+    format!("{value:.2e}")
+        .parse()
+        .map_or_else(|_| String::new(), shortest)
+}
+
 /// A number as it is kept: twelve digits, so that 10.8 is not 10.799999999999999 and
 /// that any reader of decimals gets the same number back; nothing where it is not finite.
 fn twelve_digits(value: f64) -> Option<f64> {
@@ -180,14 +233,15 @@ pub(super) fn by_position_and_supply<'a>(
     })
 }
 
-/// Groups the cells by a key, in the order in which keys first come.
+/// Groups the cells of normal operation by a key, in the order in which keys first come.
 pub(super) fn grouped<'a, K: PartialEq>(
     analysis: &'a Analysis,
     keep: impl Fn(&Cell) -> bool,
     key: impl Fn(&Cell) -> K,
 ) -> Vec<Group<'a>> {
     let mut groups: Vec<(K, Group<'a>)> = Vec::new();
-    for result in analysis.cells.iter().filter(|result| keep(&result.cell)) {
+    let normal = |result: &&CellResult| !result.abnormal && keep(&result.cell);
+    for result in analysis.cells.iter().filter(normal) {
         let key = key(&result.cell);
         match groups.iter_mut().find(|(known, _)| *known == key) {
             Some((_, group)) => group.push(result),

@@ -9,16 +9,18 @@
 mod always;
 mod decision;
 mod finding;
+mod marks;
 mod rules;
 mod table;
 mod types;
+mod waveform;
 
 #[cfg(test)]
 mod tests;
 
-pub use decision::{Decided, Limits, decide};
+pub use decision::{CONVENTION, Decided, Limits, decide};
 pub use table::findings_csv;
-pub use types::{Finding, Judgement, Outcome};
+pub use types::{Finding, Judgement, Mark, Outcome};
 
 use crate::analysis::Analysis;
 use crate::plan::Plan;
@@ -43,6 +45,9 @@ pub fn judge(plan: &Plan, outcome: &RunOutcome, analysis: &Analysis) -> Judgemen
         verdict,
         because,
         findings,
+        convention: CONVENTION.to_owned(),
+        other_rules: None,
+        marks: marks::of(plan, analysis),
     }
 }
 

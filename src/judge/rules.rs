@@ -1,11 +1,16 @@
 //! Findings of the plan's rules.
 
 use crate::analysis::{
-    Analysis, CellResult, Estimate, Figure, at_voltage, plate_point, plate_points,
+    Analysis, CellResult, Estimate, Figure, Opening, Steady, at_voltage, plate_points,
+    points_in_reach,
 };
-use crate::plan::{Cell, Plan, PlannedRule};
+use crate::plan::{Cell, Plan, PlannedLink, PlannedRule};
+use crate::quantity::{Celsius, Reading, Volts, Watts, at_most};
 use crate::spec::plate::{self, PlatePoint};
-use crate::spec::sequence::{Decision, RuleKind};
+use crate::spec::sequence::{Decision, MeasuredAt, RoleKind, RuleKind, Span};
+
+/// A resolution coarser than this share of what the limits leave judges nothing.
+const COARSEST: f64 = 0.1;
 
 use super::decision::{Limits, decide};
 use super::finding::{Draft, by_position_and_supply, grouped, supply_words, worst};
@@ -21,6 +26,8 @@ pub(super) fn findings(plan: &Plan, analysis: &Analysis, rule: &PlannedRule) -> 
         decision: rule.decision,
         limits: Limits::default(),
         unit: "",
+        nominal: None,
+        cycling: rule.cycling,
         source: rule.source.clone(),
         fail_means: String::new(),
     };
@@ -45,6 +52,13 @@ pub(super) fn findings(plan: &Plan, analysis: &Analysis, rule: &PlannedRule) -> 
         RuleKind::LinkOpening => {
             ask.link(draft, |link| Some(link.opens_from), "its earliest opening")
         }
+        RuleKind::LinkHouse { below_tf } => {
+            let below = |link: &PlannedLink| link.tf.get() - below_tf.get();
+            let limit =
+                |link: &PlannedLink| link.th.map(|th| Celsius::of(th.get().min(below(link))));
+            ask.link(draft, limit, "the house limit for it")
+        }
+        RuleKind::LinkMaximum => ask.opening(draft),
         RuleKind::Inrush { at_most } => {
             let limits = upper(at_most.get());
             ask.each(
@@ -52,6 +66,9 @@ pub(super) fn findings(plan: &Plan, analysis: &Analysis, rule: &PlannedRule) -> 
                 inrush,
             )
         }
+        RuleKind::MomentaryInrush { .. }
+        | RuleKind::HarmonicsClassA
+        | RuleKind::VoltageChange { .. } => super::waveform::findings(&ask, &draft, &rule.kind),
         RuleKind::PositionOrder => ask.order(draft),
         RuleKind::TemperatureRise { role, at_most } => {
             let means = format!("{role} rises too far over ambient");
@@ -67,13 +84,20 @@ fn words(kind: &RuleKind) -> String {
         RuleKind::PowerLimits { .. } => "power".to_owned(),
         RuleKind::LinkHolding => "thermal link, holding temperature".to_owned(),
         RuleKind::LinkOpening => "thermal link, earliest opening".to_owned(),
+        RuleKind::LinkHouse { below_tf } => {
+            format!("thermal link, house limit min(Th, Tf - {below_tf})")
+        }
+        RuleKind::LinkMaximum => "thermal link, after opening".to_owned(),
         RuleKind::Inrush { .. } => "inrush".to_owned(),
+        RuleKind::MomentaryInrush { .. } => "momentary inrush".to_owned(),
+        RuleKind::HarmonicsClassA => "harmonics, class A".to_owned(),
+        RuleKind::VoltageChange { .. } => "voltage change".to_owned(),
         RuleKind::PositionOrder => "order of positions".to_owned(),
         RuleKind::TemperatureRise { role, .. } => format!("temperature rise, {role}"),
     }
 }
 
-fn upper(limit: f64) -> Limits {
+pub(super) fn upper(limit: f64) -> Limits {
     Limits {
         at_least: None,
         at_most: Some(limit),
@@ -81,7 +105,7 @@ fn upper(limit: f64) -> Limits {
 }
 
 impl Draft {
-    fn compares(self, limits: Limits, unit: &'static str, fail_means: &str) -> Self {
+    pub(super) fn compares(self, limits: Limits, unit: &'static str, fail_means: &str) -> Self {
         Draft {
             limits,
             unit,
@@ -92,7 +116,7 @@ impl Draft {
 }
 
 /// One rule asked of a record.
-struct Ask<'a> {
+pub(super) struct Ask<'a> {
     plan: &'a Plan,
     analysis: &'a Analysis,
     rule: &'a PlannedRule,
@@ -110,7 +134,11 @@ impl Ask<'_> {
     }
 
     /// One finding for each position and supply that the rule is for.
-    fn each(&self, draft: &Draft, one: impl Fn(&Draft, &CellResult) -> Finding) -> Vec<Finding> {
+    pub(super) fn each(
+        &self,
+        draft: &Draft,
+        one: impl Fn(&Draft, &CellResult) -> Finding,
+    ) -> Vec<Finding> {
         let findings: Vec<Finding> =
             by_position_and_supply(self.analysis, |cell| self.is_for(cell))
                 .into_iter()
@@ -169,21 +197,34 @@ impl Ask<'_> {
             at_least: band.at_least.map(|watts| watts.get()),
             at_most: Some(band.at_most.get()),
         };
-        let draft =
+        let mut draft =
             draft
                 .clone()
                 .compares(limits, "W", "its input lies outside the band of its plate");
+        draft.nominal = Some(0.5 * (point.rated.low.get() + point.rated.high.get()));
         let cells = self.analysis.cells.iter().filter(|result| {
             let cell = &result.cell;
-            cell.position == position
+            !result.abnormal
+                && cell.position == position
                 && self.is_for_condition(cell)
-                && plate_point(self.plan, cell) == Some(point)
+                && points_in_reach(self.plan, cell).contains(&point)
         });
-        let found = worst(cells.map(|result| self.at_plate(&draft, result, point)));
+        let away =
+            |result: &&CellResult| (result.cell.supply.voltage.get() - point.voltage.get()).abs();
+        let nearest = cells
+            .clone()
+            .map(|r| away(&r))
+            .fold(f64::INFINITY, f64::min);
+        let found = worst(
+            cells
+                .filter(|result| at_most(away(result), nearest))
+                .map(|result| self.at_plate(&draft, result, point)),
+        );
         found.unwrap_or_else(|| {
             let why = format!(
-                "it is not run within reach of the plate's {}",
-                point.voltage
+                "it is not run within reach of the plate's {} at {}",
+                point.voltage,
+                frequencies(point)
             );
             draft.not_judged_in(position, &why)
         })
@@ -195,11 +236,36 @@ impl Ask<'_> {
             Ok(steady) => steady,
             Err(reason) => return draft.not_judged(cell, &reason),
         };
-        let (from, to) = (result.cell.supply.voltage.get(), point.voltage.get());
-        match at_voltage(self.plan, steady, from, to) {
-            Figure::Known(input) => draft.decided(cell, &input),
+        if let Some(coarse) = self.too_coarse(draft) {
+            return draft.not_judged(cell, &coarse);
+        }
+        match at_voltage(self.plan, steady, point.voltage.get()) {
+            Figure::Known(input) => {
+                let judged = steady.judged_w(draft.cycling).value / steady.power_w.value;
+                let input = if judged.is_finite() {
+                    input.scaled(judged)
+                } else {
+                    input
+                };
+                said_extrapolated(draft.decided(cell, &input), result)
+            }
             Figure::Absent(reason) => draft.not_judged(cell, &reason),
         }
+    }
+
+    /// Why the meter's last digit is too coarse for what the limits leave.
+    fn too_coarse(&self, draft: &Draft) -> Option<String> {
+        let (_, role) = self.plan.role_of_kind(RoleKind::PowerMeter)?;
+        let meter = self.plan.instruments.get(role.instrument)?;
+        let digit = meter.driver.accuracy_of(Reading::Power)?.resolution;
+        let room = draft.room()?;
+        (!at_most(digit, COARSEST * room)).then(|| {
+            format!(
+                "the meter resolves {}, more than a tenth of the {} that the limit leaves",
+                Watts::of(digit),
+                Watts::of(room)
+            )
+        })
     }
 
     // ---- thermal link ----
@@ -207,7 +273,7 @@ impl Ask<'_> {
     fn link(
         &self,
         draft: Draft,
-        limit: impl Fn(&crate::plan::PlannedLink) -> Option<crate::quantity::Celsius>,
+        limit: impl Fn(&PlannedLink) -> Option<Celsius>,
         what: &str,
     ) -> Vec<Finding> {
         let Some(link) = &self.plan.appliance.link else {
@@ -219,8 +285,80 @@ impl Ask<'_> {
                 "the sequence states no holding temperature from the link's data sheet",
             )];
         };
+        if let MeasuredAt::OutsideOnly { place, limit } = &link.measured_at {
+            return self.outside_only(draft, place, *limit);
+        }
         let means = format!("the link's body would exceed {what}");
-        self.each(&draft.compares(upper(limit.get()), "°C", &means), body)
+        let draft = draft.compares(upper(limit.get()), "°C", &means);
+        let mut findings = self.each(&draft, body);
+        findings.extend(self.ends_not_run(&draft));
+        findings
+    }
+
+    /// The link itself cannot be reached: a house limit for the outside, which says so.
+    fn outside_only(&self, draft: Draft, place: &str, limit: Celsius) -> Vec<Finding> {
+        let mut draft = draft.compares(
+            upper(limit.get()),
+            "°C",
+            &format!("{place} exceeds the house limit; the link itself was not measured"),
+        );
+        draft.rule = format!("{place}, in place of the thermal link");
+        draft.source = "house limit; the link was not measured".to_owned();
+        self.each(&draft, body)
+    }
+
+    /// A fan runs slower at one end of the supply range and the heater hotter at the
+    /// other: each position of such a unit is run at both, or it is not judged.
+    fn ends_not_run(&self, draft: &Draft) -> Vec<Finding> {
+        if !self.plan.appliance.fan {
+            return Vec::new();
+        }
+        let groups = grouped(
+            self.analysis,
+            |cell| self.is_for(cell),
+            |cell| (cell.position.clone(), cell.condition.clone()),
+        );
+        groups
+            .into_iter()
+            .filter_map(|group| {
+                let position = &group.first()?.cell.position;
+                let appliance = &self.plan.appliance;
+                let (low, high) = appliance.supply_ends(position);
+                let is_run = |end: Volts| {
+                    let mut cells = group.iter().map(|result| &result.cell);
+                    cells.any(|cell| appliance.is_at_end(cell, end))
+                };
+                let ends = if low == high { vec![low] } else { vec![low, high] };
+                let missing: Vec<String> = ends
+                    .into_iter()
+                    .filter(|end| !is_run(*end))
+                    .map(|end| end.to_string())
+                    .collect();
+                let why = format!(
+                    "a unit with a fan is run at both ends of its supply range, and it is not run at {}",
+                    missing.join(" and ")
+                );
+                (!missing.is_empty()).then(|| draft.not_judged(Some(&group[0].cell), &why))
+            })
+            .collect()
+    }
+
+    /// The link that opened in an `abnormal` step, against Tm.
+    fn opening(&self, draft: Draft) -> Vec<Finding> {
+        let tm = self.plan.appliance.link.as_ref().and_then(|link| link.tm);
+        let Some(tm) = tm else {
+            let why = "the sequence states no maximum limit Tm from the link's data sheet";
+            return vec![draft.not_judged(None, why)];
+        };
+        let draft = draft.compares(upper(tm.get()), "°C", "the opened link exceeded Tm");
+        if self.analysis.openings.is_empty() {
+            return vec![draft.not_judged(None, "the sequence runs no `abnormal` step")];
+        }
+        self.analysis
+            .openings
+            .iter()
+            .map(|opening| opened(&draft, opening))
+            .collect()
     }
 
     // ---- order of positions ----
@@ -273,7 +411,10 @@ impl Ask<'_> {
             let (low, high) = (at(low)?, at(high)?);
             let finding = match (known_steady(low), known_steady(high)) {
                 (Err(reason), _) | (_, Err(reason)) => draft.not_judged(Some(&high.cell), &reason),
-                (Ok(low), Ok(more)) => draft.decided(Some(&high.cell), &difference(more, low)),
+                (Ok(low), Ok(more)) => {
+                    let more = more.power_w.minus(&low.power_w);
+                    draft.decided(Some(&high.cell), &more)
+                }
             };
             Some(Finding {
                 rule: draft.rule.clone(),
@@ -290,33 +431,61 @@ impl Ask<'_> {
     }
 }
 
-/// A difference of two independent estimates; errors that both share would cancel,
-/// so its uncertainty is on the safe side.
-fn difference(more: &Estimate, less: &Estimate) -> Estimate {
-    Estimate {
-        value: more.value - less.value,
-        expanded: libm::hypot(more.expanded, less.expanded),
-        coverage: more.coverage.max(less.coverage),
-        budget: Vec::new(),
+/// The frequencies of a plate's promise in words.
+fn frequencies(point: PlatePoint) -> String {
+    let Span { low, high } = point.frequency;
+    if low == high {
+        low.to_string()
+    } else {
+        format!("{low} to {high}")
+    }
+}
+
+/// A link that opened, or did not, in one `abnormal` step.
+fn opened(draft: &Draft, opening: &Opening) -> Finding {
+    let mut draft = draft.clone();
+    draft.rule = format!("{}, {}", draft.rule, opening.fault);
+    match (&opening.peak_degc, &opening.closed_again_s) {
+        (Figure::Known(_), Some(after)) => draft.plainly(
+            None,
+            Outcome::Fail,
+            &format!("the link closed again {after:.0} s after it had opened"),
+        ),
+        (Figure::Known(peak), None) => draft.decided(None, peak),
+        (Figure::Absent(reason), _) => draft.not_judged(None, reason),
     }
 }
 
 /// The settled input of a cell, or why there is none; the reason of a cell that was
 /// not run comes first.
-fn known_steady(result: &CellResult) -> Result<&Estimate, String> {
+fn known_steady(result: &CellResult) -> Result<&Steady, String> {
     if let Figure::Absent(reason) = &result.energised_s {
         return Err(reason.clone());
     }
     match &result.steady {
-        Figure::Known(steady) => Ok(&steady.power_w),
+        Figure::Known(steady) => Ok(steady),
         Figure::Absent(reason) => Err(reason.clone()),
     }
 }
 
 fn power(draft: &Draft, result: &CellResult) -> Finding {
     match known_steady(result) {
-        Ok(power) => draft.decided(Some(&result.cell), power),
+        Ok(steady) => {
+            let power = steady.judged_w(draft.cycling);
+            said_extrapolated(draft.decided(Some(&result.cell), &power), result)
+        }
         Err(reason) => draft.not_judged(Some(&result.cell), &reason),
+    }
+}
+
+/// A finding whose soak was ended early says so.
+fn said_extrapolated(finding: Finding, result: &CellResult) -> Finding {
+    if !result.steady.known().is_some_and(|s| s.extrapolated) {
+        return finding;
+    }
+    Finding {
+        reason: format!("{}; extrapolated: the soak was ended early", finding.reason),
+        ..finding
     }
 }
 
@@ -337,7 +506,7 @@ fn body(draft: &Draft, result: &CellResult) -> Finding {
         return draft.not_judged(cell, &doubt);
     }
     let reason = match &result.body_worst {
-        Figure::Known(worst) => return draft.decided(cell, worst),
+        Figure::Known(worst) => return said_extrapolated(draft.decided(cell, worst), result),
         Figure::Absent(reason) => reason,
     };
     match result.body_peak.known() {
@@ -354,7 +523,7 @@ fn body(draft: &Draft, result: &CellResult) -> Finding {
 }
 
 /// Above the limit by more than the uncertainty, whatever the rule's own decision.
-fn certainly_above(value: &Estimate, limits: Limits) -> bool {
+pub(super) fn certainly_above(value: &Estimate, limits: Limits) -> bool {
     decide(value, limits, Decision::FourOutcomes).outcome == Outcome::Fail
 }
 
@@ -362,6 +531,9 @@ fn certainly_above(value: &Estimate, limits: Limits) -> bool {
 fn inrush(draft: &Draft, result: &CellResult) -> Finding {
     let cell = Some(&result.cell);
     if let Figure::Absent(reason) = &result.energised_s {
+        return draft.not_judged(cell, reason);
+    }
+    if let Some(reason) = &result.dc_lost {
         return draft.not_judged(cell, reason);
     }
     let inrush = match &result.inrush {

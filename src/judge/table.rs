@@ -5,15 +5,17 @@ use crate::quantity::shortest;
 use crate::record::defused;
 use crate::spec::sequence::RuleWeight;
 
-const HEAD: [&str; 15] = [
+const HEAD: [&str; 17] = [
     "rule",
     "condition",
     "position",
     "supply",
     "weight",
+    "decision",
     "outcome",
     "value",
     "expanded_u",
+    "coverage_k",
     "unit",
     "at_least",
     "at_most",
@@ -38,7 +40,7 @@ pub fn findings_csv(judgement: &Judgement) -> Result<Vec<u8>, csv::Error> {
         .map_err(|e| csv::Error::from(e.into_error()))
 }
 
-fn row(finding: &Finding) -> [String; 15] {
+fn row(finding: &Finding) -> [String; 17] {
     let number = |value: Option<f64>| value.map_or_else(String::new, shortest);
     let text = |value: &Option<String>| defused(value.as_deref().unwrap_or(""));
     let weight = match finding.weight {
@@ -51,9 +53,11 @@ fn row(finding: &Finding) -> [String; 15] {
         text(&finding.position),
         text(&finding.supply),
         weight.to_owned(),
+        text(&finding.decision),
         finding.outcome.word().to_owned(),
         number(finding.value),
         number(finding.expanded),
+        number(finding.coverage),
         defused(&finding.unit),
         number(finding.at_least),
         number(finding.at_most),

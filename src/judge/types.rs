@@ -2,6 +2,7 @@
 
 use serde::{Deserialize, Serialize};
 
+use crate::analysis::Share;
 use crate::spec::sequence::RuleWeight;
 
 /// The outcomes of a guard-banded non-binary decision (terms of ILAC-G8:09/2019),
@@ -55,12 +56,21 @@ pub struct Finding {
     pub supply: Option<String>,
     /// Required or information.
     pub weight: RuleWeight,
+    /// How it was decided, in words, where an uncertain value was compared.
+    #[serde(default)]
+    pub decision: Option<String>,
     /// The outcome.
     pub outcome: Outcome,
     /// The value compared, base unit.
     pub value: Option<f64>,
     /// Its expanded uncertainty.
     pub expanded: Option<f64>,
+    /// The coverage factor of U.
+    #[serde(default)]
+    pub coverage: Option<f64>,
+    /// The lines of the value's budget, largest first.
+    #[serde(default)]
+    pub budget: Vec<Share>,
     /// Unit of value, U, limits and margin, for people.
     pub unit: String,
     /// Lower limit.
@@ -93,4 +103,47 @@ pub struct Judgement {
     pub because: String,
     /// Every finding.
     pub findings: Vec<Finding>,
+    /// To which side a value on its limit belongs.
+    #[serde(default)]
+    pub convention: String,
+    /// Whose rules these are, where they are not those that were fixed before the run.
+    #[serde(default)]
+    pub other_rules: Option<String>,
+    /// What stays with the unit on every later record.
+    #[serde(default)]
+    pub marks: Vec<Mark>,
+}
+
+/// What stays with a unit.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[serde(tag = "mark", rename_all = "kebab-case")]
+pub enum Mark {
+    /// Its thermal link was hotter than its holding temperature: it may open early ever
+    /// after. Gone when the link is replaced.
+    LinkStressed {
+        /// By what, in words.
+        by: String,
+    },
+    /// It was run with a fault until its link opened: not to be used any more.
+    Destroyed {
+        /// By what, in words.
+        by: String,
+    },
+}
+
+impl Mark {
+    /// The word.
+    pub fn word(&self) -> &'static str {
+        match self {
+            Mark::LinkStressed { .. } => "link stressed",
+            Mark::Destroyed { .. } => "destroyed",
+        }
+    }
+
+    /// By what, in words.
+    pub fn by(&self) -> &str {
+        match self {
+            Mark::LinkStressed { by } | Mark::Destroyed { by } => by,
+        }
+    }
 }

@@ -119,6 +119,7 @@ impl Walk<'_> {
                     at_most: soak.at_most,
                     every: soak.every,
                     until: soak.until.clone(),
+                    early_finish: soak.early_finish,
                 };
                 self.while_on(place, action);
             }

@@ -85,7 +85,7 @@ fn explicit(cell: &Cell, rules: &[PlannedRule], weight: RuleWeight) -> Option<f6
 
 fn of_plate(appliance: &PlannedAppliance, cell: &Cell) -> Option<f64> {
     if let Some(rated) = rated_in(&appliance.plate, cell) {
-        return Some(upper(appliance, rated.power));
+        return Some(upper(appliance, rated.rated));
     }
     // Rated element by element: together they are the whole.
     let elements: Vec<f64> = appliance

@@ -13,6 +13,16 @@ const SLOWEST_ENERGISED: Seconds = Seconds::whole(10);
 /// Three readings, each at least 5 min after the one before (UL 1278 39.1.8 in a restatement).
 const THREE_READINGS: Seconds = Seconds::whole(600);
 
+/// The sampling method's shortest log (IEC 62301 ed. 2, from memory).
+const SAMPLING: Seconds = Seconds::whole(900);
+const SAMPLING_MOST: Seconds = Seconds::whole(10_800);
+
+/// A slope over fewer rows says nothing of its own uncertainty (house default).
+const SLOPE_ROWS: f64 = 6.0;
+
+/// Settling looks at means over this long at least, seconds.
+const FINEST_S: f64 = 5.0;
+
 /// Whether a step's interval is asked while the unit is energised.
 #[derive(Clone, Copy, PartialEq, Eq)]
 enum While {
@@ -86,7 +96,29 @@ fn criterion_fits(place: &Place, soak: &Soak, notes: &mut Notes) {
         CriterionKind::Slope { window } => (window, "window"),
         CriterionKind::ChangeWithin { interval } => (interval, "interval"),
         CriterionKind::ThreeReadings => (THREE_READINGS, "three readings"),
+        CriterionKind::SamplingMethod => (SAMPLING, "log"),
     };
+    if let CriterionKind::Slope { window } = soak.until.kind {
+        // Readings faster than that are worth no more.
+        let rows = (window.get() / soak.every.get().max(FINEST_S) + 1e-9).floor();
+        if rows < SLOPE_ROWS {
+            notes.error(
+                place,
+                format!(
+                    "a reading every {} leaves {rows:.0} means of at least {FINEST_S} s in the criterion's window of {window}, and a slope needs {SLOPE_ROWS}: it can never settle",
+                    soak.every
+                ),
+                "widen the `window`, poll faster, or take `three readings` or `change within`",
+            );
+        }
+    }
+    if soak.until.kind == CriterionKind::SamplingMethod && soak.at_most > SAMPLING_MOST {
+        notes.warning(
+            place,
+            format!("the sampling method gives up after {SAMPLING_MOST}"),
+            format!("write `at most: {SAMPLING_MOST}`, or take another criterion"),
+        );
+    }
     if needs > soak.at_most {
         notes.error(
             place,

@@ -37,14 +37,15 @@ pub(super) fn meter_fits(
                 let wanted =
                     |position: &String| rule.position.as_ref().is_none_or(|p| p == position);
                 for (entry, at) in entries.filter(|(entry, _)| wanted(&entry.position)) {
-                    for rated in rated_points(entry) {
-                        let limits = plate::limits(appliance.kind, rated.power);
+                    for rated in rated_points(entry, appliance.fan) {
+                        let limits = plate::limits(appliance.kind, rated.rated);
                         let room = Room {
-                            at: rated.power.high,
+                            at: rated.rated.high,
                             at_least: limits.at_least,
                             at_most: limits.at_most,
                         };
                         room.holds(meter, band, &at.power.place, notes);
+                        simple_fits(meter, rule.decision, room.at, &at.power.place, notes);
                     }
                 }
             }
@@ -58,6 +59,7 @@ pub(super) fn meter_fits(
                     at_most: high,
                 };
                 room.holds(meter, band, &written.kind.place, notes);
+                simple_fits(meter, rule.decision, room.at, &written.kind.place, notes);
             }
             _ => {}
         }
@@ -67,12 +69,37 @@ pub(super) fn meter_fits(
     }
 }
 
-/// The guard band in units of U.
+/// How many U the limits must leave room for: the guard band, and U itself, beyond
+/// which no measurement is fit for them.
 fn share_of_u(decision: Decision) -> f64 {
     match decision {
-        Decision::Simple => 0.0,
-        Decision::Guarded { ratio } => ratio,
-        Decision::FourOutcomes => 1.0,
+        Decision::Guarded { ratio } => ratio.max(1.0),
+        Decision::Simple | Decision::SimpleUpTo { .. } | Decision::FourOutcomes => 1.0,
+    }
+}
+
+/// A simple decision is good for a stated U only.
+fn simple_fits(
+    meter: &PlannedInstrument,
+    decision: Decision,
+    at: Watts,
+    place: &Place,
+    notes: &mut Notes,
+) {
+    let (Decision::SimpleUpTo { largest }, Some(expanded)) = (decision, expanded(meter, at.get()))
+    else {
+        return;
+    };
+    if !at_most(expanded, largest) {
+        notes.warning(
+            place,
+            format!(
+                "at {at} the meter's U is {}, and the simple decision is stated for U up to {} only: the power will be not judged",
+                rounded(expanded),
+                rounded(largest)
+            ),
+            "state a larger U, or use a more accurate meter",
+        );
     }
 }
 
@@ -94,16 +121,13 @@ impl Room {
         let high = self.at_most.get();
         let (room, then) = match self.at_least {
             Some(low) => (0.5 * (high - low.get()), "the power will be not judged"),
-            None => (
-                high - self.at.get(),
-                "a unit that draws its rated input can't pass",
-            ),
+            None => (high - self.at.get(), "the power will be not judged"),
         };
         if !at_most(band * expanded, room) {
             notes.warning(
                 place,
                 format!(
-                    "at {} the meter's U is {}, half of the tolerance is {}: {then}",
+                    "at {} the meter's U is {}, the limits leave {}: {then}",
                     self.at,
                     rounded(expanded),
                     rounded(room)

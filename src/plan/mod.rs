@@ -13,16 +13,19 @@ mod reference;
 mod resolve;
 mod roles;
 mod rules;
+mod sensing;
+mod soaking;
 #[cfg(test)]
 mod tests;
 mod text;
 mod types;
+mod waveform;
 mod wiring;
 mod words;
 
-pub use reference::Rated;
 pub use resolve::{Resolved, resolve};
 pub use types::{
     Action, Cell, Guards, PLAN_FORMAT, Plan, PlannedAppliance, PlannedBay, PlannedInstrument,
     PlannedLine, PlannedLink, PlannedPlate, PlannedRole, PlannedRule, PlannedStep,
 };
+pub use waveform::time_for_block;

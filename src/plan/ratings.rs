@@ -101,9 +101,9 @@ fn frequency_can_be_set(supplies: &[&Located<SupplyPoint>], wired: &Wired, notes
 /// The plate's current at the voltages at which it is judged.
 fn current_fits(sequence: &Sequence, appliance: &PlannedAppliance, bay: &Bay, notes: &mut Notes) {
     for (entry, written) in appliance.plate.iter().zip(&sequence.appliance.plate) {
-        let amps = rated_points(entry)
+        let amps = rated_points(entry, appliance.fan)
             .into_iter()
-            .map(|rated| rated.power.high.get() / rated.voltage.get())
+            .map(|rated| rated.rated.high.get() / rated.voltage.get())
             .fold(0.0, f64::max);
         if !at_most(amps, bay.rated_current.get()) {
             notes.error(

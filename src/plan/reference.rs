@@ -1,21 +1,8 @@
 //! What a plate entry says at a supply: at which voltage, and which power.
 
-use super::types::{Cell, Plan, PlannedPlate};
-use crate::quantity::{Volts, Watts, at_most};
-use crate::spec::sequence::Span;
-
-/// A range at most this wide, relative to its mean, is judged at its mean
-/// (IEC 60335-1 clause 10.1, from memory).
-const NARROW: f64 = 0.1;
-
-/// What the plate promises at one voltage.
-#[derive(Debug, Clone, Copy, PartialEq)]
-pub struct Rated {
-    /// Voltage that it is for.
-    pub voltage: Volts,
-    /// Power.
-    pub power: Span<Watts>,
-}
+use super::types::{Cell, Plan, PlannedAppliance, PlannedPlate};
+use crate::quantity::{Volts, at_most};
+use crate::spec::plate::{self, PlatePoint};
 
 impl Plan {
     /// The plate entry that rates the whole appliance in a position.
@@ -29,19 +16,52 @@ impl Plan {
     /// What the plate promises for a cell: a narrow range at its mean, a wide one (or
     /// one with an input marked for both ends) at the end that the supply is nearer to,
     /// each end with its own power; of several entries the nearest.
-    pub fn rated_in(&self, cell: &Cell) -> Option<Rated> {
+    pub fn rated_in(&self, cell: &Cell) -> Option<PlatePoint> {
         rated_in(&self.appliance.plate, cell)
     }
 }
 
+/// A supply this near to an end of its range stands for it (house default).
+const AT_END: f64 = 0.01;
+
+impl PlannedAppliance {
+    /// Lowest and highest voltage at which it may be used in a position: the sequence's
+    /// supply range, else the plate's for that position, else the whole plate's.
+    pub fn supply_ends(&self, position: &str) -> (Volts, Volts) {
+        if let Some(range) = self.supply_range {
+            return (range.low, range.high);
+        }
+        let of_it = |entry: &&PlannedPlate| entry.position == position;
+        let mine: Vec<&PlannedPlate> = self.plate.iter().filter(of_it).collect();
+        let entries: Vec<&PlannedPlate> = if mine.is_empty() {
+            self.plate.iter().collect()
+        } else {
+            mine
+        };
+        let ends = entries.iter().map(|e| (e.voltage.low, e.voltage.high));
+        ends.reduce(|a, b| {
+            let low = if b.0 < a.0 { b.0 } else { a.0 };
+            let high = if b.1 > a.1 { b.1 } else { a.1 };
+            (low, high)
+        })
+        .unwrap_or((Volts::of(0.0), Volts::of(0.0)))
+    }
+
+    /// Whether a cell is run at an end of the supply range.
+    pub fn is_at_end(&self, cell: &Cell, end: Volts) -> bool {
+        let away = (cell.supply.voltage.get() - end.get()).abs();
+        at_most(away, AT_END * end.get())
+    }
+}
+
 /// See [`Plan::rated_in`].
-pub(super) fn rated_in(plate: &[PlannedPlate], cell: &Cell) -> Option<Rated> {
+pub(super) fn rated_in(plate: &[PlannedPlate], cell: &Cell) -> Option<PlatePoint> {
     let supply = cell.supply.voltage.get();
-    let distance = |rated: &Rated| (rated.voltage.get() - supply).abs();
+    let distance = |point: &PlatePoint| (point.voltage.get() - supply).abs();
     plate
         .iter()
         .filter(|entry| rates_whole(entry, &cell.position))
-        .flat_map(rated_points)
+        .flat_map(|entry| rated_points(entry, false))
         .min_by(|a, b| distance(a).total_cmp(&distance(b)))
 }
 
@@ -49,33 +69,16 @@ fn rates_whole(entry: &PlannedPlate, position: &str) -> bool {
     entry.position == position && entry.element.is_none()
 }
 
-/// The voltages at which an entry is judged, each with its power.
-pub(super) fn rated_points(entry: &PlannedPlate) -> Vec<Rated> {
-    let (low, high) = (entry.voltage.low, entry.voltage.high);
-    let mean = (low.get() + high.get()) / 2.0;
-    let narrow = at_most(high.get() - low.get(), NARROW * mean);
-    let marked_for_both_ends = low < high && entry.power.low < entry.power.high;
-    if narrow && !marked_for_both_ends {
-        return vec![Rated {
-            voltage: Volts::of(mean),
-            power: entry.power,
-        }];
-    }
-    let end = |voltage, power| Rated {
-        voltage,
-        power: Span {
-            low: power,
-            high: power,
-        },
-    };
-    vec![end(low, entry.power.low), end(high, entry.power.high)]
+/// The supplies at which an entry is judged, each with its power.
+pub(super) fn rated_points(entry: &PlannedPlate, fan: bool) -> Vec<PlatePoint> {
+    plate::points(entry.voltage, entry.frequency, entry.power, fan)
 }
 
 #[cfg(test)]
 mod tests {
     use super::*;
-    use crate::quantity::Hertz;
-    use crate::spec::sequence::SupplyPoint;
+    use crate::quantity::{Hertz, Watts};
+    use crate::spec::sequence::{Span, SupplyPoint};
 
     fn entry(low: f64, high: f64, powers: (f64, f64)) -> PlannedPlate {
         PlannedPlate {
@@ -106,7 +109,7 @@ mod tests {
             },
         };
         let rated = rated_in(plate, &cell).unwrap();
-        let Span { low, high } = rated.power;
+        let Span { low, high } = rated.rated;
         (rated.voltage.get(), low.get(), high.get())
     }
 

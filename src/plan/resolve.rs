@@ -12,6 +12,7 @@ use super::ratings::ratings;
 use super::roles::must_have;
 use super::rules::{every_rating_is_run, rules};
 use super::types::{PLAN_FORMAT, Plan, PlannedAppliance, PlannedLink, PlannedPlate};
+use super::waveform::waveforms;
 use super::wiring::{Files, choose_bay, wire};
 use crate::quantity::Celsius;
 use crate::spec::bench::{Bay, Bench};
@@ -74,6 +75,7 @@ fn cross(files: Files, bay: &Bay, notes: &mut Notes) -> Plan {
         &expanded.cells,
         &rules,
     );
+    waveforms(sequence, &wired, &guards.silence, notes);
     Plan {
         format: PLAN_FORMAT,
         title: sequence.title.value.clone(),
@@ -130,6 +132,8 @@ fn appliance(written: &Appliance, notes: &mut Notes) -> PlannedAppliance {
         kind: written.kind,
         protection_class: written.protection_class,
         highest_ambient: written.highest_ambient,
+        reference_ambient: Some(written.reference_ambient),
+        supply_range: written.supply_range.as_ref().map(|range| range.value),
         plate: plate.collect(),
         link: written.link.as_ref().map(link),
         element: written.facts.element,
@@ -153,5 +157,6 @@ fn link(written: &ThermalLink) -> PlannedLink {
         tm: written.tm,
         sits: written.sits.clone(),
         measured_at: written.measured_at.clone(),
+        ambient_effect: written.ambient_effect.clone(),
     }
 }

@@ -3,14 +3,15 @@
 use super::expand::Expanded;
 use super::notes::Notes;
 use super::reference::{rated_in, rated_points};
+use super::resolve::written_steps;
 use super::types::{Action, Cell, PlannedAppliance, PlannedRule};
+use super::words::span;
 use crate::quantity::at_most;
 use crate::spec::Place;
-use crate::spec::sequence::{MeasuredAt, RoleKind, Rule, RuleKind, Sequence};
-
-/// An input is corrected to a plate's voltage up to this distance (house default);
-/// beyond, it is not judged.
-const CORRECTABLE: f64 = 0.06;
+use crate::spec::plate::CORRECTABLE;
+use crate::spec::sequence::{
+    CyclingRule, MeasuredAt, RoleKind, Rule, RuleKind, Sequence, StepAction,
+};
 
 /// Where the limits of a rule come from, where the sequence does not say.
 fn usual_source(kind: &RuleKind) -> &'static str {
@@ -20,9 +21,16 @@ fn usual_source(kind: &RuleKind) -> &'static str {
         }
         RuleKind::LinkHolding => "IEC 60691: holding temperature Th of the part's data sheet",
         RuleKind::LinkOpening => "IEC 60691: Tf - 10 K, earliest opening",
+        RuleKind::LinkHouse { .. } => "house limit: the lower of Th and Tf less a distance",
+        RuleKind::LinkMaximum => "IEC 60691: maximum limit Tm of the part's data sheet",
         RuleKind::PositionOrder => "the declared order of positions",
+        RuleKind::HarmonicsClassA => "IEC 61000-3-2 class A, on one switch-on: an indication",
+        RuleKind::VoltageChange { .. } => {
+            "IEC 61000-3-3 with 0.40 + j0.25 ohm (from memory, check against your copy), on one switch-on: an indication"
+        }
         RuleKind::PowerLimits { .. }
         | RuleKind::Inrush { .. }
+        | RuleKind::MomentaryInrush { .. }
         | RuleKind::TemperatureRise { .. } => "house limit",
     }
 }
@@ -38,6 +46,8 @@ pub(super) fn rules(
         cells: &expanded.cells,
         soaked: expanded.cells_with(|action| matches!(action, Action::Soak { .. })),
         inrush: expanded.cells_with(|action| matches!(action, Action::Inrush(_))),
+        abnormal: expanded.cells_with(|action| matches!(action, Action::Abnormal { .. })),
+        waveform: expanded.cells_with(|action| matches!(action, Action::Inrush(t) if t.waveform)),
     };
     let planned: Vec<PlannedRule> = sequence.rules.iter().map(planned).collect();
     for (rule, written) in planned.iter().zip(&sequence.rules) {
@@ -45,6 +55,7 @@ pub(super) fn rules(
             cells.can_feed(appliance, rule, &written.kind.place, notes);
         }
         link_known(sequence, written, notes);
+        fits_the_load(sequence, written, notes);
     }
     planned
 }
@@ -60,6 +71,32 @@ fn planned(rule: &Rule) -> PlannedRule {
             .source
             .clone()
             .unwrap_or_else(|| usual_source(&rule.kind.value).to_owned()),
+        process: rule.process,
+        cycling: rule.cycling,
+    }
+}
+
+/// A choice between inputs of a load that does not cycle, and a temperature that nobody
+/// follows to its end, are warned of.
+fn fits_the_load(sequence: &Sequence, rule: &Rule, notes: &mut Notes) {
+    let place = &rule.kind.place;
+    let chosen = rule.cycling == CyclingRule::RepresentativePeriod;
+    if chosen && !sequence.appliance.facts.thermostat {
+        notes.warning(
+            place,
+            "the rule of a representative period is for a load that cycles, and no thermostat is declared",
+            "write `thermostat: yes` below `facts:`, or take `cycling` out",
+        );
+    }
+    let early = written_steps(sequence)
+        .any(|step| matches!(&step.action, StepAction::Soak(soak) if soak.early_finish));
+    if early && matches!(&rule.kind.value, RuleKind::TemperatureRise { role, .. } if role != "body")
+    {
+        notes.warning(
+            place,
+            "a soak may finish early, and this temperature is not followed to its end: then the rule will be not judged",
+            "take `early finish` out of the soak, or this rule",
+        );
     }
 }
 
@@ -97,6 +134,8 @@ struct Fed<'a> {
     cells: &'a [Cell],
     soaked: Vec<bool>,
     inrush: Vec<bool>,
+    abnormal: Vec<bool>,
+    waveform: Vec<bool>,
 }
 
 impl Fed<'_> {
@@ -147,7 +186,28 @@ impl Fed<'_> {
                 place,
                 notes,
             ),
-            RuleKind::LinkHolding | RuleKind::LinkOpening | RuleKind::TemperatureRise { .. } => {}
+            RuleKind::LinkHolding | RuleKind::LinkOpening | RuleKind::LinkHouse { .. } => {
+                self.both_ends(appliance, rule, place, notes);
+            }
+            RuleKind::LinkMaximum if !self.abnormal.contains(&true) => notes.warning(
+                place,
+                "no step runs the unit with a fault until its link opens: this rule will be not judged",
+                "add an `abnormal` step, or take this rule out",
+            ),
+            RuleKind::MomentaryInrush { .. }
+            | RuleKind::HarmonicsClassA
+            | RuleKind::VoltageChange { .. } => self.every_cell(
+                &self.waveform,
+                for_it,
+                Lack {
+                    anywhere: "no step takes a waveform",
+                    somewhere: "no step takes a waveform",
+                    hint: "write `waveform: yes` in the `inrush` step",
+                },
+                place,
+                notes,
+            ),
+            RuleKind::LinkMaximum | RuleKind::TemperatureRise { .. } => {}
         }
     }
 
@@ -170,6 +230,38 @@ impl Fed<'_> {
                 cell.words()
             );
             notes.warning(place, what, lack.hint);
+        }
+    }
+
+    /// A unit with a fan is run at both ends of its supply range.
+    fn both_ends(
+        &self,
+        appliance: &PlannedAppliance,
+        rule: &PlannedRule,
+        place: &Place,
+        notes: &mut Notes,
+    ) {
+        if !appliance.fan {
+            return;
+        }
+        for position in &appliance.positions {
+            let of_it = |cell: &&Cell| cell.position == *position && rule.is_for(cell);
+            if !self.cells.iter().any(|cell| of_it(&cell)) {
+                continue;
+            }
+            let (low, high) = appliance.supply_ends(position);
+            for end in [low, high] {
+                let at_end = |cell: &&Cell| appliance.is_at_end(cell, end);
+                if !self.cells.iter().filter(of_it).any(|cell| at_end(&cell)) {
+                    return notes.warning(
+                        place,
+                        format!(
+                            "a unit with a fan is run at both ends of its supply range, and no step runs `{position}` at {end}: this rule will be not judged"
+                        ),
+                        format!("add a supply of {end}, or state the `supply range:` in which it may be used"),
+                    );
+                }
+            }
         }
     }
 
@@ -281,20 +373,22 @@ pub(super) fn every_rating_is_run(
         if entry.element.is_some() || !is_run(&entry.position) {
             continue;
         }
-        for rated in rated_points(entry) {
+        for rated in rated_points(entry, appliance.fan) {
             let volts = rated.voltage.get();
             let reached = cells.iter().any(|cell| {
                 let away = (cell.supply.voltage.get() - volts).abs();
-                cell.position == entry.position && at_most(away, CORRECTABLE * volts)
+                cell.position == entry.position
+                    && at_most(away, CORRECTABLE * volts)
+                    && rated.has_frequency(cell.supply.frequency)
             });
             if !reached {
                 notes.warning(
                     &written.voltage.place,
                     format!(
-                        "no step runs the position `{}` near {}, at which this entry is judged: it will be not judged",
-                        entry.position, rated.voltage
+                        "no step runs the position `{}` near {} at {}, where this entry is judged: it will be not judged",
+                        entry.position, rated.voltage, span(rated.frequency)
                     ),
-                    format!("add a supply of {}", rated.voltage),
+                    format!("add a supply of {} at {}", rated.voltage, span(rated.frequency)),
                 );
             }
         }

@@ -2,7 +2,7 @@
 
 use super::types::{Action, Plan, PlannedInstrument, PlannedRole, PlannedRule, PlannedStep};
 use super::words::{answers, between, criterion, degrees, measured, span, time};
-use crate::quantity::{Volts, Watts};
+use crate::quantity::{Volts, Watts, shortest};
 use crate::spec::plate;
 use crate::spec::sequence::{Decision, RuleKind, RuleWeight};
 
@@ -238,6 +238,13 @@ impl Plan {
         };
         let decision = match rule.decision {
             Decision::Simple => "simple".to_owned(),
+            Decision::SimpleUpTo { largest } => {
+                format!(
+                    "simple with U up to {} {}",
+                    shortest(largest),
+                    unit_of(&rule.kind)
+                )
+            }
             Decision::Guarded { ratio } => format!("guarded by {ratio} U"),
             Decision::FourOutcomes => "four outcomes".to_owned(),
         };
@@ -275,7 +282,31 @@ impl Plan {
                 let from = degrees(link.map(|link| link.opens_from));
                 format!("link's body in {ambient} ambient at most Tf - 10 K, {from}")
             }
+            RuleKind::LinkHouse { below_tf } => format!(
+                "link's body in {ambient} ambient at most Th and at most Tf - {below_tf}, house limit"
+            ),
+            RuleKind::LinkMaximum => {
+                let tm = degrees(link.and_then(|link| link.tm));
+                format!("link's body at most Tm, {tm}, for 10 min after it opened")
+            }
             RuleKind::Inrush { at_most } => format!("inrush at most {at_most}"),
+            RuleKind::MomentaryInrush { at_most } => {
+                format!("momentary inrush at most {at_most}")
+            }
+            RuleKind::HarmonicsClassA => "harmonics within class A".to_owned(),
+            RuleKind::VoltageChange {
+                dmax,
+                dc,
+                time_above,
+            } => {
+                let limits = [
+                    dmax.map(|limit| format!("dmax at most {limit}")),
+                    dc.map(|limit| format!("dc at most {limit}")),
+                    time_above.map(|limit| format!("above 3.3 % for at most {limit}")),
+                ];
+                let limits: Vec<String> = limits.into_iter().flatten().collect();
+                format!("voltage change: {}", limits.join(", "))
+            }
             RuleKind::PositionOrder => format!(
                 "input rises in the order {}",
                 self.appliance.positions.join(", ")
@@ -302,9 +333,9 @@ impl Plan {
             .filter(|entry| entry.element.is_none())
             .filter(|entry| position.is_none_or(|p| p == entry.position))
             .flat_map(|entry| {
-                rated_points(entry)
+                rated_points(entry, self.appliance.fan)
                     .into_iter()
-                    .map(|rated| band(&entry.position, rated.voltage, rated.power))
+                    .map(|rated| band(&entry.position, rated.voltage, rated.rated))
                     .collect::<Vec<_>>()
             })
             .collect()
@@ -320,6 +351,22 @@ impl Plan {
                 time(self.longest())
             ),
         )
+    }
+}
+
+/// The unit of what a rule compares, as its U is stated in.
+fn unit_of(kind: &RuleKind) -> &'static str {
+    match kind {
+        RuleKind::PlatePower | RuleKind::PowerLimits { .. } | RuleKind::PositionOrder => "W",
+        RuleKind::Inrush { .. } | RuleKind::MomentaryInrush { .. } | RuleKind::HarmonicsClassA => {
+            "A"
+        }
+        RuleKind::VoltageChange { .. } => "",
+        RuleKind::LinkHolding
+        | RuleKind::LinkOpening
+        | RuleKind::LinkHouse { .. }
+        | RuleKind::LinkMaximum
+        | RuleKind::TemperatureRise { .. } => "K",
     }
 }
 
@@ -355,16 +402,27 @@ fn detail(action: &Action) -> String {
         }
         Action::Energise | Action::Deenergise => String::new(),
         Action::Inrush(timed) | Action::Measure(timed) | Action::RunIn(timed) => {
-            format!("for {}, every {}", timed.length, timed.every)
+            let waveform = if timed.waveform {
+                ", with a waveform"
+            } else {
+                ""
+            };
+            format!("for {}, every {}{waveform}", timed.length, timed.every)
         }
         Action::Soak {
             at_least,
             at_most,
             every,
             until,
+            early_finish,
         } => format!(
-            "{at_least} to {at_most}, every {every}, until {}",
-            criterion(until)
+            "{at_least} to {at_most}, every {every}, until {}{}",
+            criterion(until),
+            if *early_finish {
+                "; may finish early where two predictions agree (the result is then extrapolated)"
+            } else {
+                ""
+            }
         ),
         Action::Abnormal {
             fault,

@@ -4,11 +4,13 @@
 use serde::{Deserialize, Serialize};
 
 use crate::quantity::{Amps, Celsius, Hertz, Kelvins, Seconds, Volts, Watts};
-use crate::spec::bench::{CalibrationPoint, Port};
+use crate::sensor::Sensor;
+use crate::spec::bench::{CalibrationPoint, Connection, Port, Source};
 use crate::spec::driver::Driver;
 use crate::spec::sequence::{
-    ApplianceKind, Criterion, Decision, HeatingElement, MeasuredAt, ProtectionClass, Question,
-    RoleKind, RuleKind, RuleWeight, Span, SupplyPoint, Timed, Waiting,
+    AmbientEffect, ApplianceKind, Criterion, CyclingRule, Decision, HeatingElement, MeasuredAt,
+    ProcessSpread, ProtectionClass, Question, RoleKind, RuleKind, RuleWeight, Span, SupplyPoint,
+    Timed, Waiting,
 };
 
 /// Version of `plan.json`; raised when its meaning changes.
@@ -56,6 +58,12 @@ pub struct PlannedAppliance {
     pub protection_class: ProtectionClass,
     /// Highest ambient.
     pub highest_ambient: Celsius,
+    /// Ambient that the input is referred to; absent in plans of before, which refer to none.
+    #[serde(default)]
+    pub reference_ambient: Option<Celsius>,
+    /// Supply range in which it may be used; absent: the plate's.
+    #[serde(default)]
+    pub supply_range: Option<Span<Volts>>,
     /// Positions from the lowest input to the highest, off left out.
     pub positions: Vec<String>,
     /// What the plate promises.
@@ -102,6 +110,9 @@ pub struct PlannedLink {
     pub sits: String,
     /// Where it is measured.
     pub measured_at: MeasuredAt,
+    /// How far it follows the room; absent: 1 K per K.
+    #[serde(default)]
+    pub ambient_effect: Option<AmbientEffect>,
 }
 
 /// The bay.
@@ -111,6 +122,9 @@ pub struct PlannedBay {
     pub name: String,
     /// Rated current of its wiring.
     pub rated_current: Amps,
+    /// What feeds it; nothing is known of it in plans that were made before it was kept.
+    #[serde(default)]
+    pub source: Source,
     /// Roles, in the sequence's order.
     pub roles: Vec<PlannedRole>,
 }
@@ -126,6 +140,15 @@ pub struct PlannedRole {
     pub instrument: usize,
     /// Channel.
     pub channel: Option<u32>,
+    /// Where a temperature is measured, in words.
+    #[serde(default)]
+    pub place: Option<String>,
+    /// How it is connected.
+    #[serde(default)]
+    pub connection: Connection,
+    /// What hangs on the channel; plans from before it was known have none.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub sensor: Option<Sensor>,
 }
 
 /// A line.
@@ -222,6 +245,9 @@ pub enum Action {
         every: Seconds,
         /// Criterion.
         until: Criterion,
+        /// Whether two predictions that agree may end it.
+        #[serde(default)]
+        early_finish: bool,
     },
     /// Over a window.
     Measure(Timed),
@@ -301,6 +327,12 @@ pub struct PlannedRule {
     pub condition: Option<String>,
     /// Where its limits come from, printed beside them.
     pub source: String,
+    /// How the quantity spreads over units, where it is stated.
+    #[serde(default)]
+    pub process: Option<ProcessSpread>,
+    /// Which input of a cycling load a power rule compares.
+    #[serde(default)]
+    pub cycling: CyclingRule,
 }
 
 impl Cell {

@@ -4,10 +4,11 @@ use chrono::NaiveDate;
 
 use super::calibration::calibration_stands;
 use super::notes::{Notes, listed};
+use super::sensing::sensor_fits;
 use super::types::{PlannedBay, PlannedInstrument, PlannedLine, PlannedRole};
 use crate::quantity::Reading;
 use crate::spec::bench::{Bay, Bench, Instrument, Port, RoleFilled};
-use crate::spec::driver::Driver;
+use crate::spec::driver::{Driver, Thermal};
 use crate::spec::nearest;
 use crate::spec::sequence::{RoleKind, RoleNeed, Sequence};
 
@@ -58,6 +59,7 @@ pub(super) fn wire(files: Files, bay: &Bay, notes: &mut Notes) -> Wired {
         bay: PlannedBay {
             name: bay.name.value.clone(),
             rated_current: bay.rated_current,
+            source: bay.source,
             roles: Vec::new(),
         },
         instruments: Vec::new(),
@@ -128,6 +130,7 @@ fn fill(files: Files, need: &RoleNeed, filled: &RoleFilled, wired: &mut Wired, n
     };
     can_fill(need, filled, driver, notes);
     channel_fits(filled, driver, notes);
+    sensor_fits(need, filled, driver, notes);
     let Some(line) = line_of(files.bench, instrument, wired, notes) else {
         return;
     };
@@ -137,6 +140,9 @@ fn fill(files: Files, need: &RoleNeed, filled: &RoleFilled, wired: &mut Wired, n
         kind: need.kind,
         instrument: number,
         channel: filled.channel.as_ref().map(|channel| channel.value),
+        place: need.place.clone(),
+        connection: filled.connection.clone(),
+        sensor: filled.sensor.as_ref().map(|sensor| sensor.value),
     });
 }
 
@@ -173,7 +179,7 @@ fn can_fill(need: &RoleNeed, filled: &RoleFilled, driver: &Driver, notes: &mut N
             ("a reading of current", !gives(Reading::Current)),
             ("a reading of voltage", !gives(Reading::Voltage)),
         ],
-        RoleKind::Temperature => vec![("a reading of temperature", !gives(Reading::Temperature))],
+        RoleKind::Temperature => vec![("a reading of temperature", driver.thermal().is_none())],
         RoleKind::PositionSwitch => {
             vec![("settings: position", driver.settings.position.is_none())]
         }
@@ -189,7 +195,7 @@ fn can_fill(need: &RoleNeed, filled: &RoleFilled, driver: &Driver, notes: &mut N
             "add it to the driver from the instrument's manual, or use another instrument",
         );
     }
-    for reading in read_by(need.kind) {
+    for reading in read_by(need.kind, driver) {
         if gives(*reading) && driver.accuracy_of(*reading).is_none() {
             notes.warning(
                 place,
@@ -204,11 +210,13 @@ fn can_fill(need: &RoleNeed, filled: &RoleFilled, driver: &Driver, notes: &mut N
     }
 }
 
-/// What the results of a kind of role rest on.
-fn read_by(kind: RoleKind) -> &'static [Reading] {
+/// What the results of a kind of role rest on. A driver that states the accuracy of
+/// the whole chain in kelvins needs none of its raw readings.
+fn read_by(kind: RoleKind, driver: &Driver) -> &'static [Reading] {
     match kind {
         RoleKind::PowerMeter => &[Reading::Voltage, Reading::Current, Reading::Power],
-        RoleKind::Temperature => &[Reading::Temperature],
+        RoleKind::Temperature if driver.accuracy_of(Reading::Temperature).is_some() => &[],
+        RoleKind::Temperature => driver.thermal().map_or(&[], Thermal::readings),
         RoleKind::Supply | RoleKind::PositionSwitch => &[],
     }
 }

@@ -29,7 +29,12 @@ pub(super) fn measured(at: &MeasuredAt) -> String {
             place,
             allowance,
             source,
+            self_heating,
         } => {
+            let heating = self_heating.map_or_else(
+                || "no self-heating stated".to_owned(),
+                |heating| format!("self-heating {} at {}", heating.rise, heating.at),
+            );
             let allowance = allowance.map_or_else(
                 || "no allowance stated".to_owned(),
                 |allowance| format!("allowance {allowance}"),
@@ -37,7 +42,10 @@ pub(super) fn measured(at: &MeasuredAt) -> String {
             let source = source
                 .as_ref()
                 .map_or_else(String::new, |source| format!(" ({source})"));
-            format!("measured at {place}, {allowance}{source}")
+            format!("measured at {place}, {allowance}{source}, {heating}")
+        }
+        MeasuredAt::OutsideOnly { place, limit } => {
+            format!("not measured: only {place} is, against a house limit of {limit}")
         }
     }
 }
@@ -71,12 +79,16 @@ pub(super) fn answers(question: &Question) -> String {
     format!("{answers}{finding}")
 }
 
-/// A criterion with its limits.
+/// A criterion with its limits and its source.
 pub(super) fn criterion(criterion: &Criterion) -> String {
     let (what, per) = match criterion.kind {
         CriterionKind::Slope { window } => (format!("slope over {window}"), " per hour"),
         CriterionKind::ThreeReadings => ("three readings at 10 % of the time".to_owned(), ""),
         CriterionKind::ChangeWithin { interval } => (format!("change within {interval}"), ""),
+        CriterionKind::SamplingMethod => (
+            "the sampling method, power 10 mW per hour up to 1 W, else 1 % per hour".to_owned(),
+            " per hour",
+        ),
     };
     let power = criterion
         .power_change
@@ -84,7 +96,11 @@ pub(super) fn criterion(criterion: &Criterion) -> String {
     let body = criterion
         .temperature_change
         .map(|change| format!(", body {change}{per}"));
-    [Some(what), power, body].into_iter().flatten().collect()
+    let source = Some(format!(" ({})", criterion.source()));
+    [Some(what), power, body, source]
+        .into_iter()
+        .flatten()
+        .collect()
 }
 
 /// Limits of a power, to the hundredth of a watt.

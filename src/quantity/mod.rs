@@ -10,6 +10,7 @@ mod newtypes;
 mod parse;
 mod reading;
 mod rounding;
+mod waveform;
 
 pub use moment::{Moment, Seconds};
 pub use newtypes::{
@@ -18,3 +19,4 @@ pub use newtypes::{
 pub use parse::{Dimension, ParseQuantityError, Quantity, Written, parse_written};
 pub use reading::{Reading, Readings};
 pub use rounding::{at_least, at_most, near, shortest};
+pub use waveform::{Waveform, WaveformError};

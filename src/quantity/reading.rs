@@ -15,17 +15,28 @@ pub enum Reading {
     PowerFactor,
     Frequency,
     Temperature,
+    Energy,
+    /// Of a thermocouple, as read at its terminals.
+    ThermocoupleVoltage,
+    /// Of the terminals that a thermocouple is connected to.
+    TerminalTemperature,
+    /// Of a resistance thermometer.
+    Resistance,
 }
 
 impl Reading {
     /// Every kind, in the order of the record's columns.
-    pub const ALL: [Reading; 6] = [
+    pub const ALL: [Reading; 10] = [
         Reading::Voltage,
         Reading::Current,
         Reading::Power,
         Reading::PowerFactor,
         Reading::Frequency,
         Reading::Temperature,
+        Reading::Energy,
+        Reading::ThermocoupleVoltage,
+        Reading::TerminalTemperature,
+        Reading::Resistance,
     ];
 
     /// The column of a machine file, with its unit.
@@ -37,6 +48,10 @@ impl Reading {
             Reading::PowerFactor => "power_factor",
             Reading::Frequency => "frequency_hz",
             Reading::Temperature => "temperature_degc",
+            Reading::Energy => "energy_wh",
+            Reading::ThermocoupleVoltage => "thermocouple_voltage_v",
+            Reading::TerminalTemperature => "terminal_temperature_degc",
+            Reading::Resistance => "resistance_ohm",
         }
     }
 
@@ -49,6 +64,10 @@ impl Reading {
             Reading::PowerFactor => "power factor",
             Reading::Frequency => "frequency",
             Reading::Temperature => "temperature",
+            Reading::Energy => "energy",
+            Reading::ThermocoupleVoltage => "thermocouple voltage",
+            Reading::TerminalTemperature => "terminal temperature",
+            Reading::Resistance => "resistance",
         }
     }
 
@@ -60,7 +79,10 @@ impl Reading {
             Reading::Power => "W",
             Reading::PowerFactor => "",
             Reading::Frequency => "Hz",
-            Reading::Temperature => "°C",
+            Reading::Temperature | Reading::TerminalTemperature => "°C",
+            Reading::Energy => "Wh",
+            Reading::ThermocoupleVoltage => "V",
+            Reading::Resistance => "ohm",
         }
     }
 
@@ -72,7 +94,10 @@ impl Reading {
             Reading::Power => Dimension::Power,
             Reading::PowerFactor => Dimension::Ratio,
             Reading::Frequency => Dimension::Frequency,
-            Reading::Temperature => Dimension::Temperature,
+            Reading::Temperature | Reading::TerminalTemperature => Dimension::Temperature,
+            Reading::Energy => Dimension::Energy,
+            Reading::ThermocoupleVoltage => Dimension::Voltage,
+            Reading::Resistance => Dimension::Resistance,
         }
     }
 
@@ -83,11 +108,11 @@ impl Reading {
 
 /// The values of one exchange, in base units; absent is absent, never 0.
 #[derive(Debug, Clone, Copy, PartialEq, Default)]
-pub struct Readings([Option<f64>; 6]);
+pub struct Readings([Option<f64>; 10]);
 
 impl Readings {
     /// No value at all.
-    pub const NONE: Readings = Readings([None; 6]);
+    pub const NONE: Readings = Readings([None; 10]);
 
     /// A single value; a non-finite one is absent.
     pub fn one(reading: Reading, value: f64) -> Self {

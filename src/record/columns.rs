@@ -5,6 +5,7 @@ use csv::ByteRecord;
 use super::types::{Event, Happening, Sample, Status};
 use crate::plan::{Cell, Plan};
 use crate::quantity::{Moment, Reading, Readings, shortest};
+use crate::sensor::is_raw;
 
 /// Columns of `samples.csv` before the quantities.
 pub const SAMPLE_HEAD: [&str; 11] = [
@@ -42,6 +43,7 @@ pub struct Names {
     bay: String,
     roles: Vec<String>,
     cells: Vec<[String; 3]>,
+    readings: Vec<Reading>,
 }
 
 impl Names {
@@ -56,7 +58,14 @@ impl Names {
                 .map(|role| defused(&role.name))
                 .collect(),
             cells: plan.cells.iter().map(cell_names).collect(),
+            readings: columns_of(plan),
         }
+    }
+
+    /// The columns of `samples.csv`.
+    pub fn head(&self) -> Vec<&'static str> {
+        let quantities = self.readings.iter().map(|reading| reading.column());
+        SAMPLE_HEAD.into_iter().chain(quantities).collect()
     }
 
     /// One row of `samples.csv`.
@@ -77,11 +86,11 @@ impl Names {
         row.push_field(self.roles[sample.role].as_bytes());
         row.push_field(if sample.energised { b"1" } else { b"0" });
         row.push_field(sample.status.word().as_bytes());
-        for kind in Reading::ALL {
+        for kind in &self.readings {
             row.push_field(
                 sample
                     .readings
-                    .get(kind)
+                    .get(*kind)
                     .map_or(&[][..], |value| number.decimal(value)),
             );
         }
@@ -95,7 +104,7 @@ impl Names {
         let status = text_at(row, 10);
         let status = Status::ALL.into_iter().find(|s| s.word() == status);
         let mut readings = Readings::NONE;
-        for (n, kind) in Reading::ALL.into_iter().enumerate() {
+        for (n, kind) in self.readings.iter().copied().enumerate() {
             let column = SAMPLE_HEAD.len() + n;
             let text = text_at(row, column);
             if !text.is_empty() {
@@ -141,6 +150,22 @@ impl Names {
             .map(Some)
             .ok_or_else(|| wrong("position", &names.join(" / "), "a cell of the plan"))
     }
+}
+
+/// Quantities that a plan's record has a column for. Raw readings of sensors are rare,
+/// so their columns are there only where a driver of the plan gives them: records
+/// without them keep the columns that they always had.
+fn columns_of(plan: &Plan) -> Vec<Reading> {
+    let given = |reading: Reading| {
+        plan.instruments
+            .iter()
+            .flat_map(|instrument| &instrument.driver.readings)
+            .any(|query| query.gives.contains(&reading))
+    };
+    Reading::ALL
+        .into_iter()
+        .filter(|reading| !is_raw(*reading) || given(*reading))
+        .collect()
 }
 
 /// The supply of a cell in words: `230 V 50 Hz`.
@@ -277,5 +302,48 @@ mod tests {
         assert_eq!(defused("=1+1"), "'=1+1");
         assert_eq!(defused("a\tb"), "a b");
         assert_eq!(defused("low"), "low");
+    }
+
+    fn names(readings: &[Reading]) -> Names {
+        Names {
+            bay: "bay 1".to_owned(),
+            roles: vec!["meter".to_owned()],
+            cells: Vec::new(),
+            readings: readings.to_vec(),
+        }
+    }
+
+    fn sample(readings: Readings) -> Sample {
+        Sample {
+            seq: 1,
+            request: Moment::from_micros(10),
+            reply: Moment::from_micros(20),
+            step: 3,
+            cell: None,
+            role: 0,
+            energised: true,
+            status: Status::Ok,
+            readings,
+        }
+    }
+
+    // Records from before there were energy counters have no column for them.
+    #[test]
+    fn a_counter_has_a_column_only_where_one_is_read() {
+        let without = names(&Reading::ALL[..6]);
+        let head = without.head();
+        assert_eq!(head.last(), Some(&"temperature_degc"));
+        let with = names(&Reading::ALL);
+        assert!(with.head().contains(&"energy_wh"));
+        let mut readings = Readings::one(Reading::Power, 9.5);
+        readings.set(Reading::Energy, 0.125);
+        let mut row = ByteRecord::new();
+        with.write_sample(&sample(readings), &mut row);
+        assert_eq!(row.len(), with.head().len());
+        assert_eq!(with.read_sample(&row).unwrap(), sample(readings));
+        let old = Readings::one(Reading::Power, 9.5);
+        without.write_sample(&sample(old), &mut row);
+        assert_eq!(row.len(), head.len());
+        assert_eq!(without.read_sample(&row).unwrap(), sample(old));
     }
 }

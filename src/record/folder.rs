@@ -6,11 +6,11 @@ use std::path::{Path, PathBuf};
 
 use csv::ByteRecord;
 
-use super::columns::{EVENT_HEAD, Names, RowError, SAMPLE_HEAD, read_happening};
+use super::columns::{EVENT_HEAD, Names, RowError, read_happening};
 use super::hash::{sha256_of, sha256_of_file};
-use super::types::{Happening, Manifest, RECORD_FORMAT, Sample};
+use super::types::{Event, Happening, Manifest, RECORD_FORMAT, Sample, StoredWaveform};
+use super::waveform::{WAVEFORM_HEAD, WaveformColumns};
 use crate::plan::{PLAN_FORMAT, Plan};
-use crate::quantity::Reading;
 
 /// Why a record can't be read. Each says the file, and the line where there is one.
 #[derive(Debug, thiserror::Error)]
@@ -85,6 +85,8 @@ pub struct Folder {
     pub samples: Vec<Sample>,
     /// Every event, in order.
     pub happenings: Vec<Happening>,
+    /// Every waveform, in order.
+    pub waveforms: Vec<StoredWaveform>,
 }
 
 impl Folder {
@@ -104,8 +106,7 @@ impl Folder {
         }
         let plan = read_plan(&run.join("plan.json"))?;
         let names = Names::of(&plan);
-        let quantities = Reading::ALL.map(Reading::column);
-        let head: Vec<&str> = SAMPLE_HEAD.iter().chain(&quantities).copied().collect();
+        let head = names.head();
         let mut samples: Vec<Sample> = Vec::with_capacity(manifest.samples as usize);
         read_rows(&run.join("samples.csv"), &head, |row| {
             let sample = names.read_sample(row)?;
@@ -121,12 +122,14 @@ impl Folder {
             happenings.push(happening);
             Ok(())
         })?;
+        let waveforms = read_waveforms(&run, &manifest, &plan, &happenings)?;
         Ok(Self {
             path: path.to_owned(),
             manifest,
             plan,
             samples,
             happenings,
+            waveforms,
         })
     }
 
@@ -144,6 +147,48 @@ impl Folder {
         let bytes = fs::read(&file).map_err(|e| unreadable(&file, e))?;
         Ok(sha256_of(&bytes))
     }
+}
+
+/// Every waveform that the events tell of.
+fn read_waveforms(
+    run: &Path,
+    manifest: &Manifest,
+    plan: &Plan,
+    happenings: &[Happening],
+) -> Result<Vec<StoredWaveform>, RecordError> {
+    let mut waveforms = Vec::new();
+    for happening in happenings {
+        let Event::WaveformStored {
+            cell,
+            file,
+            samples,
+        } = &happening.event
+        else {
+            continue;
+        };
+        let meaning = |what: &str| RecordError::Meaning {
+            file: run.join("events.csv"),
+            what: format!("event {}: {what}", happening.seq),
+        };
+        if *cell >= plan.cells.len() {
+            return Err(meaning("the plan has no such cell"));
+        }
+        // Only what stands in the manifest was held to its hash.
+        if !manifest.files.iter().any(|known| known.name == *file) {
+            return Err(meaning("its waveform is no file of the manifest"));
+        }
+        let at = run.join(safe_name(run, file)?);
+        let mut columns = WaveformColumns::default();
+        read_rows(&at, &WAVEFORM_HEAD, |row| columns.take(row))?;
+        let wave = columns
+            .finish(*samples)
+            .map_err(|what| RecordError::Meaning {
+                file: at.clone(),
+                what,
+            })?;
+        waveforms.push(StoredWaveform { cell: *cell, wave });
+    }
+    Ok(waveforms)
 }
 
 fn read_manifest(path: &Path, run: &Path) -> Result<Manifest, RecordError> {

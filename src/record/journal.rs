@@ -4,12 +4,13 @@ use std::io::{self, Write};
 
 use csv::ByteRecord;
 
-use super::columns::{EVENT_HEAD, Names, SAMPLE_HEAD, write_happening};
+use super::columns::{EVENT_HEAD, Names, write_happening};
 use super::hash::sha256_of;
 use super::store::{Store, StoreFile};
 use super::types::{Event, FileHash, Happening, Manifest, RECORD_FORMAT, RunOutcome, Sample};
+use super::waveform::write_waveform;
 use crate::plan::Plan;
-use crate::quantity::{Moment, Reading};
+use crate::quantity::{Moment, Waveform};
 
 /// What a record is of, known before its first row.
 #[derive(Debug, Clone)]
@@ -83,9 +84,9 @@ impl Journal {
         }
         written.push(copy_whole(store.as_mut(), "plan.json", &plan_json)?);
         let mut samples = csv::Writer::from_writer(Hashing::new(store.create("samples.csv")?));
-        let quantities = Reading::ALL.map(Reading::column);
+        let names = Names::of(plan);
         samples
-            .write_record(SAMPLE_HEAD.iter().chain(&quantities))
+            .write_record(names.head())
             .map_err(io::Error::other)?;
         let mut events = csv::Writer::from_writer(Hashing::new(store.create("events.csv")?));
         events.write_record(EVENT_HEAD).map_err(io::Error::other)?;
@@ -93,7 +94,7 @@ impl Journal {
         let mut journal = Self {
             store,
             heading,
-            names: Names::of(plan),
+            names,
             samples,
             events,
             wire,
@@ -169,6 +170,37 @@ impl Journal {
         self.samples.get_ref().file.sync()?;
         self.events.get_ref().file.sync()?;
         Ok(happening)
+    }
+
+    /// Writes a waveform as a file of its own, then the event that tells of it; the
+    /// file is on the disk when this returns.
+    ///
+    /// # Errors
+    /// Where it can't be written.
+    pub fn waveform(&mut self, at: Moment, cell: usize, wave: &Waveform) -> io::Result<Happening> {
+        let file = self.free_name(&format!("waveform-cell-{}", cell + 1));
+        let bytes = write_waveform(wave).map_err(io::Error::other)?;
+        let hash = copy_whole(self.store.as_mut(), &file, &bytes)?;
+        self.copies.push(hash);
+        let samples = wave.len() as u64;
+        self.event(
+            at,
+            Event::WaveformStored {
+                cell,
+                file,
+                samples,
+            },
+        )
+    }
+
+    /// A cell that is energised twice leaves two waveforms.
+    fn free_name(&self, stem: &str) -> String {
+        let taken = |name: &String| self.copies.iter().any(|copy| copy.name == *name);
+        let again = (2..).map(|n| format!("{stem}-{n}.csv"));
+        std::iter::once(format!("{stem}.csv"))
+            .chain(again)
+            .find(|name| !taken(name))
+            .unwrap_or_default()
     }
 
     /// Writes bytes that passed on a wire.

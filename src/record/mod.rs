@@ -2,7 +2,8 @@
 //!
 //! ```text
 //! <record>/run/          sequence.yaml, bench.yaml, driver copies, plan.json,
-//!                        samples.csv, events.csv, wire.txt, manifest.json (last)
+//!                        samples.csv, events.csv, wire.txt, waveform-cell-1.csv and so on,
+//!                        manifest.json (last)
 //! <record>/judgements/0001/   results.csv, findings.csv, judgement.json, charts,
 //!                        manifest.json (last)
 //! ```
@@ -15,6 +16,7 @@ mod journal;
 mod store;
 mod types;
 mod unit_number;
+mod waveform;
 
 pub use annex::{AnnexManifest, newest_judgement, write_judgement};
 pub use columns::{RowError, defused, supply_words};
@@ -24,6 +26,6 @@ pub use journal::{Flushing, Heading, Journal, Way};
 pub use store::{FolderStore, Store, StoreFile, put_whole};
 pub use types::{
     Event, FileHash, Happening, Manifest, RECORD_FORMAT, RunOutcome, Sample, Status, StepEnd,
-    TripOf,
+    StoredWaveform, TripOf,
 };
 pub use unit_number::{UnitNumber, UnitNumberError};

@@ -2,7 +2,7 @@
 
 use serde::{Deserialize, Serialize};
 
-use crate::quantity::{Moment, Readings};
+use crate::quantity::{Moment, Readings, Waveform};
 use crate::spec::sequence::FindingClass;
 
 /// Version of the record's layout; raised when its meaning changes.
@@ -29,6 +29,15 @@ pub struct Sample {
     pub status: Status,
     /// The values.
     pub readings: Readings,
+}
+
+/// The voltage and current that were fetched as one block while a cell was switched on.
+#[derive(Debug, Clone, PartialEq)]
+pub struct StoredWaveform {
+    /// Index into the plan's cells.
+    pub cell: usize,
+    /// The block.
+    pub wave: Waveform,
 }
 
 /// What became of an exchange.
@@ -135,6 +144,22 @@ pub enum Event {
         /// Whether it was read back.
         confirmed: bool,
     },
+    /// A waveform was fetched and stored.
+    WaveformStored {
+        /// Index into the plan's cells.
+        cell: usize,
+        /// The file in `run/`.
+        file: String,
+        /// Its samples.
+        samples: u64,
+    },
+    /// A waveform was wanted and is not there.
+    WaveformFailed {
+        /// Index into the plan's cells.
+        cell: usize,
+        /// Why.
+        reason: String,
+    },
     /// A guard tripped.
     Tripped {
         /// Which, in words, with value and limit.
@@ -169,6 +194,8 @@ pub enum StepEnd {
     Done,
     /// A soak was settled.
     Settled,
+    /// A soak was ended early by predictions that agree, as the sequence allows.
+    Extrapolated,
     /// Its time limit came first.
     TimeLimit,
     /// The current vanished while energised.

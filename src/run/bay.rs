@@ -7,6 +7,7 @@ use std::sync::{Arc, Mutex, MutexGuard, PoisonError};
 
 use tokio::sync::watch;
 
+use super::convert::{converted, raw_sensors};
 use super::ears::{Heard, Told};
 use super::goal::Goal;
 use super::guard::{Trip, Watchman};
@@ -14,9 +15,10 @@ use super::operator::{Operator, Prompt, Reply};
 use crate::bench::{ExchangeError, Fault, Lease, LineHandle, OffConfirmed, Poll, Polled};
 use crate::clock::Clock;
 use crate::plan::{Plan, PlannedRole};
-use crate::quantity::{Moment, Reading, Readings, Seconds};
+use crate::quantity::{Moment, Reading, Readings, Seconds, Waveform};
 use crate::record::{Event, Happening, Journal, Sample, Status, StepEnd};
-use crate::settle::Watched;
+use crate::sensor::Sensor;
+use crate::settle::watched_in;
 use crate::spec::sequence::RoleKind;
 
 /// The bay wakes at least this often, to renew the lease and look at the guards.
@@ -123,8 +125,11 @@ pub(super) struct Working {
     pub(super) step: u32,
     pub(super) cell: Option<usize>,
     pub(super) energised_at: Option<Moment>,
+    /// Whether the meter waits for the first current, or has a waveform of it.
+    pub(super) armed: bool,
     every: Vec<Option<Seconds>>,
-    watched: Vec<Option<(Option<Watched>, Reading)>>,
+    /// By role; raw replies are converted by it.
+    sensors: Vec<Option<Sensor>>,
 }
 
 impl Working {
@@ -134,7 +139,7 @@ impl Working {
             wiring: wiring_of(&plan),
             watchman: Watchman::new(&plan),
             every: vec![None; plan.bay.roles.len()],
-            watched: plan.bay.roles.iter().map(watched_by).collect(),
+            sensors: raw_sensors(&plan),
             plan,
             unit: bay.unit,
             clock: bay.clock,
@@ -150,6 +155,7 @@ impl Working {
             step: 0,
             cell: None,
             energised_at: None,
+            armed: false,
         }
     }
 
@@ -166,6 +172,13 @@ impl Working {
         let happening = lock(&self.journal).announce(self.clock.now(), event)?;
         self.observer.happened(&self.plan, &happening);
         Ok(happening.at)
+    }
+
+    /// Stores a waveform of the cell and shows it.
+    pub(super) fn store(&mut self, cell: usize, wave: &Waveform) -> Result<(), Cut> {
+        let happening = lock(&self.journal).waveform(self.clock.now(), cell, wave)?;
+        self.observer.happened(&self.plan, &happening);
+        Ok(())
     }
 
     pub(super) fn mark_virtual(&self) {
@@ -297,7 +310,7 @@ impl Working {
     fn take(&mut self, polled: Polled, goal: Option<&mut Goal>) -> Result<(), Cut> {
         let role = (polled.tag / QUERIES) as usize;
         let (status, readings) = match &polled.result {
-            Ok(readings) => (Status::Ok, *readings),
+            Ok(readings) => converted(self.sensors[role], *readings),
             Err(error) => (status_of(&error.fault), Readings::NONE),
         };
         let mut sample = Sample {
@@ -315,9 +328,13 @@ impl Working {
         self.watchman
             .sample(sample.reply, role, status, &readings)?;
         if let Some(goal) = goal {
-            let watched = self.watched[role];
-            let value = watched.and_then(|(_, reading)| readings.get(reading));
-            goal.take(sample.reply, role, watched.and_then(|(w, _)| w), value);
+            let planned = &self.plan.bay.roles[role];
+            if main_reading(planned.kind).is_some_and(|main| readings.get(main).is_some()) {
+                goal.heard(role);
+            }
+            for (watched, value) in watched_in(planned.kind, &planned.name, &readings) {
+                goal.take(sample.reply, watched, value);
+            }
         }
         match polled.result {
             Err(error) if is_failure(&error.fault) => Err(error.into()),
@@ -378,7 +395,7 @@ impl Working {
     }
 
     /// Awaits something that is not a sample, with guards and lease kept alive.
-    async fn attend_to<T>(&mut self, wanted: impl Future<Output = T>) -> Result<T, Cut> {
+    pub(super) async fn attend_to<T>(&mut self, wanted: impl Future<Output = T>) -> Result<T, Cut> {
         tokio::pin!(wanted);
         let mut nothing = Goal::Until(Moment::from_micros(u64::MAX / 2));
         loop {
@@ -414,13 +431,12 @@ async fn stopped(stop: &mut watch::Receiver<bool>) {
     let _ = stop.wait_for(|stop| *stop).await;
 }
 
-fn watched_by(role: &PlannedRole) -> Option<(Option<Watched>, Reading)> {
-    match (role.kind, role.name.as_str()) {
-        (RoleKind::PowerMeter, _) => Some((Some(Watched::Power), Reading::Power)),
-        (RoleKind::Temperature, "body") => Some((Some(Watched::Body), Reading::Temperature)),
-        (RoleKind::Temperature, "ambient") => Some((Some(Watched::Ambient), Reading::Temperature)),
-        (RoleKind::Temperature, _) => Some((None, Reading::Temperature)),
-        _ => None,
+/// What a role of a kind is polled for.
+fn main_reading(kind: RoleKind) -> Option<Reading> {
+    match kind {
+        RoleKind::PowerMeter => Some(Reading::Power),
+        RoleKind::Temperature => Some(Reading::Temperature),
+        RoleKind::Supply | RoleKind::PositionSwitch => None,
     }
 }
 

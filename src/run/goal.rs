@@ -72,7 +72,7 @@ impl Cooling {
                 }
             }
             Watched::Ambient => self.ambient = Some(value),
-            Watched::Power => {}
+            Watched::Power | Watched::Voltage => {}
         }
     }
 
@@ -92,14 +92,15 @@ impl Cooling {
 }
 
 impl Goal {
-    /// A recorded value of a watched quantity.
-    pub fn take(&mut self, at: Moment, role: usize, watched: Option<Watched>, value: Option<f64>) {
+    /// A role gave a believable reading.
+    pub fn heard(&mut self, role: usize) {
         if let Goal::Heard { missing, .. } = self {
-            missing.retain(|other| *other != role || value.is_none());
+            missing.retain(|other| *other != role);
         }
-        let (Some(watched), Some(value)) = (watched, value) else {
-            return;
-        };
+    }
+
+    /// A recorded value of a watched quantity.
+    pub fn take(&mut self, at: Moment, watched: Watched, value: f64) {
         match self {
             Goal::Settled { settle, .. } => settle.take(at, watched, value),
             Goal::Cool(cooling) => cooling.take(at, watched, value),
@@ -115,6 +116,7 @@ impl Goal {
             Goal::Heard { missing, .. } => missing.is_empty().then_some(StepEnd::Done),
             Goal::Settled { settle, .. } => match settle.state() {
                 Settling::Settled { .. } => Some(StepEnd::Settled),
+                Settling::Extrapolated { .. } => Some(StepEnd::Extrapolated),
                 Settling::WentOpen => Some(StepEnd::WentOpen),
                 Settling::TooEarly | Settling::NotYet(_) => None,
             },
@@ -150,8 +152,8 @@ mod tests {
     }
 
     fn feed(goal: &mut Goal, s: f64, body: f64) -> Option<StepEnd> {
-        goal.take(at(s), 1, Some(Watched::Ambient), Some(23.0));
-        goal.take(at(s), 0, Some(Watched::Body), Some(body));
+        goal.take(at(s), Watched::Ambient, 23.0);
+        goal.take(at(s), Watched::Body, body);
         goal.end(at(s))
     }
 

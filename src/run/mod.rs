@@ -1,12 +1,14 @@
 //! Walks a plan: one task per bay, guards, prompts, stop. Every way out de-energises.
 
 mod bay;
+mod convert;
 mod ears;
 mod goal;
 mod guard;
 mod operator;
 mod preflight;
 mod walk;
+mod waveform;
 
 pub use bay::{Bay, Observer, SharedJournal, lock};
 pub use ears::{Heard, Mouth, Told, hearing};

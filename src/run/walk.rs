@@ -10,12 +10,13 @@ use super::bay::{Bay, Cut, Working, lock};
 use super::goal::{Cooling, Goal};
 use super::operator::{Prompt, Want, understand};
 use super::preflight::{Cleared, Permissions, clear};
+use super::waveform;
 use crate::bench::Change;
 use crate::plan::{Action, PlannedStep};
 use crate::quantity::{Moment, Seconds};
 use crate::record::{Event, Manifest, RunOutcome, StepEnd};
 use crate::settle::Settle;
-use crate::spec::sequence::{Criterion, Question, RoleKind, SupplyPoint};
+use crate::spec::sequence::{Question, RoleKind, SupplyPoint};
 
 /// How long the first readings of a polled step may take at the most.
 const FIRST_READINGS: Seconds = Seconds::whole(10);
@@ -127,15 +128,15 @@ async fn take_step(
         } => set_position(bay, position, *number, *by_switch).await,
         Action::Energise => energise(bay, cleared, later).await,
         Action::Deenergise => deenergise(bay).await,
-        Action::Inrush(timed) | Action::Measure(timed) | Action::RunIn(timed) => {
+        Action::Inrush(timed) => {
+            let end = stay(bay, &step.action, timed.length, timed.every).await?;
+            waveform::fetch(bay).await?;
+            Ok(end)
+        }
+        Action::Measure(timed) | Action::RunIn(timed) => {
             stay(bay, &step.action, timed.length, timed.every).await
         }
-        Action::Soak {
-            at_least,
-            at_most,
-            every,
-            until,
-        } => soak(bay, until, *at_least, *at_most, *every).await,
+        Action::Soak { at_most, every, .. } => soak(bay, &step.action, *at_most, *every).await,
         Action::Acclimatise(waiting) | Action::Rest(waiting) => {
             bay.poll_every(waiting.every);
             let rest = matches!(step.action, Action::Rest(_));
@@ -257,6 +258,9 @@ async fn energise(
             "not every sensor gave a reading within {FIRST_READINGS}: the unit is not energised"
         )));
     }
+    if matches!(later.first(), Some(step) if waveform::is_wanted(&step.action)) {
+        waveform::arm(bay).await?;
+    }
     let plan = bay.plan.clone();
     let Some((_, role)) = plan.role_of_kind(RoleKind::Supply) else {
         return Err(Cut::Failed("the plan has no supply".to_owned()));
@@ -308,15 +312,16 @@ async fn stay(
 
 async fn soak(
     bay: &mut Working,
-    until: &Criterion,
-    at_least: Seconds,
+    action: &Action,
     at_most: Seconds,
     every: Seconds,
 ) -> Result<StepEnd, Cut> {
     bay.poll_every(every);
     let on = bay.energised_at.unwrap_or(Moment::START);
-    let cycling = bay.plan.appliance.thermostat;
-    let settle = Box::new(Settle::new(until, at_least, every, cycling, on));
+    let Some(soaking) = bay.plan.soaking(action) else {
+        return Err(Cut::Failed("the plan's soak is none".to_owned()));
+    };
+    let settle = Box::new(Settle::new(soaking, on));
     bay.attend(&mut Goal::Settled {
         settle,
         limit: on + at_most,

@@ -3,7 +3,8 @@
 use serde::{Deserialize, Serialize};
 
 use super::Located;
-use crate::quantity::{Amps, Reading};
+use crate::quantity::{Amps, Ohms, Ratio, Reading};
+use crate::sensor::Sensor;
 
 /// A whole bench file.
 #[derive(Debug, Clone, PartialEq)]
@@ -104,8 +105,19 @@ pub struct Bay {
     pub name: Located<String>,
     /// `rated current:` of its wiring and socket; the current trip.
     pub rated_current: Amps,
+    /// `source:` what feeds the bay, as far as it is known.
+    pub source: Source,
     /// `roles:`
     pub roles: Vec<RoleFilled>,
+}
+
+/// What feeds a bay.
+#[derive(Debug, Clone, Copy, PartialEq, Default, Serialize, Deserialize)]
+pub struct Source {
+    /// `impedance:` at the unit's plug; a source that regulates there has none.
+    pub impedance: Option<Ohms>,
+    /// `current limit:` above which it gives no more, RMS.
+    pub current_limit: Option<Amps>,
 }
 
 /// Which instrument fills a role in a bay.
@@ -117,4 +129,23 @@ pub struct RoleFilled {
     pub instrument: Located<String>,
     /// `channel:`
     pub channel: Option<Located<u32>>,
+    /// How it is connected, as far as it changes what is read.
+    pub connection: Connection,
+    /// `sensor:` what hangs on the channel; needed where the driver delivers raw values.
+    pub sensor: Option<Located<Sensor>>,
+}
+
+/// How a role's instrument is connected to the unit.
+#[derive(Debug, Clone, PartialEq, Default, Serialize, Deserialize)]
+pub struct Connection {
+    /// `attachment:` how a sensor is held, in words.
+    #[serde(default)]
+    pub attachment: Option<String>,
+    /// `contact error:` by which share of the rise over ambient a surface sensor reads
+    /// too low at the most.
+    #[serde(default)]
+    pub contact_error: Option<Ratio>,
+    /// `lead resistance:` of both conductors between a power meter and the unit's plug.
+    #[serde(default)]
+    pub lead_resistance: Option<Ohms>,
 }

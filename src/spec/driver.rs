@@ -7,6 +7,7 @@ use serde::{Deserialize, Serialize};
 
 use super::sequence::RoleKind;
 use crate::quantity::{Reading, Seconds, Volts};
+use crate::sensor::Sensor;
 
 /// A whole driver file.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
@@ -23,6 +24,9 @@ pub struct Driver {
     pub on_opening: Vec<String>,
     /// `readings:`
     pub readings: Vec<ReadingQuery>,
+    /// `waveform:` how a block of voltage and current is taken and fetched.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub waveform: Option<WaveformQuery>,
     /// `settings:` commands with `{value}`.
     pub settings: Settings,
     /// `errors:` the error queue's query.
@@ -35,6 +39,98 @@ pub struct Driver {
     pub channels: u32,
     /// `isolation:` of sensor inputs to earth and to each other; unknown counts as 0 V.
     pub isolation: Option<Volts>,
+    /// `coupling: ac` where it loses the DC part of a current (default: `dc`).
+    #[serde(default, skip_serializing_if = "Coupling::is_dc")]
+    pub coupling: Coupling,
+}
+
+/// Whether an instrument sees the DC part of a current.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Default, Serialize, Deserialize)]
+#[serde(rename_all = "lowercase")]
+pub enum Coupling {
+    /// It does.
+    #[default]
+    Dc,
+    /// It does not.
+    Ac,
+}
+
+impl Coupling {
+    /// Whether the DC part is seen.
+    pub fn is_dc(&self) -> bool {
+        *self == Coupling::Dc
+    }
+}
+
+/// A single acquisition of voltage and current, and the block that it is fetched as.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct WaveformQuery {
+    /// `arm:` commands sent before the unit is energised; the first current triggers.
+    pub arm: Vec<String>,
+    /// `ready:` query answered 1 once the block is complete.
+    pub ready: Option<String>,
+    /// `ask:` query answered by the block.
+    pub ask: String,
+    /// `gives:` voltage and current, in the order in which each pair of the block has them.
+    pub gives: Vec<Reading>,
+    /// `interval:` from sample to sample.
+    pub interval: SampleInterval,
+    /// `points:` most pairs in a block.
+    pub points: u32,
+    /// `format:` of its numbers.
+    pub format: BlockFormat,
+    /// `scale:` of whole numbers, volts and amperes to a count; absent for other formats.
+    pub scale: Option<(f64, f64)>,
+    /// `reply within:` for the whole block.
+    pub reply_within: Seconds,
+}
+
+/// The time from sample to sample.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[serde(rename_all = "snake_case")]
+pub enum SampleInterval {
+    /// Always the same.
+    Fixed(Seconds),
+    /// Asked for, and answered in seconds.
+    Asked(String),
+}
+
+/// How a block holds its numbers: IEEE 754 and two's complement, or text.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize)]
+#[expect(missing_docs, reason = "the names say it")]
+pub enum BlockFormat {
+    Float32Little,
+    Float32Big,
+    Float64Little,
+    Float64Big,
+    Int16Little,
+    Int16Big,
+    /// Decimal numbers with commas between them, as one line or in a block.
+    Text,
+}
+
+impl BlockFormat {
+    /// Bytes of one number; of text, about.
+    pub fn width(self) -> usize {
+        match self {
+            BlockFormat::Float32Little | BlockFormat::Float32Big => 4,
+            BlockFormat::Float64Little | BlockFormat::Float64Big => 8,
+            BlockFormat::Int16Little | BlockFormat::Int16Big => 2,
+            BlockFormat::Text => 12,
+        }
+    }
+
+    /// Whether its numbers are counts that need a scale.
+    pub fn is_whole(self) -> bool {
+        matches!(self, BlockFormat::Int16Little | BlockFormat::Int16Big)
+    }
+}
+
+impl WaveformQuery {
+    /// About how many bytes the longest block has.
+    pub fn bytes(&self) -> u64 {
+        u64::from(self.points) * (self.gives.len() * self.format.width()) as u64
+    }
 }
 
 /// How messages are set apart on the wire.
@@ -90,6 +186,53 @@ pub struct ReadingQuery {
     pub gives: Vec<Reading>,
 }
 
+/// How a driver tells a temperature.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Thermal {
+    /// The instrument itself converts.
+    Converted,
+    /// A thermocouple's voltage and the temperature of its terminals, in one reply.
+    Thermocouple,
+    /// The resistance of a resistance thermometer.
+    Resistance,
+}
+
+impl Thermal {
+    /// The readings that it takes.
+    pub fn readings(self) -> &'static [Reading] {
+        match self {
+            Thermal::Converted => &[Reading::Temperature],
+            Thermal::Thermocouple => &[Reading::ThermocoupleVoltage, Reading::TerminalTemperature],
+            Thermal::Resistance => &[Reading::Resistance],
+        }
+    }
+
+    /// Whether a sensor of this kind says it.
+    pub fn suits(self, sensor: Sensor) -> bool {
+        match self {
+            Thermal::Converted => true,
+            Thermal::Thermocouple => matches!(sensor, Sensor::Thermocouple { .. }),
+            Thermal::Resistance => matches!(sensor, Sensor::Pt100 { .. }),
+        }
+    }
+
+    /// All the ways that queries tell a temperature in; a good driver has one.
+    pub fn of(queries: &[ReadingQuery]) -> Vec<Thermal> {
+        let all = [
+            Thermal::Converted,
+            Thermal::Thermocouple,
+            Thermal::Resistance,
+        ];
+        let tells = |thermal: &Thermal| {
+            let readings = thermal.readings();
+            queries
+                .iter()
+                .any(|query| readings.iter().all(|reading| query.gives.contains(reading)))
+        };
+        all.into_iter().filter(tells).collect()
+    }
+}
+
 /// Commands that change something; each absent where the instrument can't.
 #[derive(Debug, Clone, PartialEq, Default, Serialize, Deserialize)]
 pub struct Settings {
@@ -131,9 +274,18 @@ pub struct Accuracy {
     pub resolution: f64,
     /// `ranges:` full-scale values, rising, in the reading's base unit; empty: no range term.
     pub ranges: Vec<f64>,
+    /// `correlation:` how far the errors of two channels, or of two values, are one and
+    /// the same, 0 to 1; 0 where nothing is known, which is the safe side for differences.
+    #[serde(default)]
+    pub correlation: f64,
 }
 
 impl Driver {
+    /// How it tells a temperature; nothing where it tells none.
+    pub fn thermal(&self) -> Option<Thermal> {
+        Thermal::of(&self.readings).first().copied()
+    }
+
     /// The accuracy of one reading, where the driver states one.
     pub fn accuracy_of(&self, reading: Reading) -> Option<&Accuracy> {
         self.accuracy.iter().find(|a| a.reading == reading)

@@ -12,6 +12,7 @@ mod render;
 mod scalars;
 pub mod sequence;
 pub mod shipped;
+mod soak;
 mod source;
 mod syntax;
 pub mod virtual_unit;

@@ -1,10 +1,17 @@
 //! Power input bands of IEC 60335-1 clause 10.1, by kind and rating.
 
 use super::sequence::{ApplianceKind, Span};
-use crate::quantity::{Volts, Watts, at_most, near};
+use crate::quantity::{Hertz, Volts, Watts, at_most, near};
 
 /// Where the bands come from, as it is printed beside a limit.
 pub const SOURCE: &str = "IEC 60335-1 clause 10.1";
+
+/// An input is corrected to a plate's voltage up to this share of it; beyond, it is
+/// not judged (house default).
+pub const CORRECTABLE: f64 = 0.06;
+
+/// Half a hertz beside the plate's frequency is the supply's own business.
+const FREQUENCY_WITHIN: f64 = 0.5;
 
 /// A marked voltage range wider than this share of its mean is judged at both ends.
 const WIDE_RANGE: f64 = 0.1;
@@ -39,18 +46,51 @@ pub fn limits(kind: ApplianceKind, rated: Span<Watts>) -> PowerBand {
 pub struct PlatePoint {
     /// The voltage.
     pub voltage: Volts,
+    /// The frequencies at any of which it is judged.
+    pub frequency: Span<Hertz>,
     /// Rated input at it.
     pub rated: Span<Watts>,
 }
 
+impl PlatePoint {
+    /// Whether it is judged at a frequency.
+    pub fn has_frequency(&self, frequency: Hertz) -> bool {
+        let (low, high) = (self.frequency.low.get(), self.frequency.high.get());
+        (low - FREQUENCY_WITHIN..=high + FREQUENCY_WITHIN).contains(&frequency.get())
+    }
+}
+
 /// At which voltages a plate entry is judged: a rated voltage at itself; a range
 /// wider than 10 % of its mean at both ends; a narrower one at its mean, unless
-/// the input is marked for both ends (IEC 60335-1 clause 10.1, from memory).
-pub fn points(voltage: Span<Volts>, power: Span<Watts>) -> Vec<PlatePoint> {
+/// the input is marked for both ends (IEC 60335-1 clause 10.1, from memory). A plate
+/// of 50 Hz to 60 Hz is judged at any of them, where a fan is present at both.
+pub fn points(
+    voltage: Span<Volts>,
+    frequency: Span<Hertz>,
+    power: Span<Watts>,
+    fan: bool,
+) -> Vec<PlatePoint> {
+    let one = |frequency: Hertz| Span {
+        low: frequency,
+        high: frequency,
+    };
+    if fan && !near(frequency.low.get(), frequency.high.get()) {
+        let at = |hertz| at_frequency(voltage, one(hertz), power);
+        return [at(frequency.low), at(frequency.high)].concat();
+    }
+    at_frequency(voltage, frequency, power)
+}
+
+fn at_frequency(
+    voltage: Span<Volts>,
+    frequency: Span<Hertz>,
+    power: Span<Watts>,
+) -> Vec<PlatePoint> {
     let (low, high) = (voltage.low.get(), voltage.high.get());
     let mean = 0.5 * (low + high);
     let whole = |volts: f64| PlatePoint {
         voltage: Volts::of(volts),
+        frequency,
         rated: power,
     };
     if near(low, high) {
@@ -62,6 +102,7 @@ pub fn points(voltage: Span<Volts>, power: Span<Watts>) -> Vec<PlatePoint> {
     }
     let end = |voltage: Volts, rated: Watts| PlatePoint {
         voltage,
+        frequency,
         rated: Span {
             low: rated,
             high: rated,
@@ -158,7 +199,37 @@ mod tests {
             high: Watts::of(power.1),
         };
         let flat = |p: PlatePoint| (p.voltage.get(), p.rated.low.get(), p.rated.high.get());
-        points(voltage, power).into_iter().map(flat).collect()
+        let frequency = Span {
+            low: Hertz::of(50.0),
+            high: Hertz::of(50.0),
+        };
+        points(voltage, frequency, power, true)
+            .into_iter()
+            .map(flat)
+            .collect()
+    }
+
+    #[test]
+    fn a_fan_is_judged_at_both_frequencies_of_its_plate() {
+        let voltage = Span {
+            low: Volts::of(230.0),
+            high: Volts::of(230.0),
+        };
+        let frequency = Span {
+            low: Hertz::of(50.0),
+            high: Hertz::of(60.0),
+        };
+        let power = Span {
+            low: Watts::of(9.0),
+            high: Watts::of(9.0),
+        };
+        let with_fan = points(voltage, frequency, power, true);
+        assert_eq!(with_fan.len(), 2);
+        assert!(with_fan[0].has_frequency(Hertz::of(50.1)));
+        assert!(!with_fan[0].has_frequency(Hertz::of(60.0)));
+        let without = points(voltage, frequency, power, false);
+        assert_eq!(without.len(), 1);
+        assert!(without[0].has_frequency(Hertz::of(60.0)));
     }
 
     // IEC 60335-1 clause 10.1, from memory.

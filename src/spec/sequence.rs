@@ -4,6 +4,7 @@
 use serde::{Deserialize, Serialize};
 
 use super::Located;
+pub use super::soak::{Criterion, CriterionKind, PowerChange, Soak, Soaking};
 use crate::quantity::{Amps, Celsius, Hertz, Kelvins, Ratio, Seconds, Volts, Watts};
 
 /// A whole sequence file.
@@ -38,6 +39,10 @@ pub struct Appliance {
     pub protection_class: ProtectionClass,
     /// `highest ambient:` at which the appliance may be used.
     pub highest_ambient: Celsius,
+    /// `reference ambient:` that the input is referred to (house default 23 °C).
+    pub reference_ambient: Celsius,
+    /// `supply range:` in which the appliance may be used; absent: the plate's.
+    pub supply_range: Option<Located<Span<Volts>>>,
     /// `positions:` of the unit's own switch, off left out, from the lowest input to the highest.
     pub positions: Vec<Located<String>>,
     /// `plate:`
@@ -106,6 +111,28 @@ pub struct ThermalLink {
     pub sits: String,
     /// `measured at:` the link's own body or elsewhere.
     pub measured_at: MeasuredAt,
+    /// `ambient effect:` how far the link follows the room; absent: 1 K per K.
+    pub ambient_effect: Option<AmbientEffect>,
+}
+
+/// How far the link's temperature follows the room's, where it was measured.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct AmbientEffect {
+    /// `value:` kelvins per kelvin.
+    pub value: Ratio,
+    /// `U:` its expanded uncertainty (k = 2).
+    pub expanded: Ratio,
+    /// `source:` who measured it.
+    pub source: String,
+}
+
+/// How much hotter a link's body is than its surroundings by its own current.
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+pub struct SelfHeating {
+    /// `rise:` in kelvins
+    pub rise: Kelvins,
+    /// `at:` this current; it goes with the square (I2 Rth).
+    pub at: Amps,
 }
 
 /// Where the temperature that is judged against the link is measured.
@@ -121,6 +148,17 @@ pub enum MeasuredAt {
         allowance: Option<Kelvins>,
         /// `allowance source:` who says so.
         source: Option<String>,
+        /// `self-heating:` by the unit's own current.
+        #[serde(default)]
+        self_heating: Option<SelfHeating>,
+    },
+    /// Only the outside can be reached: the rules for the link are replaced by a house
+    /// limit for that place, which says that the link was not measured.
+    OutsideOnly {
+        /// `outside only:` where, in words.
+        place: String,
+        /// `house limit:` for it.
+        limit: Celsius,
     },
 }
 
@@ -154,6 +192,8 @@ pub struct RoleNeed {
     pub name: Located<String>,
     /// What kind of instrument fills it.
     pub kind: RoleKind,
+    /// `at:` where a temperature is measured, in words.
+    pub place: Option<String>,
 }
 
 /// Kinds of instrument that a role needs.
@@ -319,48 +359,9 @@ pub struct Timed {
     pub length: Seconds,
     /// `every:` polling interval.
     pub every: Seconds,
-}
-
-/// Staying energised until settled.
-#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
-pub struct Soak {
-    /// `at least:` (house default 10 min).
-    pub at_least: Seconds,
-    /// `at most:`
-    pub at_most: Seconds,
-    /// `every:` polling interval.
-    pub every: Seconds,
-    /// `until:`
-    pub until: Criterion,
-}
-
-/// When a soak counts as settled: every stated change is within its limit.
-#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
-pub struct Criterion {
-    /// `criterion:`
-    pub kind: CriterionKind,
-    /// `power change:` of the mean power; per hour where the criterion is a slope.
-    pub power_change: Option<Ratio>,
-    /// `temperature change:` of the body's rise over ambient; per hour where the criterion is a slope.
-    pub temperature_change: Option<Kelvins>,
-}
-
-/// Published ways to call a quantity steady.
-#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
-pub enum CriterionKind {
-    /// `slope`: regression over a trailing window, its confidence bound within the limit.
-    Slope {
-        /// `window:`
-        window: Seconds,
-    },
-    /// `three readings`: 10 % of the elapsed time apart, at least 5 min, without change
-    /// (UL 1278 39.1.8 in a restatement).
-    ThreeReadings,
-    /// `change within`: largest change within an interval.
-    ChangeWithin {
-        /// `interval:`
-        interval: Seconds,
-    },
+    /// `waveform: yes` of an `inrush`: a block of voltage and current is taken too.
+    #[serde(default, skip_serializing_if = "std::ops::Not::not")]
+    pub waveform: bool,
 }
 
 /// Running with a named fault.
@@ -404,6 +405,43 @@ pub struct Rule {
     pub condition: Option<Located<String>>,
     /// `source:` of its limits; absent: the standard that the rule names, or `house limit`.
     pub source: Option<String>,
+    /// `process:` what units of the appliance are known to spread by; the risks of the
+    /// decision are then said beside it.
+    pub process: Option<ProcessSpread>,
+    /// `cycling:` which input of a cycling load a power rule compares.
+    pub cycling: CyclingRule,
+}
+
+/// How a quantity spreads over the units of an appliance (a normal distribution).
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+pub struct ProcessSpread {
+    /// `mean:` base unit of the rule's quantity.
+    pub mean: f64,
+    /// `spread:` standard deviation, base unit.
+    pub spread: f64,
+}
+
+/// Which input of a cycling load is judged.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Default, Serialize, Deserialize)]
+#[serde(rename_all = "snake_case")]
+pub enum CyclingRule {
+    /// `on-state`: while it is on.
+    #[default]
+    OnState,
+    /// `representative period`: where the maximum exceeds twice the mean, the value
+    /// exceeded for more than 10 % of the period; else the mean (IEC 60335-1 clause
+    /// 10.1, from memory).
+    RepresentativePeriod,
+}
+
+impl CyclingRule {
+    /// The words in YAML.
+    pub fn word(self) -> &'static str {
+        match self {
+            CyclingRule::OnState => "on-state",
+            CyclingRule::RepresentativePeriod => "representative period",
+        }
+    }
 }
 
 /// What a rule compares.
@@ -422,10 +460,36 @@ pub enum RuleKind {
     LinkHolding,
     /// `thermal link: earliest opening` worst body temperature against Tf - 10 K.
     LinkOpening,
-    /// `inrush: {at most}` peak current from a cold start.
+    /// `thermal link: {below Tf}` worst body temperature against a house limit,
+    /// the lower of Th and Tf less this.
+    LinkHouse {
+        /// Kelvins below Tf.
+        below_tf: Kelvins,
+    },
+    /// `thermal link: after opening` body after the link opened, against Tm.
+    LinkMaximum,
+    /// `inrush: {at most}` highest RMS current from a cold start.
     Inrush {
         /// Upper limit.
         at_most: Amps,
+    },
+    /// `inrush: {momentary at most}` highest momentary current from a cold start, of a
+    /// waveform.
+    MomentaryInrush {
+        /// Upper limit.
+        at_most: Amps,
+    },
+    /// `harmonics: class A` of IEC 61000-3-2, of a waveform.
+    HarmonicsClassA,
+    /// `voltage change: {dmax, dc, time above 3.3 %}` on the reference impedance of
+    /// IEC 61000-3-3, of a waveform; at least one is there.
+    VoltageChange {
+        /// Largest relative change.
+        dmax: Option<Ratio>,
+        /// Steady relative change.
+        dc: Option<Ratio>,
+        /// Longest time above 3.3 %.
+        time_above: Option<Seconds>,
     },
     /// `order of positions: rising` the input rises in the declared order.
     PositionOrder,
@@ -441,8 +505,14 @@ pub enum RuleKind {
 /// How a value near a limit is decided.
 #[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
 pub enum Decision {
-    /// `simple`: the value alone.
+    /// The value alone, whatever its uncertainty: findings of the house that compare
+    /// no uncertain value.
     Simple,
+    /// `simple`: the value alone, where U is at most what is stated; else not judged.
+    SimpleUpTo {
+        /// `largest U:` base unit of the rule's quantity.
+        largest: f64,
+    },
     /// `guarded`: guard band of `ratio` times U.
     Guarded {
         /// `guard:` r of r U.

@@ -31,6 +31,8 @@ pub const DRIVERS: &[Shipped] = &[
     shipped!("drivers/scpi-ac-supply.yaml"),
     shipped!("drivers/scpi-power-meter.yaml"),
     shipped!("drivers/scpi-temperature-scanner.yaml"),
+    shipped!("drivers/scpi-thermocouple-scanner.yaml"),
+    shipped!("drivers/scpi-resistance-scanner.yaml"),
     shipped!("drivers/scpi-position-switch.yaml"),
 ];
 

@@ -1,9 +1,11 @@
 //! The bay behind the lines: one specimen, its wiring, and the instruments that
 //! look at it. Everything that happens, happens at a moment and in order.
 
+use super::chance::Chance;
 use super::dialect::{Ask, Knob};
 use super::error_queue::DeviceError;
 use super::instruments::{Effect, Instrument, Look, Toggle, Wiring};
+use super::scope::Taken;
 use super::unit::{Drive, Specimen, State};
 
 /// The shared world of all far sides.
@@ -15,6 +17,9 @@ pub struct Bay {
     pub(super) specimen: Specimen,
     pub(super) wiring: Wiring,
     pub(super) loss_factor: f64,
+    /// Chooses the phase of the mains at each switching on.
+    pub(super) switching: Chance,
+    pub(super) switched_on: u64,
     pub(super) offs: usize,
     /// How far the bay has been followed, microseconds.
     pub(super) now: u64,
@@ -49,6 +54,10 @@ impl Bay {
         let seconds = at as f64 * 1e-6;
         self.specimen.advance(seconds);
         let instrument = &mut self.instruments[number];
+        let joules = match instrument.counts_energy() {
+            true => self.specimen.joules(seconds),
+            false => 0.0,
+        };
         instrument.look = Some(Look {
             tick: at / instrument.interval,
             at: seconds,
@@ -63,6 +72,7 @@ impl Bay {
             } else {
                 0.0
             },
+            watt_hours: joules / 3600.0,
         });
     }
 
@@ -90,18 +100,41 @@ impl Bay {
         if how.in_trouble && matches!(ask, Ask::Set(_) | Ask::On | Ask::Off) {
             instrument.fail(DeviceError::Specific);
         }
-        match instrument.answer(ask, hole, &self.wiring, out) {
+        match instrument.answer(ask, hole, (&self.wiring, now as f64 * 1e-6), out) {
             Effect::Nothing => return,
             Effect::Set(Knob::Voltage, volts) => self.wiring.volts = volts,
             Effect::Set(Knob::Frequency, hertz) => self.wiring.hertz = hertz,
             Effect::Set(Knob::Position, position) => self.wiring.position = position as usize,
-            Effect::Output(Toggle::On) => self.wiring.on = true,
+            Effect::Output(Toggle::On) if !self.wiring.on => return self.switch_on(),
+            Effect::Output(Toggle::On) => {}
             Effect::Output(Toggle::Off) => {
                 self.wiring.on = false;
                 self.offs += 1;
+                let now = self.now as f64 * 1e-6;
+                for instrument in &mut self.instruments {
+                    instrument.scope.switched_off(now);
+                }
             }
         }
         self.redrive();
+    }
+
+    /// The output goes on, at any phase of the mains; whoever is armed takes it down.
+    fn switch_on(&mut self) {
+        self.wiring.on = true;
+        self.redrive();
+        let turns = 0.5 * (1.0 + self.switching.even(self.switched_on));
+        self.switched_on += 1;
+        let taken = Taken {
+            specimen: self.specimen.clone(),
+            at: self.now as f64 * 1e-6,
+            hertz: self.wiring.hertz,
+            turns,
+            off: None,
+        };
+        for instrument in &mut self.instruments {
+            instrument.scope.switched_on(&taken);
+        }
     }
 
     /// Tells the specimen what the wiring and the condition are now.

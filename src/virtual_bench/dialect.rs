@@ -4,7 +4,7 @@
 //! against, so the simulated instrument speaks exactly what the driver file says.
 
 use crate::quantity::Reading;
-use crate::spec::driver::{Driver, Setting};
+use crate::spec::driver::{Driver, SampleInterval, Setting};
 
 /// What a message asks for.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
@@ -29,6 +29,14 @@ pub enum Ask {
     Off,
     /// Is the output on?
     OutputState,
+    /// Take a waveform at the next switching on.
+    Arm,
+    /// Is it taken?
+    WaveformReady,
+    /// Its interval in seconds.
+    WaveformInterval,
+    /// The waveform itself.
+    Waveform,
 }
 
 /// What can be set.
@@ -86,6 +94,7 @@ impl Dialect {
             });
         }
         dialect.learn_settings(driver);
+        dialect.learn_waveform(driver);
         dialect.learn(&driver.identity.ask, Ask::Identity);
         if let Some(errors) = &driver.errors {
             dialect.learn(errors, Ask::NextError);
@@ -124,6 +133,24 @@ impl Dialect {
                 self.learn(text, ask);
             }
         }
+    }
+
+    fn learn_waveform(&mut self, driver: &Driver) {
+        let Some(waveform) = &driver.waveform else {
+            return;
+        };
+        // The last command of several arms; those before it set up.
+        for (n, command) in waveform.arm.iter().enumerate() {
+            let arms = n + 1 == waveform.arm.len();
+            self.learn(command, if arms { Ask::Arm } else { Ask::Accept });
+        }
+        if let Some(ready) = &waveform.ready {
+            self.learn(ready, Ask::WaveformReady);
+        }
+        if let SampleInterval::Asked(interval) = &waveform.interval {
+            self.learn(interval, Ask::WaveformInterval);
+        }
+        self.learn(&waveform.ask, Ask::Waveform);
     }
 
     fn learn(&mut self, text: &str, ask: Ask) {

@@ -38,6 +38,8 @@ pub enum Fault {
     SensorReversed(Onset),
     /// A sensor of another type: its rise reads 0.78 of what it is; hits `body`.
     SensorWrongType(Onset),
+    /// Its current input loses the DC part; hits the power meter.
+    MeterLosesDc(Onset),
     /// No reply comes; hits the power meter.
     NoReply(Onset),
     /// Replies come after the driver's time has passed; hits the power meter.
@@ -79,7 +81,7 @@ pub enum ParseFaultError {
 
 impl Fault {
     /// Every name.
-    pub const ALL: [&'static str; 20] = [
+    pub const ALL: [&'static str; 21] = [
         "dead-unit",
         "link-opens-mid-soak",
         "wrong-element",
@@ -100,6 +102,7 @@ impl Fault {
         "disconnect",
         "wrong-identity",
         "error-queue",
+        "meter-loses-dc",
     ];
 
     /// Its name, as it is parsed.
@@ -119,6 +122,7 @@ impl Fault {
             | Fault::SwappedPositions
             | Fault::ShortedElement => None,
             Fault::SensorFallenOff(onset)
+            | Fault::MeterLosesDc(onset)
             | Fault::SwappedChannels(onset)
             | Fault::SensorOpen(onset)
             | Fault::SensorReversed(onset)
@@ -155,6 +159,7 @@ impl Fault {
             Fault::Disconnect(_) => 17,
             Fault::WrongIdentity(_) => 18,
             Fault::ErrorQueue(_) => 19,
+            Fault::MeterLosesDc(_) => 20,
         }
     }
 
@@ -180,6 +185,7 @@ impl Fault {
             "disconnect" => Fault::Disconnect(onset),
             "wrong-identity" => Fault::WrongIdentity(onset),
             "error-queue" => Fault::ErrorQueue(onset),
+            "meter-loses-dc" => Fault::MeterLosesDc(onset),
             _ => return None,
         };
         Some(fault)

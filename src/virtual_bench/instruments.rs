@@ -6,30 +6,17 @@
 //! seed, channel and update tick.
 
 use super::Connection;
-use super::chance::Chance;
+use super::dial::{Dial, NO_VALUE};
 use super::dialect::{Ask, Dialect, Display, Knob};
 use super::error_queue::{DeviceError, ErrorQueue};
 use super::faults::{Fault, Onset};
+use super::probe::{self, Probe};
+use super::scope::{Scope, interval_s, write_block};
 use super::unit::State;
 use crate::quantity::{Reading, shortest};
-use crate::spec::driver::{Accuracy, Driver};
+use crate::spec::driver::{Coupling, Driver};
 use crate::spec::sequence::RoleKind;
 
-/// What SCPI-1999 sends for "infinity": the value is above the highest range.
-const OVERLOAD: &[u8] = b"9.9E37";
-/// What SCPI-1999 sends for "not a number".
-const NO_VALUE: &[u8] = b"9.91E37";
-/// Noise, as a share of the accuracy's half-width and of the resolution (house values).
-const NOISE: (f64, f64) = (0.03, 0.3);
-/// A surface sensor reads up to this share of its rise too low (house value).
-const CONTACT: f64 = 0.01;
-/// A sensor in the air beside the body still feels this share of its rise.
-const FALLEN_SHARE: f64 = 0.05;
-/// Time constant of a sensor that has just come off, s.
-const FALLEN_LAG: f64 = 15.0;
-/// A type K couple on an input set to type J (41 against 52 uV/K near room
-/// temperature, from memory).
-const WRONG_TYPE: f64 = 0.78;
 /// Voltages and frequencies that a simulated supply accepts.
 const VOLTS: std::ops::RangeInclusive<f64> = 0.0..=300.0;
 const HERTZ: std::ops::RangeInclusive<f64> = 40.0..=70.0;
@@ -80,6 +67,8 @@ pub struct Look {
     pub volts: f64,
     /// Frequency, Hz; 0 while the output is off.
     pub hertz: f64,
+    /// Energy drawn from the beginning on, Wh; only for an instrument that counts it.
+    pub watt_hours: f64,
 }
 
 /// One simulated instrument.
@@ -97,6 +86,8 @@ pub struct Instrument {
     pub interval: u64,
     /// The latest look.
     pub look: Option<Look>,
+    /// What it takes a waveform with.
+    pub scope: Scope,
     identity: Vec<u8>,
     impostor: Vec<u8>,
     dialect: Dialect,
@@ -104,46 +95,8 @@ pub struct Instrument {
     dials: Vec<Dial>,
     probes: Vec<Probe>,
     setting: Display,
-}
-
-/// How one reading is shown.
-#[derive(Debug, Clone)]
-struct Dial {
-    reading: Reading,
-    accuracy: Option<Accuracy>,
-    display: Display,
-    gain: f64,
-    offset: f64,
-    noise: Chance,
-}
-
-/// A temperature sensor on a channel.
-#[derive(Debug, Clone)]
-struct Probe {
-    channel: Option<u32>,
-    place: SensorPlace,
-    dial: Dial,
-    contact: f64,
-    troubles: Vec<(Trouble, f64)>,
-}
-
-/// Where a sensor sits.
-#[derive(Debug, Clone, Copy, PartialEq, Eq)]
-enum SensorPlace {
-    Block,
-    Link,
-    Enclosure,
-    Room,
-}
-
-/// What is wrong with a sensor.
-#[derive(Debug, Clone, Copy, PartialEq)]
-enum Trouble {
-    Fallen,
-    Elsewhere(SensorPlace),
-    Open,
-    Reversed,
-    WrongType,
+    /// From when on its current input loses the DC part, seconds of the run.
+    loses_dc_from: f64,
 }
 
 impl Instrument {
@@ -159,13 +112,11 @@ impl Instrument {
         let driver = &first.driver;
         let dial =
             |reading: Reading, channel: Option<u32>| Dial::new(first, reading, channel, seed);
-        let electrical = Reading::ALL
-            .into_iter()
-            .filter(|r| *r != Reading::Temperature);
+        let of_its_own = Reading::ALL.into_iter().filter(|r| !probe::reads(*r));
         let probes = all
             .iter()
             .filter(|c| c.kind == RoleKind::Temperature)
-            .map(|c| Probe::new(c, dial(Reading::Temperature, c.channel), seed, faults))
+            .map(|c| Probe::new(c, seed, faults))
             .collect();
         Self {
             name: first.instrument.clone(),
@@ -173,15 +124,26 @@ impl Instrument {
             roles: all.iter().map(|c| (c.role.clone(), c.kind)).collect(),
             interval: driver.update_interval.as_micros().max(1000),
             look: None,
+            scope: Scope::default(),
+            loses_dc_from: match driver.coupling {
+                Coupling::Ac => 0.0,
+                Coupling::Dc => loses_dc_from(faults, all),
+            },
             identity: identity_reply(&first.identity, driver.identity.fields, speed),
             impostor: identity_reply("RATEPLATE,VIRTUAL-STRANGER", driver.identity.fields, speed),
             dialect: Dialect::of(driver),
             errors: ErrorQueue::default(),
-            dials: electrical.map(|reading| dial(reading, None)).collect(),
+            dials: of_its_own.map(|reading| dial(reading, None)).collect(),
             probes,
             setting: Display::of(0.001),
             driver: driver.clone(),
         }
+    }
+
+    /// Whether its driver asks for an energy counter.
+    pub fn counts_energy(&self) -> bool {
+        let queries = &self.driver.readings;
+        queries.iter().any(|q| q.gives.contains(&Reading::Energy))
     }
 
     /// Adds an error of the instrument's own.
@@ -199,7 +161,7 @@ impl Instrument {
         &mut self,
         ask: Ask,
         hole: Option<&[u8]>,
-        wiring: &Wiring,
+        (wiring, now): (&Wiring, f64),
         out: &mut Vec<u8>,
     ) -> Effect {
         match ask {
@@ -215,6 +177,15 @@ impl Instrument {
             Ask::On => return Effect::Output(Toggle::On),
             Ask::Off => return Effect::Output(Toggle::Off),
             Ask::OutputState => out.push(if wiring.on { b'1' } else { b'0' }),
+            Ask::Arm => self.scope.arm(),
+            Ask::WaveformReady => {
+                let ready = self.scope.is_ready(&self.driver, now);
+                out.push(if ready { b'1' } else { b'0' });
+            }
+            Ask::WaveformInterval => {
+                out.extend_from_slice(shortest(interval_s(&self.driver)).as_bytes());
+            }
+            Ask::Waveform => self.waveform(out),
         }
         Effect::Nothing
     }
@@ -246,6 +217,26 @@ impl Instrument {
         }
     }
 
+    /// The block, or an error where none was taken.
+    fn waveform(&mut self, out: &mut Vec<u8>) {
+        let truth = self.scope.samples(&self.driver);
+        let (Some(query), Some(mut truth)) = (&self.driver.waveform, truth) else {
+            self.errors.push(DeviceError::Specific);
+            out.extend_from_slice(NO_VALUE);
+            return;
+        };
+        if self.scope.taken_at() >= self.loses_dc_from {
+            truth.lose_dc();
+        }
+        let shown = |reading: Reading, truth: &[f64]| {
+            let dial = self.dials.iter().find(|d| d.reading == reading);
+            dial.map_or_else(|| truth.to_vec(), |dial| dial.block(truth))
+        };
+        let volts = shown(Reading::Voltage, &truth.volts);
+        let amps = shown(Reading::Current, &truth.amps);
+        write_block(query, &volts, &amps, out);
+    }
+
     fn read(&mut self, number: usize, hole: Option<&[u8]>, out: &mut Vec<u8>) {
         let Some(shape) = self.dialect.reply(number) else {
             return;
@@ -264,14 +255,19 @@ impl Instrument {
             if place > 0 {
                 out.push(shape.separator);
             }
-            if *reading == Reading::Temperature {
-                match self.probes.iter().find(|p| p.channel == channel) {
-                    Some(probe) => probe.write(&look, out),
-                    // An input without a sensor is open.
+            if probe::reads(*reading) {
+                let probe = self.probes.iter().find(|p| p.channel == channel);
+                // An input without a sensor is open.
+                match probe.and_then(|probe| probe.dial(*reading, &look)) {
+                    Some((dial, truth)) => dial.write(truth, look.tick, out),
                     None => out.extend_from_slice(NO_VALUE),
                 }
             } else if let Some(dial) = self.dials.iter().find(|d| d.reading == *reading) {
-                dial.write(electrical(*reading, &look), look.tick, out);
+                let mut truth = seen(*reading, &look);
+                if look.at >= self.loses_dc_from {
+                    truth = without_dc(*reading, &look).or(truth);
+                }
+                dial.write(truth, look.tick, out);
             }
         }
     }
@@ -282,8 +278,8 @@ fn whole_number(digits: &[u8]) -> Option<u32> {
     std::str::from_utf8(digits).ok()?.trim().parse().ok()
 }
 
-/// The true value of an electrical reading; nothing where there is none.
-fn electrical(reading: Reading, look: &Look) -> Option<f64> {
+/// The true value of what is no sensor's; nothing where there is none.
+fn seen(reading: Reading, look: &Look) -> Option<f64> {
     let apparent = look.volts * look.state.amps;
     match reading {
         Reading::Voltage => Some(look.volts),
@@ -291,142 +287,43 @@ fn electrical(reading: Reading, look: &Look) -> Option<f64> {
         Reading::Power => Some(look.state.watts),
         Reading::PowerFactor => (apparent > 0.0).then(|| look.state.watts / apparent),
         Reading::Frequency => Some(look.hertz),
-        Reading::Temperature => None,
+        Reading::Energy => Some(look.watt_hours),
+        Reading::TerminalTemperature => Some(probe::terminals(look)),
+        Reading::Temperature | Reading::ThermocoupleVoltage | Reading::Resistance => None,
     }
 }
 
-impl Dial {
-    fn new(connection: &Connection, reading: Reading, channel: Option<u32>, seed: u64) -> Self {
-        let accuracy = connection.driver.accuracy_of(reading).cloned();
-        let name = format!(
-            "{} {} {}",
-            connection.instrument,
-            reading.word(),
-            channel.unwrap_or(0)
-        );
-        let errors = Chance::of(seed, &name);
-        Self {
-            reading,
-            display: Display::of(accuracy.as_ref().map_or(0.0, |a| a.resolution)),
-            accuracy,
-            gain: errors.even(0),
-            offset: errors.even(1),
-            noise: Chance::of(seed, &format!("{name} noise")),
+/// What an AC-coupled current input makes of current and power factor; its power is
+/// right under a sine voltage, and so is everything else.
+fn without_dc(reading: Reading, look: &Look) -> Option<f64> {
+    let State { amps, dc_amps, .. } = look.state;
+    let amps = libm::sqrt((amps * amps - dc_amps * dc_amps).max(0.0));
+    match reading {
+        Reading::Current => Some(amps),
+        Reading::PowerFactor => {
+            let apparent = look.volts * amps;
+            (apparent > 0.0).then(|| look.state.watts / apparent)
         }
-    }
-
-    fn write(&self, truth: Option<f64>, tick: u64, out: &mut Vec<u8>) {
-        let Some(truth) = truth.filter(|t| t.is_finite()) else {
-            out.extend_from_slice(NO_VALUE);
-            return;
-        };
-        let shown = self.shown(truth, tick);
-        let top = self.accuracy.as_ref().and_then(|a| a.ranges.last());
-        if top.is_some_and(|top| shown.abs() > *top) {
-            out.extend_from_slice(OVERLOAD);
-        } else {
-            self.display.write(shown, out);
-        }
-    }
-
-    /// What is shown of a true value: within the stated accuracy, plus noise.
-    fn shown(&self, truth: f64, tick: u64) -> f64 {
-        let Some(accuracy) = &self.accuracy else {
-            return truth;
-        };
-        let range = accuracy.range_for(truth).unwrap_or(0.0);
-        let share = accuracy.of_reading * truth;
-        let constant = accuracy.of_range * range + accuracy.floor;
-        let noise = NOISE.0 * (share.abs() + constant) + NOISE.1 * accuracy.resolution;
-        truth + self.gain * share + self.offset * constant + noise * self.noise.bell(tick)
+        _ => None,
     }
 }
 
-impl Probe {
-    fn new(connection: &Connection, dial: Dial, seed: u64, faults: &[Fault]) -> Self {
-        let name = format!("{} contact", connection.role);
-        let place = SensorPlace::of(&connection.role);
-        let contact = 0.5 * CONTACT * (1.0 + Chance::of(seed, &name).even(0));
-        let troubles = faults
-            .iter()
-            .filter_map(|fault| trouble(fault, &connection.role, place))
-            .collect();
-        Self {
-            channel: connection.channel,
-            place,
-            dial,
-            contact: if place == SensorPlace::Room {
-                0.0
-            } else {
-                contact
-            },
-            troubles,
-        }
-    }
-
-    fn write(&self, look: &Look, out: &mut Vec<u8>) {
-        let room = look.state.ambient;
-        let mut rise = (self.place.truth(&look.state) - room) * (1.0 - self.contact);
-        for (trouble, from) in &self.troubles {
-            let since = look.at - from;
-            if since < 0.0 {
-                continue;
-            }
-            match trouble {
-                Trouble::Fallen => {
-                    let left = libm::exp(-since / FALLEN_LAG);
-                    rise *= FALLEN_SHARE + (1.0 - FALLEN_SHARE) * left;
-                }
-                Trouble::Elsewhere(place) => rise = place.truth(&look.state) - room,
-                Trouble::Open => {
-                    out.extend_from_slice(NO_VALUE);
-                    return;
-                }
-                Trouble::Reversed => rise = -rise,
-                Trouble::WrongType => rise *= WRONG_TYPE,
-            }
-        }
-        self.dial.write(Some(room + rise), look.tick, out);
-    }
-}
-
-impl SensorPlace {
-    /// Where the sensor of a role sits: other names than the known ones count as enclosure.
-    fn of(role: &str) -> Self {
-        match role {
-            "body" => SensorPlace::Link,
-            "ambient" => SensorPlace::Room,
-            "block" => SensorPlace::Block,
-            _ => SensorPlace::Enclosure,
-        }
-    }
-
-    fn truth(self, state: &State) -> f64 {
-        match self {
-            SensorPlace::Block => state.block,
-            SensorPlace::Link => state.link,
-            SensorPlace::Enclosure => state.enclosure,
-            SensorPlace::Room => state.ambient,
-        }
-    }
-}
-
-/// What a fault does to the sensor of `role`, and from when on in seconds.
-fn trouble(fault: &Fault, role: &str, place: SensorPlace) -> Option<(Trouble, f64)> {
-    let hits = |onset: &Onset| onset.role.as_deref().unwrap_or("body") == role;
-    let trouble = match fault {
-        Fault::SensorFallenOff(onset) if hits(onset) => Trouble::Fallen,
-        Fault::SensorOpen(onset) if hits(onset) => Trouble::Open,
-        Fault::SensorReversed(onset) if hits(onset) => Trouble::Reversed,
-        Fault::SensorWrongType(onset) if hits(onset) => Trouble::WrongType,
-        Fault::SwappedChannels(_) => match place {
-            SensorPlace::Link => Trouble::Elsewhere(SensorPlace::Room),
-            SensorPlace::Room => Trouble::Elsewhere(SensorPlace::Link),
-            _ => return None,
-        },
-        _ => return None,
+/// From when on the instrument of these connections loses the DC part, seconds; never
+/// is infinity.
+fn loses_dc_from(faults: &[Fault], all: &[&Connection]) -> f64 {
+    let from = faults.iter().filter_map(|fault| match fault {
+        Fault::MeterLosesDc(onset) => Some(onset),
+        _ => None,
+    });
+    let hits = |onset: &&Onset| {
+        all.iter().any(|c| match &onset.role {
+            Some(role) => c.role == *role,
+            None => c.kind == RoleKind::PowerMeter,
+        })
     };
-    Some((trouble, fault.onset()?.from.as_secs_f64()))
+    from.filter(hits)
+        .map(|onset| onset.from.as_secs_f64())
+        .fold(f64::INFINITY, f64::min)
 }
 
 /// The identity reply: what the bench file expects, completed to the driver's

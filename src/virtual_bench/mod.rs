@@ -7,6 +7,7 @@
 
 mod bay;
 mod chance;
+mod dial;
 mod dialect;
 mod error_queue;
 mod faults;
@@ -14,7 +15,9 @@ mod hands;
 mod instruments;
 mod line;
 pub mod ode;
+mod probe;
 pub mod ptc;
+mod scope;
 #[cfg(unix)]
 pub mod terminals;
 mod unit;
@@ -28,11 +31,13 @@ use std::sync::{Arc, Mutex, MutexGuard, PoisonError};
 
 use crate::bench::FarSide;
 use crate::quantity::{Amps, Celsius, Moment, Watts};
+use crate::sensor::Sensor;
 use crate::spec::driver::Driver;
 use crate::spec::sequence::RoleKind;
 use crate::spec::virtual_unit::VirtualUnit;
 
 use bay::Bay;
+use chance::Chance;
 pub use faults::{Fault, Onset, ParseFaultError};
 pub use hands::Hands;
 use instruments::{Instrument, Wiring};
@@ -57,6 +62,8 @@ pub struct Connection {
     pub kind: RoleKind,
     /// The channel, where the instrument has channels.
     pub channel: Option<u32>,
+    /// What hangs on it, where the bench file says so. This one deviates within its class.
+    pub sensor: Option<Sensor>,
 }
 
 /// What stands on the virtual bench.
@@ -169,6 +176,8 @@ impl VirtualBench {
             instruments,
             specimen,
             loss_factor: 1.0,
+            switching: Chance::of(staging.seed, "switching"),
+            switched_on: 0,
             offs: 0,
             now: 0,
         };

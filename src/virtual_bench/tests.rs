@@ -1,7 +1,8 @@
 //! The room's tests over whole benches: messages in, replies out.
 
 use super::*;
-use crate::quantity::{Moment, Seconds};
+use crate::quantity::{Moment, Reading, Readings, Seconds};
+use crate::sensor::{Couple, CoupleClass, PlatinumClass, temperature_of, tolerance};
 use crate::spec::shipped::{DRIVERS, VIRTUAL_BENCH, VIRTUAL_UNITS};
 use crate::spec::{load_bench, load_driver, load_virtual_unit};
 
@@ -38,6 +39,7 @@ pub(super) fn staging_of(unit: VirtualUnit) -> Staging {
             role: role.role.value.clone(),
             kind: driver.fills[0],
             channel: role.channel.as_ref().map(|c| c.value),
+            sensor: role.sensor.as_ref().map(|s| s.value),
         }
     });
     Staging {
@@ -436,4 +438,287 @@ fn a_dead_line_forgets_what_was_on_its_way() {
     let mut out = Vec::new();
     far.deliver(at(2.0), &mut out);
     assert!(out.is_empty() && far.due().is_none());
+}
+
+/// The dryer with a scanner of another driver, and a sensor on each of its channels.
+fn raw_dryer(driver: &str, sensor: Sensor, faults: &[&str]) -> Staging {
+    let mut staging = dryer(faults);
+    let shipped = DRIVERS.iter().find(|s| s.path.contains(driver)).unwrap();
+    let driver = load_driver(shipped.path, shipped.text.as_bytes()).value;
+    let scanned = staging.connections.iter_mut();
+    for connection in scanned.filter(|c| c.kind == RoleKind::Temperature) {
+        connection.driver = driver.clone().unwrap();
+        connection.sensor = Some(sensor);
+    }
+    staging
+}
+
+const K: Sensor = Sensor::Thermocouple {
+    couple: Couple::K,
+    class: CoupleClass::One,
+};
+const PT: Sensor = Sensor::Pt100 {
+    class: PlatinumClass::B,
+};
+
+/// What the raw scanner says of a channel in the high position at 20 min.
+fn raw_reply(driver: &str, sensor: Sensor, faults: &[&str], channel: u32) -> String {
+    let bench = energised(raw_dryer(driver, sensor, faults), 2);
+    let line = match sensor {
+        Sensor::Thermocouple { .. } => format!("MEAS:VOLT:DC? (@{channel});:MEAS:TEMP:RJUN?"),
+        Sensor::Pt100 { .. } => format!("MEAS:FRES? (@{channel})"),
+    };
+    reply(&mut *bench.far_side("scanner line"), &line, at(1200.0))
+}
+
+fn degrees(sensor: Sensor, reply: &str) -> Option<f64> {
+    let mut raw = Readings::NONE;
+    let kinds = match sensor {
+        Sensor::Thermocouple { .. } => {
+            &[Reading::ThermocoupleVoltage, Reading::TerminalTemperature][..]
+        }
+        Sensor::Pt100 { .. } => &[Reading::Resistance],
+    };
+    for (kind, value) in kinds.iter().zip(fields(reply)) {
+        raw.set(*kind, value);
+    }
+    temperature_of(sensor, &raw).map(Celsius::get)
+}
+
+#[test]
+fn raw_scanners_say_volts_and_ohms_that_lead_back_to_the_truth() {
+    let truth = energised(dryer(&[]), 2).truth(at(1200.0));
+    for (driver, sensor) in [("thermocouple", K), ("resistance", PT)] {
+        for (channel, truth) in [(1, truth.link), (2, truth.ambient), (3, truth.enclosure)] {
+            let said = raw_reply(driver, sensor, &[], channel);
+            let found = degrees(sensor, &said).unwrap();
+            // The class's tolerance, 0.6 K for the scanner, 1 % of the rise for contact.
+            let contact = 0.01 * (truth.get() - 23.0).abs();
+            let wide = tolerance(sensor, truth).unwrap().get() + 0.6 + contact;
+            let off = found - truth.get();
+            assert!(off.abs() <= wide, "{said}: {found} for {truth}");
+            assert!(off != 0.0);
+        }
+    }
+    let couple = fields(&raw_reply("thermocouple", K, &[], 1));
+    assert!((0.001..0.003).contains(&couple[0]), "{couple:?}");
+    // Its own warmth, and half a kelvin of accuracy.
+    assert!((23.0..25.6).contains(&couple[1]), "{couple:?}");
+    assert!((115.0..130.0).contains(&fields(&raw_reply("resistance", PT, &[], 1))[0]));
+}
+
+#[test]
+fn every_channel_has_the_same_terminals_and_they_drift_slowly() {
+    let bench = VirtualBench::new(raw_dryer("thermocouple", K, &[])).unwrap();
+    let mut far = bench.far_side("scanner line");
+    let mut at_terminals = |channel: u32, now: f64| {
+        let line = format!("MEAS:VOLT:DC? (@{channel});:MEAS:TEMP:RJUN?");
+        fields(&reply(&mut *far, &line, at(now)))[1]
+    };
+    let first = at_terminals(1, 0.1);
+    assert_eq!(first, at_terminals(2, 0.2));
+    let later = at_terminals(1, 3600.0);
+    assert!((1.0..2.5).contains(&(later - first)), "{first} {later}");
+}
+
+#[test]
+fn faults_of_a_raw_sensor_act_on_what_reaches_the_terminals() {
+    let good = degrees(K, &raw_reply("thermocouple", K, &[], 1)).unwrap();
+    let reversed = raw_reply("thermocouple", K, &["sensor-reversed"], 1);
+    assert!(fields(&reversed)[0] < 0.0, "{reversed}");
+    // The same voltage the other way round, but for the scanner's noise and offset: so
+    // far below the terminals as it was above, or some more, since K weakens there.
+    let volts = fields(&raw_reply("thermocouple", K, &[], 1))[0];
+    assert!((fields(&reversed)[0] + volts).abs() < 1e-5, "{reversed}");
+    let shown = degrees(K, &reversed).unwrap();
+    assert!(
+        (shown - (2.0 * fields(&reversed)[1] - good)).abs() < 3.0,
+        "{shown}"
+    );
+    // Type J gives 5.269 mV at 100 degC where type K gives 4.096 (NIST SRD 60).
+    let other = degrees(K, &raw_reply("thermocouple", K, &["sensor-wrong-type"], 1)).unwrap();
+    assert!(
+        ((other - 23.0) / (good - 23.0) - 1.28).abs() < 0.05,
+        "{other}"
+    );
+    for (driver, sensor) in [("thermocouple", K), ("resistance", PT)] {
+        let open = raw_reply(driver, sensor, &["sensor-open"], 1);
+        assert!(open.starts_with("9.91E37"), "{open}");
+        assert!(!raw_reply(driver, sensor, &["sensor-open"], 2).starts_with("9.91"));
+    }
+    // A resistance has no sign; ten times too much of it is beyond any Pt100.
+    let good = raw_reply("resistance", PT, &[], 1);
+    assert_eq!(raw_reply("resistance", PT, &["sensor-reversed"], 1), good);
+    let other = raw_reply("resistance", PT, &["sensor-wrong-type"], 1);
+    assert_eq!(degrees(PT, &other), None, "{other}");
+}
+
+#[test]
+fn a_named_sensor_deviates_within_its_class_also_where_the_instrument_converts() {
+    let plain = shown(&energised(dryer(&[]), 2), 1200.0).0;
+    let mut seen = Vec::new();
+    for class in [CoupleClass::One, CoupleClass::Two] {
+        let mut staging = dryer(&[]);
+        staging.connections.iter_mut().for_each(|c| {
+            c.sensor = Some(Sensor::Thermocouple {
+                couple: Couple::K,
+                class,
+            });
+        });
+        let off = shown(&energised(staging, 2), 1200.0).0 - plain;
+        seen.push(off);
+    }
+    // The same specimen lies at the same place within either class: 1.5 and 2.5 K.
+    assert!(seen[0] != 0.0 && seen[0].abs() <= 1.52, "{seen:?}");
+    assert!((seen[1] / seen[0] - 2.5 / 1.5).abs() < 0.1, "{seen:?}");
+}
+
+// Settled at 9 W or so: an hour more counts as much as the power says.
+#[test]
+fn a_meter_with_an_energy_counter_counts_what_was_drawn() {
+    let mut staging = dryer(&[]);
+    for connection in &mut staging.connections {
+        if connection.kind == RoleKind::PowerMeter {
+            connection
+                .driver
+                .readings
+                .push(crate::spec::driver::ReadingQuery {
+                    ask: ":MEAS:ENER?".to_owned(),
+                    gives: vec![Reading::Energy],
+                });
+        }
+    }
+    let bench = energised(staging, 2);
+    let mut meter = bench.far_side("meter line");
+    let counted: Vec<f64> = [0.0, 3600.0, 7200.0, 9000.0]
+        .into_iter()
+        .map(|t| fields(&reply(&mut *meter, ":MEAS:ENER?", at(t)))[0])
+        .collect();
+    let watts = fields(&reply(&mut *meter, METER, at(9001.0)))[2];
+    assert_eq!(counted[0], 0.0);
+    let hour = counted[2] - counted[1];
+    assert!((hour - watts).abs() < 0.02 * watts, "{counted:?} {watts}");
+    let half = counted[3] - counted[2];
+    assert!((half - 0.5 * hour).abs() < 0.01 * hour, "{counted:?}");
+    // The first hour holds the inrush too.
+    assert!(counted[1] > hour, "{counted:?}");
+}
+
+// ---- waveforms ----
+
+const BOOTS: usize = 1;
+
+/// The boot warmer, whose low position is fed through a diode.
+fn boots(faults: &[&str]) -> Staging {
+    let shipped = VIRTUAL_UNITS
+        .iter()
+        .find(|file| file.path.contains("boot-warmer"))
+        .unwrap();
+    let unit = load_virtual_unit(shipped.path, shipped.text.as_bytes());
+    let mut staging = staging_of(unit.value.unwrap());
+    staging.faults = faults.iter().map(|f| f.parse().unwrap()).collect();
+    staging
+}
+
+/// Bytes of the reply to a message.
+fn block(far: &mut dyn FarSide, line: &str, now: Moment) -> Vec<u8> {
+    far.receive(format!("{line}\n").as_bytes(), now);
+    let mut out = Vec::new();
+    far.deliver(now + Seconds::of(20.0), &mut out);
+    out
+}
+
+/// Volts and amperes of a switching on in a position, at a seed, fetched 2 s later.
+fn taken(mut staging: Staging, position: usize, seed: u64) -> (Vec<f64>, Vec<f64>) {
+    staging.seed = seed;
+    let bench = VirtualBench::new(staging).unwrap();
+    let mut supply = bench.far_side("supply line");
+    let mut switch = bench.far_side("switch line");
+    let mut meter = bench.far_side("meter line");
+    switch.receive(format!("ROUT:POS {position}\n").as_bytes(), Moment::START);
+    supply.receive(b"SOUR:VOLT 230\n", Moment::START);
+    meter.receive(b":WAV:ARM\n", Moment::START);
+    assert_eq!(block(&mut *meter, ":WAV:READY?", at(0.5)), b"0\n");
+    supply.receive(b"OUTP ON\n", at(1.0));
+    assert_eq!(block(&mut *meter, ":WAV:READY?", at(1.2)), b"0\n");
+    assert_eq!(block(&mut *meter, ":WAV:READY?", at(2.0)), b"1\n");
+    assert_eq!(block(&mut *meter, ":WAV:INT?", at(2.0)), b"0.0002\n");
+    let bytes = block(&mut *meter, ":WAV:DATA?", at(3.0));
+    assert_eq!(&bytes[..7], b"#512000");
+    assert_eq!(bytes.len(), 7 + 12_000 + 1);
+    let numbers: Vec<f64> = bytes[7..12_007]
+        .chunks_exact(4)
+        .map(|b| f64::from(f32::from_le_bytes(b.try_into().unwrap())))
+        .collect();
+    let of = |n: usize| numbers.iter().skip(n).step_by(2).copied().collect();
+    (of(0), of(1))
+}
+
+fn mean(values: &[f64]) -> f64 {
+    values.iter().sum::<f64>() / values.len() as f64
+}
+
+#[test]
+fn the_meter_delivers_the_first_moments_of_a_switching_on() {
+    // Ten periods of 50 Hz behind the 10 ms before the first current.
+    let periods = 50..1050;
+    let (volts, amps) = taken(boots(&[]), 2, 1);
+    assert!(volts[..50].iter().all(|v| v.abs() < 0.5));
+    let rms = mean(
+        &volts[periods.clone()]
+            .iter()
+            .map(|v| v * v)
+            .collect::<Vec<_>>(),
+    )
+    .sqrt();
+    assert!((rms - 230.0).abs() < 0.5, "{rms}");
+    let products = volts[periods.clone()].iter().zip(&amps[periods.clone()]);
+    let watts = mean(&products.map(|(v, i)| v * i).collect::<Vec<_>>());
+    // 230 V at 588 ohm within 1 % of spread: 90.0 W (computed).
+    assert!((watts - 90.0).abs() < 3.0, "{watts}");
+    // Behind the diode: no current the other way, DC the peak over pi (computed).
+    let (_, half) = taken(boots(&[]), 1, 1);
+    let peak = half.iter().copied().fold(0.0, f64::max);
+    assert!(half.iter().all(|i| *i > -0.01));
+    let dc = mean(&half[periods.clone()]);
+    assert!(
+        (dc - peak / std::f64::consts::PI).abs() < 0.01,
+        "{dc} {peak}"
+    );
+}
+
+#[test]
+fn each_seed_switches_at_another_phase() {
+    let first = |seed| taken(boots(&[]), 2, seed).0[50];
+    let all: Vec<f64> = (1..=6).map(first).collect();
+    assert_eq!(first(3), all[2]);
+    for (n, volts) in all.iter().enumerate() {
+        assert!(all[n + 1..].iter().all(|other| (other - volts).abs() > 0.5));
+    }
+}
+
+#[test]
+fn a_meter_that_loses_the_dc_part_loses_it_everywhere() {
+    let (_, half) = taken(boots(&["meter-loses-dc"]), 1, 1);
+    assert!(mean(&half[50..1050]).abs() < 0.01);
+    let factor = |faults: &[&str]| {
+        let bench = energised(boots(faults), BOOTS as u32);
+        let mut meter = bench.far_side("meter line");
+        let [volts, amps, watts] = fields(&reply(&mut *meter, METER, at(10.0)))[..] else {
+            panic!("three fields");
+        };
+        watts / (volts * amps)
+    };
+    // 0.707 and 0.917 (computed).
+    assert!((factor(&[]) - 0.707).abs() < 0.005);
+    assert!((factor(&["meter-loses-dc"]) - 0.917).abs() < 0.005);
+    assert!((factor(&["meter-loses-dc@60s"]) - 0.707).abs() < 0.005);
+}
+
+#[test]
+fn a_waveform_that_was_not_taken_is_no_value() {
+    let bench = energised(boots(&[]), 2);
+    let mut meter = bench.far_side("meter line");
+    assert_eq!(block(&mut *meter, ":WAV:DATA?", at(5.0)), b"9.91E37\n");
+    assert_ne!(reply(&mut *meter, ERRORS, at(30.0)), "0,\"No error\"");
 }

@@ -29,6 +29,9 @@ const WANDER: (f64, f64) = (0.05, 7200.0);
 /// A link that opens by itself does so this long after the first energising, s.
 const SELF_OPENING: f64 = 420.0;
 
+/// Three-point Gauss-Legendre quadrature: the outer node, its weight, the middle one's.
+const GAUSS: (f64, f64, f64) = (0.774_596_669_241_483_4, 5.0 / 9.0, 8.0 / 9.0);
+
 const BLOCK: usize = 0;
 const LINK: usize = 1;
 const ENCLOSURE: usize = 2;
@@ -59,6 +62,8 @@ pub struct State {
     pub watts: f64,
     /// Current, RMS with its DC part, A.
     pub amps: f64,
+    /// DC part of the current, A.
+    pub dc_amps: f64,
 }
 
 /// One specimen: the model with its own spread and faults, and its course.
@@ -83,6 +88,8 @@ pub struct Specimen {
     /// The first event within the present step, which ends there.
     coming: Option<(f64, Event)>,
     solver: Solver<3>,
+    /// Energy drawn up to the beginning of the present step, J.
+    joules: f64,
 }
 
 #[derive(Debug, Clone)]
@@ -173,6 +180,7 @@ impl Specimen {
             opening: None,
             coming: None,
             solver: Solver::new(TOLERANCE, 0.0, [room.at(0.0); 3]),
+            joules: 0.0,
         };
         specimen.thermal.block_w_per_k *= factor(1001);
         for fault in faults {
@@ -246,6 +254,7 @@ impl Specimen {
     }
 
     fn step(&mut self) {
+        self.joules = self.joules(self.solver.end());
         let ambient = self.room.at(self.solver.end());
         let (circuit, thermal) = (&self.circuit, &self.thermal);
         self.solver
@@ -266,7 +275,29 @@ impl Specimen {
             ambient: self.room.at(t),
             watts,
             amps,
+            dc_amps: self.circuit.dc(y[BLOCK]),
         }
+    }
+
+    /// Energy drawn from the beginning on, J, at `t`, which lies within what was
+    /// advanced last.
+    pub fn joules(&self, t: f64) -> f64 {
+        let begin = self.solver.begin();
+        let (middle, half) = (f64::midpoint(begin, t), 0.5 * (t - begin));
+        let watts = |x: f64| {
+            self.circuit
+                .input(self.solver.at(middle + half * x)[BLOCK])
+                .0
+        };
+        let outer = watts(-GAUSS.0) + watts(GAUSS.0);
+        self.joules + half * (GAUSS.1 * outer + GAUSS.2 * watts(0.0))
+    }
+
+    /// Voltage in V and current in A at a moment, at a phase of the mains in turns after
+    /// its rising zero; `t` lies within what was advanced last. The fan draws what it
+    /// draws when it runs: its own switching on is left out.
+    pub fn momentary(&self, t: f64, turns: f64) -> (f64, f64) {
+        self.circuit.momentary(self.solver.at(t)[BLOCK], turns)
     }
 
     /// Cuts the present step at an event within it.
@@ -280,6 +311,7 @@ impl Specimen {
     }
 
     fn restart(&mut self, t: f64, state: [f64; 3]) {
+        self.joules = self.joules(t);
         self.coming = None;
         self.rewire();
         self.solver.restart(t, state);
@@ -450,6 +482,30 @@ impl Circuit {
     }
 }
 
+impl Circuit {
+    /// DC part of the current, A: behind a diode the peak over pi (computed).
+    fn dc(&self, block: f64) -> f64 {
+        if !self.diode || self.volts <= 0.0 {
+            return 0.0;
+        }
+        std::f64::consts::SQRT_2 * self.volts * self.conductance(block) / std::f64::consts::PI
+    }
+
+    /// Voltage and current at a phase of the mains, in turns.
+    fn momentary(&self, block: f64, turns: f64) -> (f64, f64) {
+        if self.volts <= 0.0 {
+            return (0.0, 0.0);
+        }
+        let angle = std::f64::consts::TAU * turns;
+        let (sine, cosine) = (libm::sin(angle), libm::cos(angle));
+        let volts = std::f64::consts::SQRT_2 * self.volts * sine;
+        let fed = if self.diode { volts.max(0.0) } else { volts };
+        let fan = std::f64::consts::SQRT_2 * self.fan_watts / self.volts;
+        let amps = fed * self.conductance(block) + fan * (sine - FAN_REACTIVE * cosine);
+        (volts, amps)
+    }
+}
+
 impl Room {
     fn at(self, t: f64) -> f64 {
         let turn = std::f64::consts::TAU * t / WANDER.1;
@@ -592,6 +648,24 @@ mod tests {
         }
         close(highest, 70.0, 1e-3);
         close(lowest, 60.0, 1e-3);
+    }
+
+    // The sum of the power over small steps, and what the room and the block took up.
+    #[test]
+    fn the_energy_is_the_integral_of_the_power() {
+        let thermostat = "thermostat: {opens at: 70 °C, closes at: 60 °C}\n";
+        for (element, more) in [(PTC, ""), ("{plain: 500 ohm}", thermostat)] {
+            let mut specimen = on(&model(element, "", more), 230.0, &[]);
+            let mut sum = 0.0;
+            for i in 0..200_000 {
+                let t = 0.01 * (f64::from(i) + 0.5);
+                specimen.advance(t);
+                sum += 0.01 * specimen.state(t).watts;
+            }
+            specimen.advance(2000.0);
+            let joules = specimen.joules(2000.0);
+            close(joules, sum, 1e-4 * sum);
+        }
     }
 
     #[test]

@@ -78,6 +78,7 @@ pub fn virtual_bench(plan: &Plan, seed: u64, faults: &[&str]) -> VirtualBench {
             role: role.name.clone(),
             kind: role.kind,
             channel: role.channel,
+            sensor: role.sensor,
         }
     };
     VirtualBench::new(Staging {

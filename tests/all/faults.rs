@@ -48,6 +48,7 @@ fn outcome_of(fault: &str, seed: u64) -> (RunOutcome, Judgement) {
         plan: &record.plan,
         samples: &record.samples,
         happenings: &record.happenings,
+        waveforms: &record.waveforms,
         outcome: &outcome,
     });
     let judgement = judge(&record.plan, &outcome, &analysis);

@@ -7,10 +7,13 @@ mod bench_of_tests;
 mod disk;
 mod faults;
 mod judging;
+mod raw_sensors;
 mod readme;
 mod rehearsal;
 #[cfg(unix)]
 mod serial;
+mod settling;
 mod shipped;
 mod tidy;
+mod waveforms;
 mod ways_out;

@@ -257,6 +257,8 @@ impl Line {
             Act::Read { query, channel, .. } => member
                 .reading(*query, *channel)
                 .map(|ask| [Step::Exchange(ask)].into()),
+            Act::Arm(_) => member.arm_steps(),
+            Act::Waveform(at_most, _) => member.waveform_steps(*at_most),
             Act::Change(change, _) => member.change_steps(*change),
             Act::Energise(_) => member.energise_steps(),
             Act::Off(..) => member.output().map(|_| VecDeque::new()),
@@ -268,7 +270,10 @@ impl Line {
         let asker = match act {
             Act::Identify(asker) => OrderAsker::Identity(asker),
             Act::Read { asker, .. } => OrderAsker::Polled(asker),
-            Act::Prepare(asker) | Act::Change(_, asker) => OrderAsker::Done(asker),
+            Act::Prepare(asker) | Act::Arm(asker) | Act::Change(_, asker) => {
+                OrderAsker::Done(asker)
+            }
+            Act::Waveform(_, asker) => OrderAsker::Waveform(asker),
             Act::Energise(asker) => OrderAsker::Lease(asker),
             Act::Off(cause, asker) => {
                 let mut off = Off::new(instrument, &cause);
@@ -280,6 +285,7 @@ impl Line {
             instrument,
             steps,
             reported: None,
+            number: None,
             asker,
         });
     }
@@ -288,7 +294,10 @@ impl Line {
         let error = self.facts.fault(instrument, fault);
         match act {
             Act::Identify(asker) => drop(asker.send(Err(error))),
-            Act::Prepare(asker) | Act::Change(_, asker) => drop(asker.send(Err(error))),
+            Act::Prepare(asker) | Act::Arm(asker) | Act::Change(_, asker) => {
+                drop(asker.send(Err(error)));
+            }
+            Act::Waveform(_, asker) => drop(asker.send(Err(error))),
             Act::Read { asker, .. } => drop(asker.send(failed_sample(0, now, error))),
             Act::Energise(asker) => drop(asker.send(Err(error))),
             Act::Off(_, asker) => drop(asker.send(Err(error))),
@@ -390,6 +399,7 @@ impl Line {
             OrderAsker::Identity(asker) => drop(asker.send(Err(error))),
             OrderAsker::Done(asker) => drop(asker.send(Err(error))),
             OrderAsker::Lease(asker) => drop(asker.send(Err(error))),
+            OrderAsker::Waveform(asker) => drop(asker.send(Err(error))),
             OrderAsker::Polled(asker) => drop(asker.send(failed_sample(0, now, error))),
         }
     }

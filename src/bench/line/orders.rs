@@ -49,6 +49,9 @@ impl Line {
                 return self.finish_order(order, Err(error), times);
             }
         };
+        if let Reply::Number(number) = &reply {
+            order.number = Some(*number);
+        }
         let mut fault = None;
         match (order.steps.front_mut(), &reply) {
             (Some(Step::Errors { left, .. }), Reply::ErrorEntry(entry)) => {
@@ -103,6 +106,10 @@ impl Line {
             }
             (OrderAsker::Identity(asker), Ok(Reply::Identity(text))) => {
                 drop(asker.send(self.recognise(instrument, text)));
+            }
+            (OrderAsker::Waveform(asker), Ok(Reply::Block(pairs))) => {
+                let wave = self.members[instrument].waveform(pairs, order.number);
+                drop(asker.send(wave.map_err(|fault| self.facts.fault(instrument, fault))));
             }
             (OrderAsker::Polled(asker), Ok(reply)) => {
                 let result = match reply {

@@ -8,3 +8,4 @@ mod scripted;
 mod shared;
 #[cfg(unix)]
 mod terminals;
+mod waveforms;

@@ -13,7 +13,8 @@ use crate::clock::Clock;
 use crate::quantity::{Moment, Reading, Seconds};
 use crate::spec::bench::Port;
 use crate::spec::driver::{
-    Driver, Framing, IdentityQuery, ReadingQuery, Setting, Settings, Terminator,
+    BlockFormat, Coupling, Driver, Framing, IdentityQuery, ReadingQuery, SampleInterval, Setting,
+    Settings, Terminator, WaveformQuery,
 };
 
 /// A generic driver with everything.
@@ -43,6 +44,17 @@ pub fn driver() -> Driver {
                 gives: vec![Reading::Temperature],
             },
         ],
+        waveform: Some(WaveformQuery {
+            arm: vec!["WAV:ARM".into()],
+            ready: Some("WAV:READY?".into()),
+            ask: "WAV:DATA?".into(),
+            gives: vec![Reading::Voltage, Reading::Current],
+            interval: SampleInterval::Asked("WAV:INT?".into()),
+            points: 1500,
+            format: BlockFormat::Float32Little,
+            scale: None,
+            reply_within: Seconds::of(5.0),
+        }),
         settings: Settings {
             voltage: Some(Setting {
                 set: "SOUR:VOLT {value}".into(),
@@ -62,6 +74,7 @@ pub fn driver() -> Driver {
         update_interval: Seconds::of(0.1),
         channels: 8,
         isolation: None,
+        coupling: Coupling::Dc,
     }
 }
 
@@ -111,6 +124,12 @@ pub struct Script {
     /// The supply rounds to this.
     pub step: f64,
     pub latency_us: u64,
+    /// Pieces of the next reply to the waveform's query, each so many seconds later.
+    pub pieces: Vec<(f64, Vec<u8>)>,
+    /// Replies to the next questions whether the waveform is ready; then `1`.
+    pub ready: VecDeque<&'static str>,
+    /// Reply to the interval's query; `2.0E-4` where it is empty.
+    pub interval: &'static str,
     /// Counts the readings.
     pub count: u64,
     partial: Vec<u8>,
@@ -143,6 +162,22 @@ impl Script {
             "SYST:ERR?" => {
                 let entry = self.errors.pop_front().unwrap_or("+0,\"No error\"");
                 self.say(at, entry);
+            }
+            "WAV:READY?" => {
+                let ready = self.ready.pop_front().unwrap_or("1");
+                self.say(at, ready);
+            }
+            "WAV:INT?" => {
+                let interval = match self.interval {
+                    "" => "2.0E-4",
+                    other => other,
+                };
+                self.say(at, interval);
+            }
+            "WAV:DATA?" => {
+                for (late, bytes) in std::mem::take(&mut self.pieces) {
+                    self.out.push_back((at + Seconds::of(late), bytes));
+                }
             }
             _ if line.starts_with("MEAS:TEMP?") => self.say(at, "23.5"),
             _ if line.starts_with("MEAS:") => self.measure(line, at),

@@ -11,7 +11,9 @@ mod ratings;
 mod reading;
 mod roles;
 mod rules;
+mod sensing;
 mod steps;
+mod waveforms;
 
 /// The demo bench.
 const BENCH: &str = shipped::VIRTUAL_BENCH.text;
@@ -38,12 +40,22 @@ fn shipped_as(name: &str) -> &'static str {
 
 /// The shipped dryer up to its house lower limit, which is the last of its rules and
 /// would answer beside every rule that a test is about.
+///
+/// It is taken with a single supply that is its whole supply range.
 fn dryer() -> &'static str {
-    let whole = shipped_as("cupboard-dryer");
-    let end = whole
-        .find("  - power: {at least")
-        .expect("the house lower limit");
-    &whole[..end]
+    static TEXT: std::sync::LazyLock<String> = std::sync::LazyLock::new(|| {
+        let whole = shipped_as("cupboard-dryer");
+        let end = whole
+            .find("  - power: {at least")
+            .expect("the house lower limit");
+        let from = whole.find("      supplies:").expect("supplies");
+        let to = from + whole[from..].find("      steps:").expect("steps");
+        let one = "      supplies:\n        - {voltage: 230 V, frequency: 50 Hz}\n";
+        let text = format!("{}{one}{}", &whole[..from], &whole[to..end]);
+        let ambient = "  highest ambient: 35 °C\n";
+        text.replace(ambient, &format!("{ambient}  supply range: 230 V\n"))
+    });
+    &TEXT
 }
 
 /// What is crossed in a test.

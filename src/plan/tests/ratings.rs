@@ -124,11 +124,15 @@ fn floor(text: &str, watts: f64) -> Resolved {
 
 #[test]
 fn a_meter_whose_u_exceeds_half_of_the_tolerance_is_warned_of() {
-    // 40 W +-10 %: half of the tolerance is 4 W; U = 2 a / sqrt 3 (JCGM 100, 4.3.7).
+    // 40 W +-10 %: the limits leave 4 W; U = 2 a / sqrt 3 (JCGM 100, 4.3.7).
     let just = 4.0 * 3f64.sqrt() / 2.0;
     floor(FLAT, just).is_clean();
     floor(FLAT, just * 1.001)
-        .warns("40 W", "at 40 W the meter's U is 4 W, half of the tolerance is 4 W: the power will be not judged", "more accurate")
+        .warns(
+            "40 W",
+            "at 40 W the meter's U is 4 W, the limits leave 4 W: the power will be not judged",
+            "more accurate",
+        )
         .only();
 }
 
@@ -138,16 +142,12 @@ fn under_an_upper_limit_alone_the_room_is_from_the_rated_input_to_it() {
     let just = 0.9 * 3f64.sqrt() / 2.0;
     floor(dryer(), just * 0.999).is_clean();
     floor(dryer(), just * 1.01)
-        .warns(
-            "4.5 W",
-            "a unit that draws its rated input can't pass",
-            "range that fits",
-        )
+        .warns("4.5 W", "the power will be not judged", "range that fits")
         .only();
 }
 
 #[test]
-fn a_simple_decision_needs_no_room_and_a_guarded_one_its_share() {
+fn a_simple_decision_needs_its_largest_u_and_a_guarded_one_its_share() {
     let decided = |decision: &str, watts: f64| {
         let rule = format!("  - power: plate\n    decision: {decision}\n");
         floor(&changed(FLAT, "  - power: plate\n", &rule), watts)
@@ -155,9 +155,13 @@ fn a_simple_decision_needs_no_room_and_a_guarded_one_its_share() {
             .len()
     };
     let just = 4.0 * 3f64.sqrt() / 2.0;
-    assert_eq!(decided("simple", 10.0 * just), 0);
-    assert_eq!(decided("{guarded: 0.5}", 1.99 * just), 0);
-    assert_eq!(decided("{guarded: 0.5}", 2.01 * just), 1);
+    assert!(decided("{simple: {largest U: 50 W}}", 10.0 * just) > 0);
+    // Both positions, 40 W and 80 W.
+    assert_eq!(decided("{simple: {largest U: 3 W}}", 0.9 * just), 2);
+    assert_eq!(decided("{simple: {largest U: 3 W}}", 0.7 * just), 0);
+    assert_eq!(decided("{guarded: 0.5}", 0.99 * just), 0);
+    assert_eq!(decided("{guarded: 0.5}", 1.01 * just), 1);
+    assert_eq!(decided("{guarded: 2}", 0.51 * just), 1);
 }
 
 #[test]

@@ -1,6 +1,7 @@
 //! Rules that nothing feeds.
 
 use super::*;
+use crate::spec::sequence::CyclingRule;
 
 const INRUSH: &str = "        - inrush: {for: 2 min, every: 100 ms}\n";
 
@@ -192,4 +193,39 @@ fn a_supply_within_six_per_cent_of_the_plate_is_near_enough() {
         assert_eq!(problem.place.text(), "230 V");
         assert!(problem.message.contains("near 230 V"));
     }
+}
+
+#[test]
+fn a_representative_period_is_for_a_load_that_cycles() {
+    let chosen = changed(
+        FLAT,
+        "  - power: plate",
+        "  - power: plate\n    cycling: representative period",
+    );
+    let resolved = cross(&chosen, BENCH);
+    resolved
+        .warns("power", "no thermostat is declared", "`thermostat: yes`")
+        .only();
+    let cycling = changed(
+        &chosen,
+        "heating element: resistor",
+        "heating element: resistor, thermostat: yes",
+    );
+    let resolved = cross(&cycling, BENCH);
+    resolved.is_clean();
+    let rules = &resolved.plan.as_ref().unwrap().rules;
+    assert_eq!(rules[0].cycling, CyclingRule::RepresentativePeriod);
+    assert_eq!(rules[1].cycling, CyclingRule::OnState);
+}
+
+#[test]
+fn an_early_finish_does_not_follow_other_temperatures() {
+    let early = changed(
+        dryer(),
+        "            every: 2 s\n            until",
+        "            every: 2 s\n            early finish: yes\n            until",
+    );
+    cross(&early, BENCH)
+        .warns("temperature", "not followed to its end", "early finish")
+        .only();
 }

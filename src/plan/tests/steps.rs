@@ -356,6 +356,51 @@ fn a_soak_shorter_than_its_criterions_window_is_warned_of_or_refused() {
 }
 
 #[test]
+fn a_slope_whose_window_holds_too_few_readings_is_refused() {
+    let soak = |window: &str, every: &str| {
+        let slope = format!("{{criterion: slope, window: {window}, power change: 2 %}}");
+        let text = changed(
+            FLAT,
+            "{criterion: three readings, power change: 2 %}",
+            &slope,
+        );
+        cross(
+            &changed(&text, "every: 2 s", &format!("every: {every}")),
+            BENCH,
+        )
+    };
+    soak("60 s", "10 s").is_clean();
+    soak("59 s", "10 s")
+        .refuses("soak", "leaves 5 means", "widen the `window`")
+        .only();
+    soak("20 s", "2 s")
+        .refuses(
+            "soak",
+            "and a slope needs 6: it can never settle",
+            "three readings",
+        )
+        .only();
+}
+
+#[test]
+fn a_sampling_method_s_log_fits_into_3_h() {
+    let soak = |most: &str| {
+        let text = changed(
+            FLAT,
+            "{at least: 10 min, at most: 30 min, every: 2 s, until: {criterion: three readings, power change: 2 %}}",
+            &format!(
+                "{{at least: 15 min, at most: {most}, every: 1 s, until: {{criterion: sampling method}}}}"
+            ),
+        );
+        cross(&text, BENCH)
+    };
+    soak("3 h").is_clean();
+    soak("4 h")
+        .warns("soak", "gives up after 3 h", "3 h")
+        .only();
+}
+
+#[test]
 fn problems_are_told_all_at_once_in_the_order_of_their_places() {
     let text = changed(
         dryer(),

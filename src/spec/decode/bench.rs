@@ -2,14 +2,16 @@
 
 use chrono::NaiveDate;
 
-use crate::quantity::{Amps, Dimension, Reading};
+use crate::quantity::{Amps, Dimension, Ohms, Reading};
+use crate::sensor::{Couple, CoupleClass, PlatinumClass, Sensor};
 use crate::spec::Located;
 use crate::spec::bench::{
-    Bay, Bench, CalibrationPoint, Instrument, Line, Parity, Port, RoleFilled, SerialSettings,
+    Bay, Bench, CalibrationPoint, Connection, Instrument, Line, Parity, Port, RoleFilled,
+    SerialSettings, Source,
 };
 use crate::spec::fields::{Field, Fields, list, located, named, shown};
 use crate::spec::scalars::{
-    Allowed, choice, located_name, name, number, quantity, text, value_of, whole,
+    Allowed, choice, located_name, name, number, quantity, share, text, value_of, whole,
 };
 
 /// `bench:`, `lines:`, `instruments:`, `bays:`.
@@ -148,12 +150,16 @@ pub(super) const READINGS: &[(&str, Reading)] = &[
     ("power factor", Reading::PowerFactor),
     ("frequency", Reading::Frequency),
     ("temperature", Reading::Temperature),
+    ("energy", Reading::Energy),
+    ("thermocouple voltage", Reading::ThermocoupleVoltage),
+    ("terminal temperature", Reading::TerminalTemperature),
+    ("resistance", Reading::Resistance),
 ];
 
 /// What a difference between two readings measures: kelvins between temperatures.
 pub(super) fn difference(reading: Reading) -> Dimension {
     match reading {
-        Reading::Temperature => Dimension::TemperatureDifference,
+        Reading::Temperature | Reading::TerminalTemperature => Dimension::TemperatureDifference,
         other => other.dimension(),
     }
 }
@@ -161,12 +167,25 @@ pub(super) fn difference(reading: Reading) -> Dimension {
 fn bay(name: Located<String>, field: Field<'_>) -> Option<Bay> {
     let fields = field.fields()?;
     let rated_current = fields.required("rated current", quantity::<Amps>(Allowed::Positive));
+    let source = fields.or("source", Source::default(), source);
     let roles = fields.required("roles", named(role));
     fields.finish()?;
     Some(Bay {
         name,
         rated_current: rated_current?,
+        source: source?,
         roles: roles?,
+    })
+}
+
+fn source(field: Field<'_>) -> Option<Source> {
+    let fields = field.fields()?;
+    let impedance = fields.optional("impedance", quantity::<Ohms>(Allowed::NotNegative));
+    let current_limit = fields.optional("current limit", quantity::<Amps>(Allowed::Positive));
+    fields.finish()?;
+    Some(Source {
+        impedance: impedance?,
+        current_limit: current_limit?,
     })
 }
 
@@ -174,12 +193,53 @@ fn role(role: Located<String>, field: Field<'_>) -> Option<RoleFilled> {
     let fields = field.fields()?;
     let instrument = fields.required("instrument", located_name);
     let channel = fields.optional("channel", located(whole(1, 9_999)));
+    let attachment = fields.optional("attachment", text);
+    let contact_error = fields.optional("contact error", share);
+    let lead_resistance = fields.optional("lead resistance", quantity::<Ohms>(Allowed::Positive));
+    let sensor = fields.optional("sensor", located(sensor));
     fields.finish()?;
     Some(RoleFilled {
         role,
         instrument: instrument?,
         channel: channel?,
+        connection: Connection {
+            attachment: attachment?,
+            contact_error: contact_error?,
+            lead_resistance: lead_resistance?,
+        },
+        sensor: sensor?,
     })
+}
+
+const SENSOR_TYPES: &[(&str, Option<Couple>)] = &[
+    ("K", Some(Couple::K)),
+    ("J", Some(Couple::J)),
+    ("T", Some(Couple::T)),
+    ("Pt100", None),
+];
+
+const COUPLE_CLASSES: &[(&str, CoupleClass)] = &[("1", CoupleClass::One), ("2", CoupleClass::Two)];
+
+const PLATINUM_CLASSES: &[(&str, PlatinumClass)] = &[
+    ("AA", PlatinumClass::AA),
+    ("A", PlatinumClass::A),
+    ("B", PlatinumClass::B),
+    ("C", PlatinumClass::C),
+];
+
+fn sensor(field: Field<'_>) -> Option<Sensor> {
+    let fields = field.fields()?;
+    // Without the type the classes can't be told right from wrong.
+    let sensor = match fields.required("type", choice(SENSOR_TYPES))? {
+        Some(couple) => fields
+            .required("class", choice(COUPLE_CLASSES))
+            .map(|class| Sensor::Thermocouple { couple, class }),
+        None => fields
+            .required("class", choice(PLATINUM_CLASSES))
+            .map(|class| Sensor::Pt100 { class }),
+    };
+    fields.finish()?;
+    sensor
 }
 
 #[cfg(test)]
@@ -293,7 +353,7 @@ mod tests {
             wrong(
                 "channel: 1}",
                 "channel: 01}",
-                "33:44",
+                "33:85",
                 "whole number",
                 "plain digits",
             ),
@@ -303,6 +363,41 @@ mod tests {
                 "31:7",
                 "lacks `instrument`",
                 "add",
+            ),
+            wrong(
+                "channel: 1}",
+                "channel: 1, sensor: {type: K}}",
+                "33:88",
+                "lacks `class`",
+                "add",
+            ),
+            wrong(
+                "channel: 1}",
+                "channel: 1, sensor: {type: X, class: 1}}",
+                "33:103",
+                "can't be `X`",
+                "one of: K, J, T, Pt100",
+            ),
+            wrong(
+                "channel: 1}",
+                "channel: 1, sensor: {type: Pt100, class: 1}}",
+                "33:117",
+                "can't be `1`",
+                "one of: AA, A, B, C",
+            ),
+            wrong(
+                "channel: 1}",
+                "channel: 1, sensor: {type: T, class: A}}",
+                "33:113",
+                "can't be `A`",
+                "one of: 1, 2",
+            ),
+            wrong(
+                "channel: 1}",
+                "channel: 1, sensor: K}",
+                "33:96",
+                "must be a mapping",
+                "key: value",
             ),
         ]);
     }

@@ -2,7 +2,8 @@
 
 use crate::quantity::{Reading, Seconds, Volts};
 use crate::spec::driver::{
-    Accuracy, Driver, Framing, IdentityQuery, ReadingQuery, Setting, Settings, Terminator,
+    Accuracy, Coupling, Driver, Framing, IdentityQuery, ReadingQuery, Setting, Settings,
+    Terminator, Thermal,
 };
 use crate::spec::fields::{Field, Fields, list, located, named, some};
 use crate::spec::scalars::{
@@ -12,6 +13,7 @@ use crate::spec::sequence::RoleKind;
 use crate::spec::{Located, Problem};
 
 use super::bench::{READINGS, difference};
+use super::waveform::waveform;
 
 /// The words for kinds of role, in YAML files.
 pub(super) const ROLE_KINDS: &[(&str, RoleKind)] = &[
@@ -27,6 +29,8 @@ const TERMINATORS: &[(&str, Terminator)] = &[
     ("CR", Terminator::Cr),
 ];
 
+const COUPLINGS: &[(&str, Coupling)] = &[("dc", Coupling::Dc), ("ac", Coupling::Ac)];
+
 /// A whole driver file.
 pub(in crate::spec) fn driver(field: Field<'_>) -> Option<Driver> {
     let fields = field.fields()?;
@@ -37,11 +41,13 @@ pub(in crate::spec) fn driver(field: Field<'_>) -> Option<Driver> {
     let on_opening = fields.or("on opening", Vec::new(), list(command(&[])));
     let channels = fields.or("channels", 0, whole(0, 9_999));
     let readings = fields.or("readings", Vec::new(), list(reading_query(channels)));
+    let waveform = fields.optional("waveform", waveform);
     let settings = fields.or("settings", Settings::default(), settings);
     let errors = fields.optional("errors", command(&[]));
     let accuracy = fields.or("accuracy", Vec::new(), named(accuracy));
     let update_interval = fields.required("update interval", duration);
     let isolation = fields.optional("isolation", quantity::<Volts>(Allowed::NotNegative));
+    let coupling = fields.or("coupling", Coupling::Dc, choice(COUPLINGS));
     let suited = match (&fills, &readings, &settings) {
         (Some(fills), Some(readings), Some(settings)) => suited(field, fills, readings, settings),
         _ => None,
@@ -58,12 +64,14 @@ pub(in crate::spec) fn driver(field: Field<'_>) -> Option<Driver> {
         identity: identity?,
         on_opening: on_opening?,
         readings: readings?,
+        waveform: waveform?,
         settings: settings?,
         errors: errors?,
         accuracy: accuracy?,
         update_interval: update_interval?,
         channels: channels?,
         isolation: isolation?,
+        coupling: coupling?,
     })
 }
 
@@ -173,9 +181,19 @@ fn suited(
                 Some("`settings: output: state`")
             }
             RoleKind::PowerMeter if !gives(Reading::Power) => Some("a reading of power"),
-            RoleKind::Temperature if !gives(Reading::Temperature) => {
-                Some("a reading of temperature")
-            }
+            RoleKind::Temperature => match Thermal::of(readings).as_slice() {
+                [] if gives(Reading::ThermocoupleVoltage)
+                    || gives(Reading::TerminalTemperature) =>
+                {
+                    Some("`thermocouple voltage` and `terminal temperature` in one reply")
+                }
+                [] => Some("a reading of temperature"),
+                [_] => None,
+                [one, other, ..] => {
+                    suited = which_counts(whole, kind, *one, *other);
+                    None
+                }
+            },
             RoleKind::PositionSwitch if settings.position.is_none() => Some("`settings: position`"),
             _ => None,
         };
@@ -188,6 +206,25 @@ fn suited(
         }
     }
     suited
+}
+
+/// A role polls every query of its driver: of two temperatures neither counts.
+fn which_counts(
+    whole: Field<'_>,
+    kind: &Located<RoleKind>,
+    one: Thermal,
+    other: Thermal,
+) -> Option<()> {
+    let word = |thermal: Thermal| thermal.readings()[0].word();
+    whole.notes.error(
+        &kind.place,
+        format!(
+            "it gives both {} and {}: which one is the role's temperature?",
+            word(one),
+            word(other)
+        ),
+        "take one of the two out; an instrument that does both needs a driver for each",
+    )
 }
 
 fn warn_of_unknown_accuracy(
@@ -231,11 +268,13 @@ fn accuracy(reading: Located<String>, field: Field<'_>) -> Option<Accuracy> {
     let fields = field.fields()?;
     let of_reading = fields.optional("of reading", share);
     let of_range = fields.optional("of range", share);
+    let correlation = fields.optional("correlation", share);
     let floor = fields.or("floor", 0.0, value_of(width, Allowed::NotNegative));
     let resolution = fields.or("resolution", 0.0, value_of(width, Allowed::NotNegative));
     let full = value_of(kind.dimension(), Allowed::Positive);
     let ranges = fields.or("ranges", Vec::new(), list(full));
     let (of_reading, of_range) = (fraction(of_reading), fraction(of_range));
+    let correlation = fraction(correlation);
     let rising = match (&ranges, of_range) {
         (Some(ranges), _) if !ranges.is_sorted_by(|a, b| a < b) => fields.wrong(
             "ranges",
@@ -267,6 +306,7 @@ fn accuracy(reading: Located<String>, field: Field<'_>) -> Option<Accuracy> {
         floor: floor?,
         resolution: resolution?,
         ranges: ranges?,
+        correlation: correlation?,
     })
 }
 
@@ -308,6 +348,73 @@ mod tests {
         assert_eq!(problem.weight, Weight::Warning);
         assert_eq!(problem.place.text(), "readings");
         assert!(problem.message.contains("frequency"), "{problem:?}");
+    }
+
+    #[test]
+    fn a_driver_with_two_temperatures_is_refused_whichever_they_are() {
+        for (driver, from, to) in [
+            (
+                "thermocouple-scanner",
+                "terminal temperature]",
+                "terminal temperature, resistance]",
+            ),
+            (
+                "resistance-scanner",
+                "[resistance]",
+                "[temperature, resistance]",
+            ),
+            (
+                "temperature-scanner",
+                "gives: [temperature]",
+                "gives: [temperature, thermocouple voltage, terminal temperature]",
+            ),
+        ] {
+            let text = Kind::Driver(driver).changed(&[(from, to)]);
+            let (value, problems) = Kind::Driver(driver).load(text.as_bytes());
+            assert!(!value, "{driver}");
+            let errors: Vec<_> = problems
+                .iter()
+                .filter(|p| p.weight == Weight::Error)
+                .collect();
+            let [error] = errors.as_slice() else {
+                panic!("{driver}: {problems:#?}");
+            };
+            assert_eq!(error.place.line_column(), (3, 9), "{driver}");
+            assert!(
+                error
+                    .message
+                    .contains("which one is the role's temperature"),
+                "{error:?}"
+            );
+            assert!(
+                error
+                    .hint
+                    .as_ref()
+                    .is_some_and(|h| h.contains("a driver for each"))
+            );
+        }
+    }
+
+    #[test]
+    fn microvolts_and_milliohms_are_read_in_base_units() {
+        let driver = |name| {
+            let text = Kind::Driver(name).changed(&[]);
+            load_driver("file", text.as_bytes())
+                .value
+                .expect("a driver")
+        };
+        let volts = driver("thermocouple-scanner");
+        let volts = volts
+            .accuracy_of(Reading::ThermocoupleVoltage)
+            .expect("stated");
+        assert_eq!(volts.floor, 3e-6);
+        // 0.1 over a million misses the literal by its last bit.
+        assert!((volts.resolution - 1e-7).abs() < 1e-21);
+        let ohms = driver("resistance-scanner");
+        assert_eq!(
+            ohms.accuracy_of(Reading::Resistance).expect("stated").floor,
+            0.01
+        );
     }
 
     #[test]
@@ -453,6 +560,22 @@ mod tests {
                 "13:12",
                 "has no unit",
                 "`300 V`",
+            ),
+        ]);
+        Kind::Driver("thermocouple-scanner").check(&[
+            wrong(
+                "gives: [thermocouple voltage, terminal temperature]",
+                "gives: [thermocouple voltage]",
+                "3:9",
+                "can't fill `temperature` without `thermocouple voltage` and `terminal temperature`",
+                "in one reply",
+            ),
+            wrong(
+                "floor: 3 uV",
+                "floor: 3 K",
+                "17:53",
+                "not a voltage",
+                "V",
             ),
         ]);
         Kind::Driver("position-switch").check(&[wrong(

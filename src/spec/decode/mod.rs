@@ -6,6 +6,7 @@ mod rules;
 mod sequence;
 mod steps;
 mod virtual_unit;
+mod waveform;
 
 pub(super) use bench::bench;
 pub(super) use driver::driver;

@@ -1,14 +1,14 @@
 //! The sequence file: the appliance, the roles, the conditions, the guards.
 
-use crate::quantity::{Hertz, Kelvins, Volts, Watts, at_least};
+use crate::quantity::{Amps, Celsius, Hertz, Kelvins, Volts, Watts, at_least};
 use crate::spec::Located;
 use crate::spec::fields::{Field, Fields, all_different, list, located, named, some};
 use crate::spec::scalars::{
-    Allowed, choice, duration, located_name, quantity, span, temperature, text, yes_no,
+    Allowed, choice, duration, located_name, quantity, share, span, temperature, text, yes_no,
 };
 use crate::spec::sequence::{
-    Appliance, ApplianceKind, Condition, Facts, GuardLimits, HeatingElement, MeasuredAt,
-    PlateEntry, ProtectionClass, RoleNeed, Sequence, ThermalLink,
+    AmbientEffect, Appliance, ApplianceKind, Condition, Facts, GuardLimits, HeatingElement,
+    MeasuredAt, PlateEntry, ProtectionClass, RoleNeed, SelfHeating, Sequence, ThermalLink,
 };
 use crate::spec::yaml::NodeKind;
 
@@ -64,12 +64,22 @@ const ELEMENTS: &[(&str, HeatingElement)] = &[
     ("resistor", HeatingElement::Resistor),
 ];
 
+/// Ambient that an input is referred to (house default, the middle of IEC 60335-1
+/// 5.7's "in doubt 23 +-2 °C", from memory).
+const REFERENCE_AMBIENT_DEGC: f64 = 23.0;
+
 fn appliance(field: Field<'_>) -> Option<Appliance> {
     let fields = field.fields()?;
     let model = fields.required("model", located_name);
     let kind = fields.required("kind", choice(KINDS));
     let protection_class = fields.required("protection class", choice(CLASSES));
     let highest_ambient = fields.required("highest ambient", temperature);
+    let reference_ambient = fields.or(
+        "reference ambient",
+        Celsius::of(REFERENCE_AMBIENT_DEGC),
+        temperature,
+    );
+    let supply_range = fields.optional("supply range", located(span::<Volts>(Allowed::Positive)));
     let positions = fields.required("positions", names);
     let plate = fields.required("plate", some(plate_entry));
     let link = fields.optional("thermal link", link);
@@ -80,6 +90,8 @@ fn appliance(field: Field<'_>) -> Option<Appliance> {
         kind: kind?,
         protection_class: protection_class?,
         highest_ambient: highest_ambient?,
+        reference_ambient: reference_ambient?,
+        supply_range: supply_range?,
         positions: positions?,
         plate: plate?,
         link: link?,
@@ -118,6 +130,7 @@ fn link(field: Field<'_>) -> Option<ThermalLink> {
     let tm = fields.optional("Tm", temperature);
     let sits = fields.required("sits", text);
     let measured_at = fields.required("measured at", measured_at);
+    let ambient_effect = fields.optional("ambient effect", ambient_effect);
     let ordered = match (&tf, th, tm) {
         (Some(tf), Some(Some(th)), _) if at_least(th.get(), tf.get()) => fields.wrong(
             "Th",
@@ -139,6 +152,41 @@ fn link(field: Field<'_>) -> Option<ThermalLink> {
         tm: tm?,
         sits: sits?,
         measured_at: measured_at?,
+        ambient_effect: ambient_effect?,
+    })
+}
+
+fn ambient_effect(field: Field<'_>) -> Option<AmbientEffect> {
+    let fields = field.fields()?;
+    let value = fields.required("value", share);
+    let expanded = fields.required("U", share);
+    let source = fields.required("source", text);
+    fields.finish()?;
+    Some(AmbientEffect {
+        value: value?,
+        expanded: expanded?,
+        source: source?,
+    })
+}
+
+fn self_heating(field: Field<'_>) -> Option<SelfHeating> {
+    let fields = field.fields()?;
+    let rise = fields.required("rise", quantity::<Kelvins>(Allowed::NotNegative));
+    let at = fields.required("at", quantity::<Amps>(Allowed::Positive));
+    fields.finish()?;
+    Some(SelfHeating {
+        rise: rise?,
+        at: at?,
+    })
+}
+
+fn outside_only(fields: Fields<'_>) -> Option<MeasuredAt> {
+    let place = fields.required("outside only", text);
+    let limit = fields.required("house limit", temperature);
+    fields.finish()?;
+    Some(MeasuredAt::OutsideOnly {
+        place: place?,
+        limit: limit?,
     })
 }
 
@@ -148,14 +196,18 @@ fn measured_at(field: Field<'_>) -> Option<MeasuredAt> {
             "link body" => Some(MeasuredAt::LinkBody),
             _ => field.wrong(
                 "`measured at` is neither `link body` nor a mapping",
-                "write `link body`, or `{place: ..., allowance: 3 K, allowance source: ...}`",
+                "write `link body`, or `{place: ..., allowance: 3 K, allowance source: ..., self-heating: {rise: 7 K, at: 10 A}}`, or `{outside only: ..., house limit: 85 °C}`",
             ),
         };
     }
     let fields = field.fields()?;
+    if fields.find("outside only").is_some() {
+        return outside_only(fields);
+    }
     let place = fields.required("place", text);
     let allowance = fields.optional("allowance", quantity::<Kelvins>(Allowed::NotNegative));
     let source = fields.optional("allowance source", text);
+    let self_heating = fields.optional("self-heating", self_heating);
     let sourced = match (&allowance, &source) {
         (Some(Some(_)), Some(None)) => fields.wrong(
             "allowance",
@@ -170,6 +222,7 @@ fn measured_at(field: Field<'_>) -> Option<MeasuredAt> {
         place: place?,
         allowance: allowance?,
         source: source?,
+        self_heating: self_heating?,
     })
 }
 
@@ -197,8 +250,23 @@ fn one_or_more(field: Field<'_>) -> Option<Vec<Located<String>>> {
 }
 
 fn role(name: Located<String>, field: Field<'_>) -> Option<RoleNeed> {
-    let kind = choice(ROLE_KINDS)(field)?;
-    Some(RoleNeed { name, kind })
+    if let NodeKind::Scalar(_) = field.node.kind {
+        let kind = choice(ROLE_KINDS)(field)?;
+        return Some(RoleNeed {
+            name,
+            kind,
+            place: None,
+        });
+    }
+    let fields = field.fields()?;
+    let kind = fields.required("kind", choice(ROLE_KINDS));
+    let place = fields.optional("at", text);
+    fields.finish()?;
+    Some(RoleNeed {
+        name,
+        kind: kind?,
+        place: place?,
+    })
 }
 
 fn condition(name: Located<String>, field: Field<'_>) -> Option<Condition> {

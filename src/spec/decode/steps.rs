@@ -1,13 +1,14 @@
 //! The steps of a sequence.
 
-use crate::quantity::{Hertz, Kelvins, Ratio, Seconds, Volts};
+use crate::quantity::{Dimension, Hertz, Kelvins, Ratio, Seconds, Volts, Watts, parse_written};
 use crate::spec::fields::{Field, Fields, all_different, located, shown, some};
 use crate::spec::scalars::{
     Allowed, choice, duration, interval, located_name, name, number, quantity, temperature, text,
+    yes_no,
 };
 use crate::spec::sequence::{
-    Abnormal, AnswerKind, Criterion, CriterionKind, Each, FindingClass, Question, QuestionFinding,
-    Soak, Step, StepAction, SupplyPoint, Timed, Waiting,
+    Abnormal, AnswerKind, Criterion, CriterionKind, Each, FindingClass, PowerChange, Question,
+    QuestionFinding, Soak, Step, StepAction, SupplyPoint, Timed, Waiting,
 };
 use crate::spec::yaml::NodeKind;
 use crate::spec::{Located, nearest};
@@ -16,6 +17,11 @@ use super::sequence::{EachAllowed, axis, limits, names};
 
 /// House default: shortest soak.
 const SOAK_AT_LEAST: f64 = 600.0;
+
+/// The sampling method's longest interval and shortest log, seconds (IEC 62301 ed. 2,
+/// from memory).
+const SAMPLED_EVERY: f64 = 1.0;
+const SAMPLED_FOR: f64 = 900.0;
 
 /// House default: a body this near to ambient counts as cool.
 const COOL_WITHIN: f64 = 3.0;
@@ -120,7 +126,7 @@ fn action(field: Field<'_>, each: EachAllowed) -> Option<StepAction> {
         "supply" => StepAction::Supply(located(supply_point)(field)?),
         "position" => StepAction::Position(located_name(field)?),
         "condition" => StepAction::Condition(located_name(field)?),
-        "inrush" => StepAction::Inrush(timed(field)?),
+        "inrush" => StepAction::Inrush(inrush(field)?),
         "soak" => StepAction::Soak(soak(field)?),
         "measure" => StepAction::Measure(timed(field)?),
         "rest" => StepAction::Rest(waiting(field)?),
@@ -287,14 +293,31 @@ fn waiting(field: Field<'_>) -> Option<Waiting> {
 
 fn timed(field: Field<'_>) -> Option<Timed> {
     let fields = field.fields()?;
+    let timed = stretch(&fields);
+    fields.finish()?;
+    timed
+}
+
+/// An inrush may ask for a waveform.
+fn inrush(field: Field<'_>) -> Option<Timed> {
+    let fields = field.fields()?;
+    let timed = stretch(&fields);
+    let waveform = fields.or("waveform", false, yes_no);
+    fields.finish()?;
+    Some(Timed {
+        waveform: waveform?,
+        ..timed?
+    })
+}
+
+fn stretch(fields: &Fields<'_>) -> Option<Timed> {
     let length = fields.required("for", duration);
     let every = fields.required("every", interval);
-    let fits = fitting(&fields, ("for", length), every);
-    fields.finish()?;
-    fits?;
+    fitting(fields, ("for", length), every)?;
     Some(Timed {
         length: length?,
         every: every?,
+        waveform: false,
     })
 }
 
@@ -320,6 +343,7 @@ fn soak(field: Field<'_>) -> Option<Soak> {
     let at_most = fields.required("at most", duration);
     let every = fields.required("every", interval);
     let until = fields.required("until", criterion);
+    let early_finish = fields.or("early finish", false, yes_no);
     let ordered = match (at_least, at_most) {
         (Some(least), Some(most)) if most < least => fields.wrong(
             "at most",
@@ -329,14 +353,42 @@ fn soak(field: Field<'_>) -> Option<Soak> {
         _ => Some(()),
     };
     let fits = fitting(&fields, ("at most", at_most), every);
+    let sampled = match &until {
+        Some(until) if until.kind == CriterionKind::SamplingMethod => {
+            sampled(&fields, at_least, every)
+        }
+        _ => Some(()),
+    };
     fields.finish()?;
-    ordered.and(fits)?;
+    ordered.and(fits).and(sampled)?;
     Some(Soak {
         at_least: at_least?,
         at_most: at_most?,
         every: every?,
         until: until?,
+        early_finish: early_finish?,
     })
+}
+
+/// The sampling method asks for a log of at least 15 min at 1 s or faster.
+fn sampled(fields: &Fields<'_>, at_least: Option<Seconds>, every: Option<Seconds>) -> Option<()> {
+    let fast = match every {
+        Some(every) if every.get() > SAMPLED_EVERY => fields.wrong(
+            "every",
+            format!("the sampling method needs a reading each second, not every {every}"),
+            "write `every: 1 s` or faster (IEC 62301 ed. 2, from memory)",
+        ),
+        _ => Some(()),
+    };
+    let long = match at_least {
+        Some(least) if least.get() < SAMPLED_FOR => fields.wrong(
+            if fields.find("at least").is_some() { "at least" } else { "at most" },
+            format!("the sampling method logs for at least 15 min, and `at least` is {least}"),
+            "write `at least: 15 min` or more (IEC 62301 ed. 2, from memory); left out it is 10 min",
+        ),
+        _ => Some(()),
+    };
+    fast.and(long)
 }
 
 #[derive(Clone, Copy)]
@@ -344,18 +396,20 @@ enum CriterionWord {
     Slope,
     ThreeReadings,
     ChangeWithin,
+    SamplingMethod,
 }
 
 const CRITERIA: &[(&str, CriterionWord)] = &[
     ("slope", CriterionWord::Slope),
     ("three readings", CriterionWord::ThreeReadings),
     ("change within", CriterionWord::ChangeWithin),
+    ("sampling method", CriterionWord::SamplingMethod),
 ];
 
 fn criterion(field: Field<'_>) -> Option<Criterion> {
     let fields = field.fields()?;
     let word = fields.required("criterion", choice(CRITERIA));
-    let power_change = fields.optional("power change", quantity::<Ratio>(Allowed::Positive));
+    let power_change = fields.optional("power change", power_change);
     let temperature_change =
         fields.optional("temperature change", quantity::<Kelvins>(Allowed::Positive));
     let kind = match word {
@@ -366,6 +420,7 @@ fn criterion(field: Field<'_>) -> Option<Criterion> {
             .required("interval", duration)
             .map(|interval| CriterionKind::ChangeWithin { interval }),
         Some(CriterionWord::ThreeReadings) => Some(CriterionKind::ThreeReadings),
+        Some(CriterionWord::SamplingMethod) => Some(CriterionKind::SamplingMethod),
         None => {
             // Either may belong to the word that was meant.
             fields.optional("window", duration);
@@ -373,7 +428,16 @@ fn criterion(field: Field<'_>) -> Option<Criterion> {
             None
         }
     };
+    let own_limit = match (word, power_change) {
+        (Some(CriterionWord::SamplingMethod), Some(Some(_))) => fields.wrong(
+            "power change",
+            "the sampling method brings its own limit of the power",
+            "take it out: 10 mW/h up to 1 W, above that 1 % of the power per hour",
+        ),
+        _ => Some(()),
+    };
     let watched = match (power_change, temperature_change) {
+        _ if matches!(word, Some(CriterionWord::SamplingMethod)) => Some(()),
         (Some(None), Some(None)) => field.notes.error(
             field.key,
             "the criterion watches nothing",
@@ -382,12 +446,23 @@ fn criterion(field: Field<'_>) -> Option<Criterion> {
         _ => Some(()),
     };
     fields.finish()?;
-    watched?;
+    watched.and(own_limit)?;
     Some(Criterion {
         kind: kind?,
         power_change: power_change?,
         temperature_change: temperature_change?,
     })
+}
+
+/// `2 %` of the mean, or `50 mW`.
+fn power_change(field: Field<'_>) -> Option<PowerChange> {
+    let text = field.scalar("2 %")?;
+    match parse_written(text) {
+        Ok(written) if written.dimension == Dimension::Power => {
+            quantity::<Watts>(Allowed::Positive)(field).map(PowerChange::Absolute)
+        }
+        _ => quantity::<Ratio>(Allowed::Positive)(field).map(PowerChange::Relative),
+    }
 }
 
 fn abnormal(field: Field<'_>) -> Option<Abnormal> {
@@ -446,6 +521,8 @@ fn each_block(field: Field<'_>, allowed: EachAllowed) -> Option<Each> {
 
 #[cfg(test)]
 mod tests {
+    use super::*;
+    use crate::spec::load_sequence;
     use crate::spec::wrong_files::{Kind, wrong};
 
     #[test]
@@ -581,6 +658,27 @@ mod tests {
                 "10 %",
             ),
             wrong(
+                "every: 2 s",
+                "early finish: perhaps\n            every: 2 s",
+                "61:27",
+                "neither yes nor no",
+                "`yes`",
+            ),
+            wrong(
+                "criterion: slope, window: 5 min, power change: 2 %, temperature change: 3 K",
+                "criterion: sampling method, power change: 2 %",
+                "62:63",
+                "brings its own limit",
+                "10 mW/h",
+            ),
+            wrong(
+                "power change: 2 %",
+                "power change: 0 mW",
+                "62:68",
+                "above zero",
+                "check",
+            ),
+            wrong(
                 "{if: no, class: major}",
                 "{if: maybe, class: major}",
                 "44:21",
@@ -637,5 +735,73 @@ mod tests {
                 "at least one",
             ),
         ]);
+    }
+
+    fn soak_of(changes: &[(&str, &str)]) -> (Option<Soak>, Vec<String>) {
+        let text = Kind::Sequence.changed(changes);
+        let loaded = load_sequence("file", text.as_bytes());
+        let messages = loaded.problems.iter().map(|p| p.message.clone()).collect();
+        let soak = loaded.value.and_then(|sequence| {
+            sequence
+                .steps
+                .into_iter()
+                .find_map(|step| match step.action {
+                    StepAction::Each(each) => each.steps.into_iter().find_map(|s| match s.action {
+                        StepAction::Soak(soak) => Some(soak),
+                        _ => None,
+                    }),
+                    _ => None,
+                })
+        });
+        (soak, messages)
+    }
+
+    #[test]
+    fn a_power_change_is_a_share_or_watts_and_an_early_finish_is_asked_for() {
+        let soak = soak_of(&[]).0.expect("a soak");
+        assert!(!soak.early_finish);
+        let share = PowerChange::Relative(Ratio::of(0.02));
+        assert_eq!(soak.until.power_change, Some(share));
+        let changes = [
+            ("power change: 2 %", "power change: 50 mW"),
+            (
+                "at most: 45 min",
+                "early finish: yes\n            at most: 45 min",
+            ),
+        ];
+        let soak = soak_of(&changes).0.expect("a soak");
+        assert!(soak.early_finish);
+        let watts = PowerChange::Absolute(Watts::of(0.05));
+        assert_eq!(soak.until.power_change, Some(watts));
+        // A plan stores it as it is written, and old plans hold shares.
+        for change in [share, watts] {
+            let text = serde_json::to_string(&change).unwrap();
+            assert_eq!(serde_json::from_str::<PowerChange>(&text).unwrap(), change);
+        }
+        assert_eq!(
+            serde_json::from_str::<PowerChange>("\"2 %\"").unwrap(),
+            share
+        );
+    }
+
+    #[test]
+    fn the_sampling_method_asks_for_a_second_and_a_quarter_of_an_hour() {
+        let slope = "criterion: slope, window: 5 min, power change: 2 %, temperature change: 3 K";
+        let sampling = (slope, "criterion: sampling method");
+        let (soak, problems) = soak_of(&[sampling]);
+        assert!(soak.is_none());
+        assert_eq!(problems.len(), 2, "{problems:?}");
+        assert!(problems[0].contains("at least 15 min") || problems[1].contains("at least 15 min"));
+        assert!(problems[0].contains("each second") || problems[1].contains("each second"));
+        let changes = [
+            sampling,
+            ("at least: 10 min", "at least: 15 min"),
+            ("every: 2 s", "every: 1 s"),
+        ];
+        let (soak, problems) = soak_of(&changes);
+        assert_eq!(problems, Vec::<String>::new());
+        let until = soak.expect("a soak").until;
+        assert_eq!(until.kind, CriterionKind::SamplingMethod);
+        assert_eq!(until.power_change, None);
     }
 }
