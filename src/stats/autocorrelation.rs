@@ -141,6 +141,7 @@ impl Worth {
 #[cfg(test)]
 mod tests {
     use super::*;
+    use proptest::prelude::*;
 
     fn first_order(phi: f64, n: usize) -> f64 {
         effective_with(n, (1..n).map(|lag| libm::pow(phi, lag as f64)))
@@ -238,5 +239,21 @@ mod tests {
         let found = effective_of(&[4.0; 12]).unwrap();
         assert_eq!((found.effective, found.scatter), (12.0, 0.0));
         assert_eq!(effective_of(&[1.0, 2.0]), None);
+    }
+
+    proptest! {
+        #[test]
+        fn never_more_than_n_and_the_same_in_every_unit(
+            values in prop::collection::vec(-5.0..5.0f64, 3..80),
+            unit in 1e-3..1e3f64, offset in -100.0..100.0f64,
+        ) {
+            let found = effective_of(&values).unwrap();
+            prop_assert!(found.effective > 0.0 && found.effective <= values.len() as f64);
+            let scaled: Vec<f64> = values.iter().map(|v| v * unit + offset).collect();
+            let other = effective_of(&scaled).unwrap();
+            // A rho that is zero but for rounding may fall on either side of the cut.
+            let same = (found.by_cut / other.by_cut - 1.0).abs() < 1e-6;
+            prop_assert!(same || found.lags != other.lags);
+        }
     }
 }

@@ -58,7 +58,7 @@ fn lower_end(k: u64, n: u64, tail: f64) -> f64 {
         let (x, y) = share(odds);
         beta(k as f64, (n - k + 1) as f64, x, y) - tail
     };
-    // 1e-6 / n and k / n (the share itself) hold every lower end between them.
+    // From two successes on, every lower end lies between 1e-7 / n and k / n.
     let observed = libm::log(k as f64 / (n - k) as f64);
     let least = libm::log(1e-7 / n as f64);
     share(root(misses, least, observed)).0

@@ -319,6 +319,7 @@ fn rough_start(residuals: &[f64]) -> bool {
 #[cfg(test)]
 mod tests {
     use super::*;
+    use proptest::prelude::*;
 
     /// A rise from 20 towards 80 with tau 600, a reading every 10 s from 1000 s on.
     fn rise(n: usize, noise: impl Fn(usize) -> f64) -> Vec<(f64, f64)> {
@@ -416,5 +417,26 @@ mod tests {
             .collect();
         // No panic, whatever it says.
         let _ = first_order(&points);
+    }
+
+    proptest! {
+        #[test]
+        fn another_unit_changes_nothing_but_the_unit(
+            end in -50.0..150.0f64, amplitude in 1.0..80.0f64, tau in 200.0..2000.0f64,
+            unit in 0.1..10.0f64, falls in any::<bool>(),
+        ) {
+            let height = if falls { amplitude } else { -amplitude };
+            let points: Vec<(f64, f64)> = (0..120)
+                .map(|i| (i as f64 * 20.0, i))
+                .map(|(t, i)| (t, end + height * libm::exp(-t / tau) + 0.01 * scatter(i)))
+                .collect();
+            let scaled: Vec<(f64, f64)> =
+                points.iter().map(|(t, y)| (t * unit, y * unit)).collect();
+            let (one, other) = (first_order(&points).unwrap(), first_order(&scaled).unwrap());
+            prop_assert!((one.end - end).abs() < 6.0 * one.end_error, "{:?}", one);
+            prop_assert!((other.end / unit - one.end).abs() < 1e-4 * one.end_error);
+            prop_assert!((other.tau / unit - one.tau).abs() < 1e-4 * one.tau_error);
+            prop_assert!((other.end_error / unit / one.end_error - 1.0).abs() < 1e-4);
+        }
     }
 }

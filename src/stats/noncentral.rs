@@ -141,7 +141,7 @@ pub fn tolerance_factor_two_sided(n: usize, share: f64, confidence: f64) -> Opti
 /// The root of `n`, where a factor can be said.
 fn asked(n: usize, share: f64, confidence: f64) -> Option<f64> {
     let known = 0.5..=1.0 - 1e-6;
-    (n >= 2 && n <= 1_000_000 && known.contains(&share) && known.contains(&confidence))
+    ((2..=1_000_000).contains(&n) && known.contains(&share) && known.contains(&confidence))
         .then(|| (n as f64).sqrt())
 }
 
