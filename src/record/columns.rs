@@ -152,8 +152,13 @@ impl Names {
     }
 }
 
-/// Quantities that a plan's record has a column for. Raw readings of sensors are rare,
-/// so their columns are there only where a driver of the plan gives them: records
+/// Readings that most benches have no use for.
+fn is_rare(reading: Reading) -> bool {
+    is_raw(reading) || reading == Reading::Energy
+}
+
+/// Quantities that a plan's record has a column for. Raw readings of sensors and energy
+/// counters are rare, so their columns are there only where a driver of the plan gives them: records
 /// without them keep the columns that they always had.
 fn columns_of(plan: &Plan) -> Vec<Reading> {
     let given = |reading: Reading| {
@@ -164,7 +169,7 @@ fn columns_of(plan: &Plan) -> Vec<Reading> {
     };
     Reading::ALL
         .into_iter()
-        .filter(|reading| !is_raw(*reading) || given(*reading))
+        .filter(|reading| !is_rare(*reading) || given(*reading))
         .collect()
 }
 
