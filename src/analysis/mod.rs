@@ -81,6 +81,7 @@ pub fn analyse(input: &Input) -> Analysis {
         cells,
         openings: views.iter().flat_map(opening::openings).collect(),
         looked: looked(input.happenings),
+        history: history(input.happenings),
         tripped: tripped(input),
         notes,
     }
@@ -173,6 +174,18 @@ fn looked(happenings: &[Happening]) -> Vec<Looked> {
                 answer: answer.clone(),
                 class: *finding,
             }),
+            _ => None,
+        })
+        .collect()
+}
+
+fn history(happenings: &[Happening]) -> Vec<String> {
+    happenings
+        .iter()
+        .filter_map(|happening| match &happening.event {
+            Event::Marked { mark, by, record } => {
+                Some(format!("record {record} left it marked `{mark}`: {by}"))
+            }
             _ => None,
         })
         .collect()

@@ -225,3 +225,119 @@ fn referred(appliance: &PlannedAppliance, steady: &Steady, to: f64) -> Result<Es
     lines.push(line.times(value * ratio));
     Ok(here.scaled(factor).moved(0.0, lines))
 }
+
+#[cfg(test)]
+mod tests {
+    use super::super::fixture::{Now, Seen, good, plan, play};
+    use super::*;
+    use crate::analysis::Analysis;
+    use crate::quantity::Celsius;
+
+    fn cells(plan: Plan, unit: impl Fn(Now) -> Seen) -> Analysis {
+        play(plan, unit).analysis()
+    }
+
+    /// The same plan with a second supply for every cell: 220 V beside 230 V.
+    fn two_supplies() -> Plan {
+        let mut plan = plan(&["full", "again"]);
+        for cell in &mut plan.cells {
+            if cell.condition.as_deref() == Some("again") {
+                cell.condition = Some("full".to_owned());
+                cell.supply.voltage = crate::quantity::Volts::of(220.0);
+            }
+        }
+        plan
+    }
+
+    #[test]
+    fn an_input_is_referred_to_the_reference_ambient_and_widened_by_the_effect() {
+        let at = |reference: f64| {
+            let mut plan = plan(&["full"]);
+            plan.appliance.reference_ambient = Some(Celsius::of(reference));
+            cells(plan, good).cells[0].steady.clone()
+        };
+        let here = at(23.0).known().unwrap().power_w.clone();
+        let cooler = at(18.0).known().unwrap().power_w.clone();
+        // 5 K at 0.6 to 1 share of a rise of 40 K: 10 % more at 0.8 (computed).
+        let expected = here.value * libm::exp(0.8 * 5.0 / 40.0);
+        assert!((cooler.value / expected - 1.0).abs() < 0.002, "{cooler:?}");
+        let effect = cooler
+            .budget
+            .iter()
+            .find(|l| l.from.contains("of ambient,"));
+        let width = 0.2 / 40.0 * 5.0 * cooler.value / 3f64.sqrt();
+        assert!((effect.unwrap().standard / width - 1.0).abs() < 0.02);
+        assert!(cooler.expanded > here.expanded);
+        assert!(
+            at(5.0)
+                .reason()
+                .unwrap()
+                .contains("no input is corrected so far")
+        );
+    }
+
+    #[test]
+    fn a_plain_resistor_does_not_feel_the_room() {
+        let mut plan = plan(&["full"]);
+        plan.appliance.element = HeatingElement::Resistor;
+        plan.appliance.reference_ambient = Some(Celsius::of(5.0));
+        let found = cells(plan, good);
+        let steady = found.cells[0].steady.known().unwrap();
+        assert!((steady.power_w.value - 4.3).abs() < 0.01);
+    }
+
+    #[test]
+    fn two_supplies_measure_the_exponent() {
+        let plan = two_supplies();
+        let supplies: Vec<f64> = plan.cells.iter().map(|c| c.supply.voltage.get()).collect();
+        let found = cells(plan, |now| {
+            let seen = good(now);
+            let volts = now.cell.map_or(230.0, |cell| supplies[cell]);
+            // d ln P / d ln V = 0.6.
+            let factor = libm::exp(0.6 * libm::log(volts / 230.0));
+            Seen {
+                volts: seen.volts * volts / 230.0,
+                watts: seen.watts * factor,
+                ..seen
+            }
+        });
+        for cell in &found.cells {
+            let steady = cell.steady.known().unwrap();
+            // The meter's own accuracy is wider than the house interval here, unless it
+            // is known better; what is taken never is known worse.
+            assert!(steady.exponent.standard <= 0.3 / 3f64.sqrt() + 1e-12);
+            let measured = measured_exponent(
+                &crate::analysis::fixture::plan(&["full"]).appliance,
+                steady,
+                other(&found, cell),
+            );
+            let measured = measured.unwrap();
+            assert!(
+                (measured.value - 0.6).abs() < 2.0 * measured.standard,
+                "{measured:?}"
+            );
+        }
+    }
+
+    fn other<'a>(found: &'a Analysis, cell: &CellResult) -> &'a Steady {
+        found
+            .cells
+            .iter()
+            .find(|c| c.cell.position == cell.cell.position && c.cell.supply != cell.cell.supply)
+            .and_then(|c| c.steady.known())
+            .unwrap()
+    }
+
+    #[test]
+    fn no_heater_has_such_an_exponent() {
+        let found = cells(plan(&["full"]), good);
+        let one = found.cells[0].steady.known().unwrap();
+        let appliance = plan(&["full"]).appliance;
+        // The same supply twice says nothing.
+        assert_eq!(measured_exponent(&appliance, one, one), None);
+        let mut strange = one.clone();
+        strange.plug_v.value = 240.0;
+        strange.at_plug_w.value *= 3.0;
+        assert_eq!(measured_exponent(&appliance, one, &strange), None);
+    }
+}

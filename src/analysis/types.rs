@@ -298,6 +298,9 @@ pub struct Analysis {
     pub openings: Vec<Opening>,
     /// What the operator saw.
     pub looked: Vec<Looked>,
+    /// Marks that earlier records left on the unit, in words.
+    #[serde(default)]
+    pub history: Vec<String>,
     /// The guard that tripped, where one did.
     pub tripped: Option<String>,
     /// Notes for the reader.

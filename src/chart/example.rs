@@ -444,6 +444,7 @@ pub fn stage(model: &str, cells: &[(Option<&str>, &str, f64, Behaviour)]) -> Sta
         cells: results,
         openings: Vec::new(),
         looked: Vec::new(),
+        history: Vec::new(),
         tripped: None,
         notes: Vec::new(),
     };

@@ -94,6 +94,11 @@ fn block(sheet: &mut Sheet, scene: &Scene, header: &Header) -> Result<(), DrawEr
     } else {
         sheet.text((MARGIN, 97.0), &time, SMALL, Align::Left)?;
     }
+    if scene.judgement.other_rules.is_some() {
+        let face = Face::bold(SMALL.em, SMALL.ink);
+        let words = "judged by other rules than those fixed before the run";
+        sheet.text((right, 104.0), words, face, Align::Right)?;
+    }
     let rule = Stroke::solid(RULE, 1.0);
     sheet.line((MARGIN, BLOCK_END), (right, BLOCK_END), rule)
 }

@@ -125,6 +125,9 @@ pub struct Run {
     /// Only the verdict, the record's path, prompts and complaints
     #[arg(long)]
     pub quiet: bool,
+    /// The unit has a new thermal link: a mark `link stressed` from earlier records is gone
+    #[arg(long)]
+    pub link_replaced: bool,
     /// Answer every prompt well; refused unless every instrument says that it is virtual
     #[arg(long)]
     pub yes: bool,
@@ -138,6 +141,9 @@ pub struct Run {
 pub struct Judge {
     /// The record's folder
     pub record: PathBuf,
+    /// Judge by the rules of another sequence than the one that was run; every output says so
+    #[arg(long, value_name = "SEQUENCE")]
+    pub rules: Option<PathBuf>,
 }
 
 /// `stage`

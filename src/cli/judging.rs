@@ -3,12 +3,17 @@
 use std::path::{Path, PathBuf};
 
 use super::exit::Exit;
+use super::files;
 use super::say::{complain, say};
 use super::table::verdict_table;
 use crate::analysis::{self, Analysis};
 use crate::chart::{self, Scene};
 use crate::judge::{self, Judgement};
-use crate::record::{Folder, RecordError, RunOutcome, newest_judgement, write_judgement};
+use crate::plan::{PlannedRule, other_rules};
+use crate::record::{
+    Folder, RecordError, RunOutcome, newest_judgement, sha256_of, write_judgement,
+};
+use crate::spec::{self, shipped};
 
 /// Why a record could not be judged.
 #[derive(Debug, thiserror::Error)]
@@ -50,7 +55,22 @@ pub struct Judged {
 /// # Errors
 /// [`JudgingError`]; a record that was never closed is not judged.
 pub fn judge_record(path: &Path) -> Result<Judged, JudgingError> {
-    let folder = Folder::open(path)?;
+    judged(Folder::open(path)?, None)
+}
+
+/// Other rules than those that the record's plan holds.
+struct OtherRules {
+    rules: Vec<PlannedRule>,
+    whose: String,
+}
+
+fn judged(mut folder: Folder, other: Option<OtherRules>) -> Result<Judged, JudgingError> {
+    let path = folder.path().to_owned();
+    let path = path.as_path();
+    let whose = other.map(|other| {
+        folder.plan.rules = other.rules;
+        other.whose
+    });
     let analysis = analysis::analyse(&analysis::Input {
         plan: &folder.plan,
         samples: &folder.samples,
@@ -58,7 +78,10 @@ pub fn judge_record(path: &Path) -> Result<Judged, JudgingError> {
         waveforms: &folder.waveforms,
         outcome: &folder.manifest.outcome,
     });
-    let judgement = judge::judge(&folder.plan, &folder.manifest.outcome, &analysis);
+    let judgement = Judgement {
+        other_rules: whose,
+        ..judge::judge(&folder.plan, &folder.manifest.outcome, &analysis)
+    };
     let before = newest_judgement(path, "judgement.json")
         .ok()
         .flatten()
@@ -127,8 +150,17 @@ fn write_annex(
 }
 
 /// `judge`: the table, what changed since the judgement before, the exit code.
-pub fn judge_again(path: &Path) -> Exit {
-    match judge_record(path) {
+pub fn judge_again(path: &Path, rules: Option<&Path>) -> Exit {
+    let opened = Folder::open(path).map_err(JudgingError::from);
+    let found = match (opened, rules) {
+        (Ok(folder), Some(rules)) => match rules_of(&folder, rules) {
+            Ok(other) => judged(folder, Some(other)),
+            Err(exit) => return exit,
+        },
+        (Ok(folder), None) => judged(folder, None),
+        (Err(error), _) => Err(error),
+    };
+    match found {
         Ok(judged) => {
             print_judged(&judged);
             exit_of(&judged)
@@ -138,6 +170,30 @@ pub fn judge_again(path: &Path) -> Exit {
             Exit::Record
         }
     }
+}
+
+/// The rules of another sequence, for the plan of a record.
+fn rules_of(folder: &Folder, path: &Path) -> Result<OtherRules, Exit> {
+    let document = files::read(path, shipped::SEQUENCES)?;
+    let loaded = spec::load_sequence(&document.name, &document.bytes);
+    let Some(sequence) = loaded.value else {
+        complain(spec::render(&loaded.problems).trim_end());
+        return Err(Exit::BadInput);
+    };
+    let rules = other_rules(&sequence, &folder.plan).map_err(|problems| {
+        complain(spec::render(&problems).trim_end());
+        Exit::BadInput
+    })?;
+    Ok(OtherRules {
+        rules,
+        whose: format!(
+            "not those fixed before the run (edition {}), but those of {}, edition {}, SHA-256 {}",
+            folder.plan.edition,
+            files::file_name_of(&document.name),
+            sequence.edition.value,
+            sha256_of(&document.bytes)
+        ),
+    })
 }
 
 /// Prints the verdict table and where everything is.

@@ -10,6 +10,7 @@ use super::exit::Exit;
 use super::files::{Prepared, prepare};
 use super::finish::finish;
 use super::hands::VirtualOperator;
+use super::history;
 use super::progress::Lines;
 use super::record_new::{self, Identity};
 use super::say::complain;
@@ -108,7 +109,16 @@ async fn on_bench(
         operator: &args.operator,
         seed: None,
     };
-    let (path, journal) = record_new::open(&args.reports, &prepared, &identity, &clock)?;
+    // Only an instrument's reply says that it is virtual; these are refused on real ones.
+    let virtual_bench = args.yes || args.speed != 1.0;
+    let history = history::of_unit(
+        &args.reports,
+        unit.as_str(),
+        virtual_bench,
+        args.link_replaced,
+    );
+    let (path, mut journal) = record_new::open(&args.reports, &prepared, &identity, &clock)?;
+    record_new::tell(&path, &mut journal, history)?;
     let (stop, stopped) = watch::channel(false);
     tokio::spawn(watch_signals(stop));
     let bay = Bay {

@@ -8,6 +8,7 @@ mod exit;
 mod files;
 mod finish;
 mod hands;
+mod history;
 mod judging;
 mod known_truth;
 mod live;
@@ -49,7 +50,7 @@ fn obey(verb: &Verb) -> Exit {
         Verb::Check(args) => check::check(args),
         Verb::Rehearse(args) => rehearse::rehearse(args),
         Verb::Run(args) => live::run(args),
-        Verb::Judge(args) => judging::judge_again(&args.record),
+        Verb::Judge(args) => judging::judge_again(&args.record, args.rules.as_deref()),
         Verb::Stage(args) => stage(args),
         Verb::KnownTruth(args) => known_truth::known_truth(args),
         Verb::Cautions => cautions::show(),

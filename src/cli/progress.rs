@@ -69,6 +69,10 @@ fn told(plan: &Plan, event: &Event) -> Option<Told> {
         Event::Lost { detail, .. } => trouble(detail.clone()),
         Event::Stopped => trouble("stopped by the operator".to_owned()),
         Event::Noted { text } => trouble(text.clone()),
+        Event::Marked { mark, by, record } => trouble(format!(
+            "record {record} left the unit marked `{mark}`: {by}"
+        )),
+        Event::LinkReplaced => trouble("the unit has a new thermal link".to_owned()),
         Event::Started { .. }
         | Event::CautionsAcknowledged { .. }
         | Event::StepBegan { .. }

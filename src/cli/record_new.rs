@@ -7,7 +7,8 @@ use super::exit::Exit;
 use super::files::{Prepared, file_name_of};
 use super::say::complain;
 use crate::clock::Clock;
-use crate::record::{Flushing, FolderStore, Heading, Journal, UnitNumber, sha256_of};
+use crate::quantity::Moment;
+use crate::record::{Event, Flushing, FolderStore, Heading, Journal, UnitNumber, sha256_of};
 
 /// What tells one record from another.
 pub struct Identity<'a> {
@@ -61,6 +62,28 @@ pub fn open(
     )
     .map_err(|e| unwritable(&path, e))?;
     Ok((path, journal))
+}
+
+/// Writes what is known of the unit before its run begins.
+///
+/// # Errors
+/// [`Exit::Record`] after the reason was printed: nothing was energised.
+pub fn tell(path: &Path, journal: &mut Journal, events: Vec<Event>) -> Result<(), Exit> {
+    for event in events {
+        if let Event::Marked { mark, by, record } = &event {
+            complain(&format!(
+                "warning: record {record} left this unit marked `{mark}`: {by}\n  it is not judged as good; after replacing the link say --link-replaced"
+            ));
+        }
+        journal.event(Moment::START, event).map_err(|error| {
+            complain(&format!(
+                "error: {}: the record can't be written: {error}; nothing was energised",
+                path.display()
+            ));
+            Exit::Record
+        })?;
+    }
+    Ok(())
 }
 
 /// From plan, unit, seed and start: the same for the same rehearsal, on every machine.

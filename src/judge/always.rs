@@ -62,6 +62,12 @@ fn near_its_trip(plan: &Plan, result: &CellResult) -> bool {
     at_least(body.value + body.expanded, limit.get())
 }
 
+/// A unit that an earlier record marked is not judged as good.
+pub(super) fn history(analysis: &Analysis) -> Option<Finding> {
+    let first = analysis.history.first()?;
+    Some(Draft::house("the unit's history", "").not_judged(None, first))
+}
+
 /// Each position draws a settled input worth the name, and keeps drawing it.
 pub(super) fn works_at_all(plan: &Plan, analysis: &Analysis) -> Vec<Finding> {
     by_position_and_supply(analysis, |_| true)

@@ -33,6 +33,7 @@ use crate::spec::sequence::{ApplianceKind, RuleWeight, Span};
 /// of the record.
 pub fn judge(plan: &Plan, outcome: &RunOutcome, analysis: &Analysis) -> Judgement {
     let mut findings = vec![always::run(plan, outcome, analysis)];
+    findings.extend(always::history(analysis));
     findings.extend(always::works_at_all(plan, analysis));
     findings.extend(always::believable(plan, analysis));
     findings.extend(always::plate_positions(plan));

@@ -5,7 +5,7 @@ use crate::quantity::shortest;
 use crate::record::defused;
 use crate::spec::sequence::RuleWeight;
 
-const HEAD: [&str; 17] = [
+const HEAD: [&str; 18] = [
     "rule",
     "condition",
     "position",
@@ -23,6 +23,7 @@ const HEAD: [&str; 17] = [
     "probability",
     "source",
     "reason",
+    "rules",
 ];
 
 /// `findings.csv` in bytes; the unit of value, U, limits and margin stands beside them.
@@ -32,15 +33,19 @@ const HEAD: [&str; 17] = [
 pub fn findings_csv(judgement: &Judgement) -> Result<Vec<u8>, csv::Error> {
     let mut writer = csv::Writer::from_writer(Vec::new());
     writer.write_record(HEAD)?;
+    let rules = judgement
+        .other_rules
+        .as_deref()
+        .map_or_else(|| "fixed before the run".to_owned(), defused);
     for finding in &judgement.findings {
-        writer.write_record(row(finding))?;
+        writer.write_record(row(finding, &rules))?;
     }
     writer
         .into_inner()
         .map_err(|e| csv::Error::from(e.into_error()))
 }
 
-fn row(finding: &Finding) -> [String; 17] {
+fn row(finding: &Finding, rules: &str) -> [String; 18] {
     let number = |value: Option<f64>| value.map_or_else(String::new, shortest);
     let text = |value: &Option<String>| defused(value.as_deref().unwrap_or(""));
     let weight = match finding.weight {
@@ -65,5 +70,6 @@ fn row(finding: &Finding) -> [String; 17] {
         number(finding.probability),
         defused(&finding.source),
         defused(&finding.reason),
+        rules.to_owned(),
     ]
 }

@@ -552,3 +552,141 @@ fn a_cooler_guard_changes_no_verdict_of_a_complete_run() {
     plan.guards.body = Some(Celsius::of(50.0));
     assert_eq!(judged(&play(plan, good)).verdict, Outcome::Pass);
 }
+
+/// A good unit whose rises are scaled, so that its body comes to a wanted temperature.
+fn warmed(now: Now, factor: f64) -> Seen {
+    let seen = good(now);
+    Seen {
+        body: 23.0 + factor * (seen.body - 23.0),
+        ..seen
+    }
+}
+
+#[test]
+fn a_unit_with_a_fan_is_judged_only_when_both_ends_of_its_range_are_run() {
+    let mut with_fan = plan(&["full"]);
+    with_fan.appliance.fan = true;
+    with_fan.rules = vec![rule(RuleKind::LinkHolding)];
+    let range = |low: f64, high: f64| crate::spec::sequence::Span {
+        low: Volts::of(low),
+        high: Volts::of(high),
+    };
+    with_fan.appliance.supply_range = Some(range(230.0, 230.0));
+    let run = |plan: &Plan| judged(&play(plan.clone(), good));
+    assert_eq!(run(&with_fan).verdict, Outcome::Pass);
+    with_fan.appliance.supply_range = Some(range(220.0, 240.0));
+    let judgement = run(&with_fan);
+    assert_eq!(judgement.verdict, Outcome::NotJudged);
+    assert!(
+        judgement.because.contains("220 V and 240 V"),
+        "{}",
+        judgement.because
+    );
+}
+
+#[test]
+fn a_house_rule_takes_the_lower_of_th_and_a_distance_below_tf() {
+    // Tf 121, Th 100: 25 K below Tf is 96; the body at 35 °C ambient comes to 95.
+    let with = |below: f64| {
+        let house = RuleKind::LinkHouse {
+            below_tf: Kelvins::of(below),
+        };
+        find(
+            &with_rule(rule(house), good),
+            "thermal link, house",
+            Some("high"),
+        )
+        .clone()
+    };
+    assert_eq!(with(25.0).at_most, Some(96.0));
+    assert_eq!(with(5.0).at_most, Some(100.0));
+    assert_eq!(with(30.0).outcome, Outcome::Fail);
+}
+
+#[test]
+fn where_only_the_outside_is_measured_a_house_limit_says_so() {
+    let mut plan = plan(&["full"]);
+    plan.rules = vec![rule(RuleKind::LinkHolding)];
+    plan.appliance.link.as_mut().unwrap().measured_at =
+        crate::spec::sequence::MeasuredAt::OutsideOnly {
+            place: "outlet grille".to_owned(),
+            limit: Celsius::of(110.0),
+        };
+    let judgement = judged(&play(plan, good));
+    let finding = find(&judgement, "outlet grille", Some("high"));
+    assert_eq!(finding.outcome, Outcome::Pass);
+    assert!(finding.source.contains("the link was not measured"));
+}
+
+#[test]
+fn a_body_above_th_marks_the_unit_and_a_marked_unit_is_not_judged_as_good() {
+    let judgement = judged(&play(plan(&["full"]), good));
+    assert_eq!(judgement.marks, Vec::new());
+    let judgement = judged(&play(plan(&["full"]), |now| warmed(now, 1.3)));
+    assert!(matches!(judgement.marks[..], [Mark::LinkStressed { .. }]));
+    let mut marked = play(plan(&["full"]), good);
+    marked.happenings[0].event = Event::Marked {
+        mark: "link stressed".to_owned(),
+        by: "its body reached 105 °C".to_owned(),
+        record: "r1".to_owned(),
+    };
+    let judgement = judged(&marked);
+    assert_eq!(judgement.verdict, Outcome::NotJudged);
+    assert!(
+        judgement.because.contains("link stressed"),
+        "{}",
+        judgement.because
+    );
+}
+
+#[test]
+fn a_measurement_that_is_too_coarse_for_its_limits_is_not_judged() {
+    let coarse = |digit: f64, floor: f64| {
+        let mut plan = plan(&["full"]);
+        plan.rules = vec![rule(RuleKind::PlatePower)];
+        let meter = &mut plan.instruments[1].driver.accuracy;
+        let power = meter
+            .iter_mut()
+            .find(|a| a.reading == crate::quantity::Reading::Power)
+            .unwrap();
+        (power.resolution, power.floor) = (digit, floor);
+        find(&judged(&play(plan, good)), "power against", Some("low")).clone()
+    };
+    // 4.5 W + 20 % leaves 0.9 W.
+    assert_eq!(coarse(0.08, 0.005).outcome, Outcome::Pass);
+    let found = coarse(0.1, 0.005);
+    assert_eq!(found.outcome, Outcome::NotJudged);
+    assert!(
+        found.reason.contains("more than a tenth"),
+        "{}",
+        found.reason
+    );
+    let found = coarse(0.001, 0.9);
+    assert_eq!(found.outcome, Outcome::NotJudged);
+    assert!(
+        found.reason.contains("that the limit leaves"),
+        "{}",
+        found.reason
+    );
+}
+
+#[test]
+fn a_simple_decision_judges_nothing_beyond_its_largest_u() {
+    let with = |largest: f64| {
+        let simple = PlannedRule {
+            decision: Decision::SimpleUpTo { largest },
+            ..rule(RuleKind::LinkHolding)
+        };
+        find(&with_rule(simple, good), "thermal link", Some("high")).clone()
+    };
+    let judged = with(3.0);
+    assert_eq!(judged.outcome, Outcome::Pass);
+    assert!(judged.decision.unwrap().contains("U at most 3 K") || judged.unit == "°C");
+    let refused = with(0.5);
+    assert_eq!(refused.outcome, Outcome::NotJudged);
+    assert!(
+        refused.reason.contains("stated for U up to"),
+        "{}",
+        refused.reason
+    );
+}

@@ -8,6 +8,7 @@ mod guards;
 mod intervals;
 mod meter;
 mod notes;
+mod other_rules;
 mod ratings;
 mod reference;
 mod resolve;
@@ -23,6 +24,7 @@ mod waveform;
 mod wiring;
 mod words;
 
+pub use other_rules::other_rules;
 pub use resolve::{Resolved, resolve};
 pub use types::{
     Action, Cell, Guards, PLAN_FORMAT, Plan, PlannedAppliance, PlannedBay, PlannedInstrument,

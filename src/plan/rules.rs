@@ -60,7 +60,8 @@ pub(super) fn rules(
     planned
 }
 
-fn planned(rule: &Rule) -> PlannedRule {
+/// One rule as the plan keeps it.
+pub(super) fn planned(rule: &Rule) -> PlannedRule {
     PlannedRule {
         kind: rule.kind.value.clone(),
         decision: rule.decision,

@@ -172,6 +172,17 @@ pub enum Event {
         /// What was sent, received, and how long was waited.
         detail: String,
     },
+    /// An earlier record left a mark on the unit.
+    Marked {
+        /// The mark, in words.
+        mark: String,
+        /// By what.
+        by: String,
+        /// Which record.
+        record: String,
+    },
+    /// The operator says that the unit has a new thermal link.
+    LinkReplaced,
     /// The operator stopped the run.
     Stopped,
     /// Something worth knowing.

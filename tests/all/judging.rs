@@ -164,3 +164,65 @@ fn something_that_is_no_record_is_told() {
     assert_eq!(code, 13, "{text}");
     assert!(text.contains("nowhere"), "{text}");
 }
+
+/// Judging by other rules is told on the screen, in the findings and in the judgement.
+#[test]
+fn other_rules_than_those_of_the_run_are_told_everywhere() {
+    let (folder, record) = rehearsed();
+    let stricter = SHORT.replace("edition: \"1\"", "edition: \"2\"");
+    let from = stricter.find("rules:").unwrap();
+    let rules = "rules:\n  - power: {at most: 5 W}\n    position: high\n";
+    fs::write(
+        folder.path().join("other.yaml"),
+        format!("{}{rules}", &stricter[..from]),
+    )
+    .unwrap();
+    let judge_by = |file: &str| {
+        let record = record.to_str().unwrap();
+        let output = program(folder.path(), &["judge", record, "--rules", file]);
+        (output.status.code(), printed(&output))
+    };
+    let (code, text) = judge_by("other.yaml");
+    assert_eq!(code, Some(4), "{text}");
+    let flat = text.split_whitespace().collect::<Vec<_>>().join(" ");
+    assert!(
+        flat.contains("not those fixed before the run (edition 1)"),
+        "{text}"
+    );
+    let read = |name: &str| {
+        let file = record.join("judgements/0002").join(name);
+        fs::read_to_string(file).unwrap()
+    };
+    for name in ["judgement.json", "findings.csv"] {
+        assert!(
+            read(name).contains("not those fixed before the run"),
+            "{name}"
+        );
+    }
+    let before = fs::read_to_string(record.join("judgements/0001/findings.csv")).unwrap();
+    assert!(before.contains("fixed before the run") && !before.contains("not those"));
+    // Names that the record does not know are refused, with their place.
+    let unknown = stricter.replace("position: high", "position: turbo");
+    assert_ne!(unknown, stricter);
+    fs::write(folder.path().join("unknown.yaml"), unknown).unwrap();
+    let (code, text) = judge_by("unknown.yaml");
+    assert_eq!(code, Some(10), "{text}");
+    assert!(
+        text.contains("unknown.yaml:") && text.contains("turbo"),
+        "{text}"
+    );
+}
+
+/// Every judgement holds the budgets of its results, the largest line first.
+#[test]
+fn a_judgement_holds_its_budgets() {
+    let (_folder, record) = rehearsed();
+    let text = fs::read_to_string(record.join("judgements/0001/budgets.txt")).unwrap();
+    assert!(text.contains("degrees of freedom"), "{text}");
+    assert!(
+        text.contains("contact of the sensor, reads up to 1 %"),
+        "{text}"
+    );
+    let csv = fs::read_to_string(record.join("judgements/0001/budgets.csv")).unwrap();
+    assert!(csv.lines().count() > 20);
+}
