@@ -38,6 +38,8 @@ pub(super) struct Window {
     pub(super) power_to_come_w: Option<(f64, f64)>,
     /// The same of the body's rise, K.
     pub(super) rise_to_come_k: Option<(f64, f64)>,
+    /// Time constant of the body's rise, s, where a fit of it holds.
+    pub(super) rise_tau_s: Option<f64>,
     /// Where the soak was ended early.
     pub(super) extrapolated: Option<Extrapolated>,
 }
@@ -125,6 +127,7 @@ fn window(settle: &mut Settle, from: Moment, to: Moment, criterion: String) -> W
         criterion: format!("{criterion}{still}"),
         power_to_come_w: power,
         rise_to_come_k: rise,
+        rise_tau_s: told.rise.map(|p| p.tau_s),
         extrapolated: None,
     }
 }
@@ -140,7 +143,9 @@ fn ended_early(
     let track = view.energised(view.meter, Reading::Power);
     let last = mean(within(&track, from_s, window.to_s)).unwrap_or(0.0);
     // A rise that meets the criterion by itself still has its remaining error.
+    let tau_s = rise.map(|p| p.tau_s);
     let rise = rise.map(|p| (p.still_to_come, p.end_standard));
+    let rise_tau_s = tau_s.or(window.rise_tau_s);
     let (to_come, rise_standard) = rise.or(window.rise_to_come_k).unwrap_or_default();
     let extrapolated = Extrapolated {
         power_w: power.map_or(last, |p| p.end),
@@ -150,6 +155,7 @@ fn ended_early(
     };
     Window {
         from_s,
+        rise_tau_s,
         extrapolated: Some(extrapolated),
         ..window
     }

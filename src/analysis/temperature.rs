@@ -136,7 +136,7 @@ fn worst(
         None => window.rise_to_come_k.unwrap_or((0.0, 0.0)),
     };
     let seen = peak.temperature_degc.moved(
-        to_come.max(0.0),
+        to_come.max(0.0) * left_at_off(view, window),
         [Share::normal(
             "rise still to come, predicted",
             standard,
@@ -146,6 +146,16 @@ fn worst(
     let at_room = at_highest_ambient(view, seen, peak.ambient_degc)?;
     let at_supply = at_highest_supply(view, at_room, peak, steady)?;
     at_the_link(view, at_supply, steady)
+}
+
+/// Which share of the rise that was still to come at the end of the criterion's window
+/// is still to come at OFF: what was climbed meanwhile lies in the peak.
+fn left_at_off(view: &CellView, window: &Window) -> f64 {
+    let since = view.energised_until_s().map(|off| off - window.to_s);
+    match (since, window.rise_tau_s) {
+        (Some(since), Some(tau)) if since > 0.0 && tau > 0.0 => libm::exp(-since / tau),
+        _ => 1.0,
+    }
 }
 
 /// Moves a temperature to the highest ambient: 1 K per K, unless the sequence states

@@ -2,7 +2,7 @@
 //! until nothing changes any more, without an instrument between.
 //!
 //! - **Power**: active power at exactly the voltage that the cell is run at, settled, in
-//!   the unit's own room; mean over a whole wander of the room.
+//!   a room at the plan's reference ambient; mean over a whole wander of the room.
 //! - **Worst case**: the settled rise of the link's body over the room, and what it still
 //!   climbs after OFF, at that voltage and at the highest ambient (1 K/K, which is how
 //!   the rule defines it).
@@ -13,7 +13,7 @@ use super::TruthError;
 use super::setting::Setting;
 use super::unit::Unit;
 use crate::plan::Cell;
-use crate::quantity::{Moment, Seconds};
+use crate::quantity::{Celsius, Moment, Seconds};
 use crate::spec::sequence::RoleKind;
 use crate::virtual_bench::{Errors, Staging, VirtualBench};
 
@@ -51,10 +51,12 @@ pub(super) fn staging(setting: &Setting, unit: &Unit) -> Staging {
 
 /// The truth of a unit in a cell.
 pub(super) fn settled(setting: &Setting, unit: &Unit, cell: &Cell) -> Result<Settled, TruthError> {
-    let (power_w, rise_k) = followed(setting, unit, cell, 0.0)?;
+    let reference = setting.plan.appliance.reference_ambient;
+    let (power_w, _) = followed(setting, unit, cell, (0.0, reference.unwrap_or(unit.room)))?;
+    let (_, rise_k) = followed(setting, unit, cell, (0.0, unit.room))?;
     let seen_k = match unit.supply {
         0.0 => rise_k,
-        off => followed(setting, unit, cell, off)?.1,
+        off => followed(setting, unit, cell, (off, unit.room))?.1,
     };
     let room = unit.room.get();
     let hottest = setting.plan.appliance.highest_ambient.get();
@@ -66,18 +68,22 @@ pub(super) fn settled(setting: &Setting, unit: &Unit, cell: &Cell) -> Result<Set
 }
 
 /// Settled power in W and rise of the link's body in K, after-heat included, with the
-/// supply's voltage off by a share.
+/// supply's voltage off by a share and in a room of its own.
 fn followed(
     setting: &Setting,
     unit: &Unit,
     cell: &Cell,
-    supply: f64,
+    (supply, room): (f64, Celsius),
 ) -> Result<(f64, f64), TruthError> {
     let errors = Errors {
         supply,
         ..Errors::default()
     };
-    let bench = VirtualBench::with_errors(staging(setting, unit), &errors)?;
+    let staging = Staging {
+        ambient: room,
+        ..staging(setting, unit)
+    };
+    let bench = VirtualBench::with_errors(staging, &errors)?;
     bench.hands().turn(&cell.position, Moment::START);
     let supply = Supply::of(setting, &bench, cell)?;
     supply.say(&supply.on, Moment::START);
