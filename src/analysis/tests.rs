@@ -773,7 +773,8 @@ fn an_early_finish_carries_the_extrapolation_and_the_rise_to_come() {
             .contains("extrapolated by first-order fits")
     );
     assert!((steady.power_w.value - 8.6).abs() <= steady.power_w.expanded);
-    let after = *result.settled_s.known().unwrap();
+    let on = *result.energised_s.known().unwrap();
+    let after = *result.off_s.known().unwrap() - on;
     let left = 60.0 * libm::exp(-after / 600.0);
     let peak = result.body_peak.known().unwrap();
     let worst = result.body_worst.known().unwrap();
