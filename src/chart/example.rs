@@ -421,6 +421,7 @@ pub fn finding(rule: &str, cell: Option<&Cell>, outcome: Outcome) -> Finding {
         at_most: None,
         margin: None,
         probability: None,
+        risks: None,
         source: String::new(),
         reason: String::new(),
     }

@@ -142,6 +142,18 @@ fn findings(findings: &[Finding]) -> Vec<String> {
         .collect();
     let mut lines = aligned(&head, &rows);
     for finding in findings {
+        if let Some(risks) = &finding.risks {
+            lines.extend(wrapped(
+                "  ",
+                &format!(
+                    "{}: for the stated process {:.2} % of units conform; {:.3} % are accepted and do not, {:.3} % conform and are not accepted",
+                    finding.rule,
+                    100.0 * risks.conforming,
+                    100.0 * risks.consumer,
+                    100.0 * risks.producer
+                ),
+            ));
+        }
         if finding.outcome != Outcome::Pass && !finding.reason.is_empty() {
             lines.extend(wrapped(
                 "  ",

@@ -56,11 +56,7 @@ pub struct Decided {
 /// a largest U judges nothing beyond it.
 pub fn decide(value: &Estimate, limits: Limits, decision: Decision) -> Decided {
     let margin = margin(value.value, limits);
-    let band = match decision {
-        Decision::Simple | Decision::SimpleUpTo { .. } => 0.0,
-        Decision::Guarded { ratio } => ratio * value.expanded,
-        Decision::FourOutcomes => value.expanded,
-    };
+    let band = guard_band(decision, value);
     let numbers = [value.value, value.expanded, band];
     if margin.is_none() || numbers.iter().any(|x| !x.is_finite()) {
         return Decided {
@@ -114,6 +110,15 @@ pub fn decide(value: &Estimate, limits: Limits, decision: Decision) -> Decided {
         margin,
         probability: probability(value, limits),
         reason: String::new(),
+    }
+}
+
+/// The guard band w of a decision rule around a value.
+pub fn guard_band(decision: Decision, value: &Estimate) -> f64 {
+    match decision {
+        Decision::Simple | Decision::SimpleUpTo { .. } => 0.0,
+        Decision::Guarded { ratio } => ratio * value.expanded,
+        Decision::FourOutcomes => value.expanded,
     }
 }
 

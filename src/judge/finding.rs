@@ -3,10 +3,11 @@
 use crate::analysis::{Analysis, CellResult, Estimate};
 use crate::plan::Cell;
 use crate::quantity::{at_most, shortest};
-use crate::spec::sequence::{CyclingRule, Decision, RuleWeight, SupplyPoint};
+use crate::spec::sequence::{CyclingRule, Decision, ProcessSpread, RuleWeight, SupplyPoint};
+use crate::stats::{Interval, global_risks};
 
-use super::decision::{Decided, Limits, decide, in_words};
-use super::types::{Finding, Outcome};
+use super::decision::{Decided, Limits, decide, guard_band, in_words};
+use super::types::{Finding, Outcome, ProcessRisks};
 
 /// What is common to the findings of one rule.
 #[derive(Debug, Clone)]
@@ -20,6 +21,8 @@ pub(super) struct Draft {
     pub(super) nominal: Option<f64>,
     /// Which input of a cycling load is compared.
     pub(super) cycling: CyclingRule,
+    /// How the quantity spreads over units, where it is stated.
+    pub(super) process: Option<ProcessSpread>,
     pub(super) source: String,
     /// What a fail means, in words.
     pub(super) fail_means: String,
@@ -41,6 +44,7 @@ impl Draft {
             unit: "",
             nominal: None,
             cycling: CyclingRule::OnState,
+            process: None,
             source: "house rule".to_owned(),
             fail_means: fail_means.into(),
         }
@@ -65,6 +69,7 @@ impl Draft {
             at_most: self.limits.at_most.and_then(twelve_digits),
             margin: None,
             probability: None,
+            risks: None,
             source: self.source.clone(),
             reason: reason.to_owned(),
         }
@@ -95,6 +100,35 @@ impl Draft {
             reason
         };
         self.plainly(cell, Outcome::NotJudged, reason)
+    }
+
+    /// What the decision risks for the process that the sequence states, at this
+    /// measurement's uncertainty.
+    fn risks(&self, value: &Estimate) -> Option<ProcessRisks> {
+        let process = self.process?;
+        let band = guard_band(self.decision, value);
+        let Limits { at_least, at_most } = self.limits;
+        let tolerance = Interval {
+            low: at_least.unwrap_or(f64::NEG_INFINITY),
+            high: at_most.unwrap_or(f64::INFINITY),
+        };
+        let acceptance = Interval {
+            low: tolerance.low + band,
+            high: tolerance.high - band,
+        };
+        let standard = value.standard();
+        let risks = global_risks(
+            process.mean,
+            process.spread,
+            standard,
+            tolerance,
+            acceptance,
+        )?;
+        Some(ProcessRisks {
+            conforming: twelve_digits(risks.conforming)?,
+            consumer: twelve_digits(risks.consumer)?,
+            producer: twelve_digits(risks.producer)?,
+        })
     }
 
     /// Takes back a decision for which the measurement is too coarse: U larger than the
@@ -152,6 +186,7 @@ impl Draft {
             budget: value.budget.clone(),
             margin: decided.margin.and_then(twelve_digits),
             probability: decided.probability.and_then(twelve_digits),
+            risks: self.risks(value),
             ..self.plainly(cell, decided.outcome, &reason)
         }
     }

@@ -20,7 +20,7 @@ mod tests;
 
 pub use decision::{CONVENTION, Decided, Limits, decide};
 pub use table::findings_csv;
-pub use types::{Finding, Judgement, Mark, Outcome};
+pub use types::{Finding, Judgement, Mark, Outcome, ProcessRisks};
 
 use crate::analysis::Analysis;
 use crate::plan::Plan;

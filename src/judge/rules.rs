@@ -28,6 +28,7 @@ pub(super) fn findings(plan: &Plan, analysis: &Analysis, rule: &PlannedRule) -> 
         unit: "",
         nominal: None,
         cycling: rule.cycling,
+        process: rule.process,
         source: rule.source.clone(),
         fail_means: String::new(),
     };

@@ -5,7 +5,7 @@ use crate::quantity::shortest;
 use crate::record::defused;
 use crate::spec::sequence::RuleWeight;
 
-const HEAD: [&str; 18] = [
+const HEAD: [&str; 21] = [
     "rule",
     "condition",
     "position",
@@ -21,6 +21,9 @@ const HEAD: [&str; 18] = [
     "at_most",
     "margin",
     "probability",
+    "conforming_share",
+    "consumers_risk",
+    "producers_risk",
     "source",
     "reason",
     "rules",
@@ -45,7 +48,7 @@ pub fn findings_csv(judgement: &Judgement) -> Result<Vec<u8>, csv::Error> {
         .map_err(|e| csv::Error::from(e.into_error()))
 }
 
-fn row(finding: &Finding, rules: &str) -> [String; 18] {
+fn row(finding: &Finding, rules: &str) -> [String; 21] {
     let number = |value: Option<f64>| value.map_or_else(String::new, shortest);
     let text = |value: &Option<String>| defused(value.as_deref().unwrap_or(""));
     let weight = match finding.weight {
@@ -68,6 +71,9 @@ fn row(finding: &Finding, rules: &str) -> [String; 18] {
         number(finding.at_most),
         number(finding.margin),
         number(finding.probability),
+        number(finding.risks.as_ref().map(|risks| risks.conforming)),
+        number(finding.risks.as_ref().map(|risks| risks.consumer)),
+        number(finding.risks.as_ref().map(|risks| risks.producer)),
         defused(&finding.source),
         defused(&finding.reason),
         rules.to_owned(),

@@ -690,3 +690,27 @@ fn a_simple_decision_judges_nothing_beyond_its_largest_u() {
         refused.reason
     );
 }
+
+// JCGM 106:2012 9.5, resistors: y0 1500, u0 0.12, limits 1499.8 and 1500.2, accepted from
+// 1499.82 to 1500.18, um 0.04 ohm: 0.9044 conform, consumer's risk 0.0099, producer's 0.0690.
+#[test]
+fn the_risks_for_a_stated_process_are_those_of_jcgm_106() {
+    let draft = super::finding::Draft {
+        decision: Decision::Guarded { ratio: 0.25 },
+        limits: Limits {
+            at_least: Some(1499.8),
+            at_most: Some(1500.2),
+        },
+        process: Some(crate::spec::sequence::ProcessSpread {
+            mean: 1500.0,
+            spread: 0.12,
+        }),
+        ..super::finding::Draft::house("resistance", "")
+    };
+    let line = crate::analysis::Share::normal("meter", 0.04, "ohm");
+    let value = crate::analysis::Estimate::combined(1500.05, vec![line]);
+    let risks = draft.decided(None, &value).risks.unwrap();
+    assert!((risks.conforming - 0.9044).abs() < 5e-5, "{risks:?}");
+    assert!((risks.consumer - 0.0099).abs() < 5e-5, "{risks:?}");
+    assert!((risks.producer - 0.0690).abs() < 5e-5, "{risks:?}");
+}

@@ -81,10 +81,25 @@ pub struct Finding {
     pub margin: Option<f64>,
     /// Probability that the true value conforms, where it can be said.
     pub probability: Option<f64>,
+    /// What the decision risks for a stated process, where one is stated.
+    #[serde(default)]
+    pub risks: Option<ProcessRisks>,
     /// Where the limits come from.
     pub source: String,
     /// Why, in one sentence: the reason for `not judged`, or what a fail means.
     pub reason: String,
+}
+
+/// What a decision rule risks over many units of a process that spreads normally
+/// (JCGM 106:2012, 9.3 to 9.5).
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct ProcessRisks {
+    /// Share of units that conform.
+    pub conforming: f64,
+    /// Share of units that do not conform and are accepted.
+    pub consumer: f64,
+    /// Share of units that conform and are not accepted.
+    pub producer: f64,
 }
 
 impl Finding {
