@@ -28,6 +28,9 @@ const HEAD: [&str; 20] = [
     "correlation",
 ];
 
+/// So many degrees of freedom are as good as infinite.
+const MANY: f64 = 1000.0;
+
 /// One estimate of a cell with its name and unit; an error's unit is that of a
 /// difference.
 struct Named<'a> {
@@ -92,7 +95,8 @@ fn of_estimate(result: &Named) -> String {
     let e = result.estimate;
     let freedom = e
         .freedom
-        .map_or_else(|| "infinite".to_owned(), |nu| format!("{nu:.1}"));
+        .filter(|nu| *nu < MANY)
+        .map_or_else(|| "very many".to_owned(), |nu| format!("{nu:.1}"));
     let mut text = format!(
         "  {} = {} {unit}, U = {} {error} (k = {:.3} at 95.45 %, {freedom} degrees of freedom)\n",
         defused_line(&result.name),
@@ -121,13 +125,14 @@ fn of_line(line: &Share, unit: &str, variance: f64) -> String {
         .map_or_else(String::new, |s| {
             format!(", shared with r = {}", s.correlation)
         });
+    let plain = line.unit == "1";
+    let unit_of_input = if plain { "" } else { line.unit.as_str() };
     let input = if (line.sensitivity - 1.0).abs() < 1e-12 {
         String::new()
     } else {
         format!(
-            ", {} {} times {}",
-            significant(line.input, 3),
-            line.unit,
+            ", {} times {}",
+            format!("{} {}", significant(line.input, 3), unit_of_input).trim_end(),
             significant(line.sensitivity, 3)
         )
     };

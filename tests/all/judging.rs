@@ -213,6 +213,28 @@ fn other_rules_than_those_of_the_run_are_told_everywhere() {
     );
 }
 
+/// A record that an earlier program of the same format closed is judged by the plan that
+/// it holds: no reference ambient was stated then, so none is referred to.
+#[test]
+fn a_record_of_an_earlier_program_is_still_judged() {
+    let folder = tempfile::tempdir().unwrap();
+    let run = folder.path().join("old").join("run");
+    fs::create_dir_all(&run).unwrap();
+    let old = Path::new(env!("CARGO_MANIFEST_DIR")).join("tests/data/record-of-format-1/run");
+    for file in fs::read_dir(old).unwrap() {
+        let file = file.unwrap().path();
+        fs::copy(&file, run.join(file.file_name().unwrap())).unwrap();
+    }
+    let (code, text) = judge(folder.path(), &folder.path().join("old"));
+    // Its unit has a fan and a plate of 220 V to 240 V, and was run at 230 V only.
+    assert_eq!(code, 5, "{text}");
+    let flat = text.split_whitespace().collect::<Vec<_>>().join(" ");
+    assert!(flat.contains("both ends of its supply range"), "{text}");
+    let budgets = folder.path().join("old/judgements/0001/budgets.txt");
+    let budgets = fs::read_to_string(budgets).unwrap();
+    assert!(!budgets.contains("of ambient, effect"), "{budgets}");
+}
+
 /// Every judgement holds the budgets of its results, the largest line first.
 #[test]
 fn a_judgement_holds_its_budgets() {

@@ -134,7 +134,7 @@ fn check_refuses_a_raw_scanner_without_its_sensor_with_place_and_hint() {
 
 #[test]
 fn a_record_from_before_raw_readings_is_still_read() {
-    let example = Path::new(env!("CARGO_MANIFEST_DIR")).join("reports/example");
+    let example = Path::new(env!("CARGO_MANIFEST_DIR")).join("tests/data/record-of-format-1");
     let head = fs::read_to_string(example.join("run/samples.csv")).unwrap();
     assert!(
         head.lines()
