@@ -63,8 +63,12 @@ pub fn picture(
 
 /// Unit, appliance and sequence on one line.
 fn about(scene: &Scene) -> String {
+    let other = match scene.judgement.other_rules {
+        Some(_) => "JUDGED BY OTHER RULES than those fixed before the run · ",
+        None => "",
+    };
     format!(
-        "unit {} · {} · {}, edition {}",
+        "{other}unit {} · {} · {}, edition {}",
         clean(scene.unit),
         clean(&scene.plan.appliance.model),
         clean(&scene.plan.title),
@@ -93,11 +97,6 @@ fn block(sheet: &mut Sheet, scene: &Scene, header: &Header) -> Result<(), DrawEr
         sheet.text((MARGIN + taken, 97.0), &time, SMALL, Align::Left)?;
     } else {
         sheet.text((MARGIN, 97.0), &time, SMALL, Align::Left)?;
-    }
-    if scene.judgement.other_rules.is_some() {
-        let face = Face::bold(SMALL.em, SMALL.ink);
-        let words = "judged by other rules than those fixed before the run";
-        sheet.text((right, 104.0), words, face, Align::Right)?;
     }
     let rule = Stroke::solid(RULE, 1.0);
     sheet.line((MARGIN, BLOCK_END), (right, BLOCK_END), rule)

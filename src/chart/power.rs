@@ -153,11 +153,15 @@ fn settled(input: &Input) -> KeyFigure {
     };
     let power = &steady.power_w;
     let (value, expanded) = with_uncertainty(power.value, power.expanded);
+    let room = steady
+        .ambient_degc
+        .as_ref()
+        .map_or_else(String::new, |room| format!(", {} °C", short(room.value, 3)));
     let note = format!(
-        "k = {}; {} samples, {} independent; at {} V",
+        "k = {}; {} independent samples; referred from {} W at {} V{room}",
         short(power.coverage, 3),
-        steady.samples,
         short(steady.effective, 2),
+        short(steady.at_plug_w.value, 4),
         short(steady.voltage_v, 4),
     );
     KeyFigure::known(name, format!("{value} W ± {expanded} W"), note)

@@ -189,11 +189,19 @@ fn rules_of(folder: &Folder, path: &Path) -> Result<OtherRules, Exit> {
         whose: format!(
             "not those fixed before the run (edition {}), but those of {}, edition {}, SHA-256 {}",
             folder.plan.edition,
-            files::file_name_of(&document.name),
+            plain_name(path),
             sequence.edition.value,
             sha256_of(&document.bytes)
         ),
     })
+}
+
+/// A file's name without its folder, on one line.
+fn plain_name(path: &Path) -> String {
+    let name = path.file_name().unwrap_or_default().to_string_lossy();
+    name.chars()
+        .map(|c| if c.is_control() { '_' } else { c })
+        .collect()
 }
 
 /// Prints the verdict table and where everything is.
