@@ -41,6 +41,7 @@ fn accuracy(
         floor,
         resolution,
         ranges: ranges.to_vec(),
+        of_reactive: 0.0,
         correlation: 0.0,
     }
 }
@@ -78,6 +79,7 @@ fn driver(
         accuracy,
         update_interval: Seconds::of(update),
         channels: 8,
+        temperature_effect: None,
         isolation: None,
     }
 }

@@ -20,7 +20,8 @@ pub(super) struct AtPlug {
     pub(super) effective: f64,
 }
 
-/// The mean of power rows, with the mean voltage and current of the same rows.
+/// The mean of power rows, with the mean voltage and current of the same rows and the
+/// mean of the room.
 ///
 /// # Errors
 /// Where there is no meter, too few rows, or an accuracy is not stated.
@@ -29,6 +30,7 @@ pub(super) fn at_plug(
     power: &[(f64, f64)],
     voltage_v: f64,
     current_a: Option<f64>,
+    room_degc: Option<f64>,
 ) -> Result<AtPlug, String> {
     let gauge = |reading| {
         view.meter
@@ -39,14 +41,22 @@ pub(super) fn at_plug(
     let worth = effective_of(&values).ok_or("too few power readings")?;
     let indicated = mean(power).unwrap_or(0.0);
     let drift = 0.5 * worth.trend.abs() * (worth.n as f64 - 1.0);
-    let power_w = gauge(Reading::Power)?.estimate(indicated)?.moved(
-        0.0,
-        [
-            scatter(&worth),
-            Share::rectangular("drift over the window", drift, "W"),
-        ],
-    );
-    let volts = gauge(Reading::Voltage)?.estimate(voltage_v)?;
+    let apparent = voltage_v * current_a.unwrap_or(0.0);
+    let reactive = libm::sqrt((apparent * apparent - indicated * indicated).max(0.0));
+    let (meter, voltmeter) = (gauge(Reading::Power)?, gauge(Reading::Voltage)?);
+    let power_w = meter
+        .estimate(indicated)?
+        .moved(0.0, meter.surroundings(indicated, reactive, room_degc)?)
+        .moved(
+            0.0,
+            [
+                scatter(&worth),
+                Share::rectangular("drift over the window", drift, "W"),
+            ],
+        );
+    let volts = voltmeter
+        .estimate(voltage_v)?
+        .moved(0.0, voltmeter.surroundings(voltage_v, 0.0, room_degc)?);
     let (power_w, volts) = without_leads(view, power_w, volts, current_a)?;
     Ok(AtPlug {
         power_w,

@@ -154,6 +154,38 @@ impl<'a> Gauge<'a> {
         Ok(Some(Share::rectangular(from, tolerance.get(), "K")))
     }
 
+    /// What the surroundings add to the accuracy of a reading: reactive power (at a power
+    /// factor below 1) to a power, and a room away from the one that it is stated for.
+    pub(super) fn surroundings(
+        &self,
+        indicated: f64,
+        reactive_va: f64,
+        room_degc: Option<f64>,
+    ) -> Result<Vec<Share>, String> {
+        let of_reactive = self.accuracy().map_or(0.0, |a| a.of_reactive);
+        let of = |what: &str| format!("{what}, {} of {}", self.reading.word(), self.role);
+        let mut lines = vec![Share::rectangular(
+            of("power factor below 1"),
+            of_reactive * reactive_va,
+            self.unit(),
+        )];
+        if let Some(effect) = self.instrument.driver.temperature_effect {
+            let room = room_degc.and_then(Celsius::new).ok_or_else(|| {
+                format!(
+                    "driver {} states a temperature effect, and the room was not read",
+                    self.instrument.driver.name
+                )
+            })?;
+            let added = effect.share_at(room) * indicated.abs();
+            lines.push(Share::rectangular(
+                of("temperature effect"),
+                added,
+                self.unit(),
+            ));
+        }
+        Ok(lines)
+    }
+
     fn own_lines(&self, indicated: f64) -> Result<Vec<Share>, String> {
         let word = self.reading.word();
         let Some(accuracy) = self.accuracy() else {

@@ -228,7 +228,9 @@ fn over(view: &CellView, window: Window) -> Result<Steady, String> {
     let voltage = mean(&kept(&inside(Reading::Voltage)))
         .ok_or("the power meter gave no voltage in the settled window")?;
     let current = mean(&kept(&inside(Reading::Current)));
-    let plug = at_plug(view, &on_power, voltage, current)?;
+    let ambient_degc = temperature_in(view, view.ambient, &window);
+    let room = ambient_degc.as_ref().map(|ambient| ambient.value);
+    let plug = at_plug(view, &on_power, voltage, current, room)?;
     let power_w = match &window.extrapolated {
         Some(early) => to_the_end(&plug.power_w, mean(&on_power).unwrap_or(0.0), early),
         None => plug.power_w,
@@ -238,7 +240,7 @@ fn over(view: &CellView, window: Window) -> Result<Steady, String> {
         power_w: power_w.clone(),
         at_plug_w: power_w,
         exponent: usual_exponent(&view.plan.appliance),
-        ambient_degc: temperature_in(view, view.ambient, &window),
+        ambient_degc,
         body_degc: temperature_in(view, view.body, &window).map(|body| body.value),
         mean_w: on.mean_w,
         mean_from: on.mean_from,

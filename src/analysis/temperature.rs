@@ -56,9 +56,9 @@ fn estimate_of(
     indicated: f64,
     ambient_degc: f64,
 ) -> Result<Estimate, String> {
-    let read = Gauge::of(view.plan, role, Reading::Temperature)
-        .ok_or("it has no sensor")?
-        .estimate(indicated)?;
+    let gauge = Gauge::of(view.plan, role, Reading::Temperature).ok_or("it has no sensor")?;
+    let surroundings = gauge.surroundings(indicated, 0.0, Some(ambient_degc))?;
+    let read = gauge.estimate(indicated)?.moved(0.0, surroundings);
     Ok(in_contact(view, role, read, ambient_degc))
 }
 

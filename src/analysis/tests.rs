@@ -846,3 +846,41 @@ fn the_sampling_method_s_result_is_the_mean_of_its_own_window() {
     assert!(steady.to_s - steady.from_s > 500.0 && steady.samples > 500);
     near(steady.power_w.value, 4.3, 0.01);
 }
+
+#[test]
+fn a_low_power_factor_and_a_room_away_from_the_stated_one_enter_the_budget() {
+    use crate::spec::driver::TemperatureEffect;
+    let with = |reactive: f64, effect: Option<TemperatureEffect>| {
+        let mut plan = plan(&["full"]);
+        let driver = &mut plan.instruments[1].driver;
+        driver.temperature_effect = effect;
+        let power = driver.accuracy.iter_mut();
+        for accuracy in power.filter(|a| a.reading == Reading::Power) {
+            accuracy.of_reactive = reactive;
+        }
+        first(&play(plan, good))
+            .steady
+            .known()
+            .unwrap()
+            .at_plug_w
+            .clone()
+    };
+    let effect = |within: f64| {
+        Some(TemperatureEffect {
+            per_kelvin: 0.001,
+            reference: crate::quantity::Celsius::of(13.0),
+            within: Kelvins::of(within),
+        })
+    };
+    let plain = with(0.0, None);
+    // The fixture's unit draws no reactive power: its share adds next to nothing.
+    assert!(with(0.01, None).expanded >= plain.expanded);
+    // 23 °C is 5 K beyond 13 °C within 5 K: 0.5 % of 4.3 W, rectangular (computed).
+    let warm = with(0.0, effect(5.0));
+    let line = warm
+        .budget
+        .iter()
+        .find(|l| l.from.starts_with("temperature effect"));
+    near(line.unwrap().standard, 0.005 * 4.3 / 3f64.sqrt(), 2e-4);
+    assert_eq!(with(0.0, effect(12.0)).expanded, plain.expanded);
+}

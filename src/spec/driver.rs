@@ -6,7 +6,7 @@
 use serde::{Deserialize, Serialize};
 
 use super::sequence::RoleKind;
-use crate::quantity::{Reading, Seconds, Volts};
+use crate::quantity::{Celsius, Kelvins, Reading, Seconds, Volts};
 use crate::sensor::Sensor;
 
 /// A whole driver file.
@@ -37,6 +37,9 @@ pub struct Driver {
     pub update_interval: Seconds,
     /// `channels:` highest channel number; 0 where the instrument has none.
     pub channels: u32,
+    /// `temperature effect:` beyond the room that the accuracy is stated for.
+    #[serde(default)]
+    pub temperature_effect: Option<TemperatureEffect>,
     /// `isolation:` of sensor inputs to earth and to each other; unknown counts as 0 V.
     pub isolation: Option<Volts>,
     /// `coupling: ac` where it loses the DC part of a current (default: `dc`).
@@ -274,10 +277,33 @@ pub struct Accuracy {
     pub resolution: f64,
     /// `ranges:` full-scale values, rising, in the reading's base unit; empty: no range term.
     pub ranges: Vec<f64>,
+    /// `of reactive power:` of a power, share of the reactive volt-amperes that adds to its
+    /// error where the power factor lies below 1, as a fraction.
+    #[serde(default)]
+    pub of_reactive: f64,
     /// `correlation:` how far the errors of two channels, or of two values, are one and
     /// the same, 0 to 1; 0 where nothing is known, which is the safe side for differences.
     #[serde(default)]
     pub correlation: f64,
+}
+
+/// What a room away from the one that an accuracy is stated for adds to it.
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+pub struct TemperatureEffect {
+    /// `per kelvin:` share of the reading, as a fraction.
+    pub per_kelvin: f64,
+    /// `reference:` the room that the accuracy is stated for.
+    pub reference: Celsius,
+    /// `within:` how far around it the accuracy still holds.
+    pub within: Kelvins,
+}
+
+impl TemperatureEffect {
+    /// Half-width of what a room adds, as a fraction of the reading.
+    pub fn share_at(&self, room: Celsius) -> f64 {
+        let away = (room.get() - self.reference.get()).abs();
+        self.per_kelvin * (away - self.within.get()).max(0.0)
+    }
 }
 
 impl Driver {

@@ -73,6 +73,7 @@ pub fn driver() -> Driver {
         accuracy: Vec::new(),
         update_interval: Seconds::of(0.1),
         channels: 8,
+        temperature_effect: None,
         isolation: None,
         coupling: Coupling::Dc,
     }

@@ -1,13 +1,13 @@
 //! A driver file.
 
-use crate::quantity::{Reading, Seconds, Volts};
+use crate::quantity::{Kelvins, Reading, Seconds, Volts};
 use crate::spec::driver::{
     Accuracy, Coupling, Driver, Framing, IdentityQuery, ReadingQuery, Setting, Settings,
-    Terminator, Thermal,
+    TemperatureEffect, Terminator, Thermal,
 };
 use crate::spec::fields::{Field, Fields, list, located, named, some};
 use crate::spec::scalars::{
-    Allowed, choice, command, duration, name, pause, quantity, share, value_of, whole,
+    Allowed, choice, command, duration, name, pause, quantity, share, temperature, value_of, whole,
 };
 use crate::spec::sequence::RoleKind;
 use crate::spec::{Located, Problem};
@@ -46,6 +46,7 @@ pub(in crate::spec) fn driver(field: Field<'_>) -> Option<Driver> {
     let errors = fields.optional("errors", command(&[]));
     let accuracy = fields.or("accuracy", Vec::new(), named(accuracy));
     let update_interval = fields.required("update interval", duration);
+    let temperature_effect = fields.optional("temperature effect", temperature_effect);
     let isolation = fields.optional("isolation", quantity::<Volts>(Allowed::NotNegative));
     let coupling = fields.or("coupling", Coupling::Dc, choice(COUPLINGS));
     let suited = match (&fills, &readings, &settings) {
@@ -70,6 +71,7 @@ pub(in crate::spec) fn driver(field: Field<'_>) -> Option<Driver> {
         accuracy: accuracy?,
         update_interval: update_interval?,
         channels: channels?,
+        temperature_effect: temperature_effect?,
         isolation: isolation?,
         coupling: coupling?,
     })
@@ -269,12 +271,22 @@ fn accuracy(reading: Located<String>, field: Field<'_>) -> Option<Accuracy> {
     let of_reading = fields.optional("of reading", share);
     let of_range = fields.optional("of range", share);
     let correlation = fields.optional("correlation", share);
+    let of_reactive = fields.optional("of reactive power", share);
+    let reactive_of_power = match &of_reactive {
+        Some(Some(_)) if *kind != Reading::Power => fields.wrong(
+            "of reactive power",
+            "only a power has a share of the reactive power",
+            "take it out",
+        ),
+        _ => Some(()),
+    };
     let floor = fields.or("floor", 0.0, value_of(width, Allowed::NotNegative));
     let resolution = fields.or("resolution", 0.0, value_of(width, Allowed::NotNegative));
     let full = value_of(kind.dimension(), Allowed::Positive);
     let ranges = fields.or("ranges", Vec::new(), list(full));
     let (of_reading, of_range) = (fraction(of_reading), fraction(of_range));
     let correlation = fraction(correlation);
+    let of_reactive = fraction(of_reactive);
     let rising = match (&ranges, of_range) {
         (Some(ranges), _) if !ranges.is_sorted_by(|a, b| a < b) => fields.wrong(
             "ranges",
@@ -299,6 +311,7 @@ fn accuracy(reading: Located<String>, field: Field<'_>) -> Option<Accuracy> {
     fields.finish()?;
     rising?;
     stated?;
+    reactive_of_power?;
     Some(Accuracy {
         reading: *kind,
         of_reading: of_reading?,
@@ -306,7 +319,21 @@ fn accuracy(reading: Located<String>, field: Field<'_>) -> Option<Accuracy> {
         floor: floor?,
         resolution: resolution?,
         ranges: ranges?,
+        of_reactive: of_reactive?,
         correlation: correlation?,
+    })
+}
+
+fn temperature_effect(field: Field<'_>) -> Option<TemperatureEffect> {
+    let fields = field.fields()?;
+    let per_kelvin = fields.required("per kelvin", share);
+    let reference = fields.required("reference", temperature);
+    let within = fields.required("within", quantity::<Kelvins>(Allowed::NotNegative));
+    fields.finish()?;
+    Some(TemperatureEffect {
+        per_kelvin: per_kelvin?.get(),
+        reference: reference?,
+        within: within?,
     })
 }
 
@@ -335,6 +362,34 @@ mod tests {
         assert_eq!(current.ranges, [0.1, 0.5, 2.0, 8.0, 20.0]);
         // 0.1 % of 0.3 A + 0.1 % of the 0.5 A range + 0.05 mA (computed by hand).
         assert!((current.half_width(0.3) - 8.5e-4).abs() < 1e-15);
+    }
+
+    #[test]
+    fn what_the_surroundings_add_is_read() {
+        let text = METER.changed(&[
+            (
+                "power: {of reading: 0.1 %,",
+                "power: {of reading: 0.1 %, of reactive power: 0.2 %,",
+            ),
+            (
+                "accuracy:",
+                "temperature effect: {per kelvin: 0.01 %, reference: 23 °C, within: 5 K}\naccuracy:",
+            ),
+        ]);
+        let loaded = load_driver("file", text.as_bytes());
+        let driver = loaded.value.expect("a driver");
+        let power = driver.accuracy_of(Reading::Power).expect("an accuracy");
+        assert_eq!(power.of_reactive, 0.002);
+        let effect = driver.temperature_effect.expect("an effect");
+        let share = |room| effect.share_at(crate::quantity::Celsius::of(room));
+        assert_eq!((share(23.0), share(28.0)), (0.0, 0.0));
+        // 10 K away, 5 K of them beyond: 0.05 % (computed).
+        assert!((share(33.0) - 5e-4).abs() < 1e-15 && (share(13.0) - 5e-4).abs() < 1e-15);
+        let wrong = METER.changed(&[(
+            "voltage: {of reading: 0.1 %,",
+            "voltage: {of reading: 0.1 %, of reactive power: 0.2 %,",
+        )]);
+        assert!(load_driver("file", wrong.as_bytes()).value.is_none());
     }
 
     #[test]
