@@ -1,7 +1,7 @@
 """Writes the tables beside it, which the tests of src/stats are held to.
 
-    python3 -m venv /tmp/oracle && /tmp/oracle/bin/pip install -r requirements.txt
-    /tmp/oracle/bin/python make.py
+    python3 -m venv oracle-venv && oracle-venv/bin/pip install -r requirements.txt
+    oracle-venv/bin/python make.py
 
 Every table comes from general-purpose libraries or from exact arithmetic, and
 where two ways exist this script itself holds one against the other. Seeds are
