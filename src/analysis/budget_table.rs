@@ -2,7 +2,7 @@
 
 use super::budget::Share;
 use super::types::{Analysis, CellResult, Estimate};
-use crate::quantity::shortest;
+use crate::quantity::{shortest, significant};
 use crate::record::defused;
 
 const HEAD: [&str; 20] = [
@@ -150,12 +150,6 @@ fn defused_line(text: &str) -> String {
     text.chars()
         .map(|c| if c.is_control() { ' ' } else { c })
         .collect()
-}
-
-fn significant(value: f64, digits: usize) -> String {
-    format!("{value:.*e}", digits - 1)
-        .parse()
-        .map_or_else(|_| value.to_string(), shortest)
 }
 
 /// `budgets.csv` in bytes: a row for each line of each result's budget; `freedom` is

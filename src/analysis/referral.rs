@@ -23,14 +23,13 @@ const LEAST_LOG_RATIO: f64 = 0.02;
 /// Exponents that no heater has.
 const PLAUSIBLE: std::ops::RangeInclusive<f64> = -0.5..=2.5;
 
-/// The interval in which d ln P / d ln V lies (house defaults, computed from the
-/// PTC model): plain resistor 1.95..2; PTC in still air 0..0.3; PTC with a fan on
-/// the mains 0..1.2. Never V squared for a PTC.
+/// The exponent that is taken where none is measured: the middle of its interval.
 pub(super) fn usual_exponent(appliance: &PlannedAppliance) -> Exponent {
-    let (low, high, what) = match (appliance.element, appliance.fan) {
-        (HeatingElement::Resistor, _) => (1.95, 2.0, "plain resistor"),
-        (HeatingElement::Ptc, false) => (0.0, 0.3, "PTC in still air"),
-        (HeatingElement::Ptc, true) => (0.0, 1.2, "PTC with a fan"),
+    let (low, high) = appliance.element.voltage_exponent(appliance.fan);
+    let what = match (appliance.element, appliance.fan) {
+        (HeatingElement::Resistor, _) => "plain resistor",
+        (HeatingElement::Ptc, false) => "PTC in still air",
+        (HeatingElement::Ptc, true) => "PTC with a fan",
     };
     let interval = Share::rectangular("", 0.5 * (high - low), "");
     Exponent {

@@ -189,9 +189,6 @@ fn at_highest_ambient(
     Ok(seen.moved(per_kelvin * to_go, lines))
 }
 
-/// The input of a plain resistor goes with the voltage to a power within this interval.
-const EXPONENTS: (f64, f64) = (1.95, 2.0);
-
 /// Moves a temperature to the highest voltage of the supply range, for plain resistors
 /// without a fan only: their rise goes with their power. The middle of the exponent's
 /// interval is taken, its width and the voltage's own uncertainty enter U.
@@ -213,19 +210,20 @@ fn at_highest_supply(
     }
     let rise = peak.temperature_degc.value - peak.ambient_degc;
     let more = |exponent: f64| rise * (libm::exp(exponent * ratio) - 1.0);
-    let (low, high) = (more(EXPONENTS.0), more(EXPONENTS.1));
+    let exponents = appliance.element.voltage_exponent(appliance.fan);
+    let (low, high) = (more(exponents.0), more(exponents.1));
     let mut lines = vec![Share::rectangular(
         format!(
             "rise referred from {volts:.2} V to {} V, exponent {} to {}",
             shortest(highest),
-            EXPONENTS.0,
-            EXPONENTS.1
+            exponents.0,
+            exponents.1
         ),
         0.5 * (high - low).abs(),
         "K",
     )];
     if let Some(steady) = steady {
-        let per_volt = -EXPONENTS.1 * rise / volts;
+        let per_volt = -exponents.1 * rise / volts;
         let of_voltage = steady.plug_v.budget.iter().cloned();
         lines.extend(of_voltage.map(|line| line.times(per_volt)));
     }

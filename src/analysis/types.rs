@@ -254,13 +254,14 @@ pub struct Steady {
 }
 
 impl Steady {
-    /// The power that a rule compares: while it is on, or of a representative period.
-    pub fn judged_w(&self, cycling: CyclingRule) -> Estimate {
+    /// What a rule compares, as a share of the power while it is on: all of that, or that
+    /// of a representative period.
+    pub fn judged_share(&self, cycling: CyclingRule) -> f64 {
         match (cycling, self.representative_w) {
             (CyclingRule::RepresentativePeriod, Some(watts)) if self.at_plug_w.value > 0.0 => {
-                self.power_w.scaled(watts / self.at_plug_w.value)
+                watts / self.at_plug_w.value
             }
-            _ => self.power_w.clone(),
+            _ => 1.0,
         }
     }
 }

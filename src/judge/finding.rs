@@ -2,7 +2,7 @@
 
 use crate::analysis::{Analysis, CellResult, Estimate};
 use crate::plan::Cell;
-use crate::quantity::{at_most, shortest};
+use crate::quantity::{at_most, significant};
 use crate::spec::sequence::{CyclingRule, Decision, ProcessSpread, RuleWeight, SupplyPoint};
 use crate::stats::{Interval, global_risks};
 
@@ -146,8 +146,8 @@ impl Draft {
             outcome: Outcome::NotJudged,
             reason: format!(
                 "U is {} {unit}, larger than the {} {unit} that the limit leaves",
-                short(value.expanded),
-                short(room),
+                significant(value.expanded, 3),
+                significant(room, 3),
                 unit = self.unit
             ),
             ..decided
@@ -229,13 +229,6 @@ impl Finding {
             format!(" ({})", place.join(", "))
         }
     }
-}
-
-/// Three digits for a sentence.
-fn short(value: f64) -> String {
-    format!("{value:.2e}")
-        .parse()
-        .map_or_else(|_| String::new(), shortest)
 }
 
 /// A number as it is kept: twelve digits, so that 10.8 is not 10.799999999999999 and

@@ -9,6 +9,7 @@
 mod always;
 mod decision;
 mod finding;
+mod link;
 mod marks;
 mod rules;
 mod table;

@@ -1,19 +1,19 @@
 //! Findings of the plan's rules.
 
 use crate::analysis::{
-    Analysis, CellResult, Estimate, Figure, Opening, Steady, at_voltage, plate_points,
-    points_in_reach,
+    Analysis, CellResult, Estimate, Figure, Steady, at_voltage, plate_points, points_in_reach,
 };
-use crate::plan::{Cell, Plan, PlannedLink, PlannedRule};
-use crate::quantity::{Celsius, Reading, Volts, Watts, at_most};
+use crate::plan::{Cell, Plan, PlannedRule};
+use crate::quantity::{Reading, Watts, at_most};
 use crate::spec::plate::{self, PlatePoint};
-use crate::spec::sequence::{Decision, MeasuredAt, RoleKind, RuleKind, Span};
+use crate::spec::sequence::{Decision, RoleKind, RuleKind, Span};
 
 /// A resolution coarser than this share of what the limits leave judges nothing.
 const COARSEST: f64 = 0.1;
 
 use super::decision::{Limits, decide};
 use super::finding::{Draft, by_position_and_supply, grouped, supply_words, worst};
+use super::link;
 use super::types::{Finding, Outcome};
 
 /// Every finding of one rule: one for each position and supply, of the worst
@@ -49,17 +49,10 @@ pub(super) fn findings(plan: &Plan, analysis: &Analysis, rule: &PlannedRule) -> 
                 power,
             )
         }
-        RuleKind::LinkHolding => ask.link(draft, |link| link.th, "Th, its holding temperature"),
-        RuleKind::LinkOpening => {
-            ask.link(draft, |link| Some(link.opens_from), "its earliest opening")
-        }
-        RuleKind::LinkHouse { below_tf } => {
-            let below = |link: &PlannedLink| link.tf.get() - below_tf.get();
-            let limit =
-                |link: &PlannedLink| link.th.map(|th| Celsius::of(th.get().min(below(link))));
-            ask.link(draft, limit, "the house limit for it")
-        }
-        RuleKind::LinkMaximum => ask.opening(draft),
+        RuleKind::LinkHolding
+        | RuleKind::LinkOpening
+        | RuleKind::LinkHouse { .. }
+        | RuleKind::LinkMaximum => link::findings(&ask, draft),
         RuleKind::Inrush { at_most } => {
             let limits = upper(at_most.get());
             ask.each(
@@ -118,15 +111,14 @@ impl Draft {
 
 /// One rule asked of a record.
 pub(super) struct Ask<'a> {
-    plan: &'a Plan,
-    analysis: &'a Analysis,
-    rule: &'a PlannedRule,
+    pub(super) plan: &'a Plan,
+    pub(super) analysis: &'a Analysis,
+    pub(super) rule: &'a PlannedRule,
 }
 
 impl Ask<'_> {
-    fn is_for(&self, cell: &Cell) -> bool {
-        let position = self.rule.position.as_ref();
-        position.is_none_or(|position| *position == cell.position) && self.is_for_condition(cell)
+    pub(super) fn is_for(&self, cell: &Cell) -> bool {
+        self.rule.is_for(cell)
     }
 
     fn is_for_condition(&self, cell: &Cell) -> bool {
@@ -242,12 +234,7 @@ impl Ask<'_> {
         }
         match at_voltage(self.plan, steady, point.voltage.get()) {
             Figure::Known(input) => {
-                let judged = steady.judged_w(draft.cycling).value / steady.power_w.value;
-                let input = if judged.is_finite() {
-                    input.scaled(judged)
-                } else {
-                    input
-                };
+                let input = input.scaled(steady.judged_share(draft.cycling));
                 said_extrapolated(draft.decided(cell, &input), result)
             }
             Figure::Absent(reason) => draft.not_judged(cell, &reason),
@@ -267,99 +254,6 @@ impl Ask<'_> {
                 Watts::of(room)
             )
         })
-    }
-
-    // ---- thermal link ----
-
-    fn link(
-        &self,
-        draft: Draft,
-        limit: impl Fn(&PlannedLink) -> Option<Celsius>,
-        what: &str,
-    ) -> Vec<Finding> {
-        let Some(link) = &self.plan.appliance.link else {
-            return vec![draft.not_judged(None, "the sequence declares no thermal link")];
-        };
-        let Some(limit) = limit(link) else {
-            return vec![draft.not_judged(
-                None,
-                "the sequence states no holding temperature from the link's data sheet",
-            )];
-        };
-        if let MeasuredAt::OutsideOnly { place, limit } = &link.measured_at {
-            return self.outside_only(draft, place, *limit);
-        }
-        let means = format!("the link's body would exceed {what}");
-        let draft = draft.compares(upper(limit.get()), "°C", &means);
-        let mut findings = self.each(&draft, body);
-        findings.extend(self.ends_not_run(&draft));
-        findings
-    }
-
-    /// The link itself cannot be reached: a house limit for the outside, which says so.
-    fn outside_only(&self, draft: Draft, place: &str, limit: Celsius) -> Vec<Finding> {
-        let mut draft = draft.compares(
-            upper(limit.get()),
-            "°C",
-            &format!("{place} exceeds the house limit; the link itself was not measured"),
-        );
-        draft.rule = format!("{place}, in place of the thermal link");
-        draft.source = "house limit; the link was not measured".to_owned();
-        self.each(&draft, body)
-    }
-
-    /// A fan runs slower at one end of the supply range and the heater hotter at the
-    /// other: each position of such a unit is run at both, or it is not judged.
-    fn ends_not_run(&self, draft: &Draft) -> Vec<Finding> {
-        if !self.plan.appliance.fan {
-            return Vec::new();
-        }
-        let groups = grouped(
-            self.analysis,
-            |cell| self.is_for(cell),
-            |cell| (cell.position.clone(), cell.condition.clone()),
-        );
-        groups
-            .into_iter()
-            .filter_map(|group| {
-                let position = &group.first()?.cell.position;
-                let appliance = &self.plan.appliance;
-                let (low, high) = appliance.supply_ends(position);
-                let is_run = |end: Volts| {
-                    let mut cells = group.iter().map(|result| &result.cell);
-                    cells.any(|cell| appliance.is_at_end(cell, end))
-                };
-                let ends = if low == high { vec![low] } else { vec![low, high] };
-                let missing: Vec<String> = ends
-                    .into_iter()
-                    .filter(|end| !is_run(*end))
-                    .map(|end| end.to_string())
-                    .collect();
-                let why = format!(
-                    "a unit with a fan is run at both ends of its supply range, and it is not run at {}",
-                    missing.join(" and ")
-                );
-                (!missing.is_empty()).then(|| draft.not_judged(Some(&group[0].cell), &why))
-            })
-            .collect()
-    }
-
-    /// The link that opened in an `abnormal` step, against Tm.
-    fn opening(&self, draft: Draft) -> Vec<Finding> {
-        let tm = self.plan.appliance.link.as_ref().and_then(|link| link.tm);
-        let Some(tm) = tm else {
-            let why = "the sequence states no maximum limit Tm from the link's data sheet";
-            return vec![draft.not_judged(None, why)];
-        };
-        let draft = draft.compares(upper(tm.get()), "°C", "the opened link exceeded Tm");
-        if self.analysis.openings.is_empty() {
-            return vec![draft.not_judged(None, "the sequence runs no `abnormal` step")];
-        }
-        self.analysis
-            .openings
-            .iter()
-            .map(|opening| opened(&draft, opening))
-            .collect()
     }
 
     // ---- order of positions ----
@@ -442,21 +336,6 @@ fn frequencies(point: PlatePoint) -> String {
     }
 }
 
-/// A link that opened, or did not, in one `abnormal` step.
-fn opened(draft: &Draft, opening: &Opening) -> Finding {
-    let mut draft = draft.clone();
-    draft.rule = format!("{}, {}", draft.rule, opening.fault);
-    match (&opening.peak_degc, &opening.closed_again_s) {
-        (Figure::Known(_), Some(after)) => draft.plainly(
-            None,
-            Outcome::Fail,
-            &format!("the link closed again {after:.0} s after it had opened"),
-        ),
-        (Figure::Known(peak), None) => draft.decided(None, peak),
-        (Figure::Absent(reason), _) => draft.not_judged(None, reason),
-    }
-}
-
 /// The settled input of a cell, or why there is none; the reason of a cell that was
 /// not run comes first.
 fn known_steady(result: &CellResult) -> Result<&Steady, String> {
@@ -472,7 +351,7 @@ fn known_steady(result: &CellResult) -> Result<&Steady, String> {
 fn power(draft: &Draft, result: &CellResult) -> Finding {
     match known_steady(result) {
         Ok(steady) => {
-            let power = steady.judged_w(draft.cycling);
+            let power = steady.power_w.scaled(steady.judged_share(draft.cycling));
             said_extrapolated(draft.decided(Some(&result.cell), &power), result)
         }
         Err(reason) => draft.not_judged(Some(&result.cell), &reason),
@@ -480,7 +359,7 @@ fn power(draft: &Draft, result: &CellResult) -> Finding {
 }
 
 /// A finding whose soak was ended early says so.
-fn said_extrapolated(finding: Finding, result: &CellResult) -> Finding {
+pub(super) fn said_extrapolated(finding: Finding, result: &CellResult) -> Finding {
     if !result.steady.known().is_some_and(|s| s.extrapolated) {
         return finding;
     }
@@ -491,36 +370,12 @@ fn said_extrapolated(finding: Finding, result: &CellResult) -> Finding {
 }
 
 /// Why the temperatures of a cell cannot be judged.
-fn doubt(result: &CellResult) -> Option<String> {
+pub(super) fn doubt(result: &CellResult) -> Option<String> {
     if let Figure::Absent(reason) = &result.energised_s {
         return Some(reason.clone());
     }
     let first = result.disbelief.first()?;
     Some(format!("the sensors are not believed: {first}"))
-}
-
-/// The worst case; where there is none, what was seen still fails if it lies above
-/// the limit with certainty, because it can only be lower than the worst case.
-fn body(draft: &Draft, result: &CellResult) -> Finding {
-    let cell = Some(&result.cell);
-    if let Some(doubt) = doubt(result) {
-        return draft.not_judged(cell, &doubt);
-    }
-    let reason = match &result.body_worst {
-        Figure::Known(worst) => return said_extrapolated(draft.decided(cell, worst), result),
-        Figure::Absent(reason) => reason,
-    };
-    match result.body_peak.known() {
-        Some(peak) if certainly_above(&peak.temperature_degc, draft.limits) => {
-            let seen = draft.decided(cell, &peak.temperature_degc);
-            Finding {
-                reason: format!("{}, by what was seen alone", draft.fail_means),
-                outcome: Outcome::Fail,
-                ..seen
-            }
-        }
-        _ => draft.not_judged(cell, reason),
-    }
 }
 
 /// Above the limit by more than the uncertainty, whatever the rule's own decision.

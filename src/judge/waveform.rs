@@ -33,11 +33,11 @@ pub(super) fn findings(ask: &Ask, draft: &Draft, kind: &RuleKind) -> Vec<Finding
             [
                 limit("dmax", dmax.map(percent), "%", |wave| {
                     let change = known(&wave.change)?;
-                    Ok((scaled(&change.dmax, 100.0), None))
+                    Ok((change.dmax.scaled(100.0), None))
                 }),
                 limit("dc", dc.map(percent), "%", |wave| {
                     let dc = known(&known(&wave.change)?.dc)?;
-                    Ok((scaled(dc, 100.0), None))
+                    Ok((dc.scaled(100.0), None))
                 }),
                 limit(
                     "time above 3.3 %",
@@ -67,16 +67,6 @@ fn known<T>(figure: &Figure<T>) -> Result<&T, String> {
         Figure::Known(value) => Ok(value),
         Figure::Absent(reason) => Err(reason.clone()),
     }
-}
-
-fn scaled(value: &Estimate, by: f64) -> Estimate {
-    let mut scaled = value.clone();
-    scaled.value *= by;
-    scaled.expanded *= by;
-    for share in &mut scaled.budget {
-        share.standard *= by;
-    }
-    scaled
 }
 
 /// The waveform of a cell, or why nothing of it can be judged.

@@ -2,7 +2,7 @@
 
 use super::types::{Action, Plan, PlannedInstrument, PlannedRole, PlannedRule, PlannedStep};
 use super::words::{answers, between, criterion, degrees, measured, span, time};
-use crate::quantity::{Volts, Watts, shortest};
+use crate::quantity::{Dimension, Volts, Watts, shortest};
 use crate::spec::plate;
 use crate::spec::sequence::{Decision, RuleKind, RuleWeight};
 
@@ -248,7 +248,7 @@ impl Plan {
                 format!(
                     "simple with U up to {} {}",
                     shortest(largest),
-                    unit_of(&rule.kind)
+                    unit(rule.kind.dimension())
                 )
             }
             Decision::Guarded { ratio } => format!("guarded by {ratio} U"),
@@ -360,19 +360,13 @@ impl Plan {
     }
 }
 
-/// The unit of what a rule compares, as its U is stated in.
-fn unit_of(kind: &RuleKind) -> &'static str {
-    match kind {
-        RuleKind::PlatePower | RuleKind::PowerLimits { .. } | RuleKind::PositionOrder => "W",
-        RuleKind::Inrush { .. } | RuleKind::MomentaryInrush { .. } | RuleKind::HarmonicsClassA => {
-            "A"
-        }
-        RuleKind::VoltageChange { .. } => "",
-        RuleKind::LinkHolding
-        | RuleKind::LinkOpening
-        | RuleKind::LinkHouse { .. }
-        | RuleKind::LinkMaximum
-        | RuleKind::TemperatureRise { .. } => "K",
+/// The unit that a rule's U is stated in.
+fn unit(dimension: Option<Dimension>) -> &'static str {
+    match dimension {
+        Some(Dimension::Power) => "W",
+        Some(Dimension::Current) => "A",
+        Some(Dimension::TemperatureDifference) => "K",
+        _ => "",
     }
 }
 

@@ -18,5 +18,5 @@ pub use newtypes::{
 };
 pub use parse::{Dimension, ParseQuantityError, Quantity, Written, parse_written};
 pub use reading::{Reading, Readings};
-pub use rounding::{at_least, at_most, near, shortest};
+pub use rounding::{at_least, at_most, near, shortest, significant};
 pub use waveform::{Waveform, WaveformError};

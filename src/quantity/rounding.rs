@@ -25,6 +25,13 @@ pub fn shortest(value: f64) -> String {
     if text == "-0" { "0".to_owned() } else { text }
 }
 
+/// A number in so many significant digits (at least one), without idle zeros.
+pub fn significant(value: f64, digits: usize) -> String {
+    format!("{value:.*e}", digits.saturating_sub(1))
+        .parse()
+        .map_or_else(|_| value.to_string(), shortest)
+}
+
 #[cfg(test)]
 mod tests {
     use super::*;

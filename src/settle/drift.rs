@@ -101,11 +101,7 @@ impl Drift {
 /// Change of a quantity per kelvin of ambient and per whole of the voltage: the upper
 /// end of the intervals by which inputs are corrected (house defaults).
 fn sensitivities(soaking: &Soaking, quantity: Quantity, mean: f64) -> (f64, f64) {
-    let exponent = match (soaking.element, soaking.fan) {
-        (HeatingElement::Resistor, _) => 2.0,
-        (HeatingElement::Ptc, true) => 1.2,
-        (HeatingElement::Ptc, false) => 0.3,
-    };
+    let (_, exponent) = soaking.element.voltage_exponent(soaking.fan);
     let per_kelvin = match (soaking.element, quantity) {
         (HeatingElement::Resistor, _) => 0.0,
         (HeatingElement::Ptc, Quantity::Power(_)) => PTC_PER_KELVIN * mean,

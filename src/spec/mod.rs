@@ -9,6 +9,7 @@ mod load;
 mod nearest;
 pub mod plate;
 mod render;
+mod rule;
 mod scalars;
 pub mod sequence;
 pub mod shipped;

@@ -4,6 +4,7 @@
 use serde::{Deserialize, Serialize};
 
 use super::Located;
+pub use super::rule::{CyclingRule, Decision, ProcessSpread, Rule, RuleKind, RuleWeight};
 pub use super::soak::{Criterion, CriterionKind, PowerChange, Soak, Soaking};
 use crate::quantity::{Amps, Celsius, Hertz, Kelvins, Ratio, Seconds, Volts, Watts};
 
@@ -183,6 +184,19 @@ pub enum HeatingElement {
     Ptc,
     /// A plain resistor.
     Resistor,
+}
+
+impl HeatingElement {
+    /// The interval in which d ln P / d ln V lies (house defaults, computed from the PTC
+    /// model): plain resistor 1.95..2; PTC in still air 0..0.3; PTC with a fan on the
+    /// mains 0..1.2. Never V squared for a PTC.
+    pub fn voltage_exponent(self, fan: bool) -> (f64, f64) {
+        match (self, fan) {
+            (HeatingElement::Resistor, _) => (1.95, 2.0),
+            (HeatingElement::Ptc, false) => (0.0, 0.3),
+            (HeatingElement::Ptc, true) => (0.0, 1.2),
+        }
+    }
 }
 
 /// What a bay must have an instrument for.
@@ -393,146 +407,4 @@ pub struct Each {
     pub supplies: Vec<Located<SupplyPoint>>,
     /// `steps:`
     pub steps: Vec<Step>,
-}
-
-/// One rule of the verdict.
-#[derive(Debug, Clone, PartialEq)]
-pub struct Rule {
-    /// What it compares.
-    pub kind: Located<RuleKind>,
-    /// `decision:` (house default: four outcomes).
-    pub decision: Decision,
-    /// `weight:` (default: required).
-    pub weight: RuleWeight,
-    /// `position:` that it is for; absent: every position it can be for.
-    pub position: Option<Located<String>>,
-    /// `condition:` that it is for; absent: the worst.
-    pub condition: Option<Located<String>>,
-    /// `source:` of its limits; absent: the standard that the rule names, or `house limit`.
-    pub source: Option<String>,
-    /// `process:` what units of the appliance are known to spread by; the risks of the
-    /// decision are then said beside it.
-    pub process: Option<ProcessSpread>,
-    /// `cycling:` which input of a cycling load a power rule compares.
-    pub cycling: CyclingRule,
-}
-
-/// How a quantity spreads over the units of an appliance (a normal distribution).
-#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
-pub struct ProcessSpread {
-    /// `mean:` base unit of the rule's quantity.
-    pub mean: f64,
-    /// `spread:` standard deviation, base unit.
-    pub spread: f64,
-}
-
-/// Which input of a cycling load is judged.
-#[derive(Debug, Clone, Copy, PartialEq, Eq, Default, Serialize, Deserialize)]
-#[serde(rename_all = "snake_case")]
-pub enum CyclingRule {
-    /// `on-state`: while it is on.
-    #[default]
-    OnState,
-    /// `representative period`: where the maximum exceeds twice the mean, the value
-    /// exceeded for more than 10 % of the period; else the mean (IEC 60335-1 clause
-    /// 10.1, from memory).
-    RepresentativePeriod,
-}
-
-impl CyclingRule {
-    /// The words in YAML.
-    pub fn word(self) -> &'static str {
-        match self {
-            CyclingRule::OnState => "on-state",
-            CyclingRule::RepresentativePeriod => "representative period",
-        }
-    }
-}
-
-/// What a rule compares.
-#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
-pub enum RuleKind {
-    /// `power: plate` bands of IEC 60335-1 clause 10.1.
-    PlatePower,
-    /// `power: {at least, at most}` explicit limits.
-    PowerLimits {
-        /// Lower limit.
-        at_least: Option<Watts>,
-        /// Upper limit.
-        at_most: Option<Watts>,
-    },
-    /// `thermal link: holding` worst body temperature against Th.
-    LinkHolding,
-    /// `thermal link: earliest opening` worst body temperature against Tf - 10 K.
-    LinkOpening,
-    /// `thermal link: {below Tf}` worst body temperature against a house limit,
-    /// the lower of Th and Tf less this.
-    LinkHouse {
-        /// Kelvins below Tf.
-        below_tf: Kelvins,
-    },
-    /// `thermal link: after opening` body after the link opened, against Tm.
-    LinkMaximum,
-    /// `inrush: {at most}` highest RMS current from a cold start.
-    Inrush {
-        /// Upper limit.
-        at_most: Amps,
-    },
-    /// `inrush: {momentary at most}` highest momentary current from a cold start, of a
-    /// waveform.
-    MomentaryInrush {
-        /// Upper limit.
-        at_most: Amps,
-    },
-    /// `harmonics: class A` of IEC 61000-3-2, of a waveform.
-    HarmonicsClassA,
-    /// `voltage change: {dmax, dc, time above 3.3 %}` on the reference impedance of
-    /// IEC 61000-3-3, of a waveform; at least one is there.
-    VoltageChange {
-        /// Largest relative change.
-        dmax: Option<Ratio>,
-        /// Steady relative change.
-        dc: Option<Ratio>,
-        /// Longest time above 3.3 %.
-        time_above: Option<Seconds>,
-    },
-    /// `order of positions: rising` the input rises in the declared order.
-    PositionOrder,
-    /// `temperature: {role, rise at most}` another temperature as a rise over ambient.
-    TemperatureRise {
-        /// The role.
-        role: String,
-        /// Upper limit.
-        at_most: Kelvins,
-    },
-}
-
-/// How a value near a limit is decided.
-#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
-pub enum Decision {
-    /// The value alone, whatever its uncertainty: findings of the house that compare
-    /// no uncertain value.
-    Simple,
-    /// `simple`: the value alone, where U is at most what is stated; else not judged.
-    SimpleUpTo {
-        /// `largest U:` base unit of the rule's quantity.
-        largest: f64,
-    },
-    /// `guarded`: guard band of `ratio` times U.
-    Guarded {
-        /// `guard:` r of r U.
-        ratio: f64,
-    },
-    /// `four outcomes`: guard band U on both sides of the limit.
-    FourOutcomes,
-}
-
-/// Whether a rule decides or only informs.
-#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize)]
-#[serde(rename_all = "lowercase")]
-pub enum RuleWeight {
-    /// It takes part in the unit's verdict.
-    Required,
-    /// It is printed and decides nothing.
-    Information,
 }

@@ -7,6 +7,7 @@
 
 mod bay;
 mod chance;
+mod circuit;
 mod dial;
 mod dialect;
 mod error_queue;

@@ -8,6 +8,7 @@
 //! at once, and radiation is part of the constant losses: simplifications.
 
 use super::chance::Chance;
+use super::circuit::Circuit;
 use super::faults::Fault;
 use super::ode::{Solver, Tolerance};
 use super::ptc::Law;
@@ -20,8 +21,6 @@ const TOLERANCE: Tolerance = Tolerance {
 };
 /// Voltage for which a fan's figures hold, V.
 const FAN_VOLTAGE: f64 = 230.0;
-/// Reactive to active current of a small shaded-pole fan (power factor 0.6; house value).
-const FAN_REACTIVE: f64 = 4.0 / 3.0;
 /// Input of a blocked fan over that of a running one (house value).
 const BLOCKED_FAN: f64 = 1.6;
 /// Slow wander of the room, K, and its period, s.
@@ -110,21 +109,6 @@ struct FanAir {
 struct Room {
     mean: f64,
     phase: f64,
-}
-
-/// What is switched in at present, worked out once per event.
-#[derive(Debug, Clone, Default)]
-struct Circuit {
-    elements: Vec<Law>,
-    /// Mean square of the voltage at the elements, V^2.
-    square: f64,
-    diode: bool,
-    volts: f64,
-    fan_watts: f64,
-    /// Block loss with condition and fan, W/K.
-    loss: f64,
-    /// Share of the block's rise that the link's body tends to.
-    link_share: f64,
 }
 
 impl Specimen {
@@ -450,60 +434,6 @@ fn slopes(circuit: &Circuit, thermal: &Thermal, ambient: f64, y: &[f64; 3]) -> [
         (ambient + circuit.link_share * rise - y[LINK]) / thermal.link_lag.get(),
         (to_enclosure - from_enclosure) / thermal.enclosure_j_per_k,
     ]
-}
-
-impl Circuit {
-    /// Conductance of the elements at a block temperature, S.
-    fn conductance(&self, block: f64) -> f64 {
-        self.elements.iter().map(|law| 1.0 / law.ohms(block)).sum()
-    }
-
-    /// Active power in W and RMS current in A.
-    ///
-    /// Behind a diode a resistance takes half of the power, and half of the mean
-    /// square of the current; what the fan draws in phase adds to the current of
-    /// both half-waves, what it draws out of phase in squares.
-    fn input(&self, block: f64) -> (f64, f64) {
-        if self.volts <= 0.0 {
-            return (0.0, 0.0);
-        }
-        let conductance = self.conductance(block);
-        let full = self.volts * conductance;
-        let fan = self.fan_watts / self.volts;
-        let conducting = (full + fan) * (full + fan);
-        let in_phase = if self.diode {
-            0.5 * (conducting + fan * fan)
-        } else {
-            conducting
-        };
-        let reactive = FAN_REACTIVE * fan;
-        let amps = libm::sqrt(in_phase + reactive * reactive);
-        (self.square * conductance + self.fan_watts, amps)
-    }
-}
-
-impl Circuit {
-    /// DC part of the current, A: behind a diode the peak over pi (computed).
-    fn dc(&self, block: f64) -> f64 {
-        if !self.diode || self.volts <= 0.0 {
-            return 0.0;
-        }
-        std::f64::consts::SQRT_2 * self.volts * self.conductance(block) / std::f64::consts::PI
-    }
-
-    /// Voltage and current at a phase of the mains, in turns.
-    fn momentary(&self, block: f64, turns: f64) -> (f64, f64) {
-        if self.volts <= 0.0 {
-            return (0.0, 0.0);
-        }
-        let angle = std::f64::consts::TAU * turns;
-        let (sine, cosine) = (libm::sin(angle), libm::cos(angle));
-        let volts = std::f64::consts::SQRT_2 * self.volts * sine;
-        let fed = if self.diode { volts.max(0.0) } else { volts };
-        let fan = std::f64::consts::SQRT_2 * self.fan_watts / self.volts;
-        let amps = fed * self.conductance(block) + fan * (sine - FAN_REACTIVE * cosine);
-        (volts, amps)
-    }
 }
 
 impl Room {

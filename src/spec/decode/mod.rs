@@ -4,6 +4,7 @@ mod bench;
 mod driver;
 mod rules;
 mod sequence;
+mod soak;
 mod steps;
 mod virtual_unit;
 mod waveform;

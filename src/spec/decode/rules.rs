@@ -47,7 +47,7 @@ pub(super) fn rule(field: Field<'_>) -> Option<Rule> {
     let position = fields.optional("position", located_name);
     let condition = fields.optional("condition", located_name);
     let source = fields.optional("source", text);
-    let unit = kind.as_ref().and_then(|kind| unit_of(&kind.value));
+    let unit = kind.as_ref().and_then(|kind| kind.value.dimension());
     let decision = decision.and_then(|decision| decided(&fields, decision, unit));
     let process = fields.optional("process", |field| process(field, unit));
     let cycling = fields.optional("cycling", choice(CYCLING));
@@ -228,25 +228,6 @@ fn decision(field: Field<'_>) -> Option<Written<'_>> {
     let ratio = fields.required("guarded", number(Allowed::Within(0.0, 3.0)));
     fields.finish()?;
     Some(Written::Decided(Decision::Guarded { ratio: ratio? }))
-}
-
-/// What a rule compares, as a dimension; absent where there is more than one.
-fn unit_of(kind: &RuleKind) -> Option<Dimension> {
-    match kind {
-        RuleKind::PlatePower | RuleKind::PowerLimits { .. } | RuleKind::PositionOrder => {
-            Some(Dimension::Power)
-        }
-        RuleKind::LinkHolding
-        | RuleKind::LinkOpening
-        | RuleKind::LinkHouse { .. }
-        | RuleKind::LinkMaximum
-        | RuleKind::TemperatureRise { .. } => Some(Dimension::TemperatureDifference),
-        RuleKind::Inrush { .. } | RuleKind::MomentaryInrush { .. } | RuleKind::HarmonicsClassA => {
-            Some(Dimension::Current)
-        }
-        // Several quantities in one rule.
-        RuleKind::VoltageChange { .. } => None,
-    }
 }
 
 fn decided(rule: &Fields<'_>, written: Written<'_>, unit: Option<Dimension>) -> Option<Decision> {
