@@ -310,12 +310,12 @@ struct Lack {
 }
 
 fn link_known(sequence: &Sequence, rule: &Rule, notes: &mut Notes) {
-    if !matches!(
-        rule.kind.value,
-        RuleKind::LinkHolding | RuleKind::LinkOpening
-    ) {
-        return;
-    }
+    let (needs_th, needs_tm) = match rule.kind.value {
+        RuleKind::LinkHolding | RuleKind::LinkHouse { .. } => (true, false),
+        RuleKind::LinkOpening => (false, false),
+        RuleKind::LinkMaximum => (false, true),
+        _ => return,
+    };
     let Some(link) = &sequence.appliance.link else {
         return notes.error(
             &rule.kind.place,
@@ -323,7 +323,14 @@ fn link_known(sequence: &Sequence, rule: &Rule, notes: &mut Notes) {
             "add `thermal link:` with Tf and Th from the part's data sheet, or take this rule out",
         );
     };
-    if link.th.is_none() && rule.kind.value == RuleKind::LinkHolding {
+    if link.tm.is_none() && needs_tm {
+        notes.error(
+            &link.tf.place,
+            "the thermal link states no Tm, its maximum limit after opening",
+            "add `Tm:` from the part's data sheet below `thermal link:`",
+        );
+    }
+    if link.th.is_none() && needs_th {
         notes.error(
             &link.tf.place,
             "the thermal link states no Th: its holding temperature lies anywhere from 13 to 45 K below Tf",
@@ -342,6 +349,20 @@ fn link_known(sequence: &Sequence, rule: &Rule, notes: &mut Notes) {
                 "the temperature is measured at {place}, and nothing says how much hotter the link may be: its margins will be not judged"
             ),
             "add `allowance:` and `allowance source:`, or measure at the link's body",
+        );
+    }
+    if let MeasuredAt::Elsewhere {
+        place,
+        self_heating: None,
+        ..
+    } = &link.measured_at
+    {
+        notes.warning(
+            &link.tf.place,
+            format!(
+                "the temperature is measured at {place}, and nothing says how far the link heats itself: its margins will be not judged"
+            ),
+            "add `self-heating: {rise: ..., at: ...}` from the part's data sheet (I2 Rth), or measure at the link's body",
         );
     }
 }

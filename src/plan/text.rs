@@ -132,10 +132,7 @@ impl Plan {
             .roles
             .iter()
             .filter(filled)
-            .map(|role| match role.channel {
-                Some(channel) => format!("{} (channel {channel})", role.name),
-                None => role.name.clone(),
-            })
+            .map(connected)
             .collect();
         let certificate = instrument
             .certificate
@@ -358,6 +355,20 @@ impl Plan {
             ),
         )
     }
+}
+
+/// A role with its channel, the place that it measures and how its sensor is held.
+fn connected(role: &PlannedRole) -> String {
+    let channel = role.channel.map(|channel| format!("channel {channel}"));
+    let place = role.place.as_ref().map(|place| format!("at {place}"));
+    let said: Vec<String> = [channel, place, role.connection.attachment.clone()]
+        .into_iter()
+        .flatten()
+        .collect();
+    if said.is_empty() {
+        return role.name.clone();
+    }
+    format!("{} ({})", role.name, said.join(", "))
 }
 
 /// The unit that a rule's U is stated in.

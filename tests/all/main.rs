@@ -7,6 +7,7 @@ mod bench_of_tests;
 mod disk;
 mod faults;
 mod judging;
+mod opening;
 mod raw_sensors;
 mod readme;
 mod rehearsal;

@@ -70,7 +70,7 @@ fn the_text_of_the_dryer_says_guards_cells_limits_sources_and_times() {
         "Nordlicht CD-9: combined, class II, fan, used up to 35 °C",
         "low: 4.5 W, 220 V to 240 V, 50 Hz",
         "Tf 121 °C, Th 100 °C, Tm 175 °C",
-        "fills body (channel 1), ambient (channel 2), enclosure (channel 3); RATEPLATE,VIRTUAL-SCANNER",
+        "fills body (channel 1, clamped), ambient (channel 2), enclosure (channel 3, taped); RATEPLATE,VIRTUAL-SCANNER",
         "calibration due 2099-12-31",
         "111 °C, Tf - 10 K (house default)",
         "low: 7.02 W, high: 14.04 W; from 5 min",

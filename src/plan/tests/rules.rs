@@ -51,14 +51,23 @@ fn a_link_measured_elsewhere_without_an_allowance_is_warned_of() {
     let text = changed(
         dryer(),
         "measured at: link body",
-        "measured at: {place: the outlet}",
+        "measured at: {place: the outlet, self-heating: {rise: 7 K, at: 10 A}}",
     );
     cross(&text, BENCH)
         .warns("121 °C", "measured at the outlet", "add `allowance:`")
         .only();
-    let stated =
+    let allowance =
         "measured at: {place: the outlet, allowance: 5 K, allowance source: a trial of ours}";
-    let text = changed(dryer(), "measured at: link body", stated);
+    let text = changed(dryer(), "measured at: link body", allowance);
+    cross(&text, BENCH)
+        .warns(
+            "121 °C",
+            "how far the link heats itself",
+            "add `self-heating:",
+        )
+        .only();
+    let both = allowance.replace("ours}", "ours, self-heating: {rise: 7 K, at: 10 A}}");
+    let text = changed(dryer(), "measured at: link body", &both);
     cross(&text, BENCH).is_clean();
 }
 
@@ -228,4 +237,35 @@ fn an_early_finish_does_not_follow_other_temperatures() {
     cross(&early, BENCH)
         .warns("temperature", "not followed to its end", "early finish")
         .only();
+}
+
+#[test]
+fn a_house_limit_needs_th_and_the_rule_after_opening_needs_tm_and_an_abnormal_step() {
+    let th = "    Th: 100 °C                  # from the part's data sheet\n";
+    let house = changed(
+        dryer(),
+        "  - thermal link: holding\n",
+        "  - thermal link: {below Tf: 25 K}\n",
+    );
+    cross(&house, BENCH).is_clean();
+    cross(&changed(&house, th, ""), BENCH)
+        .refuses("121 °C", "states no Th", "data sheet")
+        .only();
+    let after = changed(
+        dryer(),
+        "  - thermal link: holding\n",
+        "  - thermal link: after opening\n",
+    );
+    cross(&after, BENCH)
+        .warns(
+            "thermal link",
+            "no step runs the unit with a fault",
+            "abnormal",
+        )
+        .only();
+    cross(&changed(&after, "    Tm: 175 °C\n", ""), BENCH).refuses(
+        "121 °C",
+        "states no Tm",
+        "data sheet",
+    );
 }
